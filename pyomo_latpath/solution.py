@@ -1,0 +1,160 @@
+"""What a solve returns: the answer, and the report of how it came about."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .integrality.finding import Finding
+
+Floats = NDArray[np.float64]
+
+#: All values of `Solution.status`.
+STATUSES = ("optimal", "infeasible", "unbounded", "time_limit", "interrupted", "error")
+
+
+@dataclass(frozen=True)
+class WalkReport:
+    """How far the path solver walked, and how far it could have had to.
+
+    Attributes
+    ----------
+    steps : int
+        Moves to a different vertex; exact where `exact_steps`, else an upper count.
+    exact_steps : bool
+        Whether `steps` is exact.
+    pivots : int
+        Basis changes, those that found the first vertex included.
+    step_bound : int or None
+        Proven bound on the steps; None where the polytope has no known box.
+    rounds, scaling_phases, faces_fixed : int
+        Rounds of the face-fixing walk, phases of the scaling walks in them, and rows or
+        bounds shown tight at every optimum.
+    dimension, box, max_entry : int
+        n, k and alpha of the bound.
+    engine : str
+        'tableau' or 'highs': what served as the oracle.
+    note : str
+        Anything out of the ordinary, one sentence; empty as a rule.
+    """
+
+    steps: int
+    exact_steps: bool
+    pivots: int
+    step_bound: int | None
+    rounds: int
+    scaling_phases: int
+    faces_fixed: int
+    dimension: int
+    box: int
+    max_entry: int
+    engine: str
+    note: str = ""
+
+
+@dataclass(frozen=True)
+class RouteReport:
+    """Which way a model went, why, and what that cost.
+
+    Attributes
+    ----------
+    route : str
+        'path', 'highs' or 'split'.
+    why : str
+        One sentence.
+    finding : Finding
+    walk : WalkReport or None
+        None where nothing went to the path solver.
+    proof : str
+        'exact' where optimality (or infeasibility, unboundedness) was checked in exact
+        arithmetic, else 'tolerance'.
+    seconds : dict of str to float
+        Keys 'compile', 'assess', 'solve', 'proof'.
+    largest_violation : float
+        Largest amount by which a row, bound or declaration is missed by `x`; 0.0 where exact.
+    prices : str
+        'none', 'true' (shadow prices of the model) or 'fixed plan' (of the LP that is left
+        when the integer columns are held at the plan found).
+    blame : tuple of str
+        Names of rows (and bounds, as 'bounds of NAME') that conflict, for infeasible models;
+        dropping any one of them restores feasibility of the set.
+    moves : tuple
+        The changes that lead from the start to `x`; empty without a start.
+    """
+
+    route: str
+    why: str
+    finding: Finding
+    walk: WalkReport | None
+    proof: str
+    seconds: dict[str, float]
+    largest_violation: float = 0.0
+    prices: str = "none"
+    blame: tuple[str, ...] = ()
+    moves: tuple[Any, ...] = ()
+
+    def to_dict(self) -> dict[str, Any]:
+        """Plain data, ready for JSON; certificates are left to `finding.to_dict()`."""
+        walk = None if self.walk is None else dict(vars(self.walk))
+        return {
+            "route": self.route,
+            "why": self.why,
+            "verdict": self.finding.verdict.value,
+            "structures": list(self.finding.structures),
+            "blocks": [
+                {
+                    "rows": int(block.rows.size),
+                    "columns": int(block.columns.size),
+                    "verdict": block.verdict.value,
+                    "structure": block.structure,
+                    "samples": block.samples,
+                    "reason": block.reason,
+                }
+                for block in self.finding.blocks
+            ],
+            "snapped": self.finding.snapped,
+            "walk": walk,
+            "proof": self.proof,
+            "seconds": dict(self.seconds),
+            "largest_violation": self.largest_violation,
+            "prices": self.prices,
+            "blame": list(self.blame),
+        }
+
+
+@dataclass(frozen=True, eq=False)
+class Solution:
+    """The answer to a model.
+
+    Attributes
+    ----------
+    status : str
+        One of `STATUSES`.
+    x : ndarray, shape (n,), float64, or None
+        The best plan; None without one. Integer columns hold exact whole numbers on the
+        path route.
+    objective, bound : float
+        Value of `x` and the best bound proven, in the model's own sense; NaN without one.
+    row_dual : ndarray, shape (m,), float64
+        d(objective)/d(side); NaN where a block has no prices.
+    reduced_cost : ndarray, shape (n,), float64
+        The same for columns.
+    ray : ndarray, shape (n,), float64, or None
+        For 'unbounded': a direction of endless improvement.
+    farkas : ndarray, shape (m,), float64, or None
+        For 'infeasible', where known: multipliers of the rows that prove it.
+    report : RouteReport
+    """
+
+    status: str
+    x: Floats | None
+    objective: float
+    bound: float
+    row_dual: Floats
+    reduced_cost: Floats
+    ray: Floats | None
+    farkas: Floats | None
+    report: RouteReport = field(repr=False)
