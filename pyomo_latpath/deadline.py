@@ -1,0 +1,40 @@
+"""One time budget, passed down through all stages of a solve."""
+
+from __future__ import annotations
+
+import math
+import time
+
+
+class Deadline:
+    """A moment by which work must be done.
+
+    Parameters
+    ----------
+    seconds : float or None
+        Budget from now on; None for no limit.
+
+    Examples
+    --------
+    >>> Deadline(None).passed
+    False
+    >>> Deadline(0).passed
+    True
+    """
+
+    def __init__(self, seconds: float | None) -> None:
+        self.at = math.inf if seconds is None else time.monotonic() + seconds
+
+    @property
+    def left(self) -> float:
+        """Seconds left, at least 0; infinite without a limit."""
+        return max(0.0, self.at - time.monotonic())
+
+    @property
+    def passed(self) -> bool:
+        """Whether the budget is used up."""
+        return time.monotonic() >= self.at
+
+    def within(self, seconds: float) -> Deadline:
+        """Return a deadline that lies at most `seconds` ahead and not after this one."""
+        return Deadline(min(seconds, self.left)) if seconds < math.inf else self
