@@ -1,0 +1,478 @@
+"""HiGHS as a basis engine for linear programs, and as branch and bound.
+
+Everything that talks to HiGHS is here. Each option set is checked, each outcome mapped once.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import highspy
+import numpy as np
+import scipy.sparse as sp
+from numpy.typing import NDArray
+
+from .deadline import Deadline
+
+Floats = NDArray[np.float64]
+Codes = NDArray[np.int8]
+Log = Callable[[str], None]
+
+_STATUS = highspy.HighsModelStatus
+_OUTCOME = {
+    _STATUS.kOptimal: "optimal",
+    _STATUS.kModelEmpty: "optimal",
+    _STATUS.kInfeasible: "infeasible",
+    _STATUS.kUnbounded: "unbounded",
+    _STATUS.kUnboundedOrInfeasible: "unsettled",
+    _STATUS.kTimeLimit: "time_limit",
+    _STATUS.kIterationLimit: "pivot_limit",
+    _STATUS.kSolutionLimit: "limit",
+    _STATUS.kObjectiveBound: "limit",
+    _STATUS.kObjectiveTarget: "limit",
+    _STATUS.kInterrupt: "interrupted",
+    _STATUS.kHighsInterrupt: "interrupted",
+    _STATUS.kMemoryLimit: "error",
+    _STATUS.kUnknown: "error",
+    _STATUS.kNotset: "error",
+    _STATUS.kLoadError: "error",
+    _STATUS.kModelError: "error",
+    _STATUS.kPresolveError: "error",
+    _STATUS.kSolveError: "error",
+    _STATUS.kPostsolveError: "error",
+}
+_CODE_OF = (
+    highspy.HighsBasisStatus.kLower,
+    highspy.HighsBasisStatus.kBasic,
+    highspy.HighsBasisStatus.kUpper,
+    highspy.HighsBasisStatus.kZero,
+    highspy.HighsBasisStatus.kNonbasic,
+)
+
+
+class OptionError(ValueError):
+    """HiGHS does not take an option or its value."""
+
+
+@dataclass(frozen=True, eq=False)
+class Basis:
+    """Which columns and rows are basic, and where the others sit.
+
+    Attributes
+    ----------
+    col_status, row_status : ndarray, shape (n,), (m,), int8
+        0 at the lower limit, 1 basic, 2 at the upper limit, 3 free and nonbasic at zero,
+        4 nonbasic.
+    """
+
+    col_status: Codes
+    row_status: Codes
+
+
+@dataclass(frozen=True, eq=False)
+class LpResult:
+    """Outcome of one linear program; its arrays are meaningful for status 'optimal'.
+
+    Attributes
+    ----------
+    status : str
+        'optimal', 'infeasible', 'unbounded', 'time_limit', 'pivot_limit', 'interrupted' or
+        'error'.
+    x, reduced_cost : ndarray, shape (n,), float64
+    row_dual : ndarray, shape (m,), float64
+    objective : float
+    pivots : int
+        Simplex iterations of this call.
+    farkas : ndarray, shape (m,), float64, or None
+        For 'infeasible': multipliers y of the rows with y A x below what the sides ask, over
+        all x within bounds (up to HiGHS's tolerance, and up to sign).
+    ray : ndarray, shape (n,), float64, or None
+        For 'unbounded': a direction.
+    """
+
+    status: str
+    x: Floats
+    row_dual: Floats
+    reduced_cost: Floats
+    objective: float
+    pivots: int
+    farkas: Floats | None = None
+    ray: Floats | None = None
+
+
+class LinearProgram:
+    """A linear program held by HiGHS, warm-started from one solve to the next.
+
+    Parameters
+    ----------
+    matrix : scipy.sparse.csc_array, shape (m, n), float64
+    row_lower, row_upper, col_lower, col_upper, cost : ndarray, float64
+        The objective is minimised.
+
+    Examples
+    --------
+    >>> lp = LinearProgram(sp.csc_array([[1.0, 1.0]]), np.array([1.0]), np.array([1.0]),
+    ...                    np.zeros(2), np.ones(2), np.array([2.0, 3.0]))
+    >>> result = lp.solve()
+    >>> result.status, result.x
+    ('optimal', array([1., 0.]))
+    """
+
+    def __init__(
+        self,
+        matrix: sp.csc_array,
+        row_lower: Floats,
+        row_upper: Floats,
+        col_lower: Floats,
+        col_upper: Floats,
+        cost: Floats,
+    ) -> None:
+        self.m, self.n = matrix.shape
+        self._highs = _quiet()
+        for name, value in (("presolve", "off"), ("solver", "simplex"), ("threads", 1)):
+            set_option(self._highs, name, value)
+        kinds = np.zeros(self.n, np.int32)
+        _pass(self._highs, matrix, row_lower, row_upper, col_lower, col_upper, cost, kinds)
+        self._all = np.arange(self.n, dtype=np.int32)
+        self._all_rows = np.arange(self.m, dtype=np.int32)
+        self._cost = cost
+
+    def set_cost(self, cost: Floats) -> None:
+        """Minimise another objective from now on."""
+        self._cost = cost
+        _ok(self._highs.changeColsCost(self.n, self._all, cost), "set costs")
+
+    def set_col_bounds(self, lower: Floats, upper: Floats) -> None:
+        """Put other bounds on all columns."""
+        _ok(self._highs.changeColsBounds(self.n, self._all, lower, upper), "set column bounds")
+
+    def set_row_bounds(self, lower: Floats, upper: Floats) -> None:
+        """Put other sides on all rows."""
+        if self.m:
+            status = self._highs.changeRowsBounds(self.m, self._all_rows, lower, upper)
+            _ok(status, "set row sides")
+
+    def basis(self) -> Basis:
+        """Return the current basis."""
+        held = self._highs.getBasis()
+        return Basis(_codes(held.col_status), _codes(held.row_status))
+
+    def set_basis(self, basis: Basis) -> None:
+        """Start the next solve from this basis."""
+        held = highspy.HighsBasis()
+        held.col_status = [_CODE_OF[code] for code in basis.col_status.tolist()]
+        held.row_status = [_CODE_OF[code] for code in basis.row_status.tolist()]
+        held.valid = True
+        _ok(self._highs.setBasis(held), "set a basis")
+
+    def basic_variables(self) -> NDArray[np.int32]:
+        """Return what is basic in each row: a column j as j, row i's activity as -1 - i."""
+        status, basic = self._highs.getBasicVariables()
+        _ok(status, "tell its basis")
+        return np.asarray(basic, dtype=np.int32)
+
+    def solve_transposed(self, right: Floats) -> Floats:
+        """Solve y B = right for the current basis B, in floating point."""
+        status, y = self._highs.getBasisTransposeSolve(right)
+        _ok(status, "solve with its basis")
+        return np.asarray(y, dtype=np.float64)
+
+    def solve(
+        self,
+        *,
+        method: str = "dual",
+        deadline: Deadline | None = None,
+        max_pivots: int | None = None,
+    ) -> LpResult:
+        """Optimise from the current basis.
+
+        Parameters
+        ----------
+        method : 'dual' or 'primal'
+            Which simplex method.
+        deadline : Deadline, optional
+        max_pivots : int, optional
+
+        Returns
+        -------
+        LpResult
+            Never 'unbounded' where infeasible: a zero objective settles which of the two.
+        """
+        deadline = deadline or Deadline(None)
+        set_option(self._highs, "simplex_strategy", 1 if method == "dual" else 4)
+        limit = 2**31 - 1 if max_pivots is None else max_pivots
+        set_option(self._highs, "simplex_iteration_limit", limit)
+        status = self._run(deadline)
+        pivots = self._highs.getInfo().simplex_iteration_count
+        farkas = ray = None
+        if status == "unsettled":
+            self.set_cost_for_a_moment(deadline)
+            status = "infeasible" if self._outcome() == "infeasible" else "unbounded"
+        if status == "infeasible":
+            _, found, vector = self._highs.getDualRay()
+            farkas = np.array(vector) if found else None
+        elif status == "unbounded":
+            _, found, vector = self._highs.getPrimalRay()
+            ray = np.array(vector) if found else None
+        answer = self._highs.getSolution()
+        return LpResult(
+            status=status,
+            x=np.array(answer.col_value, dtype=np.float64),
+            row_dual=np.array(answer.row_dual, dtype=np.float64),
+            reduced_cost=np.array(answer.col_dual, dtype=np.float64),
+            objective=float(self._highs.getInfo().objective_function_value),
+            pivots=max(0, int(pivots)),
+            farkas=farkas,
+            ray=ray,
+        )
+
+    def set_cost_for_a_moment(self, deadline: Deadline) -> None:
+        """Run once with a zero objective, which tells infeasible from unbounded."""
+        kept = self._cost
+        self.set_cost(np.zeros(self.n))
+        self._run(deadline)
+        _ok(self._highs.changeColsCost(self.n, self._all, kept), "set costs")
+        self._cost = kept
+
+    def _run(self, deadline: Deadline) -> str:
+        limit = math.inf if deadline.left == math.inf else deadline.left
+        set_option(self._highs, "time_limit", limit)
+        self._highs.run()
+        return self._outcome()
+
+    def _outcome(self) -> str:
+        return _OUTCOME[self._highs.getModelStatus()]
+
+
+@dataclass(frozen=True, eq=False)
+class MipResult:
+    """Outcome of branch and bound.
+
+    Attributes
+    ----------
+    status : str
+        'optimal', 'infeasible', 'unbounded', 'time_limit', 'limit', 'interrupted' or 'error'.
+    x : ndarray, shape (n,), float64, or None
+        Best plan found.
+    bound : float
+        Best bound on the minimum; -inf without one.
+    nodes : int
+    """
+
+    status: str
+    x: Floats | None
+    bound: float
+    nodes: int
+
+
+@dataclass(frozen=True)
+class MipSettings:
+    """What the user asks of branch and bound; None leaves HiGHS's own default.
+
+    Attributes
+    ----------
+    rel_gap, abs_gap : float or None
+    threads : int or None
+    options : mapping of str to value
+        Further HiGHS options, by HiGHS's names.
+    log : callable or None
+        Called with each line that HiGHS prints.
+    """
+
+    rel_gap: float | None = None
+    abs_gap: float | None = None
+    threads: int | None = None
+    options: Mapping[str, Any] | None = None
+    log: Log | None = None
+
+
+def check_settings(settings: MipSettings) -> None:
+    """Try all options on an empty instance.
+
+    Raises
+    ------
+    OptionError
+        Names the option that HiGHS does not take.
+    """
+    _apply(_quiet(), settings)
+
+
+def branch_and_bound(
+    matrix: sp.csc_array,
+    row_lower: Floats,
+    row_upper: Floats,
+    col_lower: Floats,
+    col_upper: Floats,
+    cost: Floats,
+    kinds: NDArray[np.int32],
+    settings: MipSettings,
+    deadline: Deadline,
+    start: Floats | None = None,
+) -> MipResult:
+    """Minimise over whole-number plans.
+
+    Parameters
+    ----------
+    matrix, row_lower, row_upper, col_lower, col_upper, cost
+        As in `LinearProgram`.
+    kinds : ndarray, shape (n,), int32
+        0 continuous, 1 integer, 2 semicontinuous, 3 semi-integer.
+    settings : MipSettings
+    deadline : Deadline
+    start : ndarray, shape (n,), optional
+        A plan to begin with.
+
+    Returns
+    -------
+    MipResult
+        Infeasible and unbounded are told apart by a run with a zero objective.
+    """
+    highs = _quiet()
+    _apply(highs, settings)
+    _pass(highs, matrix, row_lower, row_upper, col_lower, col_upper, cost, kinds)
+    if start is not None:
+        index = np.arange(start.size, dtype=np.int32)
+        _ok(highs.setSolution(start.size, index, start), "take a start plan")
+    status = _run_mip(highs, settings, deadline)
+    if status in ("unbounded", "unsettled"):
+        index = np.arange(cost.size, dtype=np.int32)
+        _ok(highs.changeColsCost(cost.size, index, np.zeros(cost.size)), "set costs")
+        settled = _run_mip(highs, settings, deadline)
+        settled = "unbounded" if settled in ("optimal", "limit") else settled
+        x = np.array(highs.getSolution().col_value) if settled == "unbounded" else None
+        return MipResult(settled, x, -math.inf, 0)
+    info = highs.getInfo()
+    feasible = info.primal_solution_status == highspy.SolutionStatus.kSolutionStatusFeasible
+    x = np.array(highs.getSolution().col_value, dtype=np.float64) if feasible else None
+    is_mip = bool(kinds.any())
+    bound = info.mip_dual_bound if is_mip else info.objective_function_value
+    bound = float(bound) if is_mip or status == "optimal" else -math.inf
+    return MipResult(status, x, bound, max(0, int(info.mip_node_count)))
+
+
+def _run_mip(highs: Any, settings: MipSettings, deadline: Deadline) -> str:
+    asked = (settings.options or {}).get("time_limit", math.inf)
+    limit = min(float(asked), deadline.left)
+    set_option(highs, "time_limit", highs.getRunTime() + limit if limit < math.inf else limit)
+    highs.HandleKeyboardInterrupt = True
+    highs.run()
+    return _OUTCOME[highs.getModelStatus()]
+
+
+def conflicting_set(
+    matrix: sp.csc_array,
+    row_lower: Floats,
+    row_upper: Floats,
+    col_lower: Floats,
+    col_upper: Floats,
+    deadline: Deadline,
+) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Find rows and column bounds that conflict, none of them needlessly (an IIS).
+
+    Returns
+    -------
+    rows, columns : ndarray, int64
+        Empty where HiGHS finds none in time, or where the relaxation is feasible.
+    """
+    n = col_lower.size
+    highs = _quiet()
+    for name, value in (("presolve", "off"), ("iis_strategy", 6), ("threads", 1)):
+        set_option(highs, name, value)
+    if deadline.left < math.inf:
+        set_option(highs, "iis_time_limit", deadline.left)
+        set_option(highs, "time_limit", deadline.left)
+    kinds = np.zeros(n, np.int32)
+    _pass(highs, matrix, row_lower, row_upper, col_lower, col_upper, np.zeros(n), kinds)
+    highs.run()
+    if highs.getModelStatus() != _STATUS.kInfeasible:
+        return np.empty(0, np.int64), np.empty(0, np.int64)
+    status, found = highs.getIis()
+    if status == highspy.HighsStatus.kError or not found.valid_:
+        return np.empty(0, np.int64), np.empty(0, np.int64)
+    return np.array(found.row_index_, dtype=np.int64), np.array(found.col_index_, dtype=np.int64)
+
+
+def set_option(highs: Any, name: str, value: Any) -> None:
+    """Set one HiGHS option.
+
+    Raises
+    ------
+    OptionError
+        If HiGHS does not know the option or refuses the value.
+    """
+    try:
+        status = highs.setOptionValue(name, value)
+    except TypeError as error:
+        raise OptionError(f"HiGHS option {name!r} does not take {value!r}") from error
+    if status == highspy.HighsStatus.kOk:
+        return
+    known, _ = highs.getOptionType(name)
+    if known != highspy.HighsStatus.kOk:
+        raise OptionError(f"HiGHS has no option {name!r}; see HiGHS's list of options")
+    raise OptionError(f"HiGHS option {name!r} does not take {value!r}")
+
+
+def _apply(highs: Any, settings: MipSettings) -> None:
+    chosen: dict[str, Any] = {}
+    if settings.rel_gap is not None:
+        chosen["mip_rel_gap"] = float(settings.rel_gap)
+    if settings.abs_gap is not None:
+        chosen["mip_abs_gap"] = float(settings.abs_gap)
+    if settings.threads is not None:
+        chosen["threads"] = int(settings.threads)
+    for name, value in (chosen | dict(settings.options or {})).items():
+        set_option(highs, name, value)
+    if settings.log is not None:
+        log = settings.log
+        set_option(highs, "output_flag", True)
+        set_option(highs, "log_to_console", False)
+        highs.cbLogging += lambda event: log(event.message.rstrip("\n"))
+
+
+def _quiet() -> Any:
+    highs = highspy.Highs()
+    set_option(highs, "output_flag", False)
+    return highs
+
+
+def _ok(status: Any, what: str) -> None:
+    if status == highspy.HighsStatus.kError:
+        raise RuntimeError(f"HiGHS refused to {what}")
+
+
+def _codes(statuses: Any) -> Codes:
+    return np.fromiter(map(int, statuses), dtype=np.int8, count=len(statuses))
+
+
+def _pass(
+    highs: Any,
+    matrix: sp.csc_array,
+    row_lower: Floats,
+    row_upper: Floats,
+    col_lower: Floats,
+    col_upper: Floats,
+    cost: Floats,
+    kinds: NDArray[np.int32],
+) -> None:
+    m, n = matrix.shape
+    status = highs.passModel(
+        n,
+        m,
+        matrix.nnz,
+        int(highspy.MatrixFormat.kColwise),
+        int(highspy.ObjSense.kMinimize),
+        0.0,
+        cost,
+        col_lower,
+        col_upper,
+        row_lower,
+        row_upper,
+        matrix.indptr.astype(np.int32),
+        matrix.indices.astype(np.int32),
+        matrix.data,
+        kinds,
+    )
+    _ok(status, "take the model")
