@@ -53,6 +53,14 @@ _CODE_OF = (
 )
 
 
+class _Silent(highspy.Highs):  # type: ignore[misc]
+    """A HiGHS instance that prints no banner when it is made."""
+
+    def enableCallbacks(self) -> None:  # noqa: N802
+        set_option(self, "output_flag", False)
+        super().enableCallbacks()
+
+
 class OptionError(ValueError):
     """HiGHS does not take an option or its value."""
 
@@ -131,7 +139,7 @@ class LinearProgram:
         cost: Floats,
     ) -> None:
         self.m, self.n = matrix.shape
-        self._highs = _quiet()
+        self._highs = _Silent()
         for name, value in (("presolve", "off"), ("solver", "simplex"), ("threads", 1)):
             set_option(self._highs, name, value)
         kinds = np.zeros(self.n, np.int32)
@@ -209,7 +217,7 @@ class LinearProgram:
         pivots = self._highs.getInfo().simplex_iteration_count
         farkas = ray = None
         if status == "unsettled":
-            self.set_cost_for_a_moment(deadline)
+            self._forget_cost_once(deadline)
             status = "infeasible" if self._outcome() == "infeasible" else "unbounded"
         if status == "infeasible":
             _, found, vector = self._highs.getDualRay()
@@ -229,7 +237,7 @@ class LinearProgram:
             ray=ray,
         )
 
-    def set_cost_for_a_moment(self, deadline: Deadline) -> None:
+    def _forget_cost_once(self, deadline: Deadline) -> None:
         """Run once with a zero objective, which tells infeasible from unbounded."""
         kept = self._cost
         self.set_cost(np.zeros(self.n))
@@ -238,8 +246,8 @@ class LinearProgram:
         self._cost = kept
 
     def _run(self, deadline: Deadline) -> str:
-        limit = math.inf if deadline.left == math.inf else deadline.left
-        set_option(self._highs, "time_limit", limit)
+        # HiGHS adds up the time of all runs of an instance and holds the sum against the limit.
+        set_option(self._highs, "time_limit", self._highs.getRunTime() + deadline.left)
         self._highs.run()
         return self._outcome()
 
@@ -297,7 +305,7 @@ def check_settings(settings: MipSettings) -> None:
     OptionError
         Names the option that HiGHS does not take.
     """
-    _apply(_quiet(), settings)
+    _apply(_Silent(), settings)
 
 
 def branch_and_bound(
@@ -330,7 +338,7 @@ def branch_and_bound(
     MipResult
         Infeasible and unbounded are told apart by a run with a zero objective.
     """
-    highs = _quiet()
+    highs = _Silent()
     _apply(highs, settings)
     _pass(highs, matrix, row_lower, row_upper, col_lower, col_upper, cost, kinds)
     if start is not None:
@@ -356,7 +364,7 @@ def branch_and_bound(
 def _run_mip(highs: Any, settings: MipSettings, deadline: Deadline) -> str:
     asked = (settings.options or {}).get("time_limit", math.inf)
     limit = min(float(asked), deadline.left)
-    set_option(highs, "time_limit", highs.getRunTime() + limit if limit < math.inf else limit)
+    set_option(highs, "time_limit", highs.getRunTime() + limit)
     highs.HandleKeyboardInterrupt = True
     highs.run()
     return _OUTCOME[highs.getModelStatus()]
@@ -378,7 +386,7 @@ def conflicting_set(
         Empty where HiGHS finds none in time, or where the relaxation is feasible.
     """
     n = col_lower.size
-    highs = _quiet()
+    highs = _Silent()
     for name, value in (("presolve", "off"), ("iis_strategy", 6), ("threads", 1)):
         set_option(highs, name, value)
     if deadline.left < math.inf:
@@ -392,7 +400,10 @@ def conflicting_set(
     status, found = highs.getIis()
     if status == highspy.HighsStatus.kError or not found.valid_:
         return np.empty(0, np.int64), np.empty(0, np.int64)
-    return np.array(found.row_index_, dtype=np.int64), np.array(found.col_index_, dtype=np.int64)
+    columns = np.array(found.col_index_, dtype=np.int64)
+    free = highspy.IisBoundStatus.kIisBoundStatusFree
+    bounded = np.array([status != int(free) for status in found.col_bound_], dtype=np.bool_)
+    return np.array(found.row_index_, dtype=np.int64), columns[bounded]
 
 
 def set_option(highs: Any, name: str, value: Any) -> None:
@@ -430,12 +441,6 @@ def _apply(highs: Any, settings: MipSettings) -> None:
         set_option(highs, "output_flag", True)
         set_option(highs, "log_to_console", False)
         highs.cbLogging += lambda event: log(event.message.rstrip("\n"))
-
-
-def _quiet() -> Any:
-    highs = highspy.Highs()
-    set_option(highs, "output_flag", False)
-    return highs
 
 
 def _ok(status: Any, what: str) -> None:
