@@ -34,7 +34,6 @@ _OUTCOME = {
     _STATUS.kObjectiveBound: "limit",
     _STATUS.kObjectiveTarget: "limit",
     _STATUS.kInterrupt: "interrupted",
-    _STATUS.kHighsInterrupt: "interrupted",
     _STATUS.kMemoryLimit: "error",
     _STATUS.kUnknown: "error",
     _STATUS.kNotset: "error",
@@ -56,7 +55,7 @@ _CODE_OF = (
 class _Silent(highspy.Highs):  # type: ignore[misc]
     """A HiGHS instance that prints no banner when it is made."""
 
-    def enableCallbacks(self) -> None:  # noqa: N802
+    def enableCallbacks(self) -> None:
         set_option(self, "output_flag", False)
         super().enableCallbacks()
 

@@ -25,17 +25,17 @@ class NumberedNames(Sequence[str]):
     """
 
     def __init__(self, stem: str, count: int) -> None:
-        self.stem, self.count = stem, count
+        self.stem, self.size = stem, count
 
     def __len__(self) -> int:
-        return self.count
+        return self.size
 
     def __getitem__(self, index: Any) -> Any:
         if isinstance(index, slice):
-            return [self[i] for i in range(*index.indices(self.count))]
-        if not -self.count <= index < self.count:
+            return [self[i] for i in range(*index.indices(self.size))]
+        if not -self.size <= index < self.size:
             raise IndexError(index)
-        return f"{self.stem}{index % self.count + 1}"
+        return f"{self.stem}{index % self.size + 1}"
 
 
 class ComponentNames(Sequence[str]):

@@ -106,12 +106,10 @@ class NormalForm:
         part = self.matrix[:, columns]
         place = np.searchsorted(rows, part.indices).astype(part.indices.dtype)
         matrix = sp.csc_array((part.data, place, part.indptr), shape=(rows.size, columns.size))
-        by_row = ("rows", "row_lower", "row_upper", "row_num", "row_den")
-        by_row += ("whole_rows", "whole_sides")
-        by_column = ("columns", "col_lower", "col_upper", "cost", "integer")
-        by_column += ("col_num", "col_den", "whole_bounds")
-        picked = {name: getattr(self, name)[rows] for name in by_row}
-        picked |= {name: getattr(self, name)[columns] for name in by_column}
+        by_row = "rows row_lower row_upper row_num row_den whole_rows whole_sides"
+        by_column = "columns col_lower col_upper cost integer col_num col_den whole_bounds"
+        picked = {name: getattr(self, name)[rows] for name in by_row.split()}
+        picked |= {name: getattr(self, name)[columns] for name in by_column.split()}
         return replace(self, matrix=matrix, **picked)
 
     def x_original(self, x: Floats) -> Floats:
@@ -309,10 +307,10 @@ def _coprime_factors(
         here = slice(start[i], start[i + 1])
         mine = used[here]
         tops, bottoms = num[here][mine].tolist(), den[here][mine].tolist()
-        common = math.lcm(*bottoms)
-        divisor = math.gcd(*(t * (common // b) for t, b in zip(tops, bottoms, strict=True)))
-        fits = common < EXACT and divisor < EXACT
-        row_num[i], row_den[i] = (common, divisor) if fits else (1, 1)
+        multiple = math.lcm(*bottoms)
+        divisor = math.gcd(*(t * (multiple // b) for t, b in zip(tops, bottoms, strict=True)))
+        fits = multiple < EXACT and divisor < EXACT
+        row_num[i], row_den[i] = (multiple, divisor) if fits else (1, 1)
     common = np.gcd(row_num, row_den)
     return row_num // common, row_den // common
 

@@ -59,7 +59,7 @@ def simplest_fraction(value: float) -> Fraction:
     """
     if value == int(value):
         return Fraction(int(value))
-    exact, slack = Fraction(abs(value)), Fraction(float(reading_tolerance(np.float64(value))))
+    exact, slack = Fraction(abs(value)), Fraction(float(reading_tolerance(np.array(value))))
     found = _simplest_between(exact - slack, exact + slack)
     return -found if value < 0 else found
 
