@@ -21,27 +21,28 @@ Floats = NDArray[np.float64]
 Codes = NDArray[np.int8]
 Log = Callable[[str], None]
 
-_STATUS = highspy.HighsModelStatus
+#: Our word for each of HiGHS's, by name: not every version knows all of them.
 _OUTCOME = {
-    _STATUS.kOptimal: "optimal",
-    _STATUS.kModelEmpty: "optimal",
-    _STATUS.kInfeasible: "infeasible",
-    _STATUS.kUnbounded: "unbounded",
-    _STATUS.kUnboundedOrInfeasible: "unsettled",
-    _STATUS.kTimeLimit: "time_limit",
-    _STATUS.kIterationLimit: "pivot_limit",
-    _STATUS.kSolutionLimit: "limit",
-    _STATUS.kObjectiveBound: "limit",
-    _STATUS.kObjectiveTarget: "limit",
-    _STATUS.kInterrupt: "interrupted",
-    _STATUS.kMemoryLimit: "error",
-    _STATUS.kUnknown: "error",
-    _STATUS.kNotset: "error",
-    _STATUS.kLoadError: "error",
-    _STATUS.kModelError: "error",
-    _STATUS.kPresolveError: "error",
-    _STATUS.kSolveError: "error",
-    _STATUS.kPostsolveError: "error",
+    "kOptimal": "optimal",
+    "kModelEmpty": "optimal",
+    "kInfeasible": "infeasible",
+    "kUnbounded": "unbounded",
+    "kUnboundedOrInfeasible": "unsettled",
+    "kTimeLimit": "time_limit",
+    "kIterationLimit": "pivot_limit",
+    "kSolutionLimit": "limit",
+    "kObjectiveBound": "limit",
+    "kObjectiveTarget": "limit",
+    "kInterrupt": "interrupted",
+    "kHighsInterrupt": "interrupted",
+    "kMemoryLimit": "error",
+    "kUnknown": "error",
+    "kNotset": "error",
+    "kLoadError": "error",
+    "kModelError": "error",
+    "kPresolveError": "error",
+    "kSolveError": "error",
+    "kPostsolveError": "error",
 }
 _CODE_OF = (
     highspy.HighsBasisStatus.kLower,
@@ -217,7 +218,7 @@ class LinearProgram:
         farkas = ray = None
         if status == "unsettled":
             self._forget_cost_once(deadline)
-            status = "infeasible" if self._outcome() == "infeasible" else "unbounded"
+            status = "infeasible" if _outcome(self._highs) == "infeasible" else "unbounded"
         if status == "infeasible":
             _, found, vector = self._highs.getDualRay()
             farkas = np.array(vector) if found else None
@@ -248,10 +249,7 @@ class LinearProgram:
         # HiGHS adds up the time of all runs of an instance and holds the sum against the limit.
         set_option(self._highs, "time_limit", self._highs.getRunTime() + deadline.left)
         self._highs.run()
-        return self._outcome()
-
-    def _outcome(self) -> str:
-        return _OUTCOME[self._highs.getModelStatus()]
+        return _outcome(self._highs)
 
 
 @dataclass(frozen=True, eq=False)
@@ -366,7 +364,7 @@ def _run_mip(highs: Any, settings: MipSettings, deadline: Deadline) -> str:
     set_option(highs, "time_limit", highs.getRunTime() + limit)
     highs.HandleKeyboardInterrupt = True
     highs.run()
-    return _OUTCOME[highs.getModelStatus()]
+    return _outcome(highs)
 
 
 def conflicting_set(
@@ -394,7 +392,7 @@ def conflicting_set(
     kinds = np.zeros(n, np.int32)
     _pass(highs, matrix, row_lower, row_upper, col_lower, col_upper, np.zeros(n), kinds)
     highs.run()
-    if highs.getModelStatus() != _STATUS.kInfeasible:
+    if _outcome(highs) != "infeasible":
         return np.empty(0, np.int64), np.empty(0, np.int64)
     status, found = highs.getIis()
     if status == highspy.HighsStatus.kError or not found.valid_:
@@ -440,6 +438,10 @@ def _apply(highs: Any, settings: MipSettings) -> None:
         set_option(highs, "output_flag", True)
         set_option(highs, "log_to_console", False)
         highs.cbLogging += lambda event: log(event.message.rstrip("\n"))
+
+
+def _outcome(highs: Any) -> str:
+    return _OUTCOME[highs.getModelStatus().name]
 
 
 def _ok(status: Any, what: str) -> None:

@@ -1,0 +1,371 @@
+"""The exact check of an answer: whole numbers in, whole-number arithmetic, a yes or a no.
+
+An optimum is proven by a plan and prices that are feasible and complementary (strong
+duality), or by weak duality where the plan lies less than one unit of the objective above
+the bound of the prices. Floats from a solver are only ever guesses at those whole numbers.
+Schrijver (1986), Theory of Linear and Integer Programming, section 7.4.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+import scipy.sparse as sp
+from numpy.typing import NDArray
+
+from .forms.normalise import NormalForm
+from .forms.numbers import EXACT, common_scale, nearby_fraction, whole_numbers
+
+Floats = NDArray[np.float64]
+Whole = NDArray[Any]
+#: Prices of a basis: takes whole costs (n,) and a first guess (m,), returns whole prices (m,).
+BasisPrices = Callable[[Whole, Whole], Whole]
+
+#: Whole prices are sought as multiples of one over at most this number.
+LARGEST_DENOMINATOR = 10**6
+
+
+@dataclass(frozen=True, eq=False)
+class WholeCosts:
+    """Costs as whole numbers over one denominator: cost = numerators / denominator."""
+
+    numerators: Whole
+    denominator: int
+
+
+@dataclass(frozen=True, eq=False)
+class Proof:
+    """What the exact check found.
+
+    Attributes
+    ----------
+    exact : bool
+        Whether the claim holds in exact arithmetic.
+    row_dual : ndarray, shape (m,), float64
+        Prices that prove it (scaled units, minimisation); those given where it failed.
+    reduced_cost : ndarray, shape (n,), float64
+    reason : str
+        Why the check failed; empty where it did not.
+    """
+
+    exact: bool
+    row_dual: Floats
+    reduced_cost: Floats
+    reason: str = ""
+
+
+def whole_costs(normal: NormalForm) -> WholeCosts:
+    """Read the costs of a form (scaled units, minimisation) as whole numbers.
+
+    Examples
+    --------
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> from pyomo_latpath.forms.normalise import normalise
+    >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                               col_upper=1, cost=[0.25, 3])
+    >>> costs = whole_costs(normalise(form))
+    >>> costs.numerators, costs.denominator
+    (array([ 1, 12]), 4)
+    """
+    sign = 1 if normal.form.sense == "min" else -1
+    numerators, denominator = whole_numbers(normal.form.cost[normal.columns])
+    numerators = sign * numerators
+    if (normal.col_num != 1).any() or (normal.col_den != 1).any():
+        common = math.lcm(*np.unique(normal.col_den).tolist())
+        factor = normal.col_num.astype(object) * (common // normal.col_den.astype(object))
+        numerators, denominator = numerators.astype(object) * factor, denominator * common
+    divisor = math.gcd(denominator, *np.unique(numerators).tolist()) if denominator > 1 else 1
+    return WholeCosts(numerators // divisor, denominator // divisor)
+
+
+def plan_holds(normal: NormalForm, x: Floats) -> bool:
+    """Check in exact arithmetic that a plan (scaled units) satisfies every row and bound.
+
+    Integer columns must hold whole numbers; continuous ones are read as simple fractions.
+    """
+    plan, scale = _plan(x)
+    if plan is None or (normal.integer & (np.rint(x) != x)).any():
+        return False
+    if not normal.whole_rows.all():
+        return False
+    activity = _times(normal.matrix, plan)
+    return _within(activity, normal.row_lower, normal.row_upper, scale) and _within(
+        plan, normal.col_lower, normal.col_upper, scale
+    )
+
+
+def prove_optimal(
+    normal: NormalForm,
+    costs: WholeCosts,
+    x: Floats,
+    row_dual: Floats,
+    basis_prices: BasisPrices | None = None,
+) -> Proof:
+    """Check that no plan is cheaper than `x`.
+
+    Parameters
+    ----------
+    normal : NormalForm
+    costs : WholeCosts
+        Of `normal`.
+    x : ndarray, shape (n,), float64
+        The plan, in scaled units.
+    row_dual : ndarray, shape (m,), float64
+        A guess at the prices, in scaled units, minimisation.
+    basis_prices : callable, optional
+        Sharpens a guess to the exact prices of the basis behind it.
+
+    Returns
+    -------
+    Proof
+    """
+    guess = Proof(False, row_dual, normal.cost - normal.matrix.T @ row_dual)
+    if not plan_holds(normal, x):
+        return _failed(guess, "the plan does not satisfy every row exactly")
+    plan, scale = _plan(x)
+    assert plan is not None
+    for prices, multiple in _price_guesses(costs, row_dual, basis_prices):
+        reduced = costs.numerators * multiple - _times(normal.matrix.T, prices)
+        if _complementary(normal, plan, scale, prices, reduced) or _gap_closed(
+            normal, costs, plan, scale, prices, reduced, multiple
+        ):
+            unit = costs.denominator * multiple
+            return Proof(True, _quotient(prices, unit), _quotient(reduced, unit))
+    return _failed(guess, "no exact prices were found that prove the plan optimal")
+
+
+def prove_infeasible(normal: NormalForm, farkas: Floats | None) -> bool:
+    """Check that row multipliers ask for more than any point within bounds can give.
+
+    Farkas' lemma, Schrijver (1986), section 7.3: no x satisfies the rows if, for some y, the
+    largest y A x over the bounds lies below what the sides of the rows with y != 0 ask.
+    """
+    if farkas is None or not normal.whole_rows.all():
+        return False
+    sides = _finite_as_whole(normal.row_lower, normal.row_upper)
+    bounds = _finite_as_whole(normal.col_lower, normal.col_upper)
+    for multipliers in _whole_directions(farkas):
+        for y in (multipliers, -multipliers):
+            asked = _support(-y, sides)
+            given = _support(_times(normal.matrix.T, y), bounds)
+            if asked is not None and given is not None and given < -asked:
+                return True
+    return False
+
+
+def prove_unbounded(normal: NormalForm, costs: WholeCosts, ray: Floats | None) -> bool:
+    """Check that a direction stays feasible for ever and improves the objective.
+
+    Together with one feasible plan this proves the model unbounded.
+    """
+    if ray is None or not normal.whole_rows.all():
+        return False
+    for direction in _whole_directions(ray):
+        moves = _times(normal.matrix, direction)
+        stays = all(
+            not ((np.isfinite(low) & (move < 0)) | (np.isfinite(high) & (move > 0))).any()
+            for move, low, high in (
+                (moves, normal.row_lower, normal.row_upper),
+                (direction, normal.col_lower, normal.col_upper),
+            )
+        )
+        if stays and _dot(costs.numerators, direction) < 0:
+            return True
+    return False
+
+
+def exact_objective(costs: WholeCosts, x: Floats) -> Fraction | None:
+    """Objective of a plan (scaled units, minimisation), exact; None without simple values."""
+    plan, scale = _plan(x)
+    if plan is None:
+        return None
+    return Fraction(_dot(costs.numerators, plan), costs.denominator * scale)
+
+
+def _failed(guess: Proof, reason: str) -> Proof:
+    return Proof(False, guess.row_dual, guess.reduced_cost, reason)
+
+
+def _plan(x: Floats) -> tuple[Whole | None, int]:
+    """A plan as whole numbers over one small denominator, or None."""
+    whole = np.rint(x)
+    if not np.isfinite(x).all() or np.abs(whole).max(initial=0.0) >= EXACT:
+        return None, 1
+    odd = np.flatnonzero(whole != x)
+    if not odd.size:
+        return whole.astype(np.int64), 1
+    near = [nearby_fraction(float(v), 1e-9 * max(1.0, abs(float(v)))) for v in x[odd]]
+    scale = common_scale(near)
+    if scale > 10**9:
+        return None, 1
+    plan = whole.astype(object) * scale
+    plan[odd] = [int(fraction * scale) for fraction in near]
+    return plan, scale
+
+
+def _price_guesses(
+    costs: WholeCosts, row_dual: Floats, basis_prices: BasisPrices | None
+) -> Iterator[tuple[Whole, int]]:
+    """Candidates for whole prices and the multiple that they are of the costs' unit."""
+    scaled = row_dual * float(costs.denominator)
+    if np.isfinite(scaled).all():
+        yield _rounded(scaled), 1
+        if basis_prices is not None:
+            yield basis_prices(costs.numerators, _rounded(scaled)), 1
+        near = [nearby_fraction(v, 1e-7 * max(1.0, abs(v))) for v in np.unique(scaled).tolist()]
+        multiple = common_scale(near)
+        if 1 < multiple <= LARGEST_DENOMINATOR:
+            yield _rounded(scaled * multiple), multiple
+
+
+def _rounded(values: Floats) -> Whole:
+    if np.abs(values).max(initial=0.0) < 2.0**62:
+        return np.rint(values).astype(np.int64)
+    return np.array([round(value) for value in values.tolist()], dtype=object)
+
+
+def _quotient(values: Whole, divisor: int) -> Floats:
+    """Correctly rounded where both parts are exact floats."""
+    if values.dtype == object or divisor >= EXACT:
+        return np.array([value / divisor for value in values.tolist()], dtype=np.float64)
+    return values / float(divisor)
+
+
+def _complementary(
+    normal: NormalForm, plan: Whole, scale: int, prices: Whole, reduced: Whole
+) -> bool:
+    """Strong duality: a price is positive only at a lower limit, negative only at an upper."""
+    activity = _times(normal.matrix, plan)
+    return all(
+        not ((price > 0) & ~_meets(value, low, scale)).any()
+        and not ((price < 0) & ~_meets(value, high, scale)).any()
+        for price, value, low, high in (
+            (prices, activity, normal.row_lower, normal.row_upper),
+            (reduced, plan, normal.col_lower, normal.col_upper),
+        )
+    )
+
+
+def _gap_closed(
+    normal: NormalForm,
+    costs: WholeCosts,
+    plan: Whole,
+    scale: int,
+    prices: Whole,
+    reduced: Whole,
+    multiple: int,
+) -> bool:
+    """Weak duality: the plan lies less than one unit of the objective above the bound."""
+    if (~normal.integer & (costs.numerators != 0)).any():
+        return False
+    unit = math.gcd(*np.unique(costs.numerators).tolist())
+    rows = _support(-prices, _finite_as_whole(normal.row_lower, normal.row_upper))
+    columns = _support(-reduced, _finite_as_whole(normal.col_lower, normal.col_upper))
+    if rows is None or columns is None:
+        return False
+    value = Fraction(_dot(costs.numerators, plan), scale)
+    return value + Fraction(rows + columns) / multiple < unit
+
+
+@dataclass(frozen=True, eq=False)
+class _Limits:
+    """Lower and upper limits as whole numbers over one denominator, with flags for infinite."""
+
+    low: Whole
+    high: Whole
+    no_low: NDArray[np.bool_]
+    no_high: NDArray[np.bool_]
+    scale: int
+
+
+def _finite_as_whole(lower: Floats, upper: Floats) -> _Limits:
+    no_low, no_high = ~np.isfinite(lower), ~np.isfinite(upper)
+    both = np.concatenate([np.where(no_low, 0.0, lower), np.where(no_high, 0.0, upper)])
+    whole, scale = whole_numbers(both)
+    return _Limits(whole[: lower.size], whole[lower.size :], no_low, no_high, scale)
+
+
+def _support(direction: Whole, limits: _Limits) -> Fraction | None:
+    """Largest direction . v over the box of v; None where it is infinite."""
+    up, down = direction > 0, direction < 0
+    if (up & limits.no_high).any() or (down & limits.no_low).any():
+        return None
+    best = np.where(up, limits.high, np.where(down, limits.low, 0))
+    return Fraction(_dot(direction, best), limits.scale)
+
+
+def _within(values: Whole, lower: Floats, upper: Floats, scale: int) -> bool:
+    limits = _finite_as_whole(lower, upper)
+    scaled = _product(values, limits.scale)
+    return not (
+        (~limits.no_low & (scaled < _product(limits.low, scale)))
+        | (~limits.no_high & (scaled > _product(limits.high, scale)))
+    ).any()
+
+
+def _meets(values: Whole, limit: Floats, scale: int) -> NDArray[np.bool_]:
+    """Where values / scale equals a finite limit."""
+    finite = np.isfinite(limit)
+    whole, common = whole_numbers(np.where(finite, limit, 0.0))
+    return np.asarray(finite & (_product(values, common) == _product(whole, scale)), dtype=np.bool_)
+
+
+def _product(values: Whole, factor: int) -> Whole:
+    if factor == 1:
+        return values
+    size = max((abs(int(values.max())), abs(int(values.min())))) if values.size else 0
+    if values.dtype != object and size * abs(factor) < 2**62:
+        return values * factor
+    return values.astype(object) * factor
+
+
+def _dot(left: Whole, right: Whole) -> int:
+    """Exact inner product."""
+    used = np.flatnonzero((left != 0) & (right != 0))
+    left, right = left[used], right[used]
+    if left.dtype != object and right.dtype != object:
+        reach = float(np.abs(left).astype(np.float64) @ np.abs(right).astype(np.float64))
+        if reach < 2.0**62:
+            return int(left @ right)
+    return sum(a * b for a, b in zip(left.tolist(), right.tolist(), strict=True))
+
+
+def _times(matrix: sp.sparray, vector: Whole) -> Whole:
+    """Exact product of a matrix of whole floats with a whole vector."""
+    size = float(np.abs(vector).max(initial=0))
+    reach = abs(matrix).max() * size * max(matrix.shape[1], 1) if matrix.nnz else 0.0
+    if vector.dtype != object or size < EXACT:
+        if reach < EXACT:
+            return (matrix @ vector.astype(np.float64)).astype(np.int64)
+        row_reach = (abs(matrix) @ np.abs(vector).astype(np.float64)).max(initial=0.0)
+        if row_reach < EXACT:
+            return (matrix @ vector.astype(np.float64)).astype(np.int64)
+    by_row = sp.csr_array(matrix)
+    total = np.zeros(by_row.shape[0], dtype=object)
+    full = np.flatnonzero(np.diff(by_row.indptr) > 0)
+    if full.size:
+        entries = by_row.data.astype(np.int64).astype(object)
+        terms = entries * vector.astype(object)[by_row.indices]
+        total[full] = np.add.reduceat(terms, by_row.indptr[full])
+    return total
+
+
+def _whole_directions(direction: Floats) -> Iterator[Whole]:
+    """Whole multiples of a float direction: in units of its smallest entry, then as fractions."""
+    size = np.abs(direction).max(initial=0.0)
+    if not np.isfinite(size) or size == 0:
+        return
+    clean = np.where(np.abs(direction) < 1e-9 * size, 0.0, direction)
+    smallest = np.abs(clean[clean != 0]).min()
+    yield _rounded(clean / smallest)
+    distinct, back = np.unique(clean / size, return_inverse=True)
+    near = [nearby_fraction(value, 1e-9) for value in distinct.tolist()]
+    scale = common_scale(near)
+    if scale < 10**15:
+        whole = np.array([int(fraction * scale) for fraction in near], dtype=object)
+        yield whole[back]
