@@ -217,6 +217,7 @@ def _price_guesses(
         yield _rounded(scaled), 1
         if basis_prices is not None:
             yield basis_prices(costs.numerators, _rounded(scaled)), 1
+            return
         near = [nearby_fraction(v, 1e-7 * max(1.0, abs(v))) for v in np.unique(scaled).tolist()]
         multiple = common_scale(near)
         if 1 < multiple <= LARGEST_DENOMINATOR:

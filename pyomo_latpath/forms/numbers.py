@@ -19,6 +19,8 @@ EXACT = 2.0**53
 SNAP = 1e-9
 #: Distinct values read one by one at most; what is beyond stays unread.
 MOST_READ_SINGLY = 20_000
+#: The same where all values must share one denominator, which many odd ones never do.
+MOST_ODD_COSTS = 50
 
 
 def reading_tolerance(values: Floats) -> Floats:
@@ -42,9 +44,6 @@ def reading_tolerance(values: Floats) -> Floats:
 def simplest_fraction(value: float) -> Fraction:
     """Return the rational with the smallest denominator within reading tolerance of `value`.
 
-    Found on the Stern-Brocot tree, by the continued fraction that both ends of the interval
-    share.
-
     Parameters
     ----------
     value : float
@@ -59,13 +58,14 @@ def simplest_fraction(value: float) -> Fraction:
     """
     if value == int(value):
         return Fraction(int(value))
-    exact, slack = Fraction(abs(value)), Fraction(float(reading_tolerance(np.array(value))))
-    found = _simplest_between(exact - slack, exact + slack)
-    return -found if value < 0 else found
+    return nearby_fraction(value, float(reading_tolerance(np.array(value))))
 
 
 def nearby_fraction(value: float, tolerance: float) -> Fraction:
-    """Return the simplest rational within `tolerance` (absolute) of `value`.
+    """Return the rational with the smallest denominator within `tolerance` of `value`.
+
+    Found on the Stern-Brocot tree, by the continued fraction that both ends of the interval
+    share.
 
     Examples
     --------
@@ -74,33 +74,39 @@ def nearby_fraction(value: float, tolerance: float) -> Fraction:
     """
     if abs(value) <= tolerance:
         return Fraction(0)
-    exact, slack = Fraction(abs(value)), Fraction(tolerance)
-    found = _simplest_between(exact - slack, exact + slack)
-    return -found if value < 0 else found
-
-
-def _simplest_between(low: Fraction, high: Fraction) -> Fraction:
-    """Simplest rational in [low, high] for 0 < low <= high."""
+    top, bottom = abs(value).as_integer_ratio()
+    slack, unit = tolerance.as_integer_ratio()
+    low, high = top * unit - slack * bottom, top * unit + slack * bottom
+    low_den = high_den = bottom * unit
     whole = []
     while True:
-        floor = low.numerator // low.denominator
-        if floor == low or floor + 1 <= high:
-            found = Fraction(floor if floor == low else floor + 1)
+        floor = low // low_den
+        if floor * low_den == low or (floor + 1) * high_den <= high:
+            found, found_den = (floor if floor * low_den == low else floor + 1), 1
             break
         whole.append(floor)
-        low, high = 1 / (high - floor), 1 / (low - floor)
+        low, low_den, high, high_den = (
+            high_den,
+            high - floor * high_den,
+            low_den,
+            low - floor * low_den,
+        )
     for floor in reversed(whole):
-        found = floor + 1 / found
-    return found
+        found, found_den = floor * found + found_den, found
+    return Fraction(-found if value < 0 else found, found_den)
 
 
-def read_fractions(values: Floats) -> tuple[Integers, Integers, NDArray[np.bool_]]:
+def read_fractions(
+    values: Floats, most_odd: int = MOST_READ_SINGLY
+) -> tuple[Integers, Integers, NDArray[np.bool_]]:
     """Read an array of floats as fractions.
 
     Parameters
     ----------
     values : ndarray, float64
         Finite.
+    most_odd : int
+        So many distinct values with more than a few decimal places are looked at.
 
     Returns
     -------
@@ -122,7 +128,7 @@ def read_fractions(values: Floats) -> tuple[Integers, Integers, NDArray[np.bool_
     back = back.reshape(values.shape)
     num, den, read = _read_decimals(distinct)
     odd = np.flatnonzero(~read)
-    if odd.size <= MOST_READ_SINGLY:
+    if odd.size <= most_odd:
         for k in odd:
             fraction = simplest_fraction(float(distinct[k]))
             if abs(fraction.numerator) < EXACT and fraction.denominator < EXACT:
@@ -200,10 +206,9 @@ def whole_numbers(values: Floats) -> tuple[NDArray[Any], int]:
     >>> whole_numbers(np.array([0.5, 2.25]))
     (array([2, 9]), 4)
     """
-    num, den, read = read_fractions(values)
+    num, den, read = read_fractions(values, most_odd=MOST_ODD_COSTS)
     if read.all():
-        distinct = np.unique(den)
-        common = math.lcm(*distinct.tolist()) if distinct.size <= 1000 else 1 << 64
+        common = math.lcm(*np.unique(den).tolist())
         if common <= 10**12:
             size = float(np.abs(values).max(initial=0.0)) * common
             if size < EXACT:

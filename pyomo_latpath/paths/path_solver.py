@@ -1,0 +1,202 @@
+"""The path solver: from a first vertex along whole vertices to a proven optimum."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..deadline import Deadline
+from ..forms.normalise import NormalForm
+from ..highs import Basis, LinearProgram
+from ..proof import Proof, WholeCosts, prove_optimal
+from .box import Box, box_of
+from .face_fixing import Walk, face_fixing_walk, step_bound
+from .vertex_oracle import (
+    LARGEST_HIGHS_COST,
+    LARGEST_TABLEAU_COST,
+    HighsBasis,
+    Tableau,
+    Vertex,
+    resting,
+)
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class PathResult:
+    """Outcome of the path solver on a block (scaled units, minimisation).
+
+    Attributes
+    ----------
+    status : str
+        'optimal', 'infeasible', 'unbounded', 'time_limit' or 'error'.
+    x : ndarray, shape (n,), float64
+    proof : Proof
+    ray, farkas : ndarray or None
+    walk : Walk
+    box : Box
+    engine : str
+        'highs' or 'tableau'.
+    steps, pivots : int
+    exact_steps : bool
+        Whether `steps` is exact or an upper count.
+    note : str
+        Anything out of the ordinary, one sentence.
+    """
+
+    status: str
+    x: Floats
+    proof: Proof
+    ray: Floats | None
+    farkas: Floats | None
+    walk: Walk
+    box: Box
+    engine: str
+    steps: int
+    pivots: int
+    exact_steps: bool
+    note: str
+
+
+def walk_to_optimum(
+    normal: NormalForm, costs: WholeCosts, deadline: Deadline, start: Floats | None = None
+) -> PathResult:
+    """Solve a block whose vertices are whole.
+
+    Parameters
+    ----------
+    normal : NormalForm
+        The block.
+    costs : WholeCosts
+        Its costs.
+    deadline : Deadline
+    start : ndarray, shape (n,), float64, optional
+        A whole feasible plan (scaled units) to walk from; without one the first vertex is
+        the dual simplex's at the costs, rounded where they are large.
+
+    Returns
+    -------
+    PathResult
+
+    Examples
+    --------
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> from pyomo_latpath.forms.normalise import normalise
+    >>> from pyomo_latpath.proof import whole_costs
+    >>> normal = normalise(LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1,
+    ...                                           col_lower=0, col_upper=1, cost=[5, 3]))
+    >>> result = walk_to_optimum(normal, whole_costs(normal), Deadline(None))
+    >>> result.x, result.proof.exact
+    (array([0., 1.]), True)
+    """
+    box = box_of(normal)
+    first = None if start is None else vertex_at_least_as_good(normal, start, deadline)
+    oracle, largest = _engine(normal, box, first)
+    proofs: list[Proof] = []
+
+    def optimal(vertex: Vertex) -> bool:
+        guess = vertex.row_dual / float(costs.denominator)
+        proofs.append(prove_optimal(normal, costs, vertex.x, guess, oracle.basis_prices))
+        return proofs[-1].exact
+
+    walk = None
+    if first is None or box.total is None:
+        # Without a box the walk might run away at rounded costs where it does not at true ones.
+        walk = _at_true_costs(normal, costs, box, oracle, optimal, largest, deadline)
+    if walk is None or (walk.vertex.status == "optimal" and not walk.settled and box.total):
+        walk = face_fixing_walk(
+            normal,
+            costs.numerators,
+            box,
+            oracle,
+            optimal,
+            largest=largest,
+            stride=first is None,
+            deadline=deadline,
+        )
+    vertex = walk.vertex
+    if vertex.status == "pivot_limit":
+        again = walk_to_optimum(normal, costs, deadline)
+        return replace(again, note="the walk from the start plan was lost among degenerate pivots")
+    unproven = Proof(False, vertex.row_dual, vertex.reduced_cost, "no optimum was reached")
+    return PathResult(
+        status=vertex.status,
+        x=vertex.x,
+        proof=proofs[-1] if proofs else unproven,
+        ray=vertex.ray,
+        farkas=vertex.farkas,
+        walk=walk,
+        box=box,
+        engine=oracle.engine,
+        steps=oracle.steps,
+        pivots=oracle.pivots,
+        exact_steps=oracle.exact_steps or oracle.steps == 0,
+        note="" if walk.settled or not proofs else proofs[-1].reason,
+    )
+
+
+def vertex_at_least_as_good(
+    normal: NormalForm, start: Floats, deadline: Deadline
+) -> tuple[Basis, Floats] | None:
+    """Move from a feasible point to a vertex that is no dearer.
+
+    The smallest face around the point has a vertex that is best on it; rows and bounds that
+    are tight at the point stay so.
+
+    Returns
+    -------
+    basis : Basis
+    x : ndarray, shape (n,), float64
+        None in place of both where the face is unbounded or the time is up.
+    """
+    activity = normal.matrix @ start
+    at_low, at_high = activity == normal.row_lower, activity == normal.row_upper
+    down, up = start == normal.col_lower, start == normal.col_upper
+    face = LinearProgram(
+        normal.matrix,
+        np.where(at_high, normal.row_upper, normal.row_lower),
+        np.where(at_low, normal.row_lower, normal.row_upper),
+        np.where(up, normal.col_upper, normal.col_lower),
+        np.where(down, normal.col_lower, normal.col_upper),
+        normal.cost,
+    )
+    result = face.solve(deadline=deadline)
+    if result.status != "optimal":
+        return None
+    x = np.rint(result.x)
+    held = face.basis()
+    return Basis(
+        resting(held.col_status, x, normal.col_lower, normal.col_upper),
+        resting(held.row_status, normal.matrix @ x, normal.row_lower, normal.row_upper),
+    ), x
+
+
+def _engine(
+    normal: NormalForm, box: Box, first: tuple[Basis, Floats] | None
+) -> tuple[HighsBasis | Tableau, int]:
+    """The engine that serves as oracle, and the largest costs it takes as they are."""
+    if first is None:
+        return HighsBasis(normal), LARGEST_HIGHS_COST
+    basis, x = first
+    if Tableau.fits(normal) and box.total is not None:
+        return Tableau(normal, basis, x), LARGEST_TABLEAU_COST
+    return HighsBasis(normal, basis), LARGEST_HIGHS_COST
+
+
+def _at_true_costs(
+    normal: NormalForm,
+    costs: WholeCosts,
+    box: Box,
+    oracle: HighsBasis | Tableau,
+    optimal: Callable[[Vertex], bool],
+    largest: int,
+    deadline: Deadline,
+) -> Walk:
+    """Let the oracle go to an optimum of the true costs, as far as it can tell them apart."""
+    vertex = oracle.optimise(costs.numerators, deadline)
+    settled = vertex.status == "optimal" and optimal(vertex)
+    return Walk(vertex, settled, 1, 1, 0, step_bound(normal, costs.numerators, box, largest))
