@@ -1,0 +1,160 @@
+"""The branch-and-bound route of one part: plan, bound, and prices on request."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from .answers import PartAnswer, without_plan
+from .deadline import Deadline
+from .forms.linear_form import Floats, LinearForm
+from .forms.normalise import NormalForm
+from .highs import LinearProgram, LpResult, MipSettings, branch_and_bound
+from .integrality.finding import BlockFinding
+from .proof import prove_optimal, whole_costs
+
+
+def branch_part(
+    part: NormalForm,
+    findings: tuple[BlockFinding, ...],
+    settings: MipSettings,
+    deadline: Deadline,
+    *,
+    relaxation: LpResult | None = None,
+    start: Floats | None = None,
+    fixed_plan_prices: bool = False,
+) -> PartAnswer:
+    """Solve a part by HiGHS's branch and bound.
+
+    Parameters
+    ----------
+    part : NormalForm
+    findings : tuple of BlockFinding
+        Passed on.
+    settings : MipSettings
+    deadline : Deadline
+    relaxation : LpResult, optional
+        Of the part; its prices may prove the plan optimal, its objective bounds the plan's.
+    start : ndarray, shape (n,), optional
+        A plan to begin with.
+    fixed_plan_prices : bool
+        Price the linear program that is left when integer columns are held at the plan.
+
+    Returns
+    -------
+    PartAnswer
+        Whole numbers are rounded where every row still holds.
+    """
+    result = branch_and_bound(
+        part.matrix,
+        part.row_lower,
+        part.row_upper,
+        part.col_lower,
+        part.col_upper,
+        part.cost,
+        kinds_of(part),
+        settings,
+        deadline,
+        start,
+    )
+    status = "optimal" if result.status == "limit" else result.status
+    status = "error" if status == "pivot_limit" else status
+    if result.x is None or status == "unbounded":
+        return without_plan(part, status, "highs", findings)
+    x = _rounded(part, result.x)
+    bound = result.bound
+    if relaxation is not None:
+        bound = max(bound, relaxation.objective)
+    exact = relaxation is not None and _relaxation_proves(part, x, relaxation)
+    m, n = part.matrix.shape
+    prices = (np.full(m, np.nan), np.full(n, np.nan))
+    continuous = not kinds_of(part).any()
+    priced = _prices_of_fixed_plan(part, x, deadline) if fixed_plan_prices or continuous else None
+    return PartAnswer(
+        normal=part,
+        status=status,
+        route="highs",
+        findings=findings,
+        x=x,
+        bound=bound,
+        exact=exact,
+        row_dual=prices[0] if priced is None else priced[0],
+        reduced_cost=prices[1] if priced is None else priced[1],
+        prices="none" if priced is None else "true" if continuous else "fixed plan",
+    )
+
+
+def kinds_of(part: NormalForm) -> NDArray[np.int32]:
+    """HiGHS's codes: 0 continuous, 1 integer, 2 semicontinuous, 3 semi-integer."""
+    semicontinuous = part.form.semicontinuous[part.columns]
+    return (part.integer + 2 * semicontinuous).astype(np.int32)
+
+
+def largest_violation(form: LinearForm, x: Floats) -> float:
+    """Largest amount by which a plan misses a row, a bound or a declaration of the model.
+
+    Parameters
+    ----------
+    form : LinearForm
+    x : ndarray, shape (n,), float64
+
+    Examples
+    --------
+    >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                               col_upper=1, cost=0)
+    >>> largest_violation(form, np.array([0.75, 0.5]))
+    0.25
+    """
+    activity = form.matrix @ x
+    off = form.semicontinuous & (x == 0.0)
+    missed = [
+        form.row_lower - activity,
+        activity - form.row_upper,
+        np.where(off, 0.0, form.col_lower - x),
+        np.where(off, 0.0, x - form.col_upper),
+        np.abs(x - np.rint(x))[form.integer],
+    ]
+    return max(0.0, *(float(values.max(initial=0.0)) for values in missed))
+
+
+def _rounded(part: NormalForm, x: Floats) -> Floats:
+    """Round whole columns where every row still holds."""
+    near = np.where(part.integer, np.rint(x), x)
+    activity = part.matrix @ near
+    slack = 1e-9 * np.maximum(1.0, np.abs(activity))
+    holds = (activity >= part.row_lower - slack) & (activity <= part.row_upper + slack)
+    if holds.all():
+        return near
+    worse = np.maximum(part.row_lower - activity, activity - part.row_upper).max(initial=0.0)
+    before = part.matrix @ x
+    was = np.maximum(part.row_lower - before, before - part.row_upper).max(initial=0.0)
+    return near if worse <= max(was, 1e-9) else x
+
+
+def _relaxation_proves(part: NormalForm, x: Floats, relaxation: LpResult) -> bool:
+    """Whether the prices of the relaxation alone prove the plan optimal."""
+    value = float(part.cost @ x)
+    if value > relaxation.objective + max(1.0, abs(value)):
+        return False
+    return prove_optimal(part, whole_costs(part), x, relaxation.row_dual).exact
+
+
+def _prices_of_fixed_plan(
+    part: NormalForm, x: Floats, deadline: Deadline
+) -> tuple[Floats, Floats] | None:
+    """Prices of the linear program with integer columns held at the plan, on a copy."""
+    held = kinds_of(part) > 0
+    lp = LinearProgram(
+        part.matrix,
+        part.row_lower,
+        part.row_upper,
+        np.where(held, x, part.col_lower),
+        np.where(held, x, part.col_upper),
+        part.cost,
+    )
+    result = lp.solve(deadline=deadline)
+    if result.status != "optimal" or not math.isfinite(result.objective):
+        return None
+    return result.row_dual, result.reduced_cost

@@ -1,0 +1,415 @@
+"""Routing: each block to the path solver or to branch and bound, and the answers merged.
+
+| block                  | its relaxation            | route | how the answer is checked           |
+|------------------------|---------------------------|-------|-------------------------------------|
+| certified              | whole, by the certificate | path  | exact prices                        |
+| not certified          | optimum is whole          | path  | exact prices, or within tolerance   |
+| not certified          | another optimum is whole  | path  | exact prices, or within tolerance   |
+| not certified          | optimum is fractional     | highs | violations recomputed               |
+| semicontinuous columns | not looked at             | highs | violations recomputed               |
+
+A whole optimum of the relaxation is an optimum of the model, whatever other vertices look
+like; so every block without a certificate first gets its relaxation's optimum at the true
+objective, and that vertex is also the first sample of its verdict.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from .answers import Merged, PartAnswer, merge, walk_report, without_plan
+from .blame import blame, blame_conflict
+from .branching import branch_part, largest_violation
+from .deadline import Deadline
+from .forms.blocks import Block, blocks_of
+from .forms.linear_form import Floats, LinearForm
+from .forms.normalise import NormalForm, normalise
+from .highs import LinearProgram, LpResult, MipSettings, check_settings
+from .integrality.assess import certify, proven_finding, sampled_finding
+from .integrality.finding import BlockFinding, Finding
+from .paths.optimal_face import is_whole, whole_optimum
+from .paths.path_solver import PathResult, walk_to_optimum
+from .proof import Proof, plan_holds, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
+from .solution import RouteReport, Solution
+from .why import why
+
+#: Share of the time spent so far that sampling for a verdict may add, and samples at most.
+SAMPLING_SHARE, MOST_SAMPLES = 0.1, 32
+#: Share of its relaxation's time that the search of the optimal face may take, and a floor.
+FACE_SHARE, FACE_SECONDS = 1.0, 0.02
+#: Share of the time limit that the search for certificates may take.
+CERTIFY_SHARE = 0.5
+
+
+@dataclass(frozen=True)
+class _Request:
+    """What the caller asked, checked."""
+
+    form: LinearForm
+    start: Floats | None
+    samples: int | None
+    seed: int
+    settings: MipSettings
+    fixed_plan_prices: bool
+    deadline: Deadline
+    clock: _Clock
+
+
+class _Clock:
+    """Seconds by stage."""
+
+    def __init__(self, compile_seconds: float) -> None:
+        self.begun = time.perf_counter()
+        self.seconds = {"compile": compile_seconds, "assess": 0.0, "solve": 0.0, "proof": 0.0}
+
+    @property
+    def total(self) -> float:
+        return time.perf_counter() - self.begun
+
+    def spend(self, stage: str, since: float) -> None:
+        self.seconds[stage] += time.perf_counter() - since
+
+
+def solve(
+    form: LinearForm,
+    *,
+    start: ArrayLike | None = None,
+    samples: int | None = None,
+    time_limit: float | None = None,
+    rel_gap: float | None = None,
+    abs_gap: float | None = None,
+    threads: int | None = None,
+    seed: int = 0,
+    highs_options: Mapping[str, Any] | None = None,
+    fixed_plan_prices: bool = False,
+    log: Callable[[str], None] | None = None,
+    compile_seconds: float = 0.0,
+) -> Solution:
+    """Solve a form by the route that its integrality allows.
+
+    Parameters
+    ----------
+    form : LinearForm
+    start : array_like, shape (n,), optional
+        A whole feasible plan; the path solver walks from there.
+    samples : int, optional
+        Vertices sampled for the verdict on a block without a certificate; as many as fit in a
+        tenth of the time spent so far, at most 32, when not given.
+    time_limit : float, optional
+        Seconds for all stages together.
+    rel_gap, abs_gap : float, optional
+        Gaps at which branch and bound may stop; HiGHS's own when not given.
+    threads : int, optional
+        Threads of branch and bound.
+    seed : int
+        Of the vertex sampler.
+    highs_options : mapping, optional
+        Further options of branch and bound, by HiGHS's names.
+    fixed_plan_prices : bool
+        On the HiGHS route, price the linear program that is left when the integer columns are
+        held at the plan found.
+    log : callable, optional
+        Takes HiGHS's log, line by line.
+    compile_seconds : float
+        Spent before; reported.
+
+    Returns
+    -------
+    Solution
+
+    Raises
+    ------
+    ValueError
+        For a start that is not a whole feasible plan (names the row or column), a negative
+        time limit or number of samples, or an option that HiGHS refuses (`OptionError`).
+
+    Examples
+    --------
+    >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                               col_upper=1, cost=[2, 3])
+    >>> solution = solve(form)
+    >>> solution.status, solution.x, solution.report.route, solution.report.proof
+    ('optimal', array([1., 0.]), 'path', 'exact')
+    """
+    clock = _Clock(compile_seconds)
+    if time_limit is not None and not time_limit >= 0:
+        raise ValueError(f"time_limit is {time_limit}; it must be a number of seconds from 0 on")
+    if samples is not None and samples < 0:
+        raise ValueError(f"samples is {samples}; it must be 0 or more")
+    settings = MipSettings(rel_gap, abs_gap, threads, highs_options, log)
+    check_settings(settings)
+    request = _Request(
+        form=form,
+        start=None if start is None else feasible_start(form, start),
+        samples=samples,
+        seed=seed,
+        settings=settings,
+        fixed_plan_prices=fixed_plan_prices,
+        deadline=Deadline(time_limit),
+        clock=clock,
+    )
+    since = time.perf_counter()
+    normal = normalise(form)
+    if normal.conflict is not None:
+        clock.spend("assess", since)
+        return _rounded_away(request, normal)
+    blocks = blocks_of(normal)
+    if form.semicontinuous.any():
+        parts = [branch_part(normal, (), request.settings, request.deadline)]
+        return _report(request, normal, parts)
+    certificates = certify(normal, blocks, _certify_deadline(request.deadline, time_limit))
+    clock.spend("assess", since)
+    proven = [k for k, found in enumerate(certificates) if found is not None]
+    parts = []
+    if proven:
+        findings = tuple(proven_finding(normal, blocks[k], certificates[k]) for k in proven)
+        parts.append(_by_path(request, _union(normal, [blocks[k] for k in proven]), findings))
+    for block, found in zip(blocks, certificates, strict=True):
+        if any(part.status == "infeasible" for part in parts):
+            break
+        if found is None:
+            part_of = normal.restrict(block.rows, block.columns)
+            parts.append(_by_relaxation(request, part_of))
+    return _report(request, normal, parts)
+
+
+def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
+    """Check that a start is a whole feasible plan.
+
+    Raises
+    ------
+    ValueError
+        Names the first column or row that is missed, and by how much.
+    """
+    x = np.asarray(start, dtype=np.float64)
+    if x.shape != (form.shape[1],):
+        raise ValueError(f"the start has shape {x.shape}; it needs {form.shape[1]} values")
+    bad = ~np.isfinite(x)
+    bad |= form.integer & (np.abs(x - np.rint(x)) > 1e-6)
+    if bad.any():
+        j = int(np.argmax(bad))
+        raise ValueError(
+            f"the start has the value {x[j]:g} at column {form.col_names[j]!r}, "
+            "which must be a whole number"
+        )
+    x = np.where(form.integer, np.rint(x), x)
+    for kind, names, value, low, high in (
+        ("column", form.col_names, x, form.col_lower, form.col_upper),
+        ("row", form.row_names, form.matrix @ x, form.row_lower, form.row_upper),
+    ):
+        slack = 1e-6 * np.maximum(1.0, np.abs(value))
+        missed = (value < low - slack) | (value > high + slack)
+        if missed.any():
+            i = int(np.argmax(missed))
+            raise ValueError(
+                f"the start is not feasible: {kind} {names[i]!r} is at {value[i]:g}, outside "
+                f"[{low[i]:g}, {high[i]:g}]"
+            )
+    return x
+
+
+def _certify_deadline(deadline: Deadline, time_limit: float | None) -> Deadline:
+    return deadline if time_limit is None else deadline.within(CERTIFY_SHARE * time_limit)
+
+
+def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
+    rows = np.sort(np.concatenate([block.rows for block in blocks]))
+    columns = np.sort(np.concatenate([block.columns for block in blocks]))
+    return normal.restrict(rows, columns)
+
+
+def _by_path(request: _Request, part: NormalForm, findings: tuple[BlockFinding, ...]) -> PartAnswer:
+    """Solve what is certified: a union of unimodular blocks is one itself."""
+    since = time.perf_counter()
+    costs = whole_costs(part)
+    start = None
+    if request.start is not None:
+        start = request.start[part.columns] * part.col_den / part.col_num
+    result = walk_to_optimum(part, costs, request.deadline, start)
+    request.clock.spend("solve", since)
+    if result.status == "optimal":
+        return _planned(part, findings, result.x, result.proof, result)
+    since = time.perf_counter()
+    exact = result.status == "infeasible" and prove_infeasible(part, result.farkas)
+    exact |= result.status == "unbounded" and prove_unbounded(part, costs, result.ray)
+    request.clock.spend("proof", since)
+    return without_plan(
+        part,
+        result.status if result.status in ("infeasible", "unbounded", "time_limit") else "error",
+        "path",
+        findings,
+        exact=exact,
+        ray=result.ray,
+        farkas=result.farkas,
+        path=result,
+    )
+
+
+def _planned(
+    part: NormalForm,
+    findings: tuple[BlockFinding, ...],
+    x: Floats,
+    proof: Proof,
+    path: PathResult | None,
+) -> PartAnswer:
+    return PartAnswer(
+        normal=part,
+        status="optimal",
+        route="path",
+        findings=findings,
+        x=x,
+        bound=float(part.cost @ x),
+        exact=proof.exact,
+        row_dual=proof.row_dual,
+        reduced_cost=proof.reduced_cost,
+        prices="true",
+        path=path,
+    )
+
+
+def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
+    """Solve what is not certified: by its relaxation's optimum where that is whole."""
+    since = time.perf_counter()
+    lp = LinearProgram(
+        part.matrix, part.row_lower, part.row_upper, part.col_lower, part.col_upper, part.cost
+    )
+    optimum = lp.solve(deadline=request.deadline)
+    seconds = time.perf_counter() - since
+    request.clock.spend("solve", since)
+    if optimum.status == "infeasible":
+        exact = prove_infeasible(part, optimum.farkas)
+        finding = sampled_finding(part, 0, None, request.seed, Deadline(0))
+        farkas = optimum.farkas
+        return without_plan(part, "infeasible", "path", (finding,), exact=exact, farkas=farkas)
+    if optimum.status != "optimal":
+        finding = sampled_finding(part, 0, None, request.seed, Deadline(0))
+        return _branch(request, part, finding)
+    whole = is_whole(optimum.x, part.integer)
+    x = np.where(part.integer, np.rint(optimum.x), optimum.x) if whole else None
+    finding = _finding(request, part, lp, optimum)
+    if x is None:
+        since = time.perf_counter()
+        budget = request.deadline.within(max(FACE_SHARE * seconds, FACE_SECONDS))
+        x = whole_optimum(part, lp, optimum, request.seed, budget)
+        request.clock.spend("solve", since)
+    if x is not None:
+        since = time.perf_counter()
+        proof = prove_optimal(part, whole_costs(part), x, optimum.row_dual)
+        holds = proof.exact or plan_holds(part, x) or not part.whole_rows.all()
+        request.clock.spend("proof", since)
+        if holds:
+            return _planned(part, (finding,), x, proof, None)
+    return _branch(request, part, finding, optimum)
+
+
+def _finding(
+    request: _Request, part: NormalForm, lp: LinearProgram, optimum: LpResult
+) -> BlockFinding:
+    """The verdict on a block whose optimum is known, by a few more vertices."""
+    since = time.perf_counter()
+    count, budget = request.samples, request.deadline
+    if count is None:
+        count, budget = MOST_SAMPLES, budget.within(SAMPLING_SHARE * request.clock.total)
+    finding = sampled_finding(part, count, (lp, optimum), request.seed, budget)
+    request.clock.spend("assess", since)
+    return finding
+
+
+def _branch(
+    request: _Request, part: NormalForm, finding: BlockFinding, optimum: LpResult | None = None
+) -> PartAnswer:
+    since = time.perf_counter()
+    answer = branch_part(
+        part,
+        (finding,),
+        request.settings,
+        request.deadline,
+        relaxation=optimum,
+        start=None if request.start is None else request.start[part.columns],
+        fixed_plan_prices=request.fixed_plan_prices,
+    )
+    request.clock.spend("solve", since)
+    return answer
+
+
+def _rounded_away(request: _Request, normal: NormalForm) -> Solution:
+    """The answer where rounding sides and bounds already shows that there is no plan."""
+    conflict = normal.conflict
+    assert conflict is not None
+    form, nan = request.form, float("nan")
+    nothing = Merged(
+        "infeasible",
+        None,
+        nan,
+        nan,
+        np.full(form.shape[0], nan),
+        np.full(form.shape[1], nan),
+        None,
+        None,
+    )
+    finding = Finding((), normal.snapped, request.seed)
+    return _solution(
+        request,
+        nothing,
+        RouteReport(
+            route="path",
+            why=f"no whole plan exists: {conflict.reason}",
+            finding=finding,
+            walk=None,
+            proof="exact",
+            seconds=request.clock.seconds,
+            blame=blame_conflict(form, conflict),
+        ),
+    )
+
+
+def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> Solution:
+    """Merge the parts and say which way they went."""
+    merged = merge(request.form, normal, parts)
+    findings = tuple(finding for part in parts for finding in part.findings)
+    routes = {part.route for part in parts}
+    blamed: tuple[str, ...] = ()
+    culprit = next((part for part in parts if part.status == "infeasible"), None)
+    if culprit is not None:
+        blamed = blame(culprit.normal, culprit.farkas, request.deadline)
+    prices = {part.prices for part in parts}
+    finding = Finding(findings, normal.snapped, request.seed)
+    since = time.perf_counter()
+    violation = 0.0 if merged.x is None else largest_violation(request.form, merged.x)
+    request.clock.spend("proof", since)
+    exact = all(part.exact for part in parts if part.status == merged.status)
+    return _solution(
+        request,
+        merged,
+        RouteReport(
+            route=routes.pop() if len(routes) == 1 else "split" if routes else "path",
+            why=why(parts, merged.status),
+            finding=finding,
+            walk=walk_report(parts),
+            proof="exact" if exact else "tolerance",
+            seconds=request.clock.seconds,
+            largest_violation=violation,
+            prices=prices.pop() if len(prices) == 1 else "none" if not parts else "in part",
+            blame=blamed,
+        ),
+    )
+
+
+def _solution(request: _Request, merged: Merged, report: RouteReport) -> Solution:
+    return Solution(
+        status=merged.status,
+        x=merged.x,
+        objective=merged.objective,
+        bound=merged.bound,
+        row_dual=merged.row_dual,
+        reduced_cost=merged.reduced_cost,
+        ray=merged.ray,
+        farkas=merged.farkas,
+        report=report,
+    )

@@ -1,0 +1,77 @@
+"""The one sentence that says which route a model took, and why."""
+
+from __future__ import annotations
+
+from collections import Counter
+
+from .answers import PartAnswer
+from .integrality.finding import BlockFinding, Verdict
+
+#: Structures as a sentence names them.
+IN_WORDS = {
+    "trivial": "nothing but bounds",
+    "incidence": "an incidence structure (at most two entries a column or row)",
+    "interval": "an interval structure (consecutive ones)",
+    "network": "a network structure",
+    "conetwork": "a transposed network structure",
+    "sum": "a sum of networks",
+    "unimodular": "a unimodular system of equations",
+}
+
+
+def why(parts: list[PartAnswer], status: str) -> str:
+    """Say in one sentence which way the parts went, and why.
+
+    Parameters
+    ----------
+    parts : list of PartAnswer
+    status : str
+        Of the whole model.
+    """
+    if not parts:
+        return "the model has no free columns"
+    ended = next((part for part in parts if part.status == status), parts[0])
+    if status in ("infeasible", "unbounded"):
+        what = "its relaxation is" if ended.route == "path" else "branch and bound showed it"
+        proof = ", proven in exact arithmetic" if ended.exact else ""
+        return f"{what} {status}{proof}"
+    clauses = [_clause(part) for part in parts]
+    counted = Counter(clauses)
+    told = [clause if k == 1 else f"{clause} ({k} blocks)" for clause, k in counted.items()]
+    return "; ".join(told)
+
+
+def _clause(part: PartAnswer) -> str:
+    if not part.findings:
+        return "semicontinuous columns cannot be relaxed, so branch and bound solved it"
+    if part.route == "path":
+        finding = part.findings[0]
+        if finding.verdict is Verdict.PROVEN:
+            return f"every vertex is whole: {_structures(part.findings)}"
+        return (
+            "the relaxation has a whole optimum at this objective; "
+            f"about other objectives {_about(finding)}"
+        )
+    if part.status == "time_limit":
+        return "the time ran out in branch and bound"
+    if part.findings[0].verdict is Verdict.REFUTED:
+        return "the relaxation's optimum is fractional, so branch and bound solved it"
+    return "the relaxation gave no whole optimum, so branch and bound solved it"
+
+
+def _structures(findings: tuple[BlockFinding, ...]) -> str:
+    counted = Counter(f.structure for f in findings if f.structure != "trivial")
+    if not counted:
+        return IN_WORDS["trivial"]
+    return " and ".join(
+        IN_WORDS.get(str(structure), str(structure)) + (f" ({k} blocks)" if k > 1 else "")
+        for structure, k in counted.items()
+    )
+
+
+def _about(finding: BlockFinding) -> str:
+    if finding.verdict is Verdict.REFUTED:
+        return "it is known to have fractional vertices"
+    if finding.verdict is Verdict.SAMPLED:
+        return f"there is no proof, only {finding.samples} sampled vertices that were whole"
+    return "nothing is known"
