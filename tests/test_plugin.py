@@ -80,7 +80,7 @@ def vans() -> pyo.ConcreteModel:
     """A van's best load: a knapsack, whose relaxation is fractional at the optimum."""
     model = pyo.ConcreteModel()
     model.take = pyo.Var(range(3), domain=pyo.Binary)
-    model.room = pyo.Constraint(expr=3 * model.take[0] + 4 * model.take[1] + 5 * model.take[2] <= 8)
+    model.room = pyo.Constraint(expr=3 * model.take[0] + 4 * model.take[1] + 5 * model.take[2] <= 9)
     model.profit = pyo.Objective(
         expr=5 * model.take[0] + 6 * model.take[1] + 8 * model.take[2], sense=pyo.maximize
     )
