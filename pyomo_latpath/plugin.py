@@ -173,26 +173,28 @@ class LatpathSolutionLoader(SolutionLoader):  # type: ignore[misc]
         refusal: type[Exception],
     ) -> list[tuple[Any, float]]:
         """Pair components with their prices, those without one (NaN) left out."""
-        pairs = [] if self._solution.x is None else _pairs(components, prices, wanted)
+        if self._solution.x is None:
+            raise refusal()
+        pairs = list(_pairs(components, prices, wanted))
         priced = [pair for pair in pairs if not math.isnan(pair[1])]
-        if self._solution.x is None or (pairs and not priced):
+        if pairs and not priced:
             raise refusal()
         return priced
 
 
 def _pairs(
     components: list[Any], values: Floats, wanted: Sequence[Any] | None
-) -> list[tuple[Any, float]]:
+) -> Iterator[tuple[Any, float]]:
     """Pair components with their values: all of them, or those wanted."""
     # Adding 0.0 turns -0.0 into 0.0.
     pairs = zip(components, (values + 0.0).tolist(), strict=True)
     if wanted is None:
-        return list(pairs)
+        return pairs
     by_id = {id(component): value for component, value in pairs}
     for component in wanted:
         if id(component) not in by_id:
             raise KeyError(f"{component.name!r} is no part of the model that was solved")
-    return [(component, by_id[id(component)]) for component in wanted]
+    return ((component, by_id[id(component)]) for component in wanted)
 
 
 class Latpath(SolverBase):  # type: ignore[misc]
