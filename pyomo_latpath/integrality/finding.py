@@ -140,6 +140,16 @@ class Finding:
         by_size = sorted(self.blocks, key=lambda block: -block.columns.size)
         return tuple(dict.fromkeys(b.structure for b in by_size if b.structure is not None))
 
+    @property
+    def certificate(self) -> Certificate | None:
+        """The proof of the whole form; None unless each block has one."""
+        parts = [block.certificate for block in self.blocks]
+        if not parts or any(part is None for part in parts):
+            return None
+        proofs = [part for part in parts if part is not None]
+        together = tuple(block for part in proofs for block in part.blocks)
+        return Certificate(proofs[0].fingerprint, together, complete=True)
+
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON."""
         return {

@@ -1,0 +1,299 @@
+"""Assessment: for each block a certificate, else vertices to look at, else "undecided".
+
+Certificates come first, and of these the cheapest: one look at all blocks at once, then block by
+block the linear-time structures, reductions, what these leave, and equality systems at last. A
+new structure is one new module, and one line in `RECOGNISERS`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from typing import Literal
+
+import numpy as np
+import scipy.sparse as sp
+
+from ..certificates import (
+    BlockCertificate,
+    Conetwork,
+    Network,
+    Part,
+    Trivial,
+    fingerprint,
+)
+from ..deadline import Deadline
+from ..forms.blocks import Block, blocks_of
+from ..forms.linear_form import LinearForm
+from ..forms.normalise import NormalForm, normalise
+from ..forms.numbers import EXACT, Integers, simplest_fraction
+from . import incidence, interval, reductions, unimodular
+from .finding import BlockFinding, Finding, Verdict
+from .sampling import program_of
+from .verdicts import conflict_finding, proven_finding, sampled_finding
+
+__all__ = ["RECOGNISERS", "assess", "certify", "prove_tu", "proven_finding", "sampled_finding"]
+
+Recogniser = Callable[[sp.csc_array], Part | None]
+#: Share of the time limit that certificates may take.
+CERTIFY_SHARE = 0.5
+
+
+def _transposed(recognise: Callable[[sp.csc_array], Network | None]) -> Recogniser:
+    def recognise_transposed(matrix: sp.csc_array) -> Conetwork | None:
+        part = recognise(matrix.T.tocsc())
+        return None if part is None else Conetwork(part.tree, part.arcs)
+
+    return recognise_transposed
+
+
+#: Linear-time tests of a matrix as it stands: the structure's name, and what recognises it.
+QUICK: tuple[tuple[str, Recogniser], ...] = (
+    ("incidence", incidence.recognise),
+    ("interval", interval.recognise),
+    ("conetwork", _transposed(incidence.recognise)),
+    ("conetwork", _transposed(interval.recognise)),
+)
+#: All tests in near-linear time, cheapest first, for what reductions leave.
+RECOGNISERS: tuple[tuple[str, Recogniser], ...] = (*QUICK,)
+#: Tests that take longer.
+SLOW: tuple[tuple[str, Recogniser], ...] = (
+    ("interval", interval.recognise_hidden),
+    ("conetwork", _transposed(interval.recognise_hidden)),
+)
+#: How far to go: `QUICK` alone; reductions and `RECOGNISERS` too; everything.
+Effort = Literal["quick", "linear", "full"]
+
+
+def assess(
+    form: LinearForm, *, samples: int = 32, time_limit: float | None = None, seed: int = 0
+) -> Finding:
+    """Find out whether the vertices of a form's relaxation are whole, block by block.
+
+    Parameters
+    ----------
+    form : LinearForm
+    samples : int
+        Vertices to look at in each block without a certificate.
+    time_limit : float, optional
+        Seconds.
+    seed : int
+        Of the vertex sampler.
+
+    Returns
+    -------
+    Finding
+
+    Raises
+    ------
+    ValueError
+        For a negative number of samples or of seconds.
+
+    Examples
+    --------
+    >>> form = LinearForm.from_arrays([[1, 1, 0], [0, 1, 1]], row_lower=0, row_upper=1,
+    ...                               col_lower=0, col_upper=1, cost=[-1, -3, -1])
+    >>> finding = assess(form)
+    >>> str(finding.verdict), finding.blocks[0].structure
+    ('proven', 'incidence')
+    """
+    if samples < 0:
+        raise ValueError(f"samples is {samples}; it must be 0 or more")
+    if time_limit is not None and not time_limit >= 0:
+        raise ValueError(f"time_limit is {time_limit}; it must be a number of seconds from 0 on")
+    deadline = Deadline(time_limit)
+    normal = normalise(form)
+    blocks = blocks_of(normal)
+    early = deadline if time_limit is None else deadline.within(CERTIFY_SHARE * time_limit)
+    mark, findings = fingerprint(form), []
+    broken = conflict_finding(normal)
+    for block, found in zip(blocks, certify(normal, blocks, early, "linear"), strict=True):
+        if broken is not None and np.isin(broken.rows, normal.rows[block.rows]).any():
+            continue
+        if found is not None:
+            findings.append(proven_finding(normal, block, found, mark))
+        else:
+            piece = normal.restrict(block.rows, block.columns)
+            findings.append(_assess_further(piece, mark, samples, seed, early, deadline))
+    findings += [broken] if broken is not None else []
+    return Finding(tuple(findings), normal.snapped, seed)
+
+
+def _assess_further(
+    piece: NormalForm, mark: str, samples: int, seed: int, early: Deadline, deadline: Deadline
+) -> BlockFinding:
+    """Look at one vertex, which often refutes; then search long for a certificate; then sample."""
+    first = None
+    if samples and not piece.form.semicontinuous[piece.columns].any() and not deadline.passed:
+        program = program_of(piece)
+        first = program, program.solve(deadline=deadline)
+        finding = sampled_finding(piece, 1, first, seed, deadline)
+        if finding.verdict not in (Verdict.SAMPLED, Verdict.UNDECIDED):
+            return finding
+    block = Block(np.arange(piece.rows.size), np.arange(piece.columns.size), trivial=False)
+    found = certify(piece, [block], early)[0]
+    if found is not None:
+        return proven_finding(piece, block, found, mark)
+    return sampled_finding(piece, samples, first, seed, deadline)
+
+
+def certify(
+    normal: NormalForm, blocks: Sequence[Block], deadline: Deadline, effort: Effort = "full"
+) -> list[tuple[str, BlockCertificate] | None]:
+    """Look for a certificate of each block.
+
+    Parameters
+    ----------
+    normal : NormalForm
+    blocks : sequence of Block
+    deadline : Deadline
+        Blocks that were not looked at in time have no certificate.
+    effort : 'quick', 'linear' or 'full'
+        Tests that take about as long as reading the matrix; all in near-linear time; all.
+
+    Returns
+    -------
+    list of (str, BlockCertificate) or None
+        The structure's name and the proof.
+    """
+    found: list[tuple[str, BlockCertificate] | None] = [None] * len(blocks)
+    semicontinuous = normal.form.semicontinuous[normal.columns]
+    wide: list[int] = []
+    for k, block in enumerate(blocks):
+        if semicontinuous[block.columns].any():
+            continue
+        if block.trivial or not normal.integer[block.columns].any():
+            found[k] = "trivial", _trivial_certificate(normal, block)
+        elif (
+            normal.whole_rows[block.rows].all()
+            and normal.whole_sides[block.rows].all()
+            and normal.whole_bounds[block.columns].all()
+        ):
+            wide.append(k)
+    if not wide:
+        return found
+    columns = np.concatenate([blocks[k].columns for k in wide])
+    part = normal.matrix if len(blocks) == 1 else normal.matrix[:, columns]
+    matrix = sp.csc_array((part.data.astype(np.int64), part.indices, part.indptr), part.shape)
+    star, fits = incidence.star(matrix)
+    start, place = 0, np.empty(matrix.shape[0] + 1, np.int64)
+    known: dict[bytes, tuple[str, Part] | None] = {}
+    for k in wide:
+        block, here = blocks[k], slice(start, start + blocks[k].columns.size)
+        start = here.stop
+        place[block.rows], place[-1] = np.arange(block.rows.size), block.rows.size
+        proof: tuple[str, Part] | None = None
+        if fits[here].all():
+            proof = "incidence", Network(place[star.tree[block.rows]], place[star.arcs[here]])
+        elif not deadline.passed:
+            inner = _cut(matrix, here, place)
+            key = b"|".join(a.tobytes() for a in (inner.data, inner.indices, inner.indptr))
+            if key not in known:  # blocks that recur cost little
+                known[key] = prove_tu(inner, effort)
+            proof = known[key]
+            if proof is None and effort == "full":
+                proof = _prove_system(normal, block, inner, deadline)
+        if proof is not None:
+            found[k] = proof[0], _block_certificate(normal, block, proof[1])
+    return found
+
+
+def _cut(matrix: sp.csc_array, here: slice, place: Integers) -> sp.csc_array:
+    """The matrix of a block: its columns, its rows renumbered."""
+    start = matrix.indptr[here.start : here.stop + 1]
+    inner = slice(start[0], start[-1])
+    entries = matrix.data[inner], place[matrix.indices[inner]], start - start[0]
+    return sp.csc_array(entries, shape=(int(place[-1]), here.stop - here.start))
+
+
+def _prove_system(
+    normal: NormalForm, block: Block, matrix: sp.csc_array, deadline: Deadline
+) -> tuple[str, Part] | None:
+    """Prove a block's matrix unimodular together with its slacks, or whole for its sides."""
+    lower, upper = normal.row_lower[block.rows], normal.row_upper[block.rows]
+    equality = lower == upper
+    sides = np.where(equality, lower, 0.0)
+    if (np.abs(sides) >= EXACT).any():
+        return None
+
+    def rest(reduced: sp.csc_array) -> Part | None:
+        proof = prove_tu(reduced)
+        return None if proof is None else proof[1]
+
+    part = unimodular.recognise(matrix, equality, sides.astype(np.int64), rest, deadline)
+    return None if part is None else ("unimodular", part)
+
+
+def prove_tu(matrix: sp.csc_array, effort: Effort = "full") -> tuple[str, Part] | None:
+    """Prove a matrix totally unimodular, if it has one of the known structures.
+
+    Parameters
+    ----------
+    matrix : scipy.sparse.csc_array, shape (m, n), int64
+        Canonical: sorted indices, no stored zeros.
+    effort : 'quick', 'linear' or 'full'
+
+    Returns
+    -------
+    (str, Part) or None
+        The structure's name and the proof.
+
+    Examples
+    --------
+    >>> name, part = prove_tu(sp.csc_array([[1, 1, 0, 1], [0, 1, 1, 1]]).T.tocsc())
+    >>> name, part.kind
+    ('incidence', 'network')
+    >>> prove_tu(sp.csc_array([[1, 1], [1, -1]])) is None
+    True
+    """
+    if (np.abs(matrix.data) != 1).any():
+        return None
+    for name, recognise in QUICK:
+        part = recognise(matrix)
+        if part is not None:
+            return name, part
+    if effort == "quick":
+        return None
+    reduction = reductions.reduce_matrix(matrix)
+    if not reduction.rows.size and not reduction.columns.size:
+        empty = np.empty((0, 2), np.int64)
+        return "network", reduction.prove(Network(empty, empty))
+    tests = RECOGNISERS if reduction.steps else RECOGNISERS[len(QUICK) :]
+    for name, recognise in (*tests, *SLOW) if effort == "full" else tests:
+        part = recognise(reduction.matrix)
+        if part is not None:
+            whole = reduction.prove(part)
+            if isinstance(whole, Network) and reduction.steps:
+                path = name == "interval" and np.bincount(whole.tree.ravel()).max() <= 2
+                name = "interval" if path else "network"
+            return name, whole
+    return None
+
+
+def _trivial_certificate(normal: NormalForm, block: Block) -> BlockCertificate:
+    """Each row bounds one column; factors turn the coefficients of integer columns into +-1."""
+    rows, columns = normal.rows[block.rows], normal.columns[block.columns]
+    factors = _texts(normal.row_num[block.rows], normal.row_den[block.rows])
+    unread = np.flatnonzero(~normal.whole_rows[block.rows])
+    if unread.size and block.trivial:
+        by_row = normal.form.matrix[rows[unread], :][:, columns].tocsr()
+        for k, value in zip(unread.tolist(), by_row.data.tolist(), strict=True):
+            factors[k] = str(1 / simplest_fraction(value))
+    return BlockCertificate(rows, columns, tuple(factors), ("1",) * columns.size, Trivial())
+
+
+def _block_certificate(normal: NormalForm, block: Block, part: Part) -> BlockCertificate:
+    return BlockCertificate(
+        rows=normal.rows[block.rows],
+        columns=normal.columns[block.columns],
+        row_factors=tuple(_texts(normal.row_num[block.rows], normal.row_den[block.rows])),
+        col_factors=tuple(_texts(normal.col_num[block.columns], normal.col_den[block.columns])),
+        part=part,
+    )
+
+
+def _texts(num: Integers, den: Integers) -> list[str]:
+    """Fractions in lowest terms as "p" or "p/q"."""
+    if (num == 1).all() and (den == 1).all():
+        return ["1"] * num.size
+    pairs = zip(num.tolist(), den.tolist(), strict=True)
+    return [str(p) if q == 1 else f"{p}/{q}" for p, q in pairs]
