@@ -239,7 +239,7 @@ def prove_tu(matrix: sp.csc_array, effort: Effort = "full") -> tuple[str, Part] 
 
     Examples
     --------
-    >>> name, part = prove_tu(sp.csc_array([[1, 1, 0, 1], [0, 1, 1, 1]]).T.tocsc())
+    >>> name, part = prove_tu(sp.csc_array([[1, 1, 0, 1], [0, 1, 1, 1]]))
     >>> name, part.kind
     ('incidence', 'network')
     >>> prove_tu(sp.csc_array([[1, 1], [1, -1]])) is None
