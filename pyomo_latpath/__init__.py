@@ -1,0 +1,124 @@
+"""A Pyomo solver that knows when a whole-number model is a linear program.
+
+Importing the package registers the solver `latpath` with Pyomo:
+
+>>> import pyomo.environ as pyo
+>>> import pyomo_latpath as latpath
+>>> solver = pyo.SolverFactory("latpath")
+
+The functions below take a Pyomo model or a `LinearForm`.
+"""
+
+from __future__ import annotations
+
+import time
+from typing import Any
+
+from . import plugin
+from .certificates import CertificateError, check_certificate
+from .forms.from_file import read
+from .forms.from_pyomo import compile_model
+from .forms.linear_form import LinearForm
+from .integrality.assess import assess as _assess_form
+from .integrality.finding import BlockFinding, Finding, Verdict, Witness
+from .routing import solve as _solve_form
+from .solution import RouteReport, Solution, WalkReport
+
+__version__ = ".".join(map(str, plugin.VERSION))
+
+__all__ = [
+    "BlockFinding",
+    "CertificateError",
+    "Finding",
+    "LinearForm",
+    "RouteReport",
+    "Solution",
+    "Verdict",
+    "WalkReport",
+    "Witness",
+    "assess",
+    "check_certificate",
+    "compile_model",
+    "read",
+    "solve",
+]
+
+
+def assess(
+    form_or_model: Any, *, samples: int = 32, time_limit: float | None = None, seed: int = 0
+) -> Finding:
+    """Find out whether all vertices of a model's relaxation are whole.
+
+    Parameters
+    ----------
+    form_or_model : LinearForm or Pyomo model
+    samples : int
+        Vertices to look at in each block without a certificate.
+    time_limit : float, optional
+        Seconds.
+    seed : int
+        Of the vertex sampler.
+
+    Returns
+    -------
+    Finding
+
+    Raises
+    ------
+    ValueError
+        For a negative number of samples or of seconds, and as `compile_model`.
+
+    Examples
+    --------
+    >>> import pyomo_latpath as latpath
+    >>> form = latpath.LinearForm.from_arrays([[1, 1, 0], [0, 1, 1], [1, 0, 1]], row_lower=0,
+    ...     row_upper=1, col_lower=0, col_upper=1, cost=1, sense="max")
+    >>> finding = latpath.assess(form)
+    >>> str(finding.verdict), [str(v) for v in finding.blocks[0].witness.values]
+    ('refuted', ['1/2', '1/2', '1/2'])
+    """
+    form, _ = _form_of(form_or_model)
+    return _assess_form(form, samples=samples, time_limit=time_limit, seed=seed)
+
+
+def solve(form_or_model: Any, **options: Any) -> Solution:
+    """Solve a model by the route that its integrality allows.
+
+    A Pyomo model is only read; to have values loaded, use `SolverFactory('latpath')`.
+
+    Parameters
+    ----------
+    form_or_model : LinearForm or Pyomo model
+    **options
+        As `pyomo_latpath.routing.solve`: start, samples, time_limit, rel_gap, abs_gap, threads,
+        seed, highs_options, fixed_plan_prices, log.
+
+    Returns
+    -------
+    Solution
+
+    Raises
+    ------
+    ValueError
+        As `pyomo_latpath.routing.solve` and `compile_model`.
+
+    Examples
+    --------
+    >>> import pyomo_latpath as latpath
+    >>> form = latpath.LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                                       col_upper=1, cost=[2, 3])
+    >>> latpath.solve(form).objective
+    2.0
+    """
+    form, seconds = _form_of(form_or_model)
+    if seconds and options.get("time_limit") is not None:
+        options["time_limit"] = max(0.0, options["time_limit"] - seconds)
+    return _solve_form(form, **{"compile_seconds": seconds} | options)
+
+
+def _form_of(form_or_model: Any) -> tuple[LinearForm, float]:
+    """The form, and the seconds it took to compile."""
+    if isinstance(form_or_model, LinearForm):
+        return form_or_model, 0.0
+    begun = time.perf_counter()
+    return compile_model(form_or_model), time.perf_counter() - begun

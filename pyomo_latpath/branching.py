@@ -103,7 +103,7 @@ def largest_violation(form: LinearForm, x: Floats) -> float:
     Examples
     --------
     >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
-    ...                               col_upper=1, cost=0)
+    ...                               col_upper=1, cost=0, integer=False)
     >>> largest_violation(form, np.array([0.75, 0.5]))
     0.25
     """

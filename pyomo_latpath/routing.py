@@ -26,13 +26,15 @@ from numpy.typing import ArrayLike
 from .answers import Merged, PartAnswer, merge, walk_report, without_plan
 from .blame import blame, blame_conflict
 from .branching import branch_part, largest_violation
+from .certificates import fingerprint
 from .deadline import Deadline
 from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm, normalise
 from .highs import LinearProgram, LpResult, MipSettings, check_settings
-from .integrality.assess import certify, proven_finding, sampled_finding
+from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding
+from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
 from .paths.optimal_face import is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
 from .proof import Proof, plan_holds, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
@@ -43,22 +45,11 @@ from .why import why
 SAMPLING_SHARE, MOST_SAMPLES = 0.1, 32
 #: Share of its relaxation's time that the search of the optimal face may take, and a floor.
 FACE_SHARE, FACE_SECONDS = 1.0, 0.02
+#: Seconds that the longer search for a certificate of a block with a whole optimum may take,
+#: where that is more than what the solve took so far.
+LONG_SECONDS = 0.5
 #: Share of the time limit that the search for certificates may take.
 CERTIFY_SHARE = 0.5
-
-
-@dataclass(frozen=True)
-class _Request:
-    """What the caller asked, checked."""
-
-    form: LinearForm
-    start: Floats | None
-    samples: int | None
-    seed: int
-    settings: MipSettings
-    fixed_plan_prices: bool
-    deadline: Deadline
-    clock: _Clock
 
 
 class _Clock:
@@ -74,6 +65,20 @@ class _Clock:
 
     def spend(self, stage: str, since: float) -> None:
         self.seconds[stage] += time.perf_counter() - since
+
+
+@dataclass(frozen=True)
+class _Request:
+    """What the caller asked, checked."""
+
+    form: LinearForm
+    start: Floats | None
+    samples: int | None
+    seed: int
+    settings: MipSettings
+    fixed_plan_prices: bool
+    deadline: Deadline
+    clock: _Clock
 
 
 def solve(
@@ -163,19 +168,23 @@ def solve(
     if form.semicontinuous.any():
         parts = [branch_part(normal, (), request.settings, request.deadline)]
         return _report(request, normal, parts)
-    certificates = certify(normal, blocks, _certify_deadline(request.deadline, time_limit))
+    early = request.deadline
+    early = early if time_limit is None else early.within(CERTIFY_SHARE * time_limit)
+    found = certify(normal, blocks, early, "linear")
+    proven = [(block, proof) for block, proof in zip(blocks, found, strict=True) if proof]
+    mark = fingerprint(form) if proven else ""
+    findings = tuple(proven_finding(normal, block, proof, mark) for block, proof in proven)
     clock.spend("assess", since)
-    proven = [k for k, found in enumerate(certificates) if found is not None]
     parts = []
     if proven:
-        findings = tuple(proven_finding(normal, blocks[k], certificates[k]) for k in proven)
-        parts.append(_by_path(request, _union(normal, [blocks[k] for k in proven]), findings))
-    for block, found in zip(blocks, certificates, strict=True):
+        whole = _union(normal, [block for block, _ in proven])
+        parts.append(_by_path(request, whole, findings))
+    for block, proof in zip(blocks, found, strict=True):
         if any(part.status == "infeasible" for part in parts):
             break
-        if found is None:
-            part_of = normal.restrict(block.rows, block.columns)
-            parts.append(_by_relaxation(request, part_of))
+        if proof is None:
+            piece = normal.restrict(block.rows, block.columns)
+            parts.append(_by_relaxation(request, piece))
     return _report(request, normal, parts)
 
 
@@ -212,10 +221,6 @@ def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
                 f"[{low[i]:g}, {high[i]:g}]"
             )
     return x
-
-
-def _certify_deadline(deadline: Deadline, time_limit: float | None) -> Deadline:
-    return deadline if time_limit is None else deadline.within(CERTIFY_SHARE * time_limit)
 
 
 def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
@@ -313,10 +318,17 @@ def _finding(
 ) -> BlockFinding:
     """The verdict on a block whose optimum is known, by a few more vertices."""
     since = time.perf_counter()
-    count, budget = request.samples, request.deadline
-    if count is None:
-        count, budget = MOST_SAMPLES, budget.within(SAMPLING_SHARE * request.clock.total)
-    finding = sampled_finding(part, count, (lp, optimum), request.seed, budget)
+    finding = None
+    if is_whole(optimum.x, part.integer):
+        block = Block(np.arange(part.rows.size), np.arange(part.columns.size), trivial=False)
+        budget = request.deadline.within(max(request.clock.total, LONG_SECONDS))
+        found = certify(part, [block], budget)[0]
+        finding = None if found is None else proven_finding(part, block, found)
+    if finding is None:
+        count, budget = request.samples, request.deadline
+        if count is None:
+            count, budget = MOST_SAMPLES, budget.within(SAMPLING_SHARE * request.clock.total)
+        finding = sampled_finding(part, count, (lp, optimum), request.seed, budget)
     request.clock.spend("assess", since)
     return finding
 
@@ -353,9 +365,9 @@ def _rounded_away(request: _Request, normal: NormalForm) -> Solution:
         None,
         None,
     )
-    finding = Finding((), normal.snapped, request.seed)
+    broken = conflict_finding(normal)
+    finding = Finding((broken,) if broken else (), normal.snapped, request.seed)
     return _solution(
-        request,
         nothing,
         RouteReport(
             route="path",
@@ -385,7 +397,6 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
     request.clock.spend("proof", since)
     exact = all(part.exact for part in parts if part.status == merged.status)
     return _solution(
-        request,
         merged,
         RouteReport(
             route=routes.pop() if len(routes) == 1 else "split" if routes else "path",
@@ -401,7 +412,7 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
     )
 
 
-def _solution(request: _Request, merged: Merged, report: RouteReport) -> Solution:
+def _solution(merged: Merged, report: RouteReport) -> Solution:
     return Solution(
         status=merged.status,
         x=merged.x,
