@@ -39,7 +39,7 @@ from .paths.optimal_face import is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
 from .proof import Proof, plan_holds, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
 from .solution import RouteReport, Solution
-from .why import why
+from .why import telling, why
 
 #: Share of the time spent so far that sampling for a verdict may add, and samples at most.
 SAMPLING_SHARE, MOST_SAMPLES = 0.1, 32
@@ -385,7 +385,7 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
     """Merge the parts and say which way they went."""
     merged = merge(request.form, normal, parts)
     findings = tuple(finding for part in parts for finding in part.findings)
-    routes = {part.route for part in parts}
+    routes = {part.route for part in telling(parts)}
     blamed: tuple[str, ...] = ()
     culprit = next((part for part in parts if part.status == "infeasible"), None)
     if culprit is not None:

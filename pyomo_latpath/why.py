@@ -35,15 +35,23 @@ def why(parts: list[PartAnswer], status: str) -> str:
         what = "its relaxation is" if ended.route == "path" else "branch and bound showed it"
         proof = ", proven in exact arithmetic" if ended.exact else ""
         return f"{what} {status}{proof}"
-    clauses = [_clause(part) for part in parts]
+    clauses = [_clause(part) for part in telling(parts)]
     counted = Counter(clauses)
     told = [clause if k == 1 else f"{clause} ({k} blocks)" for clause, k in counted.items()]
     return "; ".join(told)
 
 
+def telling(parts: list[PartAnswer]) -> list[PartAnswer]:
+    """Return the parts worth telling of: what is nothing but bounds is not, beside others."""
+    others = [part for part in parts if {f.structure for f in part.findings} != {"trivial"}]
+    return others or parts
+
+
 def _clause(part: PartAnswer) -> str:
     if not part.findings:
         return "semicontinuous columns cannot be relaxed, so branch and bound solved it"
+    if not part.normal.integer.any():
+        return "there are no integer columns, so it is a linear program"
     if part.route == "path":
         finding = part.findings[0]
         if finding.verdict is Verdict.PROVEN:

@@ -18,8 +18,8 @@ def random_form(rng: np.random.Generator, kind: str) -> LinearForm:
 
     'network' and 'intervals' have totally unimodular matrices, 'general' small whole numbers,
     'mixed' continuous columns as well, 'free' columns without bounds (and so unbounded models),
-    'decimals' numbers such as 0.3, 'floats' numbers of 16 digits, 'tight' rows that
-    often exclude each other.
+    'decimals' numbers such as 0.3, 'floats' numbers of 16 digits, 'tight' rows whose
+    sides leave no room around one plan.
     """
     m, n = int(rng.integers(1, 5)), int(rng.integers(1, 6))
     matrix = _matrix(rng, kind, m, n)
@@ -28,7 +28,9 @@ def random_form(rng: np.random.Generator, kind: str) -> LinearForm:
     if kind == "free":
         lower[rng.random(n) < 0.4] = -math.inf
         upper[rng.random(n) < 0.4] = math.inf
-    low, high = _sides(rng, m, 1 if kind == "tight" else 4)
+    # Sides near what one plan does, so that about half of all models have a plan.
+    plan = rng.integers(lower.clip(-2), lower.clip(-2) + 2).clip(lower, upper)
+    low, high = _sides(rng, matrix @ plan, 0 if kind == "tight" else 2)
     integer = np.full(n, True)
     if kind in ("mixed", "free"):
         integer = rng.random(n) < 0.6
@@ -69,11 +71,14 @@ def _matrix(rng: np.random.Generator, kind: str, m: int, n: int) -> np.ndarray:
     return matrix
 
 
-def _sides(rng: np.random.Generator, m: int, span: int) -> tuple[np.ndarray, np.ndarray]:
-    low = rng.integers(-span, span + 1, m).astype(float)
+def _sides(
+    rng: np.random.Generator, activity: np.ndarray, span: int
+) -> tuple[np.ndarray, np.ndarray]:
+    low = activity + rng.integers(-span, span + 1, activity.size)
+    low[rng.random(activity.size) < 0.1] += 3
     high = low.copy()
-    for i in range(m):
-        relation = RELATIONS[int(rng.integers(0, 4))]
+    for i in range(activity.size):
+        relation = RELATIONS[int(rng.choice(4, p=[0.3, 0.3, 0.1, 0.3]))]
         if relation == "<=":
             low[i] = -math.inf
         elif relation == ">=":

@@ -97,7 +97,7 @@ def agree(ours: tuple[str, float | None], other: tuple[str, float | Fraction | N
         return False
     if ours[1] is None or other[1] is None:
         return ours[1] is None and other[1] is None
-    return math.isclose(ours[1], float(other[1]), rel_tol=1e-7, abs_tol=1e-7)
+    return math.isclose(ours[1], float(other[1]), rel_tol=1e-7, abs_tol=1e-5)
 
 
 def check_plan(form: LinearForm, x: np.ndarray) -> None:

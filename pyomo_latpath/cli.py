@@ -1,0 +1,210 @@
+"""The command line: solve model files, check certificates."""
+
+from __future__ import annotations
+
+import json
+import sys
+import time
+import traceback
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any
+
+import click
+
+from .certificates import Certificate, CertificateError, check_certificate
+from .cli_output import (
+    Outcome,
+    describe,
+    json_line,
+    summary,
+    table_head,
+    table_rows,
+    write_certificate,
+    write_plan,
+)
+from .forms.from_file import ModelFileError, read
+from .routing import solve as solve_form
+
+OPTIMAL, NOT_OPTIMAL, UNREADABLE = 0, 1, 2
+
+
+def _in_a_folder(_: click.Context, parameter: click.Parameter, path: Path | None) -> Path | None:
+    """Refuse a file whose folder is missing before hours are spent on its content."""
+    if path is not None and not path.parent.is_dir():
+        raise click.BadParameter(f"there is no folder {str(path.parent)!r}", param=parameter)
+    return path
+
+
+_INPUT = click.Path(path_type=Path)
+_OUTPUT = click.Path(path_type=Path, dir_okay=False)
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+def main() -> None:
+    """Solve whole-number models as linear programs wherever that is proven safe."""
+
+
+@main.command()
+@click.argument("files", nargs=-1, required=True, type=_INPUT, metavar="FILE...")
+@click.option("--json", "as_json", is_flag=True, help="One JSON object per file and line.")
+@click.option(
+    "--plan",
+    type=_OUTPUT,
+    callback=_in_a_folder,
+    help="Write the solution as CSV with the header column,value. One FILE only.",
+)
+@click.option(
+    "--certificate",
+    type=_OUTPUT,
+    callback=_in_a_folder,
+    help="Write the proof that every vertex is whole as JSON. One FILE only.",
+)
+@click.option("--time-limit", type=click.FloatRange(min=0), help="Seconds for each file.")
+@click.option("--rel-gap", type=click.FloatRange(min=0), help="Relative gap of branch and bound.")
+@click.option("--threads", type=click.IntRange(min=1), help="Threads of branch and bound.")
+@click.option("--samples", type=click.IntRange(min=0), help="Vertices to look at without a proof.")
+@click.option("--seed", type=click.IntRange(min=0), default=0, show_default=True)
+def solve(
+    files: tuple[Path, ...],
+    as_json: bool,
+    plan: Path | None,
+    certificate: Path | None,
+    **options: Any,
+) -> None:
+    """Solve model files: .mps, .lp, .min and .asn, each also .gz.
+
+    A file that cannot be read does not stop the others.
+
+    Fields of --json, null where not known: instance, status, rows, columns, integers,
+    nonzeros, verdict, structure, samples (vertices that a verdict 'sampled' rests on), route,
+    why, objective, bound, proof, steps, pivots, seconds (by stage), report (in full), error.
+
+    \b
+    Exit status:
+      0  every file was solved to optimality
+      1  some file is infeasible or unbounded, or its time ran out
+      2  wrong usage, or some file could not be read or written
+    """
+    if len(files) > 1 and (plan or certificate):
+        raise click.UsageError("--plan and --certificate take one FILE only")
+    names = _names(files)
+    tabular = len(files) > 1 and not as_json
+    if tabular:
+        click.echo(table_head(names))
+    outcomes = []
+    code = OPTIMAL
+    for path, name in zip(files, names, strict=True):
+        outcome = _outcome(path, name, options)
+        outcomes.append(outcome)
+        _show(outcome, as_json, names)
+        code = max(code, _code(outcome), _write(outcome, plan, certificate))
+    if tabular:
+        click.echo(summary(outcomes))
+    sys.exit(code)
+
+
+@main.command()
+@click.argument("certificate", type=_INPUT)
+@click.argument("file", type=_INPUT)
+def check(certificate: Path, file: Path) -> None:
+    """Check that CERTIFICATE proves the vertices of the model in FILE whole.
+
+    \b
+    Exit status:
+      0  the certificate holds
+      1  it does not
+      2  wrong usage, or a file could not be read
+    """
+    try:
+        form = read(file)
+        data = _json(certificate)
+    except (OSError, ValueError) as error:
+        _complain(_sentence(error))
+        sys.exit(UNREADABLE)
+    try:
+        claim = Certificate.from_dict(data)
+        check_certificate(form, claim)
+    except CertificateError as error:
+        _complain(f"{certificate} does not prove {file}: {error}")
+        sys.exit(NOT_OPTIMAL)
+    blocks = "1 block" if len(claim.blocks) == 1 else f"{len(claim.blocks)} blocks"
+    covered = sum(block.columns.size for block in claim.blocks)
+    reach = "" if claim.complete else f", which hold {covered} of {form.shape[1]} columns"
+    click.echo(f"{certificate} holds: every vertex of {file} is whole ({blocks}{reach})")
+
+
+def _json(path: Path) -> Any:
+    try:
+        return json.loads(path.read_bytes())
+    except json.JSONDecodeError as error:
+        raise ModelFileError(path, error.lineno, f"no JSON ({error.msg})") from error
+    except UnicodeDecodeError as error:
+        raise ModelFileError(path, None, f"no JSON ({error})") from error
+
+
+def _outcome(path: Path, name: str, options: dict[str, Any]) -> Outcome:
+    """Read and solve one file; whatever goes wrong becomes part of the outcome."""
+    begun = time.perf_counter()
+    try:
+        form = read(path)
+    except (OSError, ValueError) as error:
+        return Outcome(name, error=_sentence(error))
+    try:
+        solution = solve_form(form, compile_seconds=time.perf_counter() - begun, **options)
+    except Exception as error:
+        # A defect of ours must not cost the files that follow; it is shown in full.
+        traceback.print_exc()
+        return Outcome(name, form, error=f"{path}: {type(error).__name__}: {error}")
+    return Outcome(name, form, solution)
+
+
+def _show(outcome: Outcome, as_json: bool, names: Sequence[str]) -> None:
+    if as_json:
+        click.echo(json_line(outcome))
+    elif outcome.error is None:
+        lines = describe(outcome) if len(names) == 1 else table_rows(outcome, names)
+        click.echo("\n".join(lines))
+    if outcome.error is not None:
+        _complain(outcome.error)
+
+
+def _code(outcome: Outcome) -> int:
+    if outcome.error is not None:
+        return UNREADABLE
+    return OPTIMAL if outcome.status == "optimal" else NOT_OPTIMAL
+
+
+def _write(outcome: Outcome, plan: Path | None, certificate: Path | None) -> int:
+    """Write the files asked for; return the exit status that this calls for."""
+    if outcome.form is None or outcome.solution is None:
+        return OPTIMAL
+    code = OPTIMAL
+    for path, writer in ((plan, write_plan), (certificate, write_certificate)):
+        if path is None:
+            continue
+        try:
+            writer(path, outcome.form, outcome.solution)
+        except OSError as error:
+            _complain(_sentence(error))
+            code = UNREADABLE
+        except ValueError as error:
+            _complain(f"{path} is not written: {error}")
+            code = max(code, NOT_OPTIMAL)
+    return code
+
+
+def _names(files: Sequence[Path]) -> list[str]:
+    """File names where they tell the files apart, else whole paths."""
+    names = [path.name for path in files]
+    return names if len(set(names)) == len(names) else [str(path) for path in files]
+
+
+def _sentence(error: Exception) -> str:
+    if isinstance(error, OSError) and error.filename is not None:
+        return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
+    return str(error)
+
+
+def _complain(sentence: str) -> None:
+    click.echo(f"latpath: {sentence}", err=True)
