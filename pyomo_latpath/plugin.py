@@ -438,8 +438,7 @@ def _results(model: Any, form: LinearForm, solution: Solution) -> Results:
     results.extra_info.route = report.route
     results.extra_info.message = _message(solution)
     results.extra_info.prices = report.prices
-    # Declared, since a plain assignment would turn the dict into nested configuration objects.
-    results.extra_info.declare("route_report", ConfigValue(report.to_dict()))
+    results.extra_info.route_report = report.to_dict()
     for stage, seconds in report.seconds.items():
         setattr(results.timing_info, f"{stage}_time", seconds)
     return results

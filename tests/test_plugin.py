@@ -324,6 +324,10 @@ def test_stale_flags_and_fixed_variables(api):
     free = [v for v in model.send.values() if not v.fixed]
     assert not any(variable.stale for variable in free)
     assert pyo.value(model.cost) == CHEAPEST - 2 + 4
+    # As with other solvers: once a loaded value is changed by hand, the others are outdated.
+    free[0].value = 2
+    assert not free[0].stale
+    assert all(variable.stale for variable in free[1:])
 
 
 @both
@@ -428,6 +432,9 @@ def test_a_violated_constraint_without_variables_is_named(api):
 
 
 def test_long_conflicts_are_cut_short_in_messages_only(monkeypatch):
+    fake(monkeypatch, status="infeasible", x=False, blame=tuple("abcdefghij"))
+    with pytest.raises(NoOptimalSolutionError, match=r"h, i, j\. "):
+        Latpath().solve(deliveries())
     names = tuple(f"row{i}" for i in range(25))
     fake(monkeypatch, status="infeasible", x=False, blame=names)
     with pytest.raises(NoOptimalSolutionError, match="row9 and 15 more") as caught:
@@ -713,6 +720,17 @@ def test_suffixes_on_a_sub_block_and_others(api):
     PLUGINS[api]().solve(model)
     assert len(model.valley.dual) == 5
     assert list(model.priority.values()) == [3]
+
+
+@both
+def test_a_model_without_rows_has_no_prices_to_miss(api, caplog):
+    model = pyo.ConcreteModel()
+    model.wheels = pyo.Var(domain=pyo.Binary)
+    model.cost = pyo.Objective(expr=2 * model.wheels)
+    PLUGINS[api]().solve(priced(model))
+    assert not model.dual
+    assert model.rc[model.wheels] == 2
+    assert "suffix" not in caplog.text
 
 
 @both
