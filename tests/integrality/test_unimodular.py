@@ -1,0 +1,116 @@
+"""Equality systems that are unimodular, against all of their determinants and vertices."""
+
+import numpy as np
+import pytest
+import scipy.sparse as sp
+from brute_force import is_tu, maximal_minors, vertices
+from hypothesis import assume, given, settings
+from hypothesis import strategies as st
+
+from pyomo_latpath.certificates import Trivial, Unimodular
+from pyomo_latpath.deadline import Deadline
+from pyomo_latpath.integrality import unimodular
+from pyomo_latpath.integrality.assess import prove_tu
+
+
+@st.composite
+def systems(draw, most_rows=3, most_columns=4):
+    """Entries from -3 to 3, which rows are equalities, and sides."""
+    m, n = draw(st.integers(1, most_rows)), draw(st.integers(1, most_columns))
+    entries = draw(st.lists(st.integers(-3, 3), min_size=m * n, max_size=m * n))
+    equality = draw(st.lists(st.sampled_from([True, True, False]), min_size=m, max_size=m))
+    sides = draw(st.lists(st.integers(-3, 3), min_size=m, max_size=m))
+    matrix = np.array(entries, np.int64).reshape(m, n)
+    if m > 1 and draw(st.booleans()):
+        matrix[-1] = matrix[0] - draw(st.integers(-1, 1)) * matrix[1 % (m - 1)]
+    return matrix, np.array(equality), np.array(sides)
+
+
+def rest(matrix):
+    proof = prove_tu(matrix)
+    return None if proof is None else proof[1]
+
+
+def by_definition(matrix):
+    """Stands for a prover that misses nothing."""
+    return Trivial() if is_tu(matrix.toarray()) else None
+
+
+def recognise(matrix, equality, sides, prover=rest):
+    return unimodular.recognise(
+        sp.csc_array(matrix), equality, np.array(sides), prover, Deadline(None)
+    )
+
+
+def with_slacks(matrix, equality):
+    return np.hstack([matrix, np.eye(len(matrix), dtype=np.int64)[:, ~equality]])
+
+
+@settings(max_examples=200)
+@given(systems())
+def test_recognised_where_all_maximal_determinants_are_0_or_1(system):
+    matrix, equality, sides = system
+    assume(equality.any())
+    values = {abs(value) for value in maximal_minors(with_slacks(matrix, equality))}
+    assume(values - {0})
+    part = recognise(matrix, equality, sides, by_definition)
+    holds = part is not None and part.denominator == 1
+    assert holds == (values <= {0, 1})
+
+
+@settings(max_examples=150)
+@given(systems(), st.lists(st.tuples(st.integers(-2, 1), st.integers(0, 3)), min_size=4))
+def test_what_is_recognised_has_whole_vertices(system, box):
+    matrix, equality, sides = system
+    part = recognise(matrix, equality, sides)
+    assume(part is not None)
+    part.check(sp.csc_array(matrix))
+    part.check_sides([(s, s) if e else (None, s) for s, e in zip(sides, equality, strict=True)])
+    n = matrix.shape[1]
+    lower = np.array([low for low, _ in box[:n]])
+    upper = lower + np.array([width for _, width in box[:n]])
+    low = np.where(equality, sides, -np.inf)
+    for point in vertices(matrix, low, sides, lower, upper):
+        assert all(value.denominator == 1 for value in point)
+
+
+def test_the_right_one_of_dependent_rows_is_dropped():
+    matrix = np.array([[1, 1], [1, -1], [1, 0]])
+    part = recognise(matrix, np.full(3, True), [3, 1, 2])
+    assert part.denominator == 1
+    assert 2 in part.kept
+
+
+@pytest.mark.parametrize(("sides", "whole"), [((2, 0), True), ((3, 1), True), ((1, 0), False)])
+def test_some_systems_are_whole_for_some_sides_only(sides, whole):
+    part = recognise(np.array([[1, 1], [1, -1]]), np.full(2, True), sides)
+    assert (part is not None) == whole
+    if whole:
+        assert part.denominator == 2
+
+
+def test_entries_of_any_size_come_from_row_operations():
+    rng = np.random.default_rng(4)
+    mixed = np.tril(rng.integers(-2, 3, (30, 30)), -1) + np.eye(30, dtype=np.int64)
+    network = np.zeros((30, 60), np.int64)
+    for j, first in enumerate(rng.integers(0, 29, 60)):
+        network[first, j], network[rng.integers(first + 1, 30), j] = 1, -1
+    network = np.hstack([np.eye(30, dtype=np.int64), network])
+    matrix = mixed @ network
+    assert np.abs(matrix).max() > 1
+    part = recognise(matrix, np.full(30, True), np.zeros(30, np.int64))
+    part.check(sp.csc_array(matrix))
+    again = Unimodular.from_dict(part.to_dict())
+    again.check(sp.csc_array(matrix))
+
+
+def test_systems_without_an_equality_or_with_too_many_rows_are_left_to_others():
+    assert recognise(np.array([[2]]), np.array([False]), [0]) is None
+    large = np.eye(unimodular.MOST_ROWS + 1, dtype=np.int64)
+    assert recognise(large, np.full(len(large), True), np.zeros(len(large), np.int64)) is None
+
+
+def test_time_is_kept():
+    matrix = sp.csc_array(np.array([[2, 3], [1, 1]]))
+    late = unimodular.recognise(matrix, np.full(2, True), np.array([5, 2]), rest, Deadline(0))
+    assert late is None
