@@ -65,6 +65,7 @@ TERMINATION = {
     "infeasible": TerminationCondition.provenInfeasible,
     "unbounded": TerminationCondition.unbounded,
     "time_limit": TerminationCondition.maxTimeLimit,
+    "limit": TerminationCondition.iterationLimit,
     "interrupted": TerminationCondition.interrupted,
     "error": TerminationCondition.error,
 }

@@ -12,8 +12,9 @@ from .integrality.finding import Finding
 
 Floats = NDArray[np.float64]
 
-#: All values of `Solution.status`.
-STATUSES = ("optimal", "infeasible", "unbounded", "time_limit", "interrupted", "error")
+#: All values of `Solution.status`; 'limit' is a limit other than time that the user set for
+#: branch and bound (on nodes, say).
+STATUSES = ("optimal", "infeasible", "unbounded", "time_limit", "limit", "interrupted", "error")
 
 
 @dataclass(frozen=True)

@@ -214,6 +214,64 @@ def test_prices_are_optimal(kind, api):
         checked += 1
 
 
+# --- small models that have been answered wrongly ------------------------------------------
+
+INF, PI, ROOT = math.inf, math.pi, math.sqrt(2)
+HARD = {
+    # Read as fractions, entries such as pi become whole numbers of 12 digits, whose prices are
+    # smaller than any tolerance.
+    "irrational rows": LinearForm.from_arrays(
+        [[-2 * PI, 3 * PI, 0], [0, -1, 0], [-ROOT, -3 * ROOT, -ROOT]],
+        row_lower=[-INF, -INF, -3],
+        row_upper=[4, 3, INF],
+        col_lower=[0, -1, -1],
+        col_upper=[1, 2, 0],
+        cost=[-1.5812806894500164, 0.10162441188198697, -0.8996629966872232],
+        sense="max",
+    ),
+    "irrational rows in branch and bound": LinearForm.from_arrays(
+        [[-PI, -2 * PI, 3 * PI, -3 * PI, 0], [3 * ROOT, -ROOT, 0, 2 * ROOT, -ROOT]],
+        row_lower=[-6, 0],
+        row_upper=[-6, INF],
+        col_lower=[0, 0, -2, -2, 0],
+        col_upper=[1, 3, -1, -1, 2],
+        cost=[0.07489506715109093, 0.78549477543, -0.91987390259, 1.80442862455, -0.01781389],
+        offset=-1,
+        integer=[True, True, True, False, True],
+    ),
+    "a price of one half": LinearForm.from_arrays(
+        [[0, -3, -3, 0, 1]],
+        row_lower=-4,
+        row_upper=INF,
+        col_lower=[0, 0, 1, 0, -1],
+        col_upper=[2, 3, 1, 1, 2],
+        cost=[2, -4, 0, 4, 0],
+        offset=1,
+    ),
+    "a plan in fractions": LinearForm.from_arrays(
+        [[-2, -2, 2, 0], [-3, 2, 0, 3], [2, -1, 0, 2]],
+        row_lower=[-3, 4, -2],
+        row_upper=[INF, 5, 1],
+        col_lower=[-INF, 1, -2, -1],
+        col_upper=[3, 4, INF, INF],
+        cost=[1, -5, 0, -2],
+        offset=-2,
+        sense="max",
+        integer=[True, True, False, True],
+    ),
+}
+
+
+@pytest.mark.parametrize("name", HARD)
+@pytest.mark.parametrize("solve", [by_current, by_legacy])
+def test_hard_models(solve, name):
+    form = HARD[name]
+    assert agree(solve(pyomo_model(form)), solve_exactly(form))
+    solution = routing.solve(form)
+    if solution.report.prices == "true":
+        check_prices(form, solution.x, solution.row_dual, solution.reduced_cost)
+
+
 # --- close calls ----------------------------------------------------------------------------
 
 

@@ -529,6 +529,32 @@ def test_no_time_left(api):
 
 
 @both
+def test_a_limit_on_nodes_is_no_proof(api):
+    rng = np.random.default_rng(1)
+    model = pyo.ConcreteModel()
+    model.take = pyo.Var(range(40), domain=pyo.Binary)
+    weight, worth = rng.integers(10, 60, (5, 40)), rng.integers(10, 60, 40)
+    model.room = pyo.Constraint(
+        range(5),
+        rule=lambda m, i: (
+            sum(int(weight[i, j]) * m.take[j] for j in range(40)) <= int(weight[i].sum()) // 3
+        ),
+    )
+    model.profit = pyo.Objective(
+        expr=sum(int(worth[j]) * model.take[j] for j in range(40)), sense=pyo.maximize
+    )
+    results = PLUGINS[api]().solve(
+        model, solver_options={"mip_max_nodes": 1}, raise_exception_on_nonoptimal_result=False
+    )
+    assert route(results) == "highs"
+    assert termination(results) is TerminationCondition.iterationLimit
+    if api == "current":
+        assert results.solution_status is SolutionStatus.feasible
+        assert results.objective_bound > results.incumbent_objective
+        assert results.incumbent_objective == pyo.value(model.profit)
+
+
+@both
 def test_options_that_highs_does_not_take_are_named(api):
     model = deliveries()
     for options in ({"mip_max_wheels": 3}, {"mip_max_nodes": "many"}):
