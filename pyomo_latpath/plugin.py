@@ -29,24 +29,16 @@ import datetime
 import logging
 import math
 import time
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Iterator
 from typing import Any, cast
 
-from pyomo.common.collections import ComponentMap
 from pyomo.common.config import Bool, ConfigValue, NonNegativeInt
 from pyomo.common.timing import HierarchicalTimer
 from pyomo.contrib.solver.common.base import Availability, LegacySolverWrapper, SolverBase
 from pyomo.contrib.solver.common.config import BranchAndBoundConfig
 from pyomo.contrib.solver.common.factory import SolverFactory
 from pyomo.contrib.solver.common.results import Results, SolutionStatus, TerminationCondition
-from pyomo.contrib.solver.common.solution_loader import SolutionLoader
-from pyomo.contrib.solver.common.util import (
-    NoDualsError,
-    NoFeasibleSolutionError,
-    NoOptimalSolutionError,
-    NoReducedCostsError,
-    NoSolutionError,
-)
+from pyomo.contrib.solver.common.util import NoFeasibleSolutionError, NoOptimalSolutionError
 from pyomo.core.base import NumericLabeler, Objective, SymbolMap
 from pyomo.core.staleflag import StaleFlagManager
 
@@ -54,6 +46,7 @@ from . import routing
 from .forms.from_pyomo import compile_model
 from .forms.linear_form import ComponentNames, Floats, LinearForm
 from .solution import Solution
+from .solution_loader import LatpathSolutionLoader, store_legacy
 
 logger = logging.getLogger("pyomo_latpath")
 
@@ -109,93 +102,6 @@ class LatpathConfig(BranchAndBoundConfig):  # type: ignore[misc]
             ),
         ):
             self.declare(name, ConfigValue(default, domain, description))
-
-
-class LatpathSolutionLoader(SolutionLoader):  # type: ignore[misc]
-    """Hands a solution over to the Pyomo model it belongs to."""
-
-    def __init__(self, model: Any, form: LinearForm, solution: Solution) -> None:
-        self._pyomo_model = model
-        self._variables = cast(ComponentNames, form.col_names).components
-        self._constraints = cast(ComponentNames, form.row_names).components
-        self._solution = solution
-
-    def get_number_of_solutions(self) -> int:
-        return 0 if self._solution.x is None else 1
-
-    def get_vars(self, vars_to_load: Sequence[Any] | None = None) -> ComponentMap:
-        if self._solution.x is None:
-            raise NoSolutionError()
-        return ComponentMap(_pairs(self._variables, self._solution.x, vars_to_load))
-
-    def load_vars(self, vars_to_load: Sequence[Any] | None = None) -> None:
-        if self._solution.x is None:
-            raise NoSolutionError()
-        for variable, value in _pairs(self._variables, self._solution.x, vars_to_load):
-            variable.set_value(value, skip_validation=True)
-        StaleFlagManager.mark_all_as_stale(delayed=True)
-
-    def get_duals(self, cons_to_load: Sequence[Any] | None = None) -> dict[Any, float]:
-        prices = self._solution.row_dual
-        return dict(self._priced(self._constraints, prices, cons_to_load, NoDualsError))
-
-    def get_reduced_costs(self, vars_to_load: Sequence[Any] | None = None) -> ComponentMap:
-        prices = self._solution.reduced_cost
-        return ComponentMap(
-            self._priced(self._variables, prices, vars_to_load, NoReducedCostsError)
-        )
-
-    def load_import_suffixes(self) -> None:
-        """Fill the suffixes `dual` and `rc`; leave them empty, and say so, without prices."""
-        suffixes = self._collect_and_clear_import_suffixes()
-        for name, read in (("dual", self.get_duals), ("rc", self.get_reduced_costs)):
-            if name in suffixes:
-                suffixes[name].update(self.prices_or_nothing(name, read))
-
-    def prices_or_nothing(self, name: str, read: Callable[[], Any]) -> Any:
-        """Return what `read` reads; nothing, with a line in the log, where there are no prices."""
-        try:
-            return read()
-        except (NoDualsError, NoReducedCostsError):
-            logger.warning(
-                "suffix %r is left empty: this solve has no prices%s",
-                name,
-                ""
-                if self._solution.x is None
-                else "; a model that needs branch and bound has them with fixed_plan_prices=True",
-            )
-            return {}
-
-    def _priced(
-        self,
-        components: list[Any],
-        prices: Floats,
-        wanted: Sequence[Any] | None,
-        refusal: type[Exception],
-    ) -> list[tuple[Any, float]]:
-        """Pair components with their prices, those without one (NaN) left out."""
-        if self._solution.x is None:
-            raise refusal()
-        pairs = list(_pairs(components, prices, wanted))
-        priced = [pair for pair in pairs if not math.isnan(pair[1])]
-        if pairs and not priced:
-            raise refusal()
-        return priced
-
-
-def _pairs(
-    components: list[Any], values: Floats, wanted: Sequence[Any] | None
-) -> Iterator[tuple[Any, float]]:
-    """Pair components with their values: all of them, or those wanted."""
-    # Adding 0.0 turns -0.0 into 0.0.
-    pairs = zip(components, (values + 0.0).tolist(), strict=True)
-    if wanted is None:
-        return pairs
-    by_id = {id(component): value for component, value in pairs}
-    for component in wanted:
-        if id(component) not in by_id:
-            raise KeyError(f"{component.name!r} is no part of the model that was solved")
-    return ((component, by_id[id(component)]) for component in wanted)
 
 
 class Latpath(SolverBase):  # type: ignore[misc]
@@ -325,7 +231,7 @@ class LegacyLatpath(LegacySolverWrapper, Latpath):  # type: ignore[misc]
         symbol_map.default_labeler = NumericLabeler("x")
         legacy._smap_id = None
         if not load_solutions and loader.get_number_of_solutions():
-            _store(loader, model, solution, symbol_map.getSymbol)
+            store_legacy(loader, model, solution, symbol_map.getSymbol)
             legacy.solution.insert(solution)
             legacy._smap_id = id(symbol_map)
             legacy._smap = symbol_map
@@ -453,20 +359,3 @@ def _refuse_unwanted(solution: Solution, config: LatpathConfig) -> None:
         raise NoOptimalSolutionError(diagnosis + NoOptimalSolutionError.default_message)
     if config.load_solutions and solution.x is None:
         raise NoFeasibleSolutionError(diagnosis + NoFeasibleSolutionError.default_message)
-
-
-def _store(loader: LatpathSolutionLoader, model: Any, solution: Any, symbol_of: Any) -> None:
-    """Keep a plan and its prices in a legacy solution, for `model.solutions.load_from`."""
-    for variable, value in loader.get_vars().items():
-        solution.variable[symbol_of(variable)] = {"Value": value}
-    if _imports(model, "rc"):
-        for variable, price in loader.prices_or_nothing("rc", loader.get_reduced_costs).items():
-            solution.variable[symbol_of(variable)]["Rc"] = price
-    if _imports(model, "dual"):
-        for constraint, price in loader.prices_or_nothing("dual", loader.get_duals).items():
-            solution.constraint[symbol_of(constraint)] = {"Dual": price}
-
-
-def _imports(model: Any, name: str) -> bool:
-    suffix = model.component(name)
-    return suffix is not None and suffix.import_enabled()
