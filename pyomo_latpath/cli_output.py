@@ -6,7 +6,6 @@ import csv
 import json
 import math
 import os
-import tempfile
 import textwrap
 from collections import Counter
 from collections.abc import Iterable, Iterator, Sequence
@@ -281,13 +280,13 @@ def write_certificate(path: Path, form: LinearForm, solution: Solution) -> None:
 @contextmanager
 def whole_file(path: Path) -> Iterator[IO[str]]:
     """Open a file that takes its place only once it has been written to the end."""
-    handle, draft = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.")
+    draft = path.with_name(f".{path.name}.{os.getpid()}")
     try:
-        with open(handle, "w", encoding="utf-8", newline="") as file:
+        with draft.open("x", encoding="utf-8", newline="") as file:
             yield file
         os.replace(draft, path)
     except BaseException:
-        os.unlink(draft)
+        draft.unlink(missing_ok=True)
         raise
 
 

@@ -228,6 +228,7 @@ def test_the_plan_is_written_by_name(folder):
     assert form.cost @ x == 14
     assert np.array_equal(form.matrix @ x, form.row_lower)
     assert {path.name for path in folder.iterdir() if "plan" in path.name} == {"plan.csv"}
+    assert plan.stat().st_mode == (folder / "caves.min").stat().st_mode
 
 
 def test_without_a_plan_nothing_is_written(folder):
