@@ -4,20 +4,21 @@ Every active constraint becomes one row, ranges included, and every free variabl
 active constraint or the objective mentions becomes one column. Fixed variables count as
 numbers. The model is only read.
 
-Rows and columns are numbered here, with `generate_standard_repn` for the linear terms of one
-expression, rather than by Pyomo's `LinearStandardFormCompiler`: it takes the same time,
-keeps a range in one row, takes products with fixed variables as linear, and lets a constraint
-without variables stay a row, so that a violated one is found, and named, like any other.
+Pyomo's `LinearStandardFormCompiler` does the work where it can. What it refuses (products with
+fixed variables, violated constraints without variables, numbers that are missing) is read again
+expression by expression: either it is linear after all, or the component can be named.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
+from dataclasses import dataclass
 from itertools import count
 from typing import Any
 
 import numpy as np
 import scipy.sparse as sp
+from pyomo.common.errors import PyomoException
 from pyomo.common.gc_manager import PauseGC
 from pyomo.contrib.solver.common.util import IncompatibleModelError
 from pyomo.core.base import (
@@ -36,6 +37,7 @@ from pyomo.gdp import Disjunct, Disjunction
 from pyomo.mpec import Complementarity
 from pyomo.network import Arc, Port
 from pyomo.repn import generate_standard_repn
+from pyomo.repn.plugins.standard_form import LinearStandardFormCompiler
 
 from .linear_form import ComponentNames, Flags, Floats, LinearForm
 
@@ -90,7 +92,7 @@ def compile_model(model: Any) -> LinearForm:
     >>> model.profit = pyo.Objective(expr=3 * model.wheels["tomme"], sense=pyo.maximize)
     >>> form = compile_model(model)
     >>> form.sense, form.cost.tolist(), list(form.col_names)
-    ('max', [3.0, 0.0], ['wheels[tomme]', 'wheels[brie]'])
+    ('max', [0.0, 3.0], ['wheels[brie]', 'wheels[tomme]'])
     >>> form.row_lower.tolist(), form.row_upper.tolist(), list(form.row_names)
     ([2.0], [9.0], ['shelf'])
     """
@@ -98,30 +100,94 @@ def compile_model(model: Any) -> LinearForm:
     # than making them.
     with PauseGC():
         _refuse_other_components(model)
-        columns = _Columns()
         objective = _objective_of(model)
-        target = None if objective is None else _linear_terms(objective, objective.expr)
-        targeted = [] if target is None else columns.numbers_of(target.linear_vars)
-        rows, lower, upper, triplet = _rows_of(model, columns)
-        columns.numbers_of(_mentioned_at_zero(model, objective, rows, columns))
-        n = len(columns.variables)
-        cost = np.zeros(n)
-        if target is not None:
-            cost[targeted] = target.linear_coefs
-        col_lower, col_upper, integer = _domains_of(columns.variables)
+        rows = list(model.component_data_objects(Constraint, active=True, descend_into=True))
+        system = _compiled(model, rows) or _read_one_by_one(objective, rows)
+        variables = list(system.variables)
+        variables += _mentioned_at_zero(model, objective, rows, variables)
+        extra = len(variables) - len(system.variables)
+        col_lower, col_upper, integer = _domains_of(variables)
         return LinearForm.from_arrays(
-            sp.csr_array(triplet, shape=(len(rows), n)).tocsc(),
-            row_lower=lower,
-            row_upper=upper,
+            sp.csc_array(
+                (
+                    system.matrix.data,
+                    system.matrix.indices,
+                    np.pad(system.matrix.indptr, (0, extra), mode="edge"),
+                ),
+                shape=(len(rows), len(variables)),
+            ),
+            row_lower=system.lower,
+            row_upper=system.upper,
             col_lower=col_lower,
             col_upper=col_upper,
-            cost=cost,
-            offset=0.0 if target is None else target.constant,
+            cost=np.pad(system.cost, (0, extra)),
+            offset=system.offset,
             sense="min" if objective is None or objective.sense == minimize else "max",
             integer=integer,
             row_names=ComponentNames(rows),
-            col_names=ComponentNames(columns.variables),
+            col_names=ComponentNames(variables),
         )
+
+
+@dataclass(frozen=True, eq=False)
+class _System:
+    """Rows and objective over the variables that they mention."""
+
+    matrix: sp.csc_array
+    lower: Floats
+    upper: Floats
+    cost: Floats
+    offset: float
+    variables: list[Any]
+
+
+def _compiled(model: Any, rows: list[Any]) -> _System | None:
+    """Let Pyomo compile the model; None where it cannot.
+
+    In its mixed form a range is two rows of one constraint, and constraints that always hold
+    are left out; here each constraint is one row again.
+    """
+    exported = model.component_objects(Suffix, active=True, descend_into=True)
+    if any(suffix.export_enabled() for suffix in exported):
+        return None  # the compiler would warn of them, call after call
+    try:
+        info = LinearStandardFormCompiler().write(model, mixed_form=True, set_sense=None)
+        sides = np.asarray(info.rhs, dtype=float)
+        offset = float(info.c_offset.sum())
+    except (PyomoException, ValueError, TypeError, ArithmeticError):
+        return None  # read one by one, it is either understood or named
+    if np.isnan(sides).any():
+        return None
+    place = {id(row): i for i, row in enumerate(rows)}
+    at = np.array([place[id(entry.constraint)] for entry in info.rows], dtype=np.int64)
+    side = np.array([entry.bound_type for entry in info.rows], dtype=np.int64)
+    lower, upper = np.full(len(rows), -np.inf), np.full(len(rows), np.inf)
+    lower[at[side <= 0]] = sides[side <= 0]
+    upper[at[side >= 0]] = sides[side >= 0]
+    matrix = info.A
+    if at.size != len(rows) or (np.diff(at) != 1).any():
+        first = np.zeros(at.size, dtype=bool)
+        first[np.unique(at, return_index=True)[1]] = True
+        triplets = matrix.tocoo()
+        once = first[triplets.row]
+        entries = triplets.data[once], (at[triplets.row[once]], triplets.col[once])
+        matrix = sp.csc_array(entries, shape=(len(rows), len(info.columns)))
+    cost = info.c.sum(axis=0) if info.c.shape[0] else np.zeros(len(info.columns))
+    return _System(matrix, lower, upper, np.asarray(cost).ravel(), offset, list(info.columns))
+
+
+def _read_one_by_one(objective: Any, rows: list[Any]) -> _System:
+    """Gather the rows and the objective, expression by expression."""
+    columns = _Columns()
+    target = None if objective is None else _linear_terms(objective, objective.expr)
+    targeted = [] if target is None else columns.numbers_of(target.linear_vars)
+    lower, upper, triplet = _rows_of(rows, columns)
+    cost = np.zeros(len(columns.variables))
+    if target is not None:
+        cost[targeted] = target.linear_coefs
+    matrix = sp.csr_array(triplet, shape=(len(rows), cost.size)).tocsc()
+    offset = 0.0 if target is None else target.constant
+    return _System(matrix, lower, upper, cost, offset, columns.variables)
 
 
 class _Columns:
@@ -195,44 +261,44 @@ def _missing_number(component: Any, expression: Any, error: Exception) -> ValueE
     return ValueError(f"{where} cannot be evaluated: {error}")
 
 
-def _rows_of(model: Any, columns: _Columns) -> tuple[list[Any], list[float], list[float], Any]:
-    """Gather the active constraints, their sides, and (data, columns, row starts)."""
-    rows: list[Any] = []
+def _rows_of(rows: list[Any], columns: _Columns) -> tuple[Floats, Floats, Any]:
+    """Read the sides of constraints, and their terms as (data, columns, row starts)."""
     lower: list[float] = []
     upper: list[float] = []
     data: list[float] = []
     numbers: list[int] = []
     starts = [0]
-    for constraint in model.component_data_objects(Constraint, active=True, descend_into=True):
+    for constraint in rows:
         low, body, high = constraint.to_bounded_expression(evaluate_bounds=True)
         repn = _linear_terms(constraint, body)
-        rows.append(constraint)
         lower.append(-np.inf if low is None else low - repn.constant)
         upper.append(np.inf if high is None else high - repn.constant)
         data.extend(repn.linear_coefs)
         numbers.extend(columns.numbers_of(repn.linear_vars))
         starts.append(len(data))
-    return (
-        rows,
-        lower,
-        upper,
-        (np.array(data, dtype=float), np.array(numbers, dtype=np.int32), np.array(starts)),
-    )
+    terms = np.array(data, dtype=float), np.array(numbers, dtype=np.int32), np.array(starts)
+    return np.array(lower), np.array(upper), terms
 
 
 def _mentioned_at_zero(
-    model: Any, objective: Any, rows: Iterable[Any], columns: _Columns
+    model: Any, objective: Any, rows: list[Any], variables: list[Any]
 ) -> list[Any]:
     """Return free variables that are mentioned only with the coefficient 0.
 
     A mutable Param may be 0 today. The variable is still the model's, and gets a value.
     """
     own = list(model.component_objects(Var, active=True, descend_into=True))
-    if sum(map(len, own)) == len(columns.variables):  # the rule, and quickly seen
+    if sum(map(len, own)) == len(variables):  # the rule, and quickly seen
         return []
-    absent: set[int] = set()
-    for component in own:
-        absent.update(set(map(id, component.values())).difference(columns.position))
+    known = set(map(id, variables))
+    absent = {
+        id(variable)
+        for component in own
+        for variable in component.values()
+        if id(variable) not in known and not variable.fixed
+    }
+    if not absent:
+        return []
     found: dict[int, Any] = {}
     expressions = [row.body for row in rows]
     if objective is not None:
