@@ -15,7 +15,7 @@ from .solution import WalkReport
 
 #: Of two parts' outcomes the earlier one is the whole model's: infeasible beats unbounded, and
 #: unbounded needs every part feasible.
-WORST_FIRST = ("infeasible", "error", "interrupted", "time_limit", "unbounded", "optimal")
+WORST_FIRST = ("infeasible", "error", "interrupted", "time_limit", "limit", "unbounded", "optimal")
 
 
 @dataclass(frozen=True, eq=False)

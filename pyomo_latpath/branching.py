@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 from numpy.typing import NDArray
 
@@ -45,7 +43,8 @@ def branch_part(
     Returns
     -------
     PartAnswer
-        Whole numbers are rounded where every row still holds.
+        Whole numbers are rounded where every row still holds, continuous columns optimised
+        beside them.
     """
     result = branch_and_bound(
         part.matrix,
@@ -59,19 +58,22 @@ def branch_part(
         deadline,
         start,
     )
-    status = "optimal" if result.status == "limit" else result.status
-    status = "error" if status == "pivot_limit" else status
+    status = "limit" if result.status == "pivot_limit" else result.status
     if result.x is None or status == "unbounded":
         return without_plan(part, status, "highs", findings)
     x = _rounded(part, result.x)
+    held = None if part.integer.all() else _held_plan(part, x, deadline)
+    if held is not None:
+        x = np.where(part.integer, x, held.x)
+    elif fixed_plan_prices:
+        held = _held_plan(part, x, deadline)
     bound = result.bound
     if relaxation is not None:
         bound = max(bound, relaxation.objective)
     exact = relaxation is not None and _relaxation_proves(part, x, relaxation)
     m, n = part.matrix.shape
-    prices = (np.full(m, np.nan), np.full(n, np.nan))
     continuous = not kinds_of(part).any()
-    priced = _prices_of_fixed_plan(part, x, deadline) if fixed_plan_prices or continuous else None
+    priced = held if fixed_plan_prices or continuous else None
     return PartAnswer(
         normal=part,
         status=status,
@@ -80,8 +82,8 @@ def branch_part(
         x=x,
         bound=bound,
         exact=exact,
-        row_dual=prices[0] if priced is None else priced[0],
-        reduced_cost=prices[1] if priced is None else priced[1],
+        row_dual=np.full(m, np.nan) if priced is None else priced.row_dual,
+        reduced_cost=np.full(n, np.nan) if priced is None else priced.reduced_cost,
         prices="none" if priced is None else "true" if continuous else "fixed plan",
     )
 
@@ -141,10 +143,12 @@ def _relaxation_proves(part: NormalForm, x: Floats, relaxation: LpResult) -> boo
     return prove_optimal(part, whole_costs(part), x, relaxation.row_dual).exact
 
 
-def _prices_of_fixed_plan(
-    part: NormalForm, x: Floats, deadline: Deadline
-) -> tuple[Floats, Floats] | None:
-    """Prices of the linear program with integer columns held at the plan, on a copy."""
+def _held_plan(part: NormalForm, x: Floats, deadline: Deadline) -> LpResult | None:
+    """Optimise what is left when integer columns are held at the plan, on a copy.
+
+    Branch and bound leaves continuous columns within its tolerance of their best values; a
+    vertex is sharper, and has prices: those of the fixed plan.
+    """
     held = kinds_of(part) > 0
     lp = LinearProgram(
         part.matrix,
@@ -155,6 +159,4 @@ def _prices_of_fixed_plan(
         part.cost,
     )
     result = lp.solve(deadline=deadline)
-    if result.status != "optimal" or not math.isfinite(result.objective):
-        return None
-    return result.row_dual, result.reduced_cost
+    return result if result.status == "optimal" else None

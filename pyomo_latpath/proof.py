@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
 
@@ -47,7 +47,8 @@ class Proof:
     exact : bool
         Whether the claim holds in exact arithmetic.
     row_dual : ndarray, shape (m,), float64
-        Prices that prove it (scaled units, minimisation); those given where it failed.
+        Exact prices (scaled units, minimisation); those given where it failed, or where only
+        the gap to them was closed.
     reduced_cost : ndarray, shape (n,), float64
     reason : str
         Why the check failed; empty where it did not.
@@ -129,13 +130,16 @@ def prove_optimal(
         return _failed(guess, "the plan does not satisfy every row exactly")
     plan, scale = _plan(x)
     assert plan is not None
+    tried = []
     for prices, multiple in _price_guesses(costs, row_dual, basis_prices):
         reduced = costs.numerators * multiple - _times(normal.matrix.T, prices)
-        if _complementary(normal, plan, scale, prices, reduced) or _gap_closed(
-            normal, costs, plan, scale, prices, reduced, multiple
-        ):
+        if _complementary(normal, plan, scale, prices, reduced):
             unit = costs.denominator * multiple
             return Proof(True, _quotient(prices, unit), _quotient(reduced, unit))
+        tried.append((prices, reduced, multiple))
+    for prices, reduced, multiple in tried:
+        if _gap_closed(normal, costs, plan, scale, prices, reduced, multiple):
+            return replace(guess, exact=True)
     return _failed(guess, "no exact prices were found that prove the plan optimal")
 
 
@@ -203,7 +207,7 @@ def _plan(x: Floats) -> tuple[Whole | None, int]:
     scale = common_scale(near)
     if scale > 10**9:
         return None, 1
-    plan = whole.astype(object) * scale
+    plan = whole.astype(np.int64).astype(object) * scale
     plan[odd] = [int(fraction * scale) for fraction in near]
     return plan, scale
 

@@ -37,7 +37,7 @@ from .integrality.finding import BlockFinding, Finding
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
 from .paths.optimal_face import is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
-from .proof import Proof, plan_holds, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
+from .proof import Proof, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
 from .solution import RouteReport, Solution
 from .why import telling, why
 
@@ -48,6 +48,8 @@ FACE_SHARE, FACE_SECONDS = 1.0, 0.02
 #: Seconds that the longer search for a certificate of a block with a whole optimum may take,
 #: where that is more than what the solve took so far.
 LONG_SECONDS = 0.5
+#: Relative error of plans that no exact check could be made of.
+ROUNDING = 1e-9
 #: Share of the time limit that the search for certificates may take.
 CERTIFY_SHARE = 0.5
 
@@ -306,11 +308,20 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
     if x is not None:
         since = time.perf_counter()
         proof = prove_optimal(part, whole_costs(part), x, optimum.row_dual)
-        holds = proof.exact or plan_holds(part, x) or not part.whole_rows.all()
+        holds = proof.exact or _as_good_as(part, x, optimum)
         request.clock.spend("proof", since)
         if holds:
             return _planned(part, (finding,), x, proof, None)
     return _branch(request, part, finding, optimum)
+
+
+def _as_good_as(part: NormalForm, x: Floats, optimum: LpResult) -> bool:
+    """Whether a whole plan holds, and costs no more than the relaxation, within rounding."""
+    activity = part.matrix @ x
+    slack = ROUNDING * np.maximum(1.0, abs(part.matrix) @ np.abs(x))
+    inside = (activity >= part.row_lower - slack) & (activity <= part.row_upper + slack)
+    dearer = float(part.cost @ x) - optimum.objective
+    return bool(inside.all() and dearer <= ROUNDING * (1.0 + abs(part.cost) @ np.abs(x)))
 
 
 def _finding(

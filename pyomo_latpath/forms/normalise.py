@@ -22,6 +22,8 @@ from .numbers import EXACT, SNAP, Integers, read_fractions, snap
 
 #: Denominators up to this one are scaled away in whole arrays; others row by row.
 DECIMAL = 100_000
+#: Rows whose whole entries would be larger stay as they are: a solver's tolerances are absolute.
+LARGEST_ENTRY = 10**7
 
 
 @dataclass(frozen=True)
@@ -259,6 +261,12 @@ def _scale(matrix: sp.csc_array, integer: Flags) -> _Scaled:
     readable[row_of[~read]] = False
     row_num[~readable], row_den[~readable] = 1, 1
     entries = _times(num, den, row_num[row_of], row_den[row_of])
+    grown = (np.abs(entries) > LARGEST_ENTRY) & (np.abs(entries) > np.abs(by_row.data))
+    if grown.any():
+        read = read & ~np.isin(row_of, row_of[grown])
+        row_num[row_of[grown]] = row_den[row_of[grown]] = 1
+        readable[row_of[grown]] = False
+        entries = _times(num, den, row_num[row_of], row_den[row_of])
     col_num, col_den = np.ones(n, np.int64), np.ones(n, np.int64)
     if not of_integer.all() and of_integer.any():
         odd = ~of_integer & read & (np.abs(entries) != 1)
