@@ -175,9 +175,9 @@ class Reduced:
         """Plain data, ready for JSON."""
         steps: list[dict[str, Any]] = []
         for step in self.steps:
-            steps.append({step.axis: step.line, "reason": step.reason})
+            steps.append({step.axis: int(step.line), "reason": step.reason})
             if step.reason == "copy":
-                steps[-1] |= {"of": step.of, "sign": step.sign}
+                steps[-1] |= {"of": int(step.of), "sign": int(step.sign)}
         return {"kind": self.kind, "steps": steps, "rest": self.rest.to_dict()}
 
     @classmethod

@@ -8,6 +8,7 @@ new structure is one new module, and one line in `RECOGNISERS`.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from typing import Literal
 
 import numpy as np
@@ -30,8 +31,6 @@ from . import incidence, interval, reductions, unimodular
 from .finding import BlockFinding, Finding, Verdict
 from .sampling import program_of
 from .verdicts import conflict_finding, proven_finding, sampled_finding
-
-__all__ = ["RECOGNISERS", "assess", "certify", "prove_tu", "proven_finding", "sampled_finding"]
 
 Recogniser = Callable[[sp.csc_array], Part | None]
 #: Share of the time limit that certificates may take.
@@ -108,8 +107,10 @@ def assess(
     broken = conflict_finding(normal)
     for block, found in zip(blocks, certify(normal, blocks, early, "linear"), strict=True):
         if broken is not None and np.isin(broken.rows, normal.rows[block.rows]).any():
-            continue
-        if found is not None:
+            rows, columns = normal.rows[block.rows], normal.columns[block.columns]
+            findings.append(replace(broken, rows=rows, columns=columns))
+            broken = None
+        elif found is not None:
             findings.append(proven_finding(normal, block, found, mark))
         else:
             piece = normal.restrict(block.rows, block.columns)
@@ -188,7 +189,7 @@ def certify(
             inner = _cut(matrix, here, place)
             key = b"|".join(a.tobytes() for a in (inner.data, inner.indices, inner.indptr))
             if key not in known:  # blocks that recur cost little
-                known[key] = prove_tu(inner, effort)
+                known[key] = prove_tu(inner, effort, deadline)
             proof = known[key]
             if proof is None and effort == "full":
                 proof = _prove_system(normal, block, inner, deadline)
@@ -216,14 +217,16 @@ def _prove_system(
         return None
 
     def rest(reduced: sp.csc_array) -> Part | None:
-        proof = prove_tu(reduced)
+        proof = prove_tu(reduced, deadline=deadline)
         return None if proof is None else proof[1]
 
     part = unimodular.recognise(matrix, equality, sides.astype(np.int64), rest, deadline)
     return None if part is None else ("unimodular", part)
 
 
-def prove_tu(matrix: sp.csc_array, effort: Effort = "full") -> tuple[str, Part] | None:
+def prove_tu(
+    matrix: sp.csc_array, effort: Effort = "full", deadline: Deadline | None = None
+) -> tuple[str, Part] | None:
     """Prove a matrix totally unimodular, if it has one of the known structures.
 
     Parameters
@@ -231,6 +234,7 @@ def prove_tu(matrix: sp.csc_array, effort: Effort = "full") -> tuple[str, Part] 
     matrix : scipy.sparse.csc_array, shape (m, n), int64
         Canonical: sorted indices, no stored zeros.
     effort : 'quick', 'linear' or 'full'
+    deadline : Deadline, optional
 
     Returns
     -------
@@ -251,15 +255,16 @@ def prove_tu(matrix: sp.csc_array, effort: Effort = "full") -> tuple[str, Part] 
         part = recognise(matrix)
         if part is not None:
             return name, part
-    if effort == "quick":
+    deadline = deadline or Deadline(None)
+    if effort == "quick" or deadline.passed:
         return None
-    reduction = reductions.reduce_matrix(matrix)
+    reduction = reductions.reduce_matrix(matrix, deadline)
     if not reduction.rows.size and not reduction.columns.size:
         empty = np.empty((0, 2), np.int64)
         return "network", reduction.prove(Network(empty, empty))
     tests = RECOGNISERS if reduction.steps else RECOGNISERS[len(QUICK) :]
     for name, recognise in (*tests, *SLOW) if effort == "full" else tests:
-        part = recognise(reduction.matrix)
+        part = None if deadline.passed else recognise(reduction.matrix)
         if part is not None:
             whole = reduction.prove(part)
             if isinstance(whole, Network) and reduction.steps:

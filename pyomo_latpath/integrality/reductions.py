@@ -18,6 +18,7 @@ import scipy.sparse as sp
 
 from ..certificate_parts import Axis, Reason
 from ..certificates import Conetwork, Network, Part, Reduced, Step
+from ..deadline import Deadline
 from ..forms.numbers import Integers
 
 #: Hashes are whole numbers modulo 2**64.
@@ -82,13 +83,15 @@ def recognise(matrix: sp.csc_array) -> Network | None:
     return Network(*_grow(empty, empty, reduction.steps, reduction.rows, reduction.columns))
 
 
-def reduce_matrix(matrix: sp.csc_array) -> Reduction:
+def reduce_matrix(matrix: sp.csc_array, deadline: Deadline | None = None) -> Reduction:
     """Drop zero, unit and copied rows and columns until there are none.
 
     Parameters
     ----------
     matrix : scipy.sparse.csc_array, shape (m, n), int64
         Entries +-1.
+    deadline : Deadline, optional
+        Where it comes first, what was dropped by then is returned; that is valid, too.
 
     Returns
     -------
@@ -100,9 +103,11 @@ def reduce_matrix(matrix: sp.csc_array) -> Reduction:
     >>> reduction.rows, [step.reason for step in reduction.steps]
     (array([0, 1, 2]), ['copy'])
     """
+    deadline = deadline or Deadline(None)
     lines = _Lines(matrix)
-    while lines.waiting:
-        lines.look_at(lines.waiting.popleft())
+    while lines.waiting and not deadline.passed:
+        for _ in range(min(1000, len(lines.waiting))):
+            lines.look_at(lines.waiting.popleft())
     m, n = matrix.shape
     alive = np.frombuffer(lines.alive, dtype=np.bool_)
     rows, columns = np.flatnonzero(alive[:m]), np.flatnonzero(alive[m : m + n])

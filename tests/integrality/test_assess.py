@@ -206,7 +206,8 @@ def test_a_conflict_of_rounded_sides_is_a_proof(matrix):
     form = form_of(matrix, row_lower=0.4, row_upper=0.6)
     finding = assess(form)
     assert finding.verdict == Verdict.PROVEN
-    assert finding.blocks[-1].reason.startswith("infeasible: row 'r1'")
+    assert finding.blocks[0].reason.startswith("infeasible: row 'r1'")
+    assert finding.blocks[0].columns.size == len(matrix[0])
 
 
 def test_a_column_without_a_whole_value_is_a_proof():

@@ -8,6 +8,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from pyomo_latpath.certificates import CertificateError, Conetwork, Network, Reduced
+from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.integrality import incidence, reductions
 
 
@@ -85,6 +86,13 @@ def test_a_long_chain_falls_one_by_one():
     chain = sp.csc_array(sp.diags_array([np.ones(size), -np.ones(size - 1)], offsets=[0, 1]))
     chain = chain.astype(np.int64)
     reductions.recognise(chain).check(chain)
+
+
+def test_a_reduction_that_ran_out_of_time_is_valid_as_far_as_it_went():
+    matrix = sp.csc_array(np.tril(np.ones((30, 30), np.int64)))
+    reduction = reductions.reduce_matrix(matrix, Deadline(0))
+    assert reduction.steps == ()
+    assert np.array_equal(reduction.matrix.toarray(), matrix.toarray())
 
 
 def test_a_ladder_of_copies_falls_rung_by_rung():
