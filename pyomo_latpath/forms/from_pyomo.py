@@ -164,6 +164,9 @@ def _compiled(model: Any, rows: list[Any]) -> _System | None:
     lower, upper = np.full(len(rows), -np.inf), np.full(len(rows), np.inf)
     lower[at[side <= 0]] = sides[side <= 0]
     upper[at[side >= 0]] = sides[side >= 0]
+    missing = np.setdiff1d(np.arange(len(rows)), at)
+    if missing.size:  # they hold whatever is decided, and their sides say so
+        lower[missing], upper[missing], _ = _rows_of([rows[i] for i in missing], _Columns())
     matrix = info.A
     if at.size != len(rows) or (np.diff(at) != 1).any():
         first = np.zeros(at.size, dtype=bool)
