@@ -46,19 +46,20 @@ def read_lp(path: Path | str) -> LinearForm:
     Raises
     ------
     ModelFileError
-        With HiGHS's message and line for a file it refuses, special ordered sets, indicators
-        and quadratic rows among them; for a quadratic objective; for a file without columns.
+        For a file that HiGHS refuses (special ordered sets, indicators and quadratic rows
+        among them), with its message and line where it has them; for a quadratic objective;
+        for a file without columns.
 
     Examples
     --------
     >>> with tempfile.TemporaryDirectory() as folder:
     ...     file = Path(folder) / "wheels.lp"
-    ...     _ = file.write_text("max\\n turned\\nst\\n shelf: turned <= 8 wheels\\nend")
+    ...     _ = file.write_text("max\\n [ turned ^ 2 ] / 2\\nst\\n shelf: turned <= 8\\nend")
     ...     try:
     ...         read_lp(file)
     ...     except ModelFileError as error:
-    ...         print(error.line, error.sentence)
-    4 expected ..., found `wheels`
+    ...         print(error.sentence)
+    the objective is quadratic in 'turned'; only linear models can be read
     """
     path = Path(path)
     parser = _Parser()
@@ -78,11 +79,13 @@ def read_lp(path: Path | str) -> LinearForm:
 
 def _refusal(path: Path, messages: list[str]) -> ModelFileError:
     """Turn the parser's messages into one sentence and a line number."""
-    errors = [message for message in messages if message.startswith("ERROR")]
-    text = errors[0] if errors else "HiGHS cannot read the file and does not say why"
-    place = _WHERE.search(text)
-    sentence = text.removeprefix("ERROR:").strip().split("\n")[0]
-    return ModelFileError(path, int(place.group(1)) if place else None, sentence)
+    for message in messages:
+        sentence = message.removeprefix("ERROR:").strip().split("\n")[0]
+        if message.startswith("ERROR") and not sentence.startswith("Parser error reading"):
+            place = _WHERE.search(message)
+            return ModelFileError(path, int(place.group(1)) if place else None, sentence)
+    sentence = "this is no .lp model that HiGHS can read; highspy from 1.16 on names the line"
+    return ModelFileError(path, None, sentence)
 
 
 def _refuse_quadratic(path: Path, parser: _Parser, lp: Any) -> None:

@@ -19,6 +19,9 @@ from pyomo_latpath.forms.linear_form import LinearForm
 
 INF = math.inf
 
+# Earlier releases refuse an .lp file without a reason.
+HIGHS_NAMES_LINES = (highspy.HIGHS_VERSION_MAJOR, highspy.HIGHS_VERSION_MINOR) >= (1, 16)
+
 # One column outside integer markers and one inside; the bounds are put in by the tests.
 MPS = """NAME          CELLAR
 ROWS
@@ -315,9 +318,10 @@ def test_a_wrong_lp_file_is_refused_in_highs_s_words(tmp_path, old, new, line, p
     path = write(tmp_path, "wheels.lp", LP.replace(old, new, 1))
     with pytest.raises(ModelFileError) as caught:
         read(path)
-    assert phrase in caught.value.sentence
     assert str(path) in str(caught.value)
-    if line is not None:
+    if HIGHS_NAMES_LINES or "quadratic in" in phrase or "columns" in phrase:
+        assert phrase in caught.value.sentence
+    if HIGHS_NAMES_LINES and line is not None:
         assert caught.value.line == line
 
 
