@@ -18,9 +18,9 @@ from ..forms.linear_form import Floats
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
 from ..highs import Basis, LinearProgram, LpResult
-from ..proof import prove_infeasible
 from .exact_vertex import exact_vertex
 from .finding import Witness
+from .infeasible import conflicting_rows
 
 #: How far from a whole number a value counts as fractional.
 FRACTIONAL = 1e-6
@@ -98,11 +98,14 @@ def sample_vertices(
             break
         if k or not first:
             program.set_cost(cost)
-            result = _bounded_optimum(piece, program, cost, deadline)
+            result = program.solve(deadline=deadline)
         else:
             result = first[1]
+        if result.status == "unbounded":
+            program.set_cost(_turned(piece, cost))
+            result = program.solve(deadline=deadline)
         if result.status == "infeasible":
-            return Sample(0, infeasible=True, conflict=_conflict(piece, result))
+            return Sample(0, infeasible=True, conflict=conflicting_rows(piece, result.farkas))
         if result.status != "optimal":
             break
         count += 1
@@ -117,24 +120,18 @@ def sample_vertices(
     return _put_back(piece, first, Sample(count, unconfirmed=unconfirmed))
 
 
-def _conflict(piece: NormalForm, result: LpResult) -> Integers | None:
-    """Rows with multipliers that prove the block infeasible (Farkas' lemma), if they do."""
-    if result.farkas is None or not prove_infeasible(piece, result.farkas):
-        return None
-    size = np.abs(result.farkas)
-    return np.flatnonzero(size > 1e-9 * size.max(initial=0.0))
-
-
 def program_of(piece: NormalForm) -> LinearProgram:
     """Return the relaxation of a block, its true objective to be minimised."""
     limits = piece.row_lower, piece.row_upper, piece.col_lower, piece.col_upper
     return LinearProgram(piece.matrix, *limits, piece.cost)
 
 
-def _put_back(piece: NormalForm, first: tuple[LinearProgram, LpResult] | None, s: Sample) -> Sample:
+def _put_back(
+    piece: NormalForm, first: tuple[LinearProgram, LpResult] | None, sample: Sample
+) -> Sample:
     if first:
         first[0].set_cost(piece.cost)
-    return s
+    return sample
 
 
 def _objectives(piece: NormalForm, samples: int, seed: int) -> Iterator[Floats]:
@@ -148,17 +145,11 @@ def _objectives(piece: NormalForm, samples: int, seed: int) -> Iterator[Floats]:
             yield piece.cost * 10.0 ** rng.uniform(-1.0, 1.0, size)
 
 
-def _bounded_optimum(
-    piece: NormalForm, program: LinearProgram, cost: Floats, deadline: Deadline
-) -> LpResult:
-    """Optimise; where the objective is unbounded, turn it towards the finite bounds."""
-    result = program.solve(deadline=deadline)
-    if result.status != "unbounded":
-        return result
+def _turned(piece: NormalForm, cost: Floats) -> Floats:
+    """Turn an unbounded objective towards the finite bounds: then there is an optimum."""
     lower, upper = np.isfinite(piece.col_lower), np.isfinite(piece.col_upper)
-    turned = np.where(lower & upper, cost, np.where(lower, abs(cost), -abs(cost) * upper))
-    program.set_cost(turned)
-    return program.solve(deadline=deadline)
+    one_sided = np.where(lower, abs(cost), np.where(upper, -abs(cost), 0.0))
+    return np.asarray(np.where(lower & upper, cost, one_sided))
 
 
 def fractional_witness(piece: NormalForm, basis: Basis) -> Witness | None:

@@ -119,6 +119,21 @@ def test_an_unbounded_objective_is_turned_towards_the_bounds():
     assert_vertex(form, sample.witness)
 
 
+def test_a_known_unbounded_outcome_is_turned_too():
+    piece = normalise(
+        LinearForm.from_arrays(
+            [[1, -1]], row_lower=0, row_upper=2, col_lower=[0, -np.inf], col_upper=np.inf, cost=-1
+        )
+    )
+    program = program_of(piece)
+    first = program.solve()
+    assert first.status == "unbounded"
+    sample = sample_vertices(
+        piece, samples=4, seed=0, deadline=Deadline(None), first=(program, first)
+    )
+    assert (sample.count, sample.witness) == (4, None)
+
+
 def test_an_infeasible_block_names_the_rows_that_conflict():
     form = LinearForm.from_arrays(
         [[1, 1, 0], [1, 1, 0], [0, 1, 1]],
