@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from .answers import PartAnswer, without_plan
@@ -36,7 +37,7 @@ def branch_part(
     relaxation : LpResult, optional
         Of the part; its prices may prove the plan optimal, its objective bounds the plan's.
     start : ndarray, shape (n,), optional
-        A plan to begin with.
+        A plan to begin with, in the form's units.
     fixed_plan_prices : bool
         Price the linear program that is left when integer columns are held at the plan.
 
@@ -46,22 +47,11 @@ def branch_part(
         Whole numbers are rounded where every row still holds, continuous columns optimised
         beside them.
     """
-    result = branch_and_bound(
-        part.matrix,
-        part.row_lower,
-        part.row_upper,
-        part.col_lower,
-        part.col_upper,
-        part.cost,
-        kinds_of(part),
-        settings,
-        deadline,
-        start,
-    )
+    result = branch_and_bound(*_as_given(part), kinds_of(part), settings, deadline, start)
     status = "limit" if result.status == "pivot_limit" else result.status
     if result.x is None or status == "unbounded":
         return without_plan(part, status, "highs", findings)
-    x = _rounded(part, result.x)
+    x = _rounded(part, result.x * part.col_den / part.col_num)
     held = None if part.integer.all() else _held_plan(part, x, deadline)
     if held is not None:
         x = np.where(part.integer, x, held.x)
@@ -85,6 +75,24 @@ def branch_part(
         row_dual=np.full(m, np.nan) if priced is None else priced.row_dual,
         reduced_cost=np.full(n, np.nan) if priced is None else priced.reduced_cost,
         prices="none" if priced is None else "true" if continuous else "fixed plan",
+    )
+
+
+def _as_given(part: NormalForm) -> tuple[sp.csc_array, Floats, Floats, Floats, Floats, Floats]:
+    """Matrix, sides, bounds and cost of a part in the form's units, without the scaling.
+
+    HiGHS scales for itself, and a user who compares meets the same search tree.
+    """
+    form = part.form
+    shift = (form.matrix @ part.fixed_value)[part.rows]
+    sign = 1.0 if form.sense == "min" else -1.0
+    return (
+        form.matrix[:, part.columns][part.rows, :],
+        form.row_lower[part.rows] - shift,
+        form.row_upper[part.rows] - shift,
+        form.col_lower[part.columns],
+        form.col_upper[part.columns],
+        sign * form.cost[part.columns],
     )
 
 
