@@ -20,20 +20,16 @@ import scipy.sparse as sp
 from numpy.typing import NDArray
 from scipy.sparse.csgraph import connected_components
 
+from .certificate_reading import (
+    SAFE,
+    CertificateError,
+    read_indices,
+    read_pairs,
+    read_value,
+    require,
+    require_indices,
+)
 from .forms.numbers import Integers
-
-#: Products below this bound are exact in 64 bits.
-SAFE = 2**62
-
-
-class CertificateError(ValueError):
-    """A certificate that does not prove what it claims; the message says where it fails."""
-
-
-def require(holds: Any, message: str) -> None:
-    """Raise CertificateError with the message unless `holds`."""
-    if not holds:
-        raise CertificateError(message)
 
 
 class Part(Protocol):
@@ -402,32 +398,3 @@ def part_from_dict(data: dict[str, Any]) -> Part:
     kind = data.get("kind")
     require(isinstance(kind, str) and kind in KINDS, f"{kind!r} is no kind of certificate")
     return KINDS[str(kind)].from_dict(data)
-
-
-def read_value(data: dict[str, Any], key: str, kind: type) -> Any:
-    """Return data[key], which must be of just this type."""
-    value = data.get(key)
-    require(type(value) is kind, f"'{key}' is missing or not of type {kind.__name__}")
-    return value
-
-
-def read_indices(data: dict[str, Any], key: str) -> Integers:
-    """Return data[key], a list of whole numbers that fit 64 bits."""
-    values = read_value(data, key, list)
-    plain = all(type(value) is int and abs(value) < SAFE for value in values)
-    require(plain, f"'{key}' is not a list of indices")
-    return np.array(values, dtype=np.int64)
-
-
-def read_pairs(data: dict[str, Any], key: str) -> Integers:
-    """Return data[key], a list of pairs of whole numbers, as an array of shape (k, 2)."""
-    pairs = read_value(data, key, list)
-    plain = all(isinstance(pair, list) and len(pair) == 2 for pair in pairs)
-    require(plain, f"'{key}' is not a list of pairs")
-    return read_indices({key: [end for pair in pairs for end in pair]}, key).reshape(-1, 2)
-
-
-def require_indices(values: Integers, size: int, what: str) -> None:
-    """Require indices within 0 to size - 1, none twice."""
-    require(((values >= 0) & (values < size)).all(), f"{what} has an index outside 0 to {size - 1}")
-    require((np.diff(np.sort(values)) > 0).all(), f"{what} has an index twice")

@@ -10,7 +10,6 @@ from __future__ import annotations
 
 import hashlib
 import math
-import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
@@ -22,8 +21,6 @@ from numpy.typing import NDArray
 
 from .certificate_parts import (
     KINDS,
-    SAFE,
-    CertificateError,
     Conetwork,
     Network,
     Part,
@@ -32,6 +29,12 @@ from .certificate_parts import (
     Trivial,
     Unimodular,
     part_from_dict,
+)
+from .certificate_reading import (
+    SAFE,
+    CertificateError,
+    Factors,
+    read_factors,
     read_indices,
     read_value,
     require,
@@ -116,7 +119,7 @@ class Certificate:
     >>> check_certificate([[1, 1]], Certificate("", (pair,)))
     Traceback (most recent call last):
     ...
-    pyomo_latpath.certificate_parts.CertificateError: block 0: its column 1 is not the tree path
+    pyomo_latpath.certificate_reading.CertificateError: block 0: its column 1 is not the tree path
     of its arc
     """
 
@@ -215,38 +218,6 @@ def check_certificate(form_or_matrix: Any, certificate: Certificate) -> None:
         raise CertificateError(f"block {k}: {error}") from None
 
 
-@dataclass(frozen=True, eq=False)
-class _Factors:
-    """Factors of all rows or columns; num / den, or `exact` where num is 0."""
-
-    num: Integers
-    den: Integers
-    exact: NDArray[Any]
-
-
-def _read_factors(size: int, places: Integers, texts: list[str]) -> _Factors:
-    table = {}
-    for text in dict.fromkeys(texts):
-        plain = isinstance(text, str) and re.fullmatch(r"-?[0-9]+(/[0-9]*[1-9][0-9]*)?", text)
-        require(plain, f"the factor {text!r} is not of the form p/q")
-        table[text] = Fraction(text)
-        require(table[text] != 0, "a factor is 0")
-    factors = _Factors(np.ones(size, np.int64), np.ones(size, np.int64), np.empty(size, object))
-    factors.exact.fill(Fraction(1))
-    if set(table) <= {"1"}:
-        return factors
-    small = {
-        text: (f.numerator, f.denominator)
-        if max(abs(f.numerator), f.denominator) < SAFE
-        else (0, 1)
-        for text, f in table.items()
-    }
-    factors.num[places] = [small[text][0] for text in texts]
-    factors.den[places] = [small[text][1] for text in texts]
-    factors.exact[places] = [table[text] for text in texts]
-    return factors
-
-
 class _Claim:
     """A form and a certificate, laid side by side.
 
@@ -278,7 +249,7 @@ class _Claim:
         self.mixed = np.zeros(m, np.bool_)
         self.mixed[form.matrix.indices[self.inside & ~form.integer[self.column_of]]] = True
 
-    def _places(self, axis: str, size: int) -> tuple[Integers, Integers, _Factors]:
+    def _places(self, axis: str, size: int) -> tuple[Integers, Integers, Factors]:
         """Block, place in the block, and factor of each row or column."""
         owner, place = np.full(size, -1), np.zeros(size, np.int64)
         all_places = [b.rows if axis == "row" else b.columns for b in self.blocks]
@@ -291,7 +262,7 @@ class _Claim:
             owner[places], place[places] = k, np.arange(places.size)
             texts += factors
         together = np.concatenate([np.empty(0, np.int64), *all_places])
-        return owner, place, _read_factors(size, together, texts)
+        return owner, place, read_factors(size, together, texts)
 
     def _drop_what_trivial_blocks_do_not_speak_of(self) -> None:
         kinds = [isinstance(block.part, Trivial) for block in self.blocks]
