@@ -114,8 +114,8 @@ def parse_at_once(text: bytes, dialect: Dialect) -> Content | None:
         if (tokens[chosen] != len(fields) + 1).any():
             return None
         letters_at = token_at[first[chosen]]
-        if not blank[letters_at + 1].all():
-            return None
+        # With the letters wiped out only numbers are left; a letter glued to a word ("a1")
+        # leaves one number too many.
         kept = data[np.repeat(chosen, length)]
         kept[np.cumsum(length[chosen]) - length[chosen] + letters_at - line_start[chosen]] = 32
         numbers = _parse_numbers(kept, letters_at.size * len(fields))

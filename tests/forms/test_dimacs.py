@@ -134,6 +134,11 @@ FLOW_ERRORS = {
     "unknown letter": ("p min 2 0\nx 3\n", 2, "starts with 'x'"),
     "glued letter": ("p min 2 1\na1 2 0 1 1 1\n", 2, "starts with 'a1'"),
     "short arc": ("p min 2 1\na 1 2 0 4\n", 2, "has 4 values after 'a'; expected 'a TAIL HEAD"),
+    "short and long": (
+        "p min 2 2\na 1 2 0 4\na 1 2 0 4 1 1\n",
+        2,
+        "has 4 values after 'a'",
+    ),
     "long node": ("p min 2 0\nn 1 2 3\n", 2, "has 3 values after 'n'; expected 'n NODE SUPPLY'"),
     "letters": ("p min 2 1\na 1 2 0 many 1\n", 2, "'many' stands where a number is expected (the"),
     "letter glued": ("p min 2 1\na 1 2 0 3a 1\n", 2, "'3a' stands where a number"),
