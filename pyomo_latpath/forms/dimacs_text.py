@@ -20,7 +20,8 @@ Floats = NDArray[np.float64]
 Indices = NDArray[np.int64]
 
 _NUMBER = re.compile(rb"[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?")
-_IN_NUMBERS = np.isin(np.arange(256), np.frombuffer(b"0123456789+-.eE \t\r\n\v\f", np.uint8))
+_BLANK = np.isin(np.arange(256), np.frombuffer(b" \t\r\n\v\f", np.uint8))
+_IN_NUMBERS = np.isin(np.arange(256), np.frombuffer(b"0123456789+-.eE", np.uint8)) | _BLANK
 
 
 @dataclass(frozen=True)
@@ -87,7 +88,7 @@ def parse(path: Path, text: bytes, dialect: Dialect) -> Content:
 def parse_at_once(text: bytes, dialect: Dialect) -> Content | None:
     """Read everything with array operations; None for a file with anything out of order."""
     data = np.frombuffer(text, np.uint8)
-    blank = data <= 32
+    blank = _BLANK[data]
     token_at = np.flatnonzero(~blank & np.concatenate([[True], blank[:-1]]))
     line_end = np.append(np.flatnonzero(data == 10), data.size)
     last = np.searchsorted(token_at, line_end)
@@ -96,7 +97,7 @@ def parse_at_once(text: bytes, dialect: Dialect) -> Content | None:
     filled = np.flatnonzero(tokens)
     letter = np.zeros(tokens.size, dtype=np.uint8)
     letter[filled] = data[token_at[first[filled]]]
-    if not np.isin(letter, np.frombuffer(b"\0cpna", np.uint8)).all():
+    if not np.isin(letter[filled], np.frombuffer(b"cpna", np.uint8)).all():
         return None
     problem = np.flatnonzero(letter == ord("p"))
     entries = np.flatnonzero((letter == ord("n")) | (letter == ord("a")))
