@@ -267,6 +267,27 @@ def test_an_error_in_fixed_format_is_told_in_fixed_format(tmp_path):
         read(write(tmp_path, "cellar.mps", text))
 
 
+@settings(max_examples=200, deadline=None)
+@given(data=st.data())
+def test_a_damaged_mps_file_is_read_or_refused_but_never_breaks_the_reader(tmp_path_factory, data):
+    """A line is dropped, a word exchanged or a character changed."""
+    lines = data.draw(st.sampled_from([MPS.format(bounds=" FR BND milk\n"), ROWS])).split("\n")
+    at = data.draw(st.integers(0, len(lines) - 1))
+    words = lines[at].split(" ")
+    words[data.draw(st.integers(0, len(words) - 1))] = data.draw(
+        st.sampled_from(["", "UP", "BV", "1e999", "-7", "'MARKER'", "milk", "RHS", "ENDATA", "\0"])
+    )
+    lines[at] = " ".join(words)
+    del lines[data.draw(st.integers(0, len(lines) - 1))]
+    path = write(tmp_path_factory.mktemp("damaged"), "any.mps", "\n".join(lines))
+    try:
+        form = read(path)
+    except ModelFileError as error:
+        assert error.line is None or 1 <= error.line <= len(lines)
+    else:
+        assert form.shape == (len(form.row_names), len(form.col_names))
+
+
 LP = """\\ turning the wheels
 Maximize
  gain: 3 young + 2 old - 4
