@@ -33,7 +33,7 @@ from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm, normalise
 from .highs import LinearProgram, LpResult, MipSettings, check_settings
 from .integrality.assess import certify
-from .integrality.finding import BlockFinding, Finding
+from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
 from .paths.optimal_face import is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
@@ -290,8 +290,8 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
     seconds = time.perf_counter() - since
     request.clock.spend("solve", since)
     if optimum.status == "infeasible":
-        exact = prove_infeasible(part, optimum.farkas)
-        finding = sampled_finding(part, 0, None, request.seed, Deadline(0))
+        finding = sampled_finding(part, 0, (lp, optimum), request.seed, Deadline(0))
+        exact = finding.verdict is Verdict.PROVEN
         farkas = optimum.farkas
         return without_plan(part, "infeasible", "path", (finding,), exact=exact, farkas=farkas)
     if optimum.status != "optimal":
