@@ -353,8 +353,14 @@ def _results(model: Any, form: LinearForm, solution: Solution) -> Results:
 
 def _refuse_unwanted(solution: Solution, config: LatpathConfig) -> None:
     """Raise what Pyomo's `highs` raises for this outcome, and say why it came to it."""
-    status = solution.status.replace("_", " ")
-    diagnosis = f"The outcome is {status!r} by the route {_message(solution)}. "
+    ended = {
+        "infeasible": "The model is infeasible",
+        "unbounded": "The model is unbounded",
+        "time_limit": "The time limit ended the solve",
+        "limit": "A limit set among HiGHS's options ended the solve",
+        "interrupted": "The solve was interrupted",
+    }.get(solution.status, f"The solve ended with status {solution.status!r}")
+    diagnosis = f"{ended} (route {_message(solution)}). "
     if solution.status != "optimal" and config.raise_exception_on_nonoptimal_result:
         raise NoOptimalSolutionError(diagnosis + NoOptimalSolutionError.default_message)
     if config.load_solutions and solution.x is None:

@@ -405,8 +405,10 @@ def _crossed(
         if kind == "row"
         else (form.col_lower[i], form.col_upper[i])
     )
-    what = "limits cross" if low > high else "limits hold no whole number that can be reached"
-    return Conflict(kind, i, f"{kind} {names[i]!r}: its {what} [{low:g}, {high:g}]")
+    if low > high:
+        return Conflict(kind, i, f"{kind} {names[i]!r}: its limits [{low:g}, {high:g}] cross")
+    told = f"no value that it can take lies within its limits [{low:g}, {high:g}]"
+    return Conflict(kind, i, f"{kind} {names[i]!r}: {told}")
 
 
 def _broken_constant(form: LinearForm, value: Floats, constant: Flags) -> Conflict | None:
