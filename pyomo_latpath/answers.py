@@ -10,6 +10,7 @@ import numpy as np
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm
 from .integrality.finding import BlockFinding
+from .paths.box import box_of
 from .paths.path_solver import PathResult
 from .solution import WalkReport
 
@@ -57,6 +58,7 @@ class PartAnswer:
     ray: Floats | None = None
     farkas: Floats | None = None
     path: PathResult | None = None
+    pivots: int = 0
 
 
 def without_plan(
@@ -160,8 +162,8 @@ def exact_sum(values: Floats) -> float:
 
 
 def walk_report(parts: list[PartAnswer]) -> WalkReport | None:
-    """Add up the walks of all parts that went to the path solver."""
-    reports = [_report(part.path) for part in parts if part.path is not None]
+    """Add up the walks of all parts that took the path route."""
+    reports = [_report(part) for part in parts if part.route == "path"]
     if not reports:
         return None
     total = reports[0]
@@ -185,18 +187,20 @@ def walk_report(parts: list[PartAnswer]) -> WalkReport | None:
     return total
 
 
-def _report(path: PathResult) -> WalkReport:
+def _report(part: PartAnswer) -> WalkReport:
+    path = part.path
+    box = box_of(part.normal) if path is None else path.box
     return WalkReport(
-        steps=path.steps,
-        exact_steps=path.exact_steps,
-        pivots=path.pivots,
-        step_bound=path.walk.step_bound,
-        rounds=path.walk.rounds,
-        scaling_phases=path.walk.phases,
-        faces_fixed=path.walk.faces_fixed,
-        dimension=path.box.dimension,
-        box=path.box.side,
-        max_entry=path.box.max_entry,
-        engine=path.engine,
-        note=path.note,
+        steps=0 if path is None else path.steps,
+        exact_steps=path is None or path.exact_steps,
+        pivots=part.pivots if path is None else path.pivots,
+        step_bound=None if path is None else path.walk.step_bound,
+        rounds=0 if path is None else path.walk.rounds,
+        scaling_phases=0 if path is None else path.walk.phases,
+        faces_fixed=0 if path is None else path.walk.faces_fixed,
+        dimension=box.dimension,
+        box=box.side,
+        max_entry=box.max_entry,
+        engine="highs" if path is None else path.engine,
+        note="" if path is None else path.note,
     )

@@ -264,6 +264,7 @@ def _planned(
     x: Floats,
     proof: Proof,
     path: PathResult | None,
+    pivots: int = 0,
 ) -> PartAnswer:
     return PartAnswer(
         normal=part,
@@ -277,6 +278,7 @@ def _planned(
         reduced_cost=proof.reduced_cost,
         prices="true",
         path=path,
+        pivots=pivots,
     )
 
 
@@ -311,7 +313,7 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
         holds = proof.exact or _as_good_as(part, x, optimum)
         request.clock.spend("proof", since)
         if holds:
-            return _planned(part, (finding,), x, proof, None)
+            return _planned(part, (finding,), x, proof, None, optimum.pivots)
     return _branch(request, part, finding, optimum)
 
 

@@ -30,7 +30,8 @@ class WalkReport:
     pivots : int
         Basis changes, those that found the first vertex included.
     step_bound : int or None
-        Proven bound on the steps; None where the polytope has no known box.
+        Proven bound on the steps; None where the polytope has no known box, and where the
+        optimum of an uncertified relaxation was whole and no walk was needed.
     rounds, scaling_phases, faces_fixed : int
         Rounds of the face-fixing walk, phases of the scaling walks in them, and rows or
         bounds shown tight at every optimum.
