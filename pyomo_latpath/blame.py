@@ -8,7 +8,8 @@ from numpy.typing import NDArray
 from .deadline import Deadline
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import Conflict, NormalForm
-from .highs import MipSettings, branch_and_bound, conflicting_set
+from .highs import conflicting_set
+from .highs_mip import MipSettings, branch_and_bound
 
 #: Seconds spent on naming a conflict, at most.
 BUDGET = 10.0

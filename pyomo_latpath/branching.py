@@ -10,7 +10,8 @@ from .answers import PartAnswer, without_plan
 from .deadline import Deadline
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm
-from .highs import LinearProgram, LpResult, MipSettings, branch_and_bound
+from .highs import LinearProgram, LpResult
+from .highs_mip import MipSettings, branch_and_bound
 from .integrality.finding import BlockFinding
 from .proof import prove_optimal, whole_costs
 

@@ -1,12 +1,12 @@
-"""HiGHS as a basis engine for linear programs, and as branch and bound.
+"""HiGHS as a basis engine for linear programs.
 
-Everything that talks to HiGHS is here. Each option set is checked, each outcome mapped once.
+This module and `highs_mip` are all that talks to HiGHS. Each option set is checked, each outcome
+mapped once.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -19,7 +19,6 @@ from .deadline import Deadline
 
 Floats = NDArray[np.float64]
 Codes = NDArray[np.int8]
-Log = Callable[[str], None]
 
 #: Our word for each of HiGHS's, by name: not every version knows all of them.
 _OUTCOME = {
@@ -53,7 +52,7 @@ _CODE_OF = (
 )
 
 
-class _Silent(highspy.Highs):  # type: ignore[misc]
+class SilentHighs(highspy.Highs):  # type: ignore[misc]
     """A HiGHS instance that prints no banner when it is made."""
 
     def enableCallbacks(self) -> None:
@@ -139,11 +138,11 @@ class LinearProgram:
         cost: Floats,
     ) -> None:
         self.m, self.n = matrix.shape
-        self._highs = _Silent()
-        for name, value in (("presolve", "off"), ("solver", "simplex"), ("threads", 1)):
+        self._highs = SilentHighs()
+        for name, value in (("presolve", "off"), ("solver", "simplex")):
             set_option(self._highs, name, value)
         kinds = np.zeros(self.n, np.int32)
-        _pass(self._highs, matrix, row_lower, row_upper, col_lower, col_upper, cost, kinds)
+        pass_model(self._highs, matrix, row_lower, row_upper, col_lower, col_upper, cost, kinds)
         self._all = np.arange(self.n, dtype=np.int32)
         self._all_rows = np.arange(self.m, dtype=np.int32)
         self._cost = cost
@@ -151,17 +150,17 @@ class LinearProgram:
     def set_cost(self, cost: Floats) -> None:
         """Minimise another objective from now on."""
         self._cost = cost
-        _ok(self._highs.changeColsCost(self.n, self._all, cost), "set costs")
+        ok(self._highs.changeColsCost(self.n, self._all, cost), "set costs")
 
     def set_col_bounds(self, lower: Floats, upper: Floats) -> None:
         """Put other bounds on all columns."""
-        _ok(self._highs.changeColsBounds(self.n, self._all, lower, upper), "set column bounds")
+        ok(self._highs.changeColsBounds(self.n, self._all, lower, upper), "set column bounds")
 
     def set_row_bounds(self, lower: Floats, upper: Floats) -> None:
         """Put other sides on all rows."""
         if self.m:
             status = self._highs.changeRowsBounds(self.m, self._all_rows, lower, upper)
-            _ok(status, "set row sides")
+            ok(status, "set row sides")
 
     def basis(self) -> Basis:
         """Return the current basis."""
@@ -174,18 +173,18 @@ class LinearProgram:
         held.col_status = [_CODE_OF[code] for code in basis.col_status.tolist()]
         held.row_status = [_CODE_OF[code] for code in basis.row_status.tolist()]
         held.valid = True
-        _ok(self._highs.setBasis(held), "set a basis")
+        ok(self._highs.setBasis(held), "set a basis")
 
     def basic_variables(self) -> NDArray[np.int32]:
         """Return what is basic in each row: a column j as j, row i's activity as -1 - i."""
         status, basic = self._highs.getBasicVariables()
-        _ok(status, "tell its basis")
+        ok(status, "tell its basis")
         return np.asarray(basic, dtype=np.int32)
 
     def solve_transposed(self, right: Floats) -> Floats:
         """Solve y B = right for the current basis B, in floating point."""
         status, y = self._highs.getBasisTransposeSolve(right)
-        _ok(status, "solve with its basis")
+        ok(status, "solve with its basis")
         return np.asarray(y, dtype=np.float64)
 
     def solve(
@@ -218,7 +217,7 @@ class LinearProgram:
         farkas = ray = None
         if status == "unsettled":
             self._forget_cost_once(deadline)
-            status = "infeasible" if _outcome(self._highs) == "infeasible" else "unbounded"
+            status = "infeasible" if outcome(self._highs) == "infeasible" else "unbounded"
         if status == "infeasible":
             _, found, vector = self._highs.getDualRay()
             farkas = np.array(vector) if found else None
@@ -242,129 +241,14 @@ class LinearProgram:
         kept = self._cost
         self.set_cost(np.zeros(self.n))
         self._run(deadline)
-        _ok(self._highs.changeColsCost(self.n, self._all, kept), "set costs")
+        ok(self._highs.changeColsCost(self.n, self._all, kept), "set costs")
         self._cost = kept
 
     def _run(self, deadline: Deadline) -> str:
         # HiGHS adds up the time of all runs of an instance and holds the sum against the limit.
         set_option(self._highs, "time_limit", self._highs.getRunTime() + deadline.left)
         self._highs.run()
-        return _outcome(self._highs)
-
-
-@dataclass(frozen=True, eq=False)
-class MipResult:
-    """Outcome of branch and bound.
-
-    Attributes
-    ----------
-    status : str
-        'optimal', 'infeasible', 'unbounded', 'time_limit', 'limit', 'interrupted' or 'error'.
-    x : ndarray, shape (n,), float64, or None
-        Best plan found.
-    bound : float
-        Best bound on the minimum; -inf without one.
-    nodes : int
-    """
-
-    status: str
-    x: Floats | None
-    bound: float
-    nodes: int
-
-
-@dataclass(frozen=True)
-class MipSettings:
-    """What the user asks of branch and bound; None leaves HiGHS's own default.
-
-    Attributes
-    ----------
-    rel_gap, abs_gap : float or None
-    threads : int or None
-    options : mapping of str to value
-        Further HiGHS options, by HiGHS's names.
-    log : callable or None
-        Called with each line that HiGHS prints.
-    """
-
-    rel_gap: float | None = None
-    abs_gap: float | None = None
-    threads: int | None = None
-    options: Mapping[str, Any] | None = None
-    log: Log | None = None
-
-
-def check_settings(settings: MipSettings) -> None:
-    """Try all options on an empty instance.
-
-    Raises
-    ------
-    OptionError
-        Names the option that HiGHS does not take.
-    """
-    _apply(_Silent(), settings)
-
-
-def branch_and_bound(
-    matrix: sp.csc_array,
-    row_lower: Floats,
-    row_upper: Floats,
-    col_lower: Floats,
-    col_upper: Floats,
-    cost: Floats,
-    kinds: NDArray[np.int32],
-    settings: MipSettings,
-    deadline: Deadline,
-    start: Floats | None = None,
-) -> MipResult:
-    """Minimise over whole-number plans.
-
-    Parameters
-    ----------
-    matrix, row_lower, row_upper, col_lower, col_upper, cost
-        As in `LinearProgram`.
-    kinds : ndarray, shape (n,), int32
-        0 continuous, 1 integer, 2 semicontinuous, 3 semi-integer.
-    settings : MipSettings
-    deadline : Deadline
-    start : ndarray, shape (n,), optional
-        A plan to begin with.
-
-    Returns
-    -------
-    MipResult
-        Infeasible and unbounded are told apart by a run with a zero objective.
-    """
-    highs = _Silent()
-    _apply(highs, settings)
-    _pass(highs, matrix, row_lower, row_upper, col_lower, col_upper, cost, kinds)
-    if start is not None:
-        index = np.arange(start.size, dtype=np.int32)
-        _ok(highs.setSolution(start.size, index, start), "take a start plan")
-    status = _run_mip(highs, settings, deadline)
-    if status in ("unbounded", "unsettled"):
-        index = np.arange(cost.size, dtype=np.int32)
-        _ok(highs.changeColsCost(cost.size, index, np.zeros(cost.size)), "set costs")
-        settled = _run_mip(highs, settings, deadline)
-        settled = "unbounded" if settled in ("optimal", "limit") else settled
-        x = np.array(highs.getSolution().col_value) if settled == "unbounded" else None
-        return MipResult(settled, x, -math.inf, 0)
-    info = highs.getInfo()
-    feasible = info.primal_solution_status == highspy.SolutionStatus.kSolutionStatusFeasible
-    x = np.array(highs.getSolution().col_value, dtype=np.float64) if feasible else None
-    is_mip = bool(kinds.any())
-    bound = info.mip_dual_bound if is_mip else info.objective_function_value
-    bound = float(bound) if is_mip or status == "optimal" else -math.inf
-    return MipResult(status, x, bound, max(0, int(info.mip_node_count)))
-
-
-def _run_mip(highs: Any, settings: MipSettings, deadline: Deadline) -> str:
-    asked = (settings.options or {}).get("time_limit", math.inf)
-    limit = min(float(asked), deadline.left)
-    set_option(highs, "time_limit", highs.getRunTime() + limit)
-    highs.HandleKeyboardInterrupt = True
-    highs.run()
-    return _outcome(highs)
+        return outcome(self._highs)
 
 
 def conflicting_set(
@@ -383,16 +267,16 @@ def conflicting_set(
         Empty where HiGHS finds none in time, or where the relaxation is feasible.
     """
     n = col_lower.size
-    highs = _Silent()
-    for name, value in (("presolve", "off"), ("iis_strategy", 6), ("threads", 1)):
+    highs = SilentHighs()
+    for name, value in (("presolve", "off"), ("iis_strategy", 6)):
         set_option(highs, name, value)
     if deadline.left < math.inf:
         set_option(highs, "iis_time_limit", deadline.left)
         set_option(highs, "time_limit", deadline.left)
     kinds = np.zeros(n, np.int32)
-    _pass(highs, matrix, row_lower, row_upper, col_lower, col_upper, np.zeros(n), kinds)
+    pass_model(highs, matrix, row_lower, row_upper, col_lower, col_upper, np.zeros(n), kinds)
     highs.run()
-    if _outcome(highs) != "infeasible":
+    if outcome(highs) != "infeasible":
         return np.empty(0, np.int64), np.empty(0, np.int64)
     status, found = highs.getIis()
     if status == highspy.HighsStatus.kError or not found.valid_:
@@ -423,28 +307,11 @@ def set_option(highs: Any, name: str, value: Any) -> None:
     raise OptionError(f"HiGHS option {name!r} does not take {value!r}")
 
 
-def _apply(highs: Any, settings: MipSettings) -> None:
-    chosen: dict[str, Any] = {}
-    if settings.rel_gap is not None:
-        chosen["mip_rel_gap"] = float(settings.rel_gap)
-    if settings.abs_gap is not None:
-        chosen["mip_abs_gap"] = float(settings.abs_gap)
-    if settings.threads is not None:
-        chosen["threads"] = int(settings.threads)
-    for name, value in (chosen | dict(settings.options or {})).items():
-        set_option(highs, name, value)
-    if settings.log is not None:
-        log = settings.log
-        set_option(highs, "output_flag", True)
-        set_option(highs, "log_to_console", False)
-        highs.cbLogging += lambda event: log(event.message.rstrip("\n"))
-
-
-def _outcome(highs: Any) -> str:
+def outcome(highs: Any) -> str:
     return _OUTCOME[highs.getModelStatus().name]
 
 
-def _ok(status: Any, what: str) -> None:
+def ok(status: Any, what: str) -> None:
     if status == highspy.HighsStatus.kError:
         raise RuntimeError(f"HiGHS refused to {what}")
 
@@ -453,7 +320,7 @@ def _codes(statuses: Any) -> Codes:
     return np.fromiter(map(int, statuses), dtype=np.int8, count=len(statuses))
 
 
-def _pass(
+def pass_model(
     highs: Any,
     matrix: sp.csc_array,
     row_lower: Floats,
@@ -481,4 +348,4 @@ def _pass(
         matrix.data,
         kinds,
     )
-    _ok(status, "take the model")
+    ok(status, "take the model")

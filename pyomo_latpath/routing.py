@@ -31,7 +31,8 @@ from .deadline import Deadline
 from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm, normalise
-from .highs import LinearProgram, LpResult, MipSettings, check_settings
+from .highs import LinearProgram, LpResult
+from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding

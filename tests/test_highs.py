@@ -7,14 +7,8 @@ import scipy.sparse as sp
 
 from pyomo_latpath import highs
 from pyomo_latpath.deadline import Deadline
-from pyomo_latpath.highs import (
-    LinearProgram,
-    MipSettings,
-    OptionError,
-    branch_and_bound,
-    check_settings,
-    conflicting_set,
-)
+from pyomo_latpath.highs import LinearProgram, OptionError, conflicting_set
+from pyomo_latpath.highs_mip import MipSettings, branch_and_bound, check_settings
 
 INF = np.inf
 FOREVER = Deadline(None)
@@ -114,3 +108,12 @@ def test_a_conflicting_set_has_no_needless_member():
     assert (rows.tolist(), columns.tolist()) == ([0], [0, 1])
     rows, columns = conflicting_set(*program([[1, 1]], 3, INF, 0, 5, 0)[:5], FOREVER)
     assert rows.size == columns.size == 0
+
+
+def test_the_number_of_threads_may_change_from_solve_to_solve():
+    knapsack = program([[3, 5, 7]], -INF, 9, 0, 1, [-4, -5, -6])
+    for threads in (None, 1, 2, None, 1):
+        result = branch_and_bound(
+            *knapsack, np.ones(3, np.int32), MipSettings(threads=threads), FOREVER
+        )
+        assert (result.status, result.bound) == ("optimal", -9.0)

@@ -15,7 +15,7 @@ from timing import medians
 
 import pyomo_latpath as latpath
 from pyomo_latpath.deadline import Deadline
-from pyomo_latpath.highs import MipSettings, branch_and_bound
+from pyomo_latpath.highs_mip import MipSettings, branch_and_bound
 
 LIMIT = 60.0
 
