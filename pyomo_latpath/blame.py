@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -11,21 +13,38 @@ from .forms.normalise import Conflict, NormalForm
 from .highs import conflicting_set
 from .highs_mip import MipSettings, branch_and_bound
 
-#: Seconds spent on naming a conflict, at most.
+#: Seconds spent on naming a conflict of the relaxation, at most.
 BUDGET = 10.0
-#: Rows of a part whose relaxation is feasible are only tried one by one up to this many.
-MOST_ROWS_TRIED = 200
+#: The same for a conflict of whole plans alone: a share of the solve so far, and a floor.
+SHARE, FLOOR = 0.5, 0.04
 
 
-def blame_conflict(form: LinearForm, conflict: Conflict) -> tuple[str, ...]:
+@dataclass(frozen=True)
+class Blame:
+    """Rows and bounds that conflict.
+
+    Attributes
+    ----------
+    names : tuple of str
+        Rows by name, bounds of a column as 'bounds of NAME'.
+    minimal : bool
+        Whether leaving out any one of them makes the others satisfiable; False where the time
+        ran out before that was shown.
+    """
+
+    names: tuple[str, ...]
+    minimal: bool
+
+
+def blame_conflict(form: LinearForm, conflict: Conflict) -> Blame:
     """Name the row or column whose limits no whole plan can meet."""
     if conflict.kind == "row":
-        return (form.row_names[conflict.index],)
-    return (f"bounds of {form.col_names[conflict.index]}",)
+        return Blame((form.row_names[conflict.index],), True)
+    return Blame((f"bounds of {form.col_names[conflict.index]}",), True)
 
 
-def blame(normal: NormalForm, farkas: Floats | None, deadline: Deadline) -> tuple[str, ...]:
-    """Name rows and bounds that conflict, none of them needlessly.
+def blame(normal: NormalForm, farkas: Floats | None, seconds: float, deadline: Deadline) -> Blame:
+    """Name rows and bounds that conflict, if possible none of them needlessly.
 
     Parameters
     ----------
@@ -33,53 +52,76 @@ def blame(normal: NormalForm, farkas: Floats | None, deadline: Deadline) -> tupl
         An infeasible part.
     farkas : ndarray, shape (m,), float64, or None
         Multipliers that prove its relaxation infeasible; rows without one are not to blame.
+        None where the relaxation is feasible, but no whole plan.
+    seconds : float
+        Spent on the solve so far.
     deadline : Deadline
 
     Returns
     -------
-    tuple of str
-        Leaving out any one of them makes the others satisfiable. Empty where none was found
-        in the time.
+    Blame
+        Without names where nothing could be told in the time.
     """
-    deadline = deadline.within(BUDGET)
-    suspects = np.arange(normal.rows.size) if farkas is None else np.flatnonzero(farkas)
+    names, column_names = normal.form.row_names, normal.form.col_names
     if farkas is None:
-        found = _conflict_of_whole_plans(normal, deadline)
-        return tuple(normal.form.row_names[int(normal.rows[i])] for i in found)
-    rows, columns = conflicting_set(
+        rows, minimal = _conflict_of_whole_plans(normal, deadline.within(SHARE * seconds + FLOOR))
+        return Blame(tuple(names[int(normal.rows[i])] for i in rows), minimal)
+    suspects = np.flatnonzero(farkas)
+    found, columns = conflicting_set(
         normal.matrix.tocsr()[suspects, :].tocsc(),
         normal.row_lower[suspects],
         normal.row_upper[suspects],
         normal.col_lower,
         normal.col_upper,
-        deadline,
+        deadline.within(BUDGET),
     )
-    names, columns_of = normal.form.row_names, normal.form.col_names
-    return tuple(names[int(normal.rows[i])] for i in suspects[rows]) + tuple(
-        f"bounds of {columns_of[int(normal.columns[j])]}" for j in columns
-    )
+    told = tuple(names[int(normal.rows[i])] for i in suspects[found])
+    told += tuple(f"bounds of {column_names[int(normal.columns[j])]}" for j in columns)
+    if told:
+        return Blame(told, True)
+    return Blame(tuple(names[int(normal.rows[i])] for i in suspects), False)
 
 
-def _conflict_of_whole_plans(normal: NormalForm, deadline: Deadline) -> NDArray[np.int64]:
-    """Rows of a part whose relaxation is feasible, thinned out one by one (deletion filter)."""
+def _conflict_of_whole_plans(
+    normal: NormalForm, deadline: Deadline
+) -> tuple[NDArray[np.int64], bool]:
+    """Thin out the rows of a part, in ever smaller bundles, while it stays infeasible.
+
+    Returns
+    -------
+    rows : ndarray, int64
+        Empty where not one row could be left out in the time.
+    minimal : bool
+    """
     m = normal.rows.size
     kept = np.full(m, True)
-    if m > MOST_ROWS_TRIED:
-        return np.empty(0, np.int64)
-    for i in range(m):
-        kept[i] = False
-        status = branch_and_bound(
-            normal.matrix,
-            np.where(kept, normal.row_lower, -np.inf),
-            np.where(kept, normal.row_upper, np.inf),
-            normal.col_lower,
-            normal.col_upper,
-            np.zeros(normal.columns.size),
-            normal.integer.astype(np.int32),
-            MipSettings(threads=1),
-            deadline,
-        ).status
-        if status not in ("infeasible", "optimal"):
-            return np.empty(0, np.int64)
-        kept[i] = status == "optimal"
-    return np.flatnonzero(kept)
+    bundle = max(1, m // 4)
+    while True:
+        for begin in range(0, m, bundle):
+            tried = kept.copy()
+            tried[begin : begin + bundle] = False
+            if tried.sum() == kept.sum():
+                continue
+            status = "time_limit" if deadline.passed else _status_with(normal, tried, deadline)
+            if status == "infeasible":
+                kept = tried
+            elif status != "optimal":
+                return np.flatnonzero(kept) if not kept.all() else np.empty(0, np.int64), False
+        if bundle == 1:
+            return np.flatnonzero(kept), True
+        bundle = max(1, bundle // 4)
+
+
+def _status_with(normal: NormalForm, kept: NDArray[np.bool_], deadline: Deadline) -> str:
+    """Whether the kept rows alone have a whole plan."""
+    return branch_and_bound(
+        normal.matrix,
+        np.where(kept, normal.row_lower, -np.inf),
+        np.where(kept, normal.row_upper, np.inf),
+        normal.col_lower,
+        normal.col_upper,
+        np.zeros(normal.columns.size),
+        normal.integer.astype(np.int32),
+        MipSettings(),
+        deadline,
+    ).status

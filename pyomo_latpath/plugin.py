@@ -321,7 +321,8 @@ def _message(solution: Solution) -> str:
     message = f"{report.route}, {report.why}"
     if report.blame:
         more = len(report.blame) - NAMED
-        message += "; these conflict, and none of them is needless: "
+        message += "; these conflict"
+        message += ", and none of them is needless: " if report.blame_is_minimal else ": "
         message += ", ".join(report.blame[:NAMED]) + (f" and {more} more" if more > 0 else "")
     return message
 

@@ -24,7 +24,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from .answers import Merged, PartAnswer, merge, walk_report, without_plan
-from .blame import blame, blame_conflict
+from .blame import Blame, blame, blame_conflict
 from .branching import branch_part, largest_violation
 from .certificates import fingerprint
 from .deadline import Deadline
@@ -390,7 +390,7 @@ def _rounded_away(request: _Request, normal: NormalForm) -> Solution:
             walk=None,
             proof="exact",
             seconds=request.clock.seconds,
-            blame=blame_conflict(form, conflict),
+            blame=blame_conflict(form, conflict).names,
         ),
     )
 
@@ -400,10 +400,13 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
     merged = merge(request.form, normal, parts)
     findings = tuple(finding for part in parts for finding in part.findings)
     routes = {part.route for part in telling(parts)}
-    blamed: tuple[str, ...] = ()
+    blamed = Blame((), True)
     culprit = next((part for part in parts if part.status == "infeasible"), None)
     if culprit is not None:
-        blamed = blame(culprit.normal, culprit.farkas, request.deadline)
+        since = time.perf_counter()
+        spent = request.clock.total
+        blamed = blame(culprit.normal, culprit.farkas, spent, request.deadline)
+        request.clock.spend("proof", since)
     prices = {part.prices for part in parts}
     finding = Finding(findings, normal.snapped, request.seed)
     since = time.perf_counter()
@@ -421,7 +424,8 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
             seconds=request.clock.seconds,
             largest_violation=violation,
             prices=prices.pop() if len(prices) == 1 else "none" if not parts else "in part",
-            blame=blamed,
+            blame=blamed.names,
+            blame_is_minimal=blamed.minimal,
         ),
     )
 

@@ -81,8 +81,10 @@ class RouteReport:
         'none', 'true' (shadow prices of the model) or 'fixed plan' (of the LP that is left
         when the integer columns are held at the plan found).
     blame : tuple of str
-        Names of rows (and bounds, as 'bounds of NAME') that conflict, for infeasible models;
-        dropping any one of them restores feasibility of the set.
+        Names of rows (and bounds, as 'bounds of NAME') that conflict, for infeasible models.
+    blame_is_minimal : bool
+        Whether leaving out any one of those makes the others satisfiable; False where the time
+        ran out before that was shown.
     moves : tuple
         The changes that lead from the start to `x`; empty without a start.
     """
@@ -96,6 +98,7 @@ class RouteReport:
     largest_violation: float = 0.0
     prices: str = "none"
     blame: tuple[str, ...] = ()
+    blame_is_minimal: bool = True
     moves: tuple[Any, ...] = ()
 
     def to_dict(self) -> dict[str, Any]:
@@ -124,6 +127,7 @@ class RouteReport:
             "largest_violation": self.largest_violation,
             "prices": self.prices,
             "blame": list(self.blame),
+            "blame_is_minimal": self.blame_is_minimal,
         }
 
 
