@@ -11,6 +11,8 @@ from .network_kernel import ENTERING, PIVOTS, STEPS
 from .network_problem import Cut, Flags, FlowResult, Whole
 from .network_state import State
 
+FAR = 2**62
+
 
 def result_of(
     state: State, status: str, cut: Cut | None = None, ray: NDArray[np.int8] | None = None
@@ -101,8 +103,9 @@ def _spanning(state: State, tree: Flags, roots: Flags) -> tuple[Flags, Flags, Wh
         incident = np.argsort(both, kind="stable") % crossing.size
         chosen = np.zeros(crossing.size, np.int8)
         reached = np.zeros(count, np.int8)
+        limits = np.full(count, -FAR), np.full(count, FAR)
         state.kernels.join(
-            lows, highs, slack, idle.astype(np.int8), begin, incident, shift, reached, chosen
+            lows, highs, slack, idle, begin, incident, shift, *limits, reached, chosen
         )
         joins = chosen > 0
         base = reached == 2

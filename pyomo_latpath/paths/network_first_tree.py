@@ -42,8 +42,9 @@ def plant(state: State, start: FlowStart | None) -> None:
     loose = np.flatnonzero(between & outside).astype(np.int32)
     arcs.state[loose] = 0
     net = state.form.excess.copy()
-    np.subtract.at(net, arcs.tail[:m], np.where(outside, flow, 0))
-    np.add.at(net, arcs.head[:m], np.where(outside, flow, 0))
+    carrying = np.flatnonzero((flow > 0) & outside)
+    np.subtract.at(net, arcs.tail[carrying], flow[carrying])
+    np.add.at(net, arcs.head[carrying], flow[carrying])
     kernels.hang(arcs, tree, order, net)
     kernels.string(tree, order, np.zeros(n + 1, np.int32), np.zeros(n + 1, np.int32))
     kernels.set_potentials(arcs, tree)

@@ -169,6 +169,8 @@ def join(
     begin: Any,
     incident: Any,
     shift: Any,
+    lowest: Any,
+    highest: Any,
     reached: Any,
     chosen: Any,
 ) -> None:
@@ -178,6 +180,7 @@ def join(
     all where it is `idle` (such arcs join where no other does). From one tree on, all that is
     not joined moves together, up or down, until the nearest arc is tight (Prim 1957, with a
     moving measure). Fills `shift` and flags `chosen` arcs; a tree begun from is `reached` as 2.
+    `lowest` and `highest` keep the nearest limit of each tree, from far outside on.
     """
     for base in range(len(reached)):
         if reached[base]:
@@ -194,14 +197,17 @@ def join(
             for k in range(begin[node], begin[node + 1]):
                 i = incident[k] + 0
                 out = tail[i] == node
-                if reached[head[i] if out else tail[i]]:
+                other = head[i] + 0 if out else tail[i] + 0
+                if reached[other]:
                     continue
                 limit = theta + slack[i] if out else theta - slack[i]
                 if idle[i]:
                     rest.append((limit, i))
-                elif out:
+                elif out and limit < highest[other]:
+                    highest[other] = limit
                     heappush(rise, (limit, i))
-                else:
+                elif not out and limit > lowest[other]:
+                    lowest[other] = limit
                     heappush(fall, (-limit, i))
             drop_joined(rise, tail, head, reached)
             drop_joined(fall, tail, head, reached)

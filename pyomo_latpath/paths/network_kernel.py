@@ -24,8 +24,9 @@ UNCAPACITATED = 2**61
 UNLIMITED = 2**60
 
 OPTIMAL, RUNNING, UNBOUNDED = 0, 1, 2
-#: Places in the tally that the kernels keep.
-PIVOTS, STEPS, WORK, POSITION, ENTERING = range(5)
+#: Places in the tally that the kernels keep: pivots, those that moved flow, arcs priced, nodes
+#: visited, where pricing goes on, and the arc that entered last without limit.
+PIVOTS, STEPS, PRICED, VISITED, POSITION, ENTERING = range(6)
 #: Which part of the cycle blocks first.
 ON_ENTERING, ON_FIRST, ON_SECOND = 0, 1, 2
 
@@ -56,9 +57,9 @@ class Tree(NamedTuple):
 def walk(
     arcs: Arcs, tree: Tree, active: int, block: int, budget: int, most: int, tally: Any
 ) -> int:
-    """Pivot until optimal, until `budget` units of work are spent, or `most` pivots made."""
-    stop = tally[WORK] + budget
-    while tally[WORK] < stop and tally[PIVOTS] < most:
+    """Pivot until optimal, until `budget` arcs and nodes are seen, or `most` pivots made."""
+    stop = tally[PRICED] + tally[VISITED] + budget
+    while tally[PRICED] + tally[VISITED] < stop and tally[PIVOTS] < most:
         entering, reduced = price(arcs, tree.potential, active, block, tally)
         if entering < 0:
             return OPTIMAL
@@ -89,7 +90,7 @@ def price(arcs: Arcs, potential: Any, active: int, block: int, tally: Any) -> tu
         left -= stop - position
         position = stop
     tally[POSITION] = position
-    tally[WORK] += active - left
+    tally[PRICED] += active - left
     return entering, best
 
 
@@ -133,7 +134,7 @@ def pivot(
         resize(tree, second, first, top, apex)
         rehang(tree, entering, second, first, top, used + length, room - length, reduced)
     state[entering] = 0
-    tally[WORK] += tree.size[second if place == ON_SECOND else first]
+    tally[VISITED] += tree.size[second if place == ON_SECOND else first]
     return True
 
 
@@ -168,7 +169,7 @@ def blocking(
         length = second_length
         place = ON_SECOND
         top = second_top
-    tally[WORK] += visited
+    tally[VISITED] += visited
     return length, place, top, first
 
 

@@ -238,4 +238,4 @@ def _whole(values: ArrayLike, name: str) -> Whole:
         return np.zeros(given.shape, np.int64)
     if given.dtype.kind not in "iu" or (given.dtype.kind == "u" and given.max() > NO_LIMIT):
         raise ValueError(f"{name} must hold whole 64-bit numbers, not {given.dtype}")
-    return given.astype(np.int64)
+    return given.astype(np.int64, copy=False)

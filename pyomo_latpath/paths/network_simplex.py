@@ -84,8 +84,8 @@ class NetworkSimplex:
     compiled : bool
         See `solve_flow`.
     block : int, optional
-        Arcs priced in one go; 1.5 times the root of their number if not given. All of them
-        is Dantzig's rule, 1 takes the first improving arc.
+        Arcs priced in one go; the root of their number if not given. All of them is Dantzig's
+        rule, 1 takes the first improving arc.
 
     Attributes
     ----------
@@ -210,7 +210,7 @@ class NetworkSimplex:
     def _walk(self, deadline: Deadline, most: int) -> int:
         """Pivot in slices, so that the clock is heard and the memory kept in order."""
         state = self._state
-        block = self._block or max(10, math.isqrt(9 * state.active // 4))
+        block = self._block or max(10, math.isqrt(state.active))
         budget = max(SLICE, 32 * state.arcs.tail.size) if self._compiled else PLAIN_SLICE
         while True:
             code = state.kernels.walk(

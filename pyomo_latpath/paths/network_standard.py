@@ -7,7 +7,7 @@ measured from there; one with neither is split into two, one each way (Ahuja, Ma
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -56,33 +56,41 @@ class StandardForm:
         TooLargeError
             Where potentials might leave 64 bits.
         """
-        if (_size(cost).max(initial=0.0) + 1) * (self.excess.size + 1) >= MOST_COST:
+        largest = max(abs(int(cost.max(initial=0))), abs(int(cost.min(initial=0))))
+        if (largest + 1) * (self.excess.size + 1) >= MOST_COST:
             raise TooLargeError("costs times nodes exceed what 64-bit potentials hold")
-        return self.sign * cost[self.origin]
+        return cost if self._same else self.sign * cost[self.origin]
 
     def flow(self, x: Whole) -> Whole:
         """Flows of the standard arcs for x, clipped to their limits."""
-        far = np.clip(x, -UNLIMITED, UNLIMITED)[self.origin] - self.offset[self.origin]
-        return np.clip(self.sign * far, 0, self.capacity)
+        far = np.clip(x, -UNLIMITED, UNLIMITED) - self.offset
+        return np.clip(self.sign * far[self.origin], 0, self.capacity)
 
     def original(self, flow: Any) -> Whole:
-        """Flow of the problem's arcs (a circulation without `offset` goes the same way)."""
+        """Flow of the problem's arcs, without `offset` (so it serves circulations, too)."""
+        if self._same:
+            return flow.astype(np.int64)
         x = np.zeros(self.offset.size, np.int64)
         np.add.at(x, self.origin, self.sign * flow)
         return x
 
     def original_flags(self, flags: Flags) -> Flags:
         """Whether any standard arc of a problem's arc is flagged."""
+        if self._same:
+            return flags
         return np.bincount(self.origin, weights=flags, minlength=self.offset.size) > 0
 
     def part(self, flags: Flags, x: Whole) -> Flags:
         """Flags of the problem's arcs as flags of standard arcs; of two halves, x's side."""
-        halves = np.bincount(self.origin, minlength=self.offset.size) == 2
-        away = halves & (x < 0)
-        chosen = np.ones(self.origin.size, np.bool_)
-        chosen[: x.size] = ~away
-        chosen[x.size :] = away[self.origin[x.size :]]
+        m = self.offset.size
+        away = (np.bincount(self.origin, minlength=m) == 2) & (x < 0)
+        chosen = np.append(~away, away[self.origin[m:]])
         return flags[self.origin] & chosen
+
+    @property
+    def _same(self) -> bool:
+        """Whether the arcs are the problem's, none turned round or split."""
+        return self.sign.size == self.offset.size and self.sign.min(initial=1) > 0
 
 
 def standard_form(problem: FlowProblem) -> StandardForm:
@@ -93,35 +101,37 @@ def standard_form(problem: FlowProblem) -> StandardForm:
     TooLargeError
         Where flows might leave 64 bits, or there are too many nodes or arcs.
     """
-    lower, capacity = problem.lower, problem.capacity
-    no_lower, no_upper = lower == -NO_LIMIT, capacity == NO_LIMIT
-    offset = np.where(no_lower, np.where(no_upper, 0, capacity), lower)
-    total = _size(problem.supply).sum() + 2 * _size(offset).sum()
-    width = np.where(no_lower | no_upper, 0.0, capacity.astype(float) - lower.astype(float))
-    if total + width.sum() >= UNLIMITED:
+    no_lower, no_upper = problem.lower == -NO_LIMIT, problem.capacity == NO_LIMIT
+    turned, free = no_lower & ~no_upper, np.flatnonzero(no_lower & no_upper)
+    offset = np.where(no_lower, np.where(turned, problem.capacity, 0), problem.lower)
+    far = no_lower | no_upper
+    width = np.where(far, 0.0, problem.capacity.astype(np.float64) - problem.lower)
+    total = np.abs(problem.supply.astype(np.float64)).sum() + width.sum()
+    if total + 2 * np.abs(offset.astype(np.float64)).sum() >= UNLIMITED:
         raise TooLargeError("supplies and limits add up to more than 64-bit flows hold")
-    origin = np.arange(lower.size)
-    sign = np.where(no_lower & ~no_upper, -1, 1)
-    free = np.flatnonzero(no_lower & no_upper)
-    origin, sign = np.concatenate([origin, free]), np.concatenate([sign, np.full(free.size, -1)])
-    if origin.size + problem.supply.size > MOST_INDEX:
+    if offset.size + free.size + problem.supply.size > MOST_INDEX:
         raise TooLargeError("more nodes and arcs than 32 bits count")
-    room = np.where(no_lower | no_upper, UNCAPACITATED, np.where(no_lower, 0, capacity) - offset)
+    room = np.where(far, UNCAPACITATED, problem.capacity - np.where(far, 0, offset))
     excess = problem.supply.copy()
-    np.subtract.at(excess, problem.tail, offset)
-    np.add.at(excess, problem.head, offset)
-    tail, head = problem.tail[origin], problem.head[origin]
-    return StandardForm(
-        np.where(sign > 0, tail, head).astype(np.int32),
-        np.where(sign > 0, head, tail).astype(np.int32),
-        room[origin],
-        origin,
-        sign,
-        offset,
-        excess,
+    shifted = np.flatnonzero(offset)
+    np.subtract.at(excess, problem.tail[shifted], offset[shifted])
+    np.add.at(excess, problem.head[shifted], offset[shifted])
+    tail, head = problem.tail.astype(np.int32), problem.head.astype(np.int32)
+    if turned.any():
+        tail, head = np.where(turned, head, tail), np.where(turned, tail, head)
+    form = StandardForm(
+        tail, head, room, np.arange(offset.size), np.where(turned, -1, 1), offset, excess
     )
+    return _with_halves(form, free) if free.size else form
 
 
-def _size(values: Whole) -> NDArray[np.float64]:
-    """Absolute values, safe from overflow."""
-    return np.abs(values.astype(np.float64))
+def _with_halves(form: StandardForm, free: NDArray[np.intp]) -> StandardForm:
+    """Add the backward halves of arcs without limits."""
+    return replace(
+        form,
+        tail=np.append(form.tail, form.head[free]),
+        head=np.append(form.head, form.tail[free]),
+        capacity=np.append(form.capacity, form.capacity[free]),
+        origin=np.append(form.origin, free),
+        sign=np.append(form.sign, np.full(free.size, -1)),
+    )

@@ -34,7 +34,7 @@ class State:
         The problem's node behind each number; the root is n in both.
     active : int
         Places up to here are priced.
-    tally : ndarray, shape (5,), int64
+    tally : ndarray, shape (6,), int64
         Counters of the kernels.
     """
 
@@ -73,7 +73,9 @@ class State:
             room[2],
         )
         active = int(np.count_nonzero(movable))
-        return cls(form, kernels, arcs, tree, order, np.arange(n + 1), active, np.zeros(5, int))
+        return cls(
+            form, kernels, arcs, tree, order, np.arange(n + 1), active, np.zeros(6, np.int64)
+        )
 
     def place_costs(self, costs: Whole) -> None:
         """Set costs; an artificial arc costs M, with 2 M above any path's cost."""
