@@ -43,7 +43,13 @@ def blame_conflict(form: LinearForm, conflict: Conflict) -> Blame:
     return Blame((f"bounds of {form.col_names[conflict.index]}",), True)
 
 
-def blame(normal: NormalForm, farkas: Floats | None, seconds: float, deadline: Deadline) -> Blame:
+def blame(
+    normal: NormalForm,
+    farkas: Floats | None,
+    certified: bool,
+    seconds: float,
+    deadline: Deadline,
+) -> Blame:
     """Name rows and bounds that conflict, if possible none of them needlessly.
 
     Parameters
@@ -53,6 +59,9 @@ def blame(normal: NormalForm, farkas: Floats | None, seconds: float, deadline: D
     farkas : ndarray, shape (m,), float64, or None
         Multipliers that prove its relaxation infeasible; rows without one are not to blame.
         None where the relaxation is feasible, but no whole plan.
+    certified : bool
+        Whether the relaxation's vertices are known to be whole: then what is feasible for it
+        has a whole plan too, whichever rows are left out.
     seconds : float
         Spent on the solve so far.
     deadline : Deadline
@@ -63,50 +72,58 @@ def blame(normal: NormalForm, farkas: Floats | None, seconds: float, deadline: D
         Without names where nothing could be told in the time.
     """
     names, column_names = normal.form.row_names, normal.form.col_names
-    if farkas is None:
-        rows, minimal = _conflict_of_whole_plans(normal, deadline.within(SHARE * seconds + FLOOR))
-        return Blame(tuple(names[int(normal.rows[i])] for i in rows), minimal)
-    suspects = np.flatnonzero(farkas)
-    found, columns = conflicting_set(
-        normal.matrix.tocsr()[suspects, :].tocsc(),
-        normal.row_lower[suspects],
-        normal.row_upper[suspects],
-        normal.col_lower,
-        normal.col_upper,
-        deadline.within(BUDGET),
+    short = deadline.within(SHARE * seconds + FLOOR)
+    rows, columns = np.arange(normal.rows.size), np.empty(0, np.int64)
+    minimal = False
+    if farkas is not None:
+        rows = np.flatnonzero(farkas)
+        found, columns = conflicting_set(
+            normal.matrix.tocsr()[rows, :].tocsc(),
+            normal.row_lower[rows],
+            normal.row_upper[rows],
+            normal.col_lower,
+            normal.col_upper,
+            deadline.within(BUDGET),
+        )
+        minimal = certified and found.size > 0
+        rows = rows[found] if found.size else rows
+    if not minimal:
+        thinned, minimal = _conflict_of_whole_plans(normal, rows, short)
+        columns = columns if thinned.size == rows.size else columns[:0]
+        rows = thinned
+    if not minimal and rows.size == normal.rows.size:
+        return Blame((), False)
+    told = tuple(names[int(normal.rows[i])] for i in rows)
+    return Blame(
+        told + tuple(f"bounds of {column_names[int(normal.columns[j])]}" for j in columns), minimal
     )
-    told = tuple(names[int(normal.rows[i])] for i in suspects[found])
-    told += tuple(f"bounds of {column_names[int(normal.columns[j])]}" for j in columns)
-    if told:
-        return Blame(told, True)
-    return Blame(tuple(names[int(normal.rows[i])] for i in suspects), False)
 
 
 def _conflict_of_whole_plans(
-    normal: NormalForm, deadline: Deadline
+    normal: NormalForm, rows: NDArray[np.int64], deadline: Deadline
 ) -> tuple[NDArray[np.int64], bool]:
-    """Thin out the rows of a part, in ever smaller bundles, while it stays infeasible.
+    """Thin out conflicting rows of a part, in ever smaller bundles, while they conflict.
 
     Returns
     -------
     rows : ndarray, int64
-        Empty where not one row could be left out in the time.
     minimal : bool
+        Whether every row was tried on its own.
     """
-    m = normal.rows.size
-    kept = np.full(m, True)
-    bundle = max(1, m // 4)
+    kept = np.zeros(normal.rows.size, np.bool_)
+    kept[rows] = True
+    bundle = max(1, rows.size // 4)
     while True:
-        for begin in range(0, m, bundle):
+        for begin in range(0, rows.size, bundle):
             tried = kept.copy()
-            tried[begin : begin + bundle] = False
+            tried[rows[begin : begin + bundle]] = False
             if tried.sum() == kept.sum():
                 continue
             status = "time_limit" if deadline.passed else _status_with(normal, tried, deadline)
             if status == "infeasible":
                 kept = tried
             elif status != "optimal":
-                return np.flatnonzero(kept) if not kept.all() else np.empty(0, np.int64), False
+                return np.flatnonzero(kept), False
         if bundle == 1:
             return np.flatnonzero(kept), True
         bundle = max(1, bundle // 4)

@@ -405,7 +405,8 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
     if culprit is not None:
         since = time.perf_counter()
         spent = request.clock.total
-        blamed = blame(culprit.normal, culprit.farkas, spent, request.deadline)
+        certified = culprit.path is not None
+        blamed = blame(culprit.normal, culprit.farkas, certified, spent, request.deadline)
         request.clock.spend("proof", since)
     prices = {part.prices for part in parts}
     finding = Finding(findings, normal.snapped, request.seed)

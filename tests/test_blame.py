@@ -64,13 +64,13 @@ def parity(pairs):
 
 
 def test_a_conflict_of_whole_plans_is_thinned_out():
-    found = blame(normalise(parity(3)), None, 60.0, FOREVER)
+    found = blame(normalise(parity(3)), None, False, 60.0, FOREVER)
     assert found.names == ("r1", "r2", "r3", "r4")
     assert found.minimal
 
 
 def test_out_of_time_nothing_is_claimed():
-    found = blame(normalise(parity(3)), None, 0.0, Deadline(0))
+    found = blame(normalise(parity(3)), None, False, 0.0, Deadline(0))
     assert not found.minimal
     assert found.names == ()
 

@@ -58,6 +58,8 @@ def whole_optimum(
     size = max(1.0, float(np.abs(normal.cost).max(initial=0.0)))
     columns = np.abs(optimum.reduced_cost) > PRICED * size
     rows = np.abs(optimum.row_dual) > PRICED * size
+    if _is_the_only_one(normal, lp, rows, columns):
+        return None
     activity = normal.matrix @ optimum.x
     lp.set_col_bounds(
         np.where(columns & (optimum.reduced_cost < 0), normal.col_upper, normal.col_lower),
@@ -85,3 +87,16 @@ def whole_optimum(
             if is_whole(x, normal.integer):
                 return np.where(normal.integer, np.rint(x), x)
     return None
+
+
+def _is_the_only_one(
+    normal: NormalForm,
+    lp: LinearProgram,
+    rows: NDArray[np.bool_],
+    columns: NDArray[np.bool_],
+) -> bool:
+    """Whether every nonbasic column and row that could move has a price: then none may."""
+    basis = lp.basis()
+    free_columns = (basis.col_status != 1) & (normal.col_lower < normal.col_upper)
+    free_rows = (basis.row_status != 1) & (normal.row_lower < normal.row_upper)
+    return not ((free_columns & ~columns).any() or (free_rows & ~rows).any())
