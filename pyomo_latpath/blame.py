@@ -16,7 +16,7 @@ from .highs_mip import MipSettings, branch_and_bound
 #: Seconds spent on naming a conflict of the relaxation, at most.
 BUDGET = 10.0
 #: The same for a conflict of whole plans alone: a share of the solve so far, and a floor.
-SHARE, FLOOR = 0.5, 0.04
+SHARE, FLOOR = 0.25, 0.02
 
 
 @dataclass(frozen=True)

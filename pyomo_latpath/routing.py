@@ -36,7 +36,7 @@ from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
-from .paths.optimal_face import is_whole, whole_optimum
+from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
 from .proof import Proof, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
 from .solution import RouteReport, Solution
@@ -44,8 +44,9 @@ from .why import telling, why
 
 #: Share of the time spent so far that sampling for a verdict may add, and samples at most.
 SAMPLING_SHARE, MOST_SAMPLES = 0.1, 32
-#: Share of its relaxation's time that the search of the optimal face may take, and a floor.
-FACE_SHARE, FACE_SECONDS = 1.0, 0.02
+#: The search of the optimal face may take so many times the relaxation's time and a little; a
+#: fifth of that where nothing says that whole plans reach the optimum's value.
+FACE_SHARE, FACE_SECONDS = 5.0, 0.004
 #: Seconds that the longer search for a certificate of a block with a whole optimum may take,
 #: where that is more than what the solve took so far.
 LONG_SECONDS = 0.5
@@ -305,8 +306,11 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
     finding = _finding(request, part, lp, optimum)
     if x is None:
         since = time.perf_counter()
-        budget = request.deadline.within(max(FACE_SHARE * seconds, FACE_SECONDS))
-        x = whole_optimum(part, lp, optimum, request.seed, budget)
+        reach = attainable(part, optimum.objective)
+        if reach is not False:
+            share = FACE_SHARE if reach else 0.2 * FACE_SHARE
+            budget = request.deadline.within(share * (seconds + FACE_SECONDS))
+            x = whole_optimum(part, lp, optimum, request.seed, budget)
         request.clock.spend("solve", since)
     if x is not None:
         since = time.perf_counter()

@@ -7,12 +7,15 @@ left. A whole vertex found there is as good as any plan can be.
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from ..highs import LinearProgram, LpResult
+from ..proof import whole_costs
 
 Floats = NDArray[np.float64]
 
@@ -20,8 +23,8 @@ Floats = NDArray[np.float64]
 NEAR = 1e-6
 #: Prices above this share of the largest cost hold their row or column.
 PRICED = 1e-7
-#: Objectives tried at most.
-MOST_TRIES = 24
+#: Objectives tried before the dive, and columns it rounds at most.
+MOST_TRIES, MOST_DIVES = 4, 200
 
 
 def is_whole(x: Floats, integer: NDArray[np.bool_]) -> bool:
@@ -30,13 +33,44 @@ def is_whole(x: Floats, integer: NDArray[np.bool_]) -> bool:
     return bool((np.abs(values - np.rint(values)) <= NEAR).all())
 
 
+def attainable(normal: NormalForm, value: float) -> bool | None:
+    """Whether whole plans can have this objective at all.
+
+    Costs of integer columns alone have a common unit; a value between its multiples is out of
+    reach.
+
+    Returns
+    -------
+    bool or None
+        None where a continuous column has a cost.
+
+    Examples
+    --------
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> from pyomo_latpath.forms.normalise import normalise
+    >>> normal = normalise(LinearForm.from_arrays([[1, 1]], row_lower=0, row_upper=1, col_lower=0,
+    ...                                           col_upper=1, cost=[2, 4]))
+    >>> attainable(normal, 6.0), attainable(normal, 5.0)
+    (True, False)
+    """
+    costs = whole_costs(normal)
+    if (~normal.integer & (costs.numerators != 0)).any():
+        return None
+    unit = math.gcd(*np.unique(costs.numerators).tolist()) / costs.denominator
+    if unit == 0.0:
+        return True
+    multiple = value / unit
+    return abs(multiple - round(multiple)) <= NEAR * max(1.0, abs(multiple))
+
+
 def whole_optimum(
     normal: NormalForm, lp: LinearProgram, optimum: LpResult, seed: int, deadline: Deadline
 ) -> Floats | None:
     """Look for an optimal vertex that is whole.
 
-    Two kinds of objective take turns: one that pulls each fractional column to its nearer
-    whole value, and random ones.
+    A few objectives are tried in turn: one that pulls each fractional column to its nearer
+    whole value, and random ones. Then a dive rounds one fractional column after the other, the
+    one nearest to its upper whole value first, and lets the others follow.
 
     Parameters
     ----------
@@ -61,31 +95,61 @@ def whole_optimum(
     if _is_the_only_one(normal, lp, rows, columns):
         return None
     activity = normal.matrix @ optimum.x
-    lp.set_col_bounds(
-        np.where(columns & (optimum.reduced_cost < 0), normal.col_upper, normal.col_lower),
-        np.where(columns & (optimum.reduced_cost > 0), normal.col_lower, normal.col_upper),
-    )
+    low = np.where(columns & (optimum.reduced_cost < 0), normal.col_upper, normal.col_lower)
+    high = np.where(columns & (optimum.reduced_cost > 0), normal.col_lower, normal.col_upper)
+    lp.set_col_bounds(low, high)
     lp.set_row_bounds(
         np.where(rows, np.minimum(activity, normal.row_upper), normal.row_lower),
         np.where(rows, np.maximum(activity, normal.row_lower), normal.row_upper),
     )
     x = optimum.x
     for attempt in range(MOST_TRIES):
-        if deadline.passed:
-            return None
-        part = x - np.floor(x)
-        pulled = normal.integer & (part > NEAR) & (part < 1 - NEAR)
-        cost = np.where(pulled, np.where(part < 0.5, 1.0, -1.0), 0.0)
+        cost = _pull(x, normal.integer)
         if attempt % 2:
             cost = rng.standard_normal(x.size) * normal.integer
         elif attempt:
             cost += 0.1 * rng.standard_normal(x.size) * normal.integer
         lp.set_cost(cost)
         result = lp.solve(method="primal", deadline=deadline)
-        if result.status == "optimal":
-            x = result.x
-            if is_whole(x, normal.integer):
-                return np.where(normal.integer, np.rint(x), x)
+        if result.status != "optimal":
+            return None
+        x = result.x
+        if is_whole(x, normal.integer):
+            return np.where(normal.integer, np.rint(x), x)
+    return _dive(normal, lp, x, low, high, deadline)
+
+
+def _pull(x: Floats, integer: NDArray[np.bool_]) -> Floats:
+    """Costs that pull each fractional column to its nearer whole value."""
+    part = x - np.floor(x)
+    pulled = integer & (part > NEAR) & (part < 1 - NEAR)
+    return np.where(pulled, np.where(part < 0.5, 1.0, -1.0), 0.0)
+
+
+def _dive(
+    normal: NormalForm, lp: LinearProgram, x: Floats, low: Floats, high: Floats, deadline: Deadline
+) -> Floats | None:
+    """Round one fractional column after the other, up if that goes, else down."""
+    low, high = low.copy(), high.copy()
+    for _ in range(MOST_DIVES):
+        part = np.where(normal.integer, x - np.floor(x), 0.0)
+        part[(part <= NEAR) | (part >= 1 - NEAR)] = 0.0
+        j = int(np.argmax(part))
+        if part[j] == 0.0:
+            return np.where(normal.integer, np.rint(x), x)
+        up = np.ceil(x[j])
+        for bounds in ((up, high[j]), (low[j], up - 1)):
+            if bounds[0] > bounds[1]:
+                continue
+            low[j], high[j], kept = *bounds, (low[j], high[j])
+            lp.set_col_bounds(low, high)
+            result = lp.solve(deadline=deadline)
+            if result.status == "optimal":
+                x = result.x
+                break
+            low[j], high[j] = kept
+        else:
+            return None
     return None
 
 
