@@ -76,7 +76,6 @@ def run_highs(form: LinearForm, cost: np.ndarray) -> tuple[str, float]:
     highs = highspy.Highs()
     for name, value in (
         ("output_flag", False),
-        ("threads", 1),
         ("mip_rel_gap", 0.0),
         ("mip_abs_gap", 0.0),
     ):
