@@ -44,9 +44,9 @@ from .why import telling, why
 
 #: Share of the time spent so far that sampling for a verdict may add, and samples at most.
 SAMPLING_SHARE, MOST_SAMPLES = 0.1, 32
-#: The search of the optimal face may take so many times the relaxation's time and a little; a
-#: fifth of that where nothing says that whole plans reach the optimum's value.
-FACE_SHARE, FACE_SECONDS = 5.0, 0.004
+#: The search of the optimal face may take so many times the relaxation's pivots and a few; once
+#: as many where nothing says that whole plans reach the optimum's value.
+FACE_SHARE, FACE_PIVOTS = 10, 50
 #: Seconds that the longer search for a certificate of a block with a whole optimum may take,
 #: where that is more than what the solve took so far.
 LONG_SECONDS = 0.5
@@ -291,7 +291,6 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
         part.matrix, part.row_lower, part.row_upper, part.col_lower, part.col_upper, part.cost
     )
     optimum = lp.solve(deadline=request.deadline)
-    seconds = time.perf_counter() - since
     request.clock.spend("solve", since)
     if optimum.status == "infeasible":
         finding = sampled_finding(part, 0, (lp, optimum), request.seed, Deadline(0))
@@ -308,9 +307,8 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
         since = time.perf_counter()
         reach = attainable(part, optimum.objective)
         if reach is not False:
-            share = FACE_SHARE if reach else 0.2 * FACE_SHARE
-            budget = request.deadline.within(share * (seconds + FACE_SECONDS))
-            x = whole_optimum(part, lp, optimum, request.seed, budget)
+            most = (FACE_SHARE if reach else 1) * (optimum.pivots + FACE_PIVOTS)
+            x = whole_optimum(part, lp, optimum, request.seed, most, request.deadline)
         request.clock.spend("solve", since)
     if x is not None:
         since = time.perf_counter()

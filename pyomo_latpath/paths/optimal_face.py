@@ -64,7 +64,12 @@ def attainable(normal: NormalForm, value: float) -> bool | None:
 
 
 def whole_optimum(
-    normal: NormalForm, lp: LinearProgram, optimum: LpResult, seed: int, deadline: Deadline
+    normal: NormalForm,
+    lp: LinearProgram,
+    optimum: LpResult,
+    seed: int,
+    most_pivots: int,
+    deadline: Deadline,
 ) -> Floats | None:
     """Look for an optimal vertex that is whole.
 
@@ -81,6 +86,8 @@ def whole_optimum(
     optimum : LpResult
         Fractional.
     seed : int
+    most_pivots : int
+        The effort, counted so that the outcome does not depend on the machine's speed.
     deadline : Deadline
 
     Returns
@@ -110,13 +117,14 @@ def whole_optimum(
         elif attempt:
             cost += 0.1 * rng.standard_normal(x.size) * normal.integer
         lp.set_cost(cost)
-        result = lp.solve(method="primal", deadline=deadline)
-        if result.status != "optimal":
+        result = lp.solve(method="primal", deadline=deadline, max_pivots=most_pivots)
+        most_pivots -= result.pivots
+        if result.status != "optimal" or most_pivots <= 0:
             return None
         x = result.x
         if is_whole(x, normal.integer):
             return np.where(normal.integer, np.rint(x), x)
-    return _dive(normal, lp, x, low, high, deadline)
+    return _dive(normal, lp, x, (low.copy(), high.copy()), most_pivots, deadline)
 
 
 def _pull(x: Floats, integer: NDArray[np.bool_]) -> Floats:
@@ -127,10 +135,15 @@ def _pull(x: Floats, integer: NDArray[np.bool_]) -> Floats:
 
 
 def _dive(
-    normal: NormalForm, lp: LinearProgram, x: Floats, low: Floats, high: Floats, deadline: Deadline
+    normal: NormalForm,
+    lp: LinearProgram,
+    x: Floats,
+    bounds: tuple[Floats, Floats],
+    most_pivots: int,
+    deadline: Deadline,
 ) -> Floats | None:
     """Round one fractional column after the other, up if that goes, else down."""
-    low, high = low.copy(), high.copy()
+    low, high = bounds
     for _ in range(MOST_DIVES):
         part = np.where(normal.integer, x - np.floor(x), 0.0)
         part[(part <= NEAR) | (part >= 1 - NEAR)] = 0.0
@@ -138,12 +151,13 @@ def _dive(
         if part[j] == 0.0:
             return np.where(normal.integer, np.rint(x), x)
         up = np.ceil(x[j])
-        for bounds in ((up, high[j]), (low[j], up - 1)):
-            if bounds[0] > bounds[1]:
+        for rounded in ((up, high[j]), (low[j], up - 1)):
+            if rounded[0] > rounded[1] or most_pivots <= 0:
                 continue
-            low[j], high[j], kept = *bounds, (low[j], high[j])
+            low[j], high[j], kept = *rounded, (low[j], high[j])
             lp.set_col_bounds(low, high)
-            result = lp.solve(deadline=deadline)
+            result = lp.solve(deadline=deadline, max_pivots=most_pivots)
+            most_pivots -= result.pivots
             if result.status == "optimal":
                 x = result.x
                 break

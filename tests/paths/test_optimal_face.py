@@ -35,7 +35,7 @@ def test_what_is_found_is_a_whole_plan_as_good_as_the_relaxation(seed):
     optimum = lp.solve()
     if optimum.status != "optimal" or is_whole(optimum.x, normal.integer):
         return
-    x = whole_optimum(normal, lp, optimum, seed % 97, FOREVER)
+    x = whole_optimum(normal, lp, optimum, seed % 97, 10_000, FOREVER)
     best = min(
         (
             normal.cost @ plan
@@ -67,7 +67,7 @@ def test_a_whole_optimum_beside_a_fractional_one_is_found():
     optimum = lp.solve(method="primal")
     assert optimum.objective == 3.0
     if not is_whole(optimum.x, normal.integer):
-        x = whole_optimum(normal, lp, optimum, 0, FOREVER)
+        x = whole_optimum(normal, lp, optimum, 0, 10_000, FOREVER)
         assert x is not None
         assert x.tolist() == [0, 0, 0, 1]
 
@@ -83,4 +83,18 @@ def test_no_time_no_search():
     )
     normal = normalise(form)
     lp = program_of(normal)
-    assert whole_optimum(normal, lp, lp.solve(), 0, Deadline(0)) is None
+    assert whole_optimum(normal, lp, lp.solve(), 0, 10_000, Deadline(0)) is None
+
+
+def test_the_effort_is_counted_in_pivots():
+    form = LinearForm.from_arrays(
+        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
+        row_lower=1,
+        row_upper=2,
+        col_lower=0,
+        col_upper=1,
+        cost=[1, 1, 0],
+    )
+    normal = normalise(form)
+    lp = program_of(normal)
+    assert whole_optimum(normal, lp, lp.solve(), 0, 0, FOREVER) is None
