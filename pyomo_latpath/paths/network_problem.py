@@ -95,8 +95,8 @@ class FlowProblem:
 
     def value(self, flow: Whole) -> int:
         """Cost of a flow, exact."""
-        rough = np.abs(self.cost.astype(np.float64)) @ np.abs(flow.astype(np.float64))
-        if rough < 2.0**62:
+        largest = max(abs(int(self.cost.max(initial=0))), abs(int(self.cost.min(initial=0))))
+        if largest * float(np.abs(flow.astype(np.float64)).sum()) < 2.0**62:
             return int(self.cost @ flow)
         return int(self.cost.astype(object) @ flow.astype(object))
 
