@@ -137,7 +137,7 @@ FAMILIES: dict[str, dict[str, Callable[[], FlowProblem]]] = {
 def _shares(total: int, weights: NDArray[np.float64]) -> Whole:
     """Whole shares of a total."""
     shares = np.floor(weights / weights.sum() * total).astype(np.int64)
-    shares[0] += total - shares.sum()
+    shares[: total - shares.sum()] += 1
     return shares
 
 
