@@ -23,19 +23,24 @@ def assignment(size: int, seed: int = 0) -> pyo.ConcreteModel:
 
 
 def shifts(periods: int = 500, count: int = 8000, seed: int = 0) -> pyo.ConcreteModel:
-    """Cover each period by shifts of 2 to 60 consecutive ones."""
+    """Man shifts of 2 to 60 consecutive periods so that each period has the hands it needs.
+
+    The need is that of a hidden roster in which one shift in twenty is manned.
+    """
     rng = np.random.default_rng(seed)
     length = rng.integers(2, 61, count)
     begin = (rng.random(count) * (periods - length + 1)).astype(int)
-    cost = (10 + 3 * length + rng.integers(0, 30, count)).tolist()
-    need = rng.integers(1, 30, periods).tolist()
+    cost = rng.integers(1, 100, count).tolist()
+    manned = rng.random(count) < 0.05
     covering: list[list[int]] = [[] for _ in range(periods)]
+    need = [0] * periods
     for k, (start, run) in enumerate(zip(begin.tolist(), length.tolist(), strict=True)):
         for period in range(start, start + run):
             covering[period].append(k)
+            need[period] += int(manned[k])
     model = pyo.ConcreteModel()
     model.shifts = pyo.RangeSet(0, count - 1)
-    model.x = pyo.Var(model.shifts, domain=pyo.NonNegativeIntegers)
+    model.x = pyo.Var(model.shifts, domain=pyo.Binary)
     model.cover = pyo.Constraint(
         [p for p in range(periods) if covering[p]],
         rule=lambda m, p: pyo.quicksum(m.x[k] for k in covering[p]) >= need[p],
