@@ -178,8 +178,8 @@ def join(
 
     Nodes are trees here. Arc i allows head's shift less tail's up to slack[i] >= 0, or any at
     all where it is `idle` (such arcs join where no other does). From one tree on, all that is
-    not joined moves together, up or down, until the nearest arc is tight (Prim 1957, with a
-    moving measure). Fills `shift` and flags `chosen` arcs; a tree begun from is `reached` as 2.
+    not joined moves together, up or else down, until the nearest arc is tight (Prim 1957, with
+    a moving measure). Fills `shift` and flags `chosen` arcs; a tree begun from is `reached` as 2.
     `lowest` and `highest` keep the nearest limit of each tree, from far outside on.
     """
     for base in range(len(reached)):
@@ -212,7 +212,7 @@ def join(
             drop_joined(rise, tail, head, reached)
             drop_joined(fall, tail, head, reached)
             i = -1
-            if len(rise) > 0 and (len(fall) == 0 or rise[0][0] - theta <= theta + fall[0][0]):
+            if len(rise) > 0:
                 theta, i = heappop(rise)
             elif len(fall) > 0:
                 falling, i = heappop(fall)

@@ -143,7 +143,9 @@ class TestStart:
         cold = solve_flow(problem, compiled=False)
         m, n = problem.tail.size, problem.supply.size
         start = FlowStart(rng.integers(-9, 9, m), rng.random(m) < 0.5, rng.random(n) < 0.3)
-        warm = solve_flow(problem, start, compiled=False)
+        engine = NetworkSimplex(problem, start, compiled=False)
+        assert_sound(engine)
+        warm = engine.run()
         assert_answer(problem, warm)
         assert warm.status == cold.status
         if cold.status == "optimal":
@@ -156,6 +158,16 @@ class TestStart:
         again = solve_flow(problem, first.start, compiled=False)
         assert again.steps == 0
         np.testing.assert_array_equal(again.flow, first.flow)
+
+    def test_tree_and_roots_save_pivots(self):
+        pivots = np.zeros(3)
+        for seed in range(20):
+            problem, _ = feasible_problem(np.random.default_rng(seed), 10, 40)
+            first = solve_flow(problem, compiled=False).start
+            anywhere = FlowStart(first.flow, first.tree, np.zeros(10, np.bool_))
+            for k, start in enumerate((first, anywhere, FlowStart.at(problem, first.flow))):
+                pivots[k] += solve_flow(problem, start, compiled=False).pivots
+        assert 10 * pivots[0] < pivots[1] < pivots[2]
 
     @pytest.mark.parametrize("seed", range(60))
     def test_a_flow_becomes_a_vertex_no_dearer(self, seed):
