@@ -280,5 +280,8 @@ def settle(arcs: Arcs, tree: Tree, loose: Any, flow: Any, tally: Any) -> None:
         e = loose[k] + 0
         reduced = cost[e] + tree.potential[tail[e]] - tree.potential[head[e]]
         rising, falling = capacity[e] - flow[k], flow[k]
-        if reduced >= 0 or not pivot(arcs, tree, e, True, rising, falling, reduced, tally):
-            pivot(arcs, tree, e, False, falling, rising, -reduced, tally)
+        forward = reduced < 0
+        if forward and not pivot(arcs, tree, e, forward, rising, falling, reduced, tally):
+            forward = False
+        if not forward:
+            pivot(arcs, tree, e, forward, falling, rising, -reduced, tally)
