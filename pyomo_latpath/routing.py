@@ -26,7 +26,7 @@ from numpy.typing import ArrayLike
 from .answers import Merged, PartAnswer, merge, walk_report, without_plan
 from .blame import Blame, blame, blame_conflict
 from .branching import branch_part, largest_violation
-from .certificates import fingerprint
+from .certificates import BlockCertificate, Network, fingerprint
 from .deadline import Deadline
 from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
@@ -36,6 +36,7 @@ from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
+from .paths.network_oracle import NetworkStructure, glued
 from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
 from .proof import Proof, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
@@ -180,9 +181,13 @@ def solve(
     findings = tuple(proven_finding(normal, block, proof, mark) for block, proof in proven)
     clock.spend("assess", since)
     parts = []
-    if proven:
-        whole = _union(normal, [block for block, _ in proven])
-        parts.append(_by_path(request, whole, findings))
+    networks = [k for k, (_, proof) in enumerate(proven) if isinstance(proof[1].part, Network)]
+    for group in (networks, sorted(set(range(len(proven))) - set(networks))):
+        if group:
+            piece = _union(normal, [proven[k][0] for k in group])
+            told = tuple(findings[k] for k in group)
+            structure = _structure(normal, piece, [proven[k] for k in group])
+            parts.append(_by_path(request, piece, told, structure))
     for block, proof in zip(blocks, found, strict=True):
         if any(part.status == "infeasible" for part in parts):
             break
@@ -233,14 +238,34 @@ def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
     return normal.restrict(rows, columns)
 
 
-def _by_path(request: _Request, part: NormalForm, findings: tuple[BlockFinding, ...]) -> PartAnswer:
+def _structure(
+    normal: NormalForm, piece: NormalForm, proven: list[tuple[Block, tuple[str, BlockCertificate]]]
+) -> NetworkStructure | None:
+    """The network behind a union of blocks, where all their certificates are of that kind."""
+    parts = []
+    for block, (_, certificate) in proven:
+        part = certificate.part
+        if not isinstance(part, Network):
+            return None
+        rows = np.searchsorted(piece.rows, normal.rows[block.rows])
+        columns = np.searchsorted(piece.columns, normal.columns[block.columns])
+        parts.append((rows, columns, part.tree, part.arcs))
+    return glued(parts, piece.rows.size, piece.columns.size)
+
+
+def _by_path(
+    request: _Request,
+    part: NormalForm,
+    findings: tuple[BlockFinding, ...],
+    structure: NetworkStructure | None,
+) -> PartAnswer:
     """Solve what is certified: a union of unimodular blocks is one itself."""
     since = time.perf_counter()
     costs = whole_costs(part)
     start = None
     if request.start is not None:
         start = request.start[part.columns] * part.col_den / part.col_num
-    result = walk_to_optimum(part, costs, request.deadline, start)
+    result = walk_to_optimum(part, costs, request.deadline, start, structure)
     request.clock.spend("solve", since)
     if result.status == "optimal":
         return _planned(part, findings, result.x, result.proof, result)

@@ -14,6 +14,7 @@ from ..highs import Basis, LinearProgram
 from ..proof import Proof, WholeCosts, prove_optimal
 from .box import Box, box_of
 from .face_fixing import Walk, face_fixing_walk, step_bound
+from .network_oracle import NetworkOracle, NetworkStructure, largest_cost, repays
 from .vertex_oracle import (
     LARGEST_HIGHS_COST,
     LARGEST_TABLEAU_COST,
@@ -24,6 +25,9 @@ from .vertex_oracle import (
 )
 
 Floats = NDArray[np.float64]
+
+
+Oracle = HighsBasis | Tableau | NetworkOracle
 
 
 @dataclass(frozen=True, eq=False)
@@ -40,7 +44,7 @@ class PathResult:
     walk : Walk
     box : Box
     engine : str
-        'highs' or 'tableau'.
+        'network', 'highs' or 'tableau'.
     steps, pivots : int
     exact_steps : bool
         Whether `steps` is exact or an upper count.
@@ -63,7 +67,11 @@ class PathResult:
 
 
 def walk_to_optimum(
-    normal: NormalForm, costs: WholeCosts, deadline: Deadline, start: Floats | None = None
+    normal: NormalForm,
+    costs: WholeCosts,
+    deadline: Deadline,
+    start: Floats | None = None,
+    structure: NetworkStructure | None = None,
 ) -> PathResult:
     """Solve a block whose vertices are whole.
 
@@ -75,8 +83,10 @@ def walk_to_optimum(
         Its costs.
     deadline : Deadline
     start : ndarray, shape (n,), float64, optional
-        A whole feasible plan (scaled units) to walk from; without one the first vertex is
-        the dual simplex's at the costs, rounded where they are large.
+        A whole feasible plan (scaled units) to walk from; without one the first vertex is an
+        optimum of the costs, as far as the engine can tell them apart.
+    structure : NetworkStructure, optional
+        Of a block that is a network matrix.
 
     Returns
     -------
@@ -95,7 +105,7 @@ def walk_to_optimum(
     """
     box = box_of(normal)
     first = None if start is None else vertex_at_least_as_good(normal, start, deadline)
-    oracle, largest = _engine(normal, box, first)
+    oracle, largest = _engine(normal, box, first, structure)
     proofs: list[Proof] = []
 
     def optimal(vertex: Vertex) -> bool:
@@ -120,7 +130,7 @@ def walk_to_optimum(
         )
     vertex = walk.vertex
     if vertex.status == "pivot_limit":
-        again = walk_to_optimum(normal, costs, deadline)
+        again = walk_to_optimum(normal, costs, deadline, structure=structure)
         return replace(again, note="the walk from the start plan was lost among degenerate pivots")
     unproven = Proof(False, vertex.row_dual, vertex.reduced_cost, "no optimum was reached")
     return PathResult(
@@ -176,9 +186,14 @@ def vertex_at_least_as_good(
 
 
 def _engine(
-    normal: NormalForm, box: Box, first: tuple[Basis, Floats] | None
-) -> tuple[HighsBasis | Tableau, int]:
+    normal: NormalForm,
+    box: Box,
+    first: tuple[Basis, Floats] | None,
+    structure: NetworkStructure | None,
+) -> tuple[Oracle, int]:
     """The engine that serves as oracle, and the largest costs it takes as they are."""
+    if structure is not None and repays(structure):
+        return NetworkOracle(normal, structure, first), largest_cost(structure)
     if first is None:
         return HighsBasis(normal), LARGEST_HIGHS_COST
     basis, x = first
@@ -191,7 +206,7 @@ def _at_true_costs(
     normal: NormalForm,
     costs: WholeCosts,
     box: Box,
-    oracle: HighsBasis | Tableau,
+    oracle: Oracle,
     optimal: Callable[[Vertex], bool],
     largest: int,
     deadline: Deadline,

@@ -60,8 +60,14 @@ class VertexOracle(Protocol):
 
     engine: str
     exact_steps: bool
-    steps: int
-    pivots: int
+
+    @property
+    def steps(self) -> int:
+        """Moves to another vertex so far; an upper count unless `exact_steps`."""
+
+    @property
+    def pivots(self) -> int:
+        """Basis changes so far."""
 
     def optimise(self, cost: Whole, deadline: Deadline) -> Vertex:
         """Walk to a vertex of the current face that minimises `cost`."""
