@@ -123,6 +123,7 @@ class NetworkSimplex:
         self._state = State.empty(form, compiled_kernels() if compiled else plain_kernels())
         self._state.place_costs(costs)
         plant(self._state, start)
+        self._last: FlowResult | None = None
 
     @property
     def pivots(self) -> int:
@@ -174,9 +175,41 @@ class NetworkSimplex:
         max_pivots : int, optional
             Stop after so many pivots of this run.
         """
-        state = self._state
         clock = deadline or Deadline(None)
         most = 2**62 if max_pivots is None else self.pivots + max_pivots
+        self._last = self._result(clock, most)
+        return self._last
+
+    def tree_potentials(self, cost: NDArray[np.object_]) -> NDArray[np.object_]:
+        """Price the nodes at the last run's basis for whole costs of any size, exactly.
+
+        Examples
+        --------
+        >>> engine = NetworkSimplex(FlowProblem.of([0], [1], supply=[1, -1]), compiled=False)
+        >>> engine.run().status, engine.tree_potentials(np.array([2**70], dtype=object))
+        ('optimal', array([0, 1180591620717411303424], dtype=object))
+        """
+        last = self._last or result_of(self._state, "pivot_limit")
+        tail, head = self.problem.tail.tolist(), self.problem.head.tolist()
+        beside: list[list[tuple[int, int]]] = [[] for _ in self.problem.supply]
+        for j in np.flatnonzero(last.tree).tolist():
+            beside[tail[j]].append((head[j], cost[j]))
+            beside[head[j]].append((tail[j], -cost[j]))
+        price = np.zeros(len(beside), dtype=object)
+        reached = last.roots.tolist()
+        waiting = np.flatnonzero(last.roots).tolist()
+        while waiting:
+            node = waiting.pop()
+            for other, step in beside[node]:
+                if not reached[other]:
+                    reached[other] = True
+                    price[other] = price[node] + step
+                    waiting.append(other)
+        return price
+
+    def _result(self, clock: Deadline, most: int) -> FlowResult:
+        """Walk, and tell where the walk ended and why."""
+        state = self._state
         code = self._walk(clock, most)
         ray = None
         if code == UNBOUNDED:
@@ -187,25 +220,6 @@ class NetworkSimplex:
         if state.unmet():
             return result_of(state, "infeasible", cut=cut_of(state))
         return result_of(state, "optimal" if ray is None else "unbounded", ray=ray)
-
-    def tree_potentials(self, cost: NDArray[np.object_]) -> NDArray[np.object_]:
-        """Price the nodes at the current tree for whole costs of any size, exactly.
-
-        Trees that only artificial arcs tie together are each priced from 0 on.
-        """
-        state = self._state
-        costs = (state.form.sign * cost[state.form.origin])[state.order].tolist()
-        parent, arc = state.tree.parent.tolist(), state.tree.arc.tolist()
-        tail = state.arcs.tail.tolist()
-        _, _, sequence = state.trees()
-        price = [0] * len(parent)
-        for node in sequence[:-1].tolist():
-            e = arc[node]
-            if e < len(costs):
-                price[node] = price[parent[node]] + (-costs[e] if tail[e] == node else costs[e])
-        prices = np.zeros(len(parent), dtype=object)
-        prices[state.node] = price
-        return prices[:-1]
 
     def _walk(self, deadline: Deadline, most: int) -> int:
         """Pivot in slices, so that the clock is heard and the memory kept in order."""

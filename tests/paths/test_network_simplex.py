@@ -257,14 +257,21 @@ class TestWalk:
             before = now
         assert engine.steps - settled == moves
 
-    def test_prices_of_a_tree_for_costs_of_any_size(self):
-        problem, _ = feasible_problem(np.random.default_rng(3), 12, 50)
+    @pytest.mark.parametrize("seed", range(40))
+    def test_prices_of_a_basis_for_costs_of_any_size(self, seed):
+        problem, _ = feasible_problem(np.random.default_rng(seed), 12, 14 + seed)
         engine = NetworkSimplex(problem, compiled=False)
-        tree = engine.run(max_pivots=30).tree
-        cost = np.array([10**40 + 7 * j for j in range(50)], dtype=object)
-        price = engine.tree_potentials(cost)
-        reduced = cost + price[problem.tail] - price[problem.head]
-        assert not reduced[tree].any()
+        result = engine.run()
+        for scale in (1, 10**40):
+            cost = problem.cost.astype(object) * scale
+            price = engine.tree_potentials(cost)
+            reduced = cost + price[problem.tail] - price[problem.head]
+            assert not reduced[result.tree].any()
+            assert (reduced == problem.reduced_cost(result.potential).astype(object) * scale).all()
+        early = NetworkSimplex(problem, compiled=False)
+        tree = early.run(max_pivots=3).tree
+        price = early.tree_potentials(problem.cost.astype(object))
+        assert not (problem.cost + price[problem.tail] - price[problem.head])[tree].any()
 
     def test_time_runs_out(self, monkeypatch):
         monkeypatch.setattr(network_simplex, "PLAIN_SLICE", 1)
