@@ -27,7 +27,7 @@ from ..forms.blocks import Block, blocks_of
 from ..forms.linear_form import LinearForm
 from ..forms.normalise import NormalForm, normalise
 from ..forms.numbers import EXACT, Integers, simplest_fraction
-from . import incidence, interval, reductions, unimodular
+from . import incidence, interval, network, reductions, unimodular
 from .finding import BlockFinding, Finding, Verdict
 from .sampling import program_of
 from .verdicts import conflict_finding, proven_finding, sampled_finding
@@ -53,7 +53,11 @@ QUICK: tuple[tuple[str, Recogniser], ...] = (
     ("conetwork", _transposed(interval.recognise)),
 )
 #: All tests in near-linear time, cheapest first, for what reductions leave.
-RECOGNISERS: tuple[tuple[str, Recogniser], ...] = (*QUICK,)
+RECOGNISERS: tuple[tuple[str, Recogniser], ...] = (
+    *QUICK,
+    ("network", network.recognise),
+    ("conetwork", _transposed(network.recognise)),
+)
 #: Tests that take longer.
 SLOW: tuple[tuple[str, Recogniser], ...] = (
     ("interval", interval.recognise_hidden),
@@ -267,8 +271,8 @@ def prove_tu(
         part = None if deadline.passed else recognise(reduction.matrix)
         if part is not None:
             whole = reduction.prove(part)
-            if isinstance(whole, Network) and reduction.steps:
-                path = name == "interval" and np.bincount(whole.tree.ravel()).max() <= 2
+            if isinstance(whole, Network) and (reduction.steps or name == "network"):
+                path = name != "incidence" and np.bincount(whole.tree.ravel()).max() <= 2
                 name = "interval" if path else "network"
             return name, whole
     return None
