@@ -12,8 +12,8 @@ from .integrality.finding import Finding
 
 Floats = NDArray[np.float64]
 
-#: All values of `Solution.status`; 'limit' is a limit other than time that the user set for
-#: branch and bound (on nodes, say).
+#: All values of `Solution.status`; 'limit' is a limit other than time that the user set: for
+#: branch and bound (on nodes, say), or on the moves from the start.
 STATUSES = ("optimal", "infeasible", "unbounded", "time_limit", "limit", "interrupted", "error")
 
 
@@ -57,6 +57,45 @@ class WalkReport:
     note: str = ""
 
 
+@dataclass(frozen=True, eq=False)
+class Move:
+    """One change on the way from the start to the best plan.
+
+    Moves are told in the order of their gains. Each one may be made or left out, in any order:
+    every set of them leads from the start to a feasible whole plan. `before` and `after` are
+    those of the order told, where several moves change the same column.
+
+    Attributes
+    ----------
+    columns : ndarray, shape (k,), int64
+        What changes; ascending indices into the form.
+    names : tuple of str
+        Of these columns.
+    before, after : ndarray, shape (k,), float64
+        Their values.
+    gain : float
+        By how much the objective gets better, in the model's own sense.
+    objective_after : float
+    """
+
+    columns: NDArray[np.int64]
+    names: tuple[str, ...]
+    before: Floats
+    after: Floats
+    gain: float
+    objective_after: float
+
+    def to_dict(self) -> dict[str, Any]:
+        """Plain data, ready for JSON."""
+        return {
+            "columns": list(self.names),
+            "before": self.before.tolist(),
+            "after": self.after.tolist(),
+            "gain": self.gain,
+            "objective_after": self.objective_after,
+        }
+
+
 @dataclass(frozen=True)
 class RouteReport:
     """Which way a model went, why, and what that cost.
@@ -85,8 +124,12 @@ class RouteReport:
     blame_is_minimal : bool
         Whether leaving out any one of those makes the others satisfiable; False where the time
         ran out before that was shown.
-    moves : tuple
+    moves : tuple of Move
         The changes that lead from the start to `x`; empty without a start.
+    further_moves : tuple of Move
+        Those that would lead on to the best plan known, where `max_moves` left them out.
+    repair : Move or None
+        The change that made the start feasible, where that was asked for and needed.
     """
 
     route: str
@@ -99,7 +142,9 @@ class RouteReport:
     prices: str = "none"
     blame: tuple[str, ...] = ()
     blame_is_minimal: bool = True
-    moves: tuple[Any, ...] = ()
+    moves: tuple[Move, ...] = ()
+    further_moves: tuple[Move, ...] = ()
+    repair: Move | None = None
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON; certificates are left to `finding.to_dict()`."""
@@ -128,6 +173,9 @@ class RouteReport:
             "prices": self.prices,
             "blame": list(self.blame),
             "blame_is_minimal": self.blame_is_minimal,
+            "moves": [move.to_dict() for move in self.moves],
+            "further_moves": [move.to_dict() for move in self.further_moves],
+            "repair": None if self.repair is None else self.repair.to_dict(),
         }
 
 
