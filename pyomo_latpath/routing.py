@@ -181,13 +181,11 @@ def solve(
     findings = tuple(proven_finding(normal, block, proof, mark) for block, proof in proven)
     clock.spend("assess", since)
     parts = []
-    networks = [k for k, (_, proof) in enumerate(proven) if isinstance(proof[1].part, Network)]
-    for group in (networks, sorted(set(range(len(proven))) - set(networks))):
-        if group:
-            piece = _union(normal, [proven[k][0] for k in group])
-            told = tuple(findings[k] for k in group)
-            structure = _structure(normal, piece, [proven[k] for k in group])
-            parts.append(_by_path(request, piece, told, structure))
+    for group in _groups(proven):
+        piece = _union(normal, [proven[k][0] for k in group])
+        told = tuple(findings[k] for k in group)
+        structure = _structure(normal, piece, [proven[k] for k in group])
+        parts.append(_by_path(request, piece, told, structure))
     for block, proof in zip(blocks, found, strict=True):
         if any(part.status == "infeasible" for part in parts):
             break
@@ -232,6 +230,17 @@ def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
     return x
 
 
+def _groups(proven: list[tuple[Block, tuple[str, BlockCertificate]]]) -> list[list[int]]:
+    """Certified blocks that are solved together: networks, other unimodular ones, trivial ones."""
+    networks, unimodular, trivial = [], [], []
+    for k, (_, (structure, certificate)) in enumerate(proven):
+        if isinstance(certificate.part, Network):
+            networks.append(k)
+        else:
+            (trivial if structure == "trivial" else unimodular).append(k)
+    return [group for group in (networks, unimodular, trivial) if group]
+
+
 def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
     rows = np.sort(np.concatenate([block.rows for block in blocks]))
     columns = np.sort(np.concatenate([block.columns for block in blocks]))
@@ -263,7 +272,8 @@ def _by_path(
     since = time.perf_counter()
     costs = whole_costs(part)
     start = None
-    if request.start is not None:
+    # What is trivial may have any coefficients: walks over whole vertices are not for it.
+    if request.start is not None and findings[0].structure != "trivial":
         start = request.start[part.columns] * part.col_den / part.col_num
     result = walk_to_optimum(part, costs, request.deadline, start, structure)
     request.clock.spend("solve", since)
