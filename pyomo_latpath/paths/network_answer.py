@@ -11,7 +11,8 @@ from .network_kernel import ENTERING, PIVOTS, STEPS
 from .network_problem import Cut, Flags, FlowResult, Whole
 from .network_state import State
 
-FAR = 2**62
+#: Beyond any limit of a shift.
+FAR = 2**63 - 1
 
 
 def result_of(

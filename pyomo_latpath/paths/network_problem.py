@@ -202,7 +202,8 @@ class FlowResult:
         `ray` proves it), 'time_limit' or 'pivot_limit' (the flow reached so far).
     flow : ndarray, shape (m,), int64
     potential : ndarray, shape (n,), int64
-        Prices of the basis; at an optimum, reduced costs are 0 on `tree`.
+        Prices of the basis: reduced costs are 0 on `tree`. Optimal ones are 0 at the roots;
+        where the walk stopped early they hold the cost of artificial arcs, too.
     tree, roots : ndarray, shape (m,) and (n,), bool
         The basis. At an optimum a spanning tree of each connected part of the network.
     unmet : int
