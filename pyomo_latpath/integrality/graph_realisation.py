@@ -15,6 +15,9 @@ proportion to the column and to what is joined for good, but for slowly growing 
 
 from __future__ import annotations
 
+from collections import deque
+from collections.abc import Iterator
+
 import numpy as np
 import scipy.sparse as sp
 
@@ -58,14 +61,14 @@ def realise(
     """
     m, n = matrix.shape
     deadline = deadline or Deadline(None)
-    start, rows = matrix.indptr.tolist(), matrix.indices.tolist()
+    start, rows = matrix.indptr.tolist(), matrix.indices
     graph = Decomposition(m + n)
     placed = bytearray(m)
     firsts = []
     for count, column in enumerate(_connected_order(matrix)):
         if count % PAUSE == 0 and deadline.passed:
             return None
-        here = rows[start[column] : start[column + 1]]
+        here = rows[start[column] : start[column + 1]].tolist()
         old = [row for row in here if placed[row]]
         new = [row for row in here if not placed[row]]
         for row in new:
@@ -87,30 +90,26 @@ def realise(
     return ends[:m], ends[m:]
 
 
-def _connected_order(matrix: sp.csc_array) -> list[int]:
+def _connected_order(matrix: sp.csc_array) -> Iterator[int]:
     """Nonzero columns, block by block, each but a block's first meeting some before it."""
     by_row = matrix.tocsr()
-    start, rows = matrix.indptr.tolist(), matrix.indices.tolist()
-    row_start, columns = by_row.indptr.tolist(), by_row.indices.tolist()
+    start, rows = matrix.indptr.tolist(), matrix.indices
+    row_start, columns = by_row.indptr.tolist(), by_row.indices
     waiting = bytearray(np.diff(matrix.indptr) > 0)
     fresh = bytearray(b"\1" * matrix.shape[0])
-    order: list[int] = []
-    seen = 0
     for first in range(matrix.shape[1]):
-        if waiting[first]:
-            waiting[first] = 0
-            order.append(first)
-        while seen < len(order):
-            column = order[seen]
-            seen += 1
-            for row in rows[start[column] : start[column + 1]]:
+        front = deque([first] if waiting[first] else [])
+        waiting[first] = 0
+        while front:
+            column = front.popleft()
+            yield column
+            for row in rows[start[column] : start[column + 1]].tolist():
                 if fresh[row]:
                     fresh[row] = 0
-                    for other in columns[row_start[row] : row_start[row + 1]]:
+                    for other in columns[row_start[row] : row_start[row + 1]].tolist():
                         if waiting[other]:
                             waiting[other] = 0
-                            order.append(other)
-    return order
+                            front.append(other)
 
 
 def _hang_together(
@@ -161,11 +160,11 @@ def _spanned(graph: Decomposition, marked: Marked) -> list[int]:
                 below[above] = [member]
                 tops.append(above)
         front = tops
-    order = front
-    while order[0] not in marked and len(below[order[0]]) == 1:
-        order = below[order[0]]
-    order = order[:]
-    for member in order:
+    (top,) = front
+    while top not in marked and len(below[top]) == 1:
+        (top,) = below[top]
+    order = [top]
+    for member in order:  # which grows meanwhile
         order += below[member]
     return order
 
