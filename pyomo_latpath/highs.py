@@ -213,6 +213,11 @@ class LinearProgram:
         limit = 2**31 - 1 if max_pivots is None else max_pivots
         set_option(self._highs, "simplex_iteration_limit", limit)
         status = self._run(deadline)
+        if status == "error":  # seldom, on unbounded programs; a fresh start settles it
+            ok(self._highs.clearSolver(), "start afresh")
+            set_option(self._highs, "presolve", "on")
+            status = self._run(deadline)
+            set_option(self._highs, "presolve", "off")
         pivots = self._highs.getInfo().simplex_iteration_count
         farkas = ray = None
         if status == "unsettled":
