@@ -21,8 +21,9 @@ from .forms.from_pyomo import compile_model
 from .forms.linear_form import LinearForm
 from .integrality.assess import assess as _assess_form
 from .integrality.finding import BlockFinding, Finding, Verdict, Witness
-from .routing import solve as _solve_form
-from .solution import RouteReport, Solution, WalkReport
+from .solution import Move, RouteReport, Solution, WalkReport
+from .starts import StartError
+from .today import solve as _solve_form
 
 __version__ = ".".join(map(str, plugin.VERSION))
 
@@ -31,8 +32,10 @@ __all__ = [
     "CertificateError",
     "Finding",
     "LinearForm",
+    "Move",
     "RouteReport",
     "Solution",
+    "StartError",
     "Verdict",
     "WalkReport",
     "Witness",
@@ -90,7 +93,8 @@ def solve(form_or_model: Any, **options: Any) -> Solution:
     ----------
     form_or_model : LinearForm or Pyomo model
     **options
-        As `pyomo_latpath.routing.solve`: start, samples, time_limit, rel_gap, abs_gap, threads,
+        From today's plan, as `pyomo_latpath.today.solve`: start, max_moves, repair_start. The
+        others, as `pyomo_latpath.routing.solve`: samples, time_limit, rel_gap, abs_gap, threads,
         seed, highs_options, fixed_plan_prices, log.
 
     Returns
@@ -100,7 +104,7 @@ def solve(form_or_model: Any, **options: Any) -> Solution:
     Raises
     ------
     ValueError
-        As `pyomo_latpath.routing.solve` and `compile_model`.
+        As these two and `compile_model`; `StartError` for a start that is no feasible plan.
 
     Examples
     --------

@@ -42,11 +42,12 @@ from pyomo.contrib.solver.common.util import NoFeasibleSolutionError, NoOptimalS
 from pyomo.core.base import NumericLabeler, Objective, SymbolMap
 from pyomo.core.staleflag import StaleFlagManager
 
-from . import routing
+from . import today
 from .forms.from_pyomo import compile_model
-from .forms.linear_form import ComponentNames, Floats, LinearForm
+from .forms.linear_form import ComponentNames, LinearForm
 from .solution import Solution
 from .solution_loader import LatpathSolutionLoader, store_legacy
+from .starts import StartError
 
 logger = logging.getLogger("pyomo_latpath")
 
@@ -68,7 +69,7 @@ NAMED = 10
 
 
 class LatpathConfig(BranchAndBoundConfig):  # type: ignore[misc]
-    """What a solve can be asked: Pyomo's common options, and those of `routing.solve`.
+    """What a solve can be asked: Pyomo's common options, and those of `today.solve`.
 
     `solver_options` are HiGHS options, as with Pyomo's `highs`; they rule the branch and bound
     route. `time_limit` holds for all stages together. `symbolic_solver_labels` and `working_dir`
@@ -91,7 +92,23 @@ class LatpathConfig(BranchAndBoundConfig):  # type: ignore[misc]
                 "warmstart",
                 Bool,
                 False,
-                "Start from the variables' current values.",
+                "Start from the variables' current values, and tell the moves that lead from "
+                "them to the best plan. Values that are no plan are passed over, with a warning.",
+            ),
+            (
+                "max_moves",
+                NonNegativeInt,
+                None,
+                "With warmstart: load the plan after so many of these moves, the ones with the "
+                "largest gains. Where that is not the best plan, the termination condition is "
+                "iterationLimit, which here is no reason to raise an exception; incumbent and "
+                "bound tell what is left. Values that are no plan are an error then.",
+            ),
+            (
+                "repair_start",
+                Bool,
+                False,
+                "With warmstart: replace values that are no plan by the nearest plan.",
             ),
             (
                 "fixed_plan_prices",
@@ -195,6 +212,8 @@ class LegacyLatpath(LegacySolverWrapper, Latpath):  # type: ignore[misc]
         "samples",
         "seed",
         "warmstart",
+        "max_moves",
+        "repair_start",
         "fixed_plan_prices",
     )
 
@@ -281,38 +300,42 @@ def _route(form: LinearForm, config: LatpathConfig, log: _Log, compile_seconds: 
     """Call the router with what the configuration asks."""
     options = config.solver_options.value()
     # HiGHS's option of the same name is in wide use; the budget is one for all stages.
-    asked = (config.time_limit, options.pop("time_limit", None))
-    limit = min((seconds for seconds in asked if seconds is not None), default=None)
-    return routing.solve(
-        form,
-        start=_start(form, config),
-        samples=config.samples,
-        time_limit=None if limit is None else max(0.0, limit - compile_seconds),
-        rel_gap=config.rel_gap,
-        abs_gap=config.abs_gap,
-        threads=config.threads,
-        seed=config.seed,
-        highs_options=options,
-        fixed_plan_prices=config.fixed_plan_prices,
-        log=log if config.tee else None,
-        compile_seconds=compile_seconds,
-    )
-
-
-def _start(form: LinearForm, config: LatpathConfig) -> Floats | None:
-    """Return the variables' current values, where asked for and a plan."""
+    limits = (config.time_limit, options.pop("time_limit", None))
+    limit = min((seconds for seconds in limits if seconds is not None), default=None)
+    asked: dict[str, Any] = {
+        "samples": config.samples,
+        "time_limit": None if limit is None else max(0.0, limit - compile_seconds),
+        "rel_gap": config.rel_gap,
+        "abs_gap": config.abs_gap,
+        "threads": config.threads,
+        "seed": config.seed,
+        "highs_options": options,
+        "fixed_plan_prices": config.fixed_plan_prices,
+        "log": log if config.tee else None,
+        "compile_seconds": compile_seconds,
+    }
     if not config.warmstart:
-        return None
-    variables = cast(ComponentNames, form.col_names).components
-    values = [variable.value for variable in variables]
+        if config.max_moves is not None or config.repair_start:
+            raise ValueError("max_moves and repair_start need warmstart=True")
+        return today.solve(form, **asked)
+    moves = {"max_moves": config.max_moves, "repair_start": config.repair_start}
     try:
-        if None in values:
-            raise ValueError(f"variable {variables[values.index(None)].name!r} has no value")
-        return routing.feasible_start(form, values)
-    except ValueError as reason:
+        return today.solve(form, start=_values(form), **moves, **asked)
+    except StartError as reason:
+        if config.max_moves is not None:
+            raise
         # Other Pyomo solvers pass over a start they cannot use, so a solve does not fail for it.
         logger.warning("solving without a start: %s", reason)
-        return None
+        return today.solve(form, **asked)
+
+
+def _values(form: LinearForm) -> list[float]:
+    """The variables' current values."""
+    variables = cast(ComponentNames, form.col_names).components
+    values = [variable.value for variable in variables]
+    if None in values:
+        raise StartError(f"variable {variables[values.index(None)].name!r} has no value")
+    return values
 
 
 def _message(solution: Solution) -> str:
@@ -361,6 +384,8 @@ def _refuse_unwanted(solution: Solution, config: LatpathConfig) -> None:
         "limit": "A limit set among HiGHS's options ended the solve",
         "interrupted": "The solve was interrupted",
     }.get(solution.status, f"The solve ended with status {solution.status!r}")
+    if solution.report.further_moves and solution.status == "limit":
+        return  # stopped where max_moves asked for it
     diagnosis = f"{ended} (route {_message(solution)}). "
     if solution.status != "optimal" and config.raise_exception_on_nonoptimal_result:
         raise NoOptimalSolutionError(diagnosis + NoOptimalSolutionError.default_message)
