@@ -24,7 +24,9 @@ from .cli_output import (
     write_plan,
 )
 from .forms.from_file import ModelFileError, read
-from .routing import solve as solve_form
+from .plan_files import read_plan, write_moves
+from .starts import StartError
+from .today import solve as solve_form
 
 OPTIMAL, NOT_OPTIMAL, UNREADABLE = 0, 1, 2
 
@@ -60,6 +62,25 @@ def main() -> None:
     callback=_in_a_folder,
     help="Write the proof that every vertex is whole as JSON. One FILE only.",
 )
+@click.option(
+    "--from",
+    "start",
+    type=_INPUT,
+    metavar="PLAN",
+    help="Today's plan, as --plan writes it: tell the moves from it to the best one.",
+)
+@click.option(
+    "--moves",
+    type=_OUTPUT,
+    callback=_in_a_folder,
+    help="Write these moves as CSV, largest gain first.",
+)
+@click.option("--max-moves", type=click.IntRange(min=0), help="Make only so many of the moves.")
+@click.option(
+    "--repair-start",
+    is_flag=True,
+    help="Where PLAN is no feasible plan, start from the one nearest to it.",
+)
 @click.option("--time-limit", type=click.FloatRange(min=0), help="Seconds for each file.")
 @click.option("--rel-gap", type=click.FloatRange(min=0), help="Relative gap of branch and bound.")
 @click.option("--threads", type=click.IntRange(min=1), help="Threads of branch and bound.")
@@ -70,11 +91,20 @@ def solve(
     as_json: bool,
     plan: Path | None,
     certificate: Path | None,
+    start: Path | None,
+    moves: Path | None,
+    max_moves: int | None,
+    repair_start: bool,
     **options: Any,
 ) -> None:
     """Solve model files: .mps, .lp, .min and .asn, each also .gz.
 
     A file that cannot be read does not stop the others.
+
+    Every set of the moves from today's plan (--from) leads to a feasible whole plan, in any
+    order. --moves has a line for each column that a move changes: move, made (yes or no),
+    column, before, after, gain, objective_after. A plan after --max-moves moves is as good
+    as asked for: it has status 'limit' if there are more, and counts as solved.
 
     Fields of --json, null where not known: instance, status, rows, columns, integers,
     nonzeros, verdict, structure, samples (vertices that a verdict 'sampled' rests on), route,
@@ -86,8 +116,12 @@ def solve(
       1  some file is infeasible or unbounded, or its time ran out
       2  wrong usage, or some file could not be read or written
     """
-    if len(files) > 1 and (plan or certificate):
-        raise click.UsageError("--plan and --certificate take one FILE only")
+    if len(files) > 1 and (plan or certificate or start):
+        raise click.UsageError("--plan, --certificate and --from take one FILE only")
+    if start is None and (moves or max_moves is not None or repair_start):
+        raise click.UsageError("--moves, --max-moves and --repair-start need --from")
+    if start is not None:
+        options |= {"start": start, "max_moves": max_moves, "repair_start": repair_start}
     names = _names(files)
     tabular = len(files) > 1 and not as_json
     if tabular:
@@ -98,7 +132,7 @@ def solve(
         outcome = _outcome(path, name, options)
         outcomes.append(outcome)
         _show(outcome, as_json, names)
-        code = max(code, _code(outcome), _write(outcome, plan, certificate))
+        code = max(code, _code(outcome), _write(outcome, plan, certificate, moves))
     if tabular:
         click.echo(summary(outcomes))
     sys.exit(code)
@@ -146,12 +180,17 @@ def _json(path: Path) -> Any:
 def _outcome(path: Path, name: str, options: dict[str, Any]) -> Outcome:
     """Read and solve one file; whatever goes wrong becomes part of the outcome."""
     begun = time.perf_counter()
+    plan = options.get("start")
     try:
         form = read(path)
+        if plan is not None:
+            options = options | {"start": read_plan(plan, form)}
     except (OSError, ValueError) as error:
         return Outcome(name, error=_sentence(error))
     try:
         solution = solve_form(form, compile_seconds=time.perf_counter() - begun, **options)
+    except StartError as error:
+        return Outcome(name, form, error=f"{plan}: {error}")
     except Exception as error:
         # A defect of ours must not cost the files that follow; it is shown in full.
         traceback.print_exc()
@@ -172,15 +211,20 @@ def _show(outcome: Outcome, as_json: bool, names: Sequence[str]) -> None:
 def _code(outcome: Outcome) -> int:
     if outcome.error is not None:
         return UNREADABLE
-    return OPTIMAL if outcome.status == "optimal" else NOT_OPTIMAL
+    solution = outcome.solution
+    stopped = solution is not None and solution.status == "limit" and solution.report.further_moves
+    return OPTIMAL if outcome.status == "optimal" or stopped else NOT_OPTIMAL
 
 
-def _write(outcome: Outcome, plan: Path | None, certificate: Path | None) -> int:
+def _write(
+    outcome: Outcome, plan: Path | None, certificate: Path | None, moves: Path | None
+) -> int:
     """Write the files asked for; return the exit status that this calls for."""
     if outcome.form is None or outcome.solution is None:
         return OPTIMAL
     code = OPTIMAL
-    for path, writer in ((plan, write_plan), (certificate, write_certificate)):
+    writers = ((plan, write_plan), (certificate, write_certificate), (moves, write_moves))
+    for path, writer in writers:
         if path is None:
             continue
         try:

@@ -17,7 +17,7 @@ from typing import IO, Any
 from .certificates import Certificate, fingerprint
 from .forms.linear_form import LinearForm
 from .integrality.finding import Finding, Verdict
-from .solution import Solution
+from .solution import RouteReport, Solution
 
 WIDTH = 80
 #: Names shown of a conflict before the rest is only counted.
@@ -135,6 +135,10 @@ def describe(outcome: Outcome) -> Iterator[str]:
     if solution.x is not None:
         gap = "" if solution.status == "optimal" else f" (bound {number(solution.bound)})"
         yield from _entry("objective", number(solution.objective) + gap)
+    if report.repair is not None:
+        yield from _entry("repair", f"{len(report.repair.names)} columns of the start changed")
+    if report.moves or report.further_moves:
+        yield from _entry("moves", _moves_words(report))
     if report.largest_violation > 0:
         yield from _entry(
             "violation", f"a row or bound is missed by {report.largest_violation:.3g}"
@@ -173,6 +177,16 @@ def verdict_words(finding: Finding) -> str:
 def samples_looked_at(finding: Finding) -> int:
     """Vertices looked at in the blocks whose verdict rests on them."""
     return sum(block.samples for block in finding.blocks if block.verdict is Verdict.SAMPLED)
+
+
+def _moves_words(report: RouteReport) -> str:
+    """How many moves were made, and what they and the others are worth."""
+    made, further = report.moves, report.further_moves
+    gain = number(math.fsum(move.gain for move in made))
+    if not further:
+        return f"{len(made)} from the start, worth {gain}"
+    left = number(math.fsum(move.gain for move in further))
+    return f"{len(made)} from the start, worth {gain}; {len(further)} left, worth {left}"
 
 
 def table_head(names: Sequence[str]) -> str:
