@@ -32,39 +32,40 @@ from .finding import BlockFinding, Finding, Verdict
 from .sampling import program_of
 from .verdicts import conflict_finding, proven_finding, sampled_finding
 
-Recogniser = Callable[[sp.csc_array], Part | None]
+Recogniser = Callable[[sp.csc_array, Deadline], Part | None]
 #: Share of the time limit that certificates may take.
 CERTIFY_SHARE = 0.5
 
 
-def _transposed(recognise: Callable[[sp.csc_array], Network | None]) -> Recogniser:
-    def recognise_transposed(matrix: sp.csc_array) -> Conetwork | None:
-        part = recognise(matrix.T.tocsc())
-        return None if part is None else Conetwork(part.tree, part.arcs)
+def _at_once(recognise: Callable[[sp.csc_array], Part | None]) -> Recogniser:
+    """A recogniser that needs no more time than reading the matrix takes."""
+    return lambda matrix, deadline: recognise(matrix)
+
+
+def _transposed(recognise: Callable[[sp.csc_array, Deadline], Part | None]) -> Recogniser:
+    def recognise_transposed(matrix: sp.csc_array, deadline: Deadline) -> Conetwork | None:
+        part = recognise(matrix.T.tocsc(), deadline)
+        return Conetwork(part.tree, part.arcs) if isinstance(part, Network) else None
 
     return recognise_transposed
 
 
 #: Linear-time tests of a matrix as it stands: the structure's name, and what recognises it.
 QUICK: tuple[tuple[str, Recogniser], ...] = (
-    ("incidence", incidence.recognise),
-    ("interval", interval.recognise),
-    ("conetwork", _transposed(incidence.recognise)),
-    ("conetwork", _transposed(interval.recognise)),
+    ("incidence", _at_once(incidence.recognise)),
+    ("interval", _at_once(interval.recognise)),
+    ("conetwork", _transposed(_at_once(incidence.recognise))),
+    ("conetwork", _transposed(_at_once(interval.recognise))),
 )
-#: All tests in near-linear time, cheapest first, for what reductions leave.
+#: All tests, in near-linear time, cheapest first, for what reductions leave.
 RECOGNISERS: tuple[tuple[str, Recogniser], ...] = (
     *QUICK,
     ("network", network.recognise),
     ("conetwork", _transposed(network.recognise)),
 )
-#: Tests that take longer.
-SLOW: tuple[tuple[str, Recogniser], ...] = (
-    ("interval", interval.recognise_hidden),
-    ("conetwork", _transposed(interval.recognise_hidden)),
-)
-#: How far to go: `QUICK` alone; reductions and `RECOGNISERS` too; everything.
-Effort = Literal["quick", "linear", "full"]
+#: What to look for: structures by `QUICK` alone; reductions and `RECOGNISERS` too; systems of
+#: equations alone, where the others have failed; all of these.
+Effort = Literal["quick", "linear", "systems", "full"]
 
 
 def assess(
@@ -135,7 +136,7 @@ def _assess_further(
         if finding.verdict not in (Verdict.SAMPLED, Verdict.UNDECIDED):
             return finding
     block = Block(np.arange(piece.rows.size), np.arange(piece.columns.size), trivial=False)
-    found = certify(piece, [block], early)[0]
+    found = certify(piece, [block], early, "systems")[0]
     if found is not None:
         return proven_finding(piece, block, found, mark)
     return sampled_finding(piece, samples, first, seed, deadline)
@@ -152,8 +153,9 @@ def certify(
     blocks : sequence of Block
     deadline : Deadline
         Blocks that were not looked at in time have no certificate.
-    effort : 'quick', 'linear' or 'full'
-        Tests that take about as long as reading the matrix; all in near-linear time; all.
+    effort : 'quick', 'linear', 'systems' or 'full'
+        Tests that take about as long as reading the matrix; all in near-linear time; systems
+        of equations alone, where the others have failed; all.
 
     Returns
     -------
@@ -192,10 +194,10 @@ def certify(
         elif not deadline.passed:
             inner = _cut(matrix, here, place)
             key = b"|".join(a.tobytes() for a in (inner.data, inner.indices, inner.indptr))
-            if key not in known:  # blocks that recur cost little
-                known[key] = prove_tu(inner, effort, deadline)
-            proof = known[key]
-            if proof is None and effort == "full":
+            if effort != "systems" and key not in known:  # blocks that recur cost little
+                known[key] = prove_tu(inner, deadline, quick=effort == "quick")
+            proof = known.get(key)
+            if proof is None and effort in ("systems", "full"):
                 proof = _prove_system(normal, block, inner, deadline)
         if proof is not None:
             found[k] = proof[0], _block_certificate(normal, block, proof[1])
@@ -221,7 +223,7 @@ def _prove_system(
         return None
 
     def rest(reduced: sp.csc_array) -> Part | None:
-        proof = prove_tu(reduced, deadline=deadline)
+        proof = prove_tu(reduced, deadline)
         return None if proof is None else proof[1]
 
     part = unimodular.recognise(matrix, equality, sides.astype(np.int64), rest, deadline)
@@ -229,7 +231,7 @@ def _prove_system(
 
 
 def prove_tu(
-    matrix: sp.csc_array, effort: Effort = "full", deadline: Deadline | None = None
+    matrix: sp.csc_array, deadline: Deadline | None = None, *, quick: bool = False
 ) -> tuple[str, Part] | None:
     """Prove a matrix totally unimodular, if it has one of the known structures.
 
@@ -237,8 +239,9 @@ def prove_tu(
     ----------
     matrix : scipy.sparse.csc_array, shape (m, n), int64
         Canonical: sorted indices, no stored zeros.
-    effort : 'quick', 'linear' or 'full'
     deadline : Deadline, optional
+    quick : bool
+        Make only the tests that take about as long as reading the matrix.
 
     Returns
     -------
@@ -255,20 +258,19 @@ def prove_tu(
     """
     if (np.abs(matrix.data) != 1).any():
         return None
+    deadline = deadline or Deadline(None)
     for name, recognise in QUICK:
-        part = recognise(matrix)
+        part = recognise(matrix, deadline)
         if part is not None:
             return name, part
-    deadline = deadline or Deadline(None)
-    if effort == "quick" or deadline.passed:
+    if quick or deadline.passed:
         return None
     reduction = reductions.reduce_matrix(matrix, deadline)
     if not reduction.rows.size and not reduction.columns.size:
         empty = np.empty((0, 2), np.int64)
         return "network", reduction.prove(Network(empty, empty))
-    tests = RECOGNISERS if reduction.steps else RECOGNISERS[len(QUICK) :]
-    for name, recognise in (*tests, *SLOW) if effort == "full" else tests:
-        part = None if deadline.passed else recognise(reduction.matrix)
+    for name, recognise in RECOGNISERS if reduction.steps else RECOGNISERS[len(QUICK) :]:
+        part = None if deadline.passed else recognise(reduction.matrix, deadline)
         if part is not None:
             whole = reduction.prove(part)
             if isinstance(whole, Network) and (reduction.steps or name == "network"):

@@ -279,8 +279,8 @@ def test_what_is_proven_is_totally_unimodular(seed):
     rng = np.random.default_rng(seed)
     m, n = rng.integers(1, 6, 2)
     matrix = rng.choice([0, 0, 1, 1, -1], (m, n))
-    for effort in ("quick", "linear", "full"):
-        proof = prove_tu(sp.csc_array(matrix), effort)
+    for quick in (True, False):
+        proof = prove_tu(sp.csc_array(matrix), quick=quick)
         if proof is not None:
             proof[1].check(sp.csc_array(matrix))
             assert is_tu(matrix)
@@ -288,12 +288,12 @@ def test_what_is_proven_is_totally_unimodular(seed):
 
 def test_less_effort_proves_less():
     hidden, reducible = sp.csc_array(HIDDEN), sp.csc_array(REDUCIBLE)
-    assert prove_tu(hidden, "quick") is None
-    assert prove_tu(hidden, "linear")[0] == "interval"
-    assert prove_tu(reducible, "quick") is None
-    name, part = prove_tu(reducible, "linear")
+    assert prove_tu(hidden, quick=True) is None
+    assert prove_tu(hidden)[0] == "interval"
+    assert prove_tu(reducible, quick=True) is None
+    name, part = prove_tu(reducible)
     assert (name, type(part)) == ("network", Network)
-    name, part = prove_tu(sp.csc_array(DIFFERENCES), "quick")
+    name, part = prove_tu(sp.csc_array(DIFFERENCES), quick=True)
     assert (name, type(part)) == ("conetwork", Conetwork)
 
 

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 import scipy.sparse as sp
 from brute_force import is_tu
-from hypothesis import given, settings
+from hypothesis import given
 from hypothesis import strategies as st
 
 from pyomo_latpath.integrality import interval
@@ -65,30 +65,6 @@ def test_recognised_if_and_only_if_signs_and_runs_agree(matrix):
     assert (part is not None) == (is_interval(matrix) and bool(matrix.any()))
     if part is not None:
         part.check(sp.csc_array(matrix))
-
-
-@settings(max_examples=60)
-@given(any_matrix(5, 4))
-def test_hidden_order_is_found_if_and_only_if_there_is_one(matrix):
-    orders = (matrix[list(order)] for order in itertools.permutations(range(len(matrix))))
-    exists = any(is_interval(rows) for rows in orders)
-    part = interval.recognise_hidden(sp.csc_array(matrix))
-    assert (part is not None) == (exists and bool(matrix.any()))
-    if part is not None:
-        part.check(sp.csc_array(matrix))
-
-
-@pytest.mark.parametrize("seed", range(3))
-def test_hidden_order_of_a_roster(seed):
-    rng = np.random.default_rng(seed)
-    periods, shifts = 120, 300
-    begin = rng.integers(0, periods - 20, shifts)
-    matrix = np.zeros((periods, shifts), np.int64)
-    for j, first in enumerate(begin):
-        matrix[first : first + rng.integers(2, 20), j] = 1
-    shuffled = sp.csc_array(matrix[rng.permutation(periods)])
-    assert interval.recognise(shuffled) is None
-    interval.recognise_hidden(shuffled).check(shuffled)
 
 
 @pytest.mark.parametrize(
