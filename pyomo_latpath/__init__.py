@@ -23,6 +23,8 @@ from .integrality.assess import assess as _assess_form
 from .integrality.finding import BlockFinding, Finding, Verdict, Witness
 from .solution import Move, RouteReport, Solution, WalkReport
 from .starts import StartError
+from .stay import StayOrChange, StayPoint
+from .stay import stay_or_change as _stay_or_change_form
 from .today import solve as _solve_form
 
 __version__ = ".".join(map(str, plugin.VERSION))
@@ -36,6 +38,8 @@ __all__ = [
     "RouteReport",
     "Solution",
     "StartError",
+    "StayOrChange",
+    "StayPoint",
     "Verdict",
     "WalkReport",
     "Witness",
@@ -44,6 +48,7 @@ __all__ = [
     "compile_model",
     "read",
     "solve",
+    "stay_or_change",
 ]
 
 
@@ -118,6 +123,41 @@ def solve(form_or_model: Any, **options: Any) -> Solution:
     if seconds and options.get("time_limit") is not None:
         options["time_limit"] = max(0.0, options["time_limit"] - seconds)
     return _solve_form(form, **{"compile_seconds": seconds} | options)
+
+
+def stay_or_change(form_or_model: Any, start: Any, **options: Any) -> StayOrChange:
+    """Work out the trade between the objective and the number of changes from today's plan.
+
+    Parameters
+    ----------
+    form_or_model : LinearForm or Pyomo model
+    start : array_like, shape (n,), or mapping of str to float
+        Today's plan: whole and feasible, in the order of the columns or by their names.
+    **options
+        As `pyomo_latpath.stay.stay_or_change`: bonuses, most, and those of a solve.
+
+    Returns
+    -------
+    StayOrChange
+        With `points`, `to_text()`, `to_dict()` and `plot()`.
+
+    Raises
+    ------
+    ValueError
+        As `pyomo_latpath.stay.stay_or_change` and `compile_model`; `StartError` for a start that
+        is no feasible plan.
+
+    Examples
+    --------
+    >>> import pyomo_latpath as latpath
+    >>> form = latpath.LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                                       col_upper=1, cost=[2, 3], col_names=["van", "cart"])
+    >>> trade = latpath.stay_or_change(form, {"van": 0, "cart": 1})
+    >>> [(point.objective, point.changed, point.bonus) for point in trade.points]
+    [(2.0, 2, 0.0), (3.0, 0, 0.5)]
+    """
+    form, _ = _form_of(form_or_model)
+    return _stay_or_change_form(form, start, **options)
 
 
 def _form_of(form_or_model: Any) -> tuple[LinearForm, float]:
