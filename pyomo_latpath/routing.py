@@ -26,7 +26,7 @@ from numpy.typing import ArrayLike
 from .answers import Merged, PartAnswer, merge, walk_report, without_plan
 from .blame import Blame, blame, blame_conflict
 from .branching import branch_part, largest_violation
-from .certificates import BlockCertificate, Network, fingerprint
+from .certificates import BlockCertificate, Conetwork, Network, fingerprint
 from .deadline import Deadline
 from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
@@ -36,6 +36,7 @@ from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
+from .paths.conetwork_flow import ConetworkStructure
 from .paths.network_oracle import NetworkStructure, glued
 from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
@@ -231,14 +232,17 @@ def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
 
 
 def _groups(proven: list[tuple[Block, tuple[str, BlockCertificate]]]) -> list[list[int]]:
-    """Certified blocks that are solved together: networks, other unimodular ones, trivial ones."""
-    networks, unimodular, trivial = [], [], []
+    """Certified blocks that are solved together: those of one kind, trivial ones last."""
+    groups: list[list[int]] = [[], [], [], []]
+    networks, conetworks, unimodular, trivial = groups
     for k, (_, (structure, certificate)) in enumerate(proven):
         if isinstance(certificate.part, Network):
             networks.append(k)
+        elif isinstance(certificate.part, Conetwork):
+            conetworks.append(k)
         else:
             (trivial if structure == "trivial" else unimodular).append(k)
-    return [group for group in (networks, unimodular, trivial) if group]
+    return [group for group in groups if group]
 
 
 def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
@@ -249,24 +253,30 @@ def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
 
 def _structure(
     normal: NormalForm, piece: NormalForm, proven: list[tuple[Block, tuple[str, BlockCertificate]]]
-) -> NetworkStructure | None:
-    """The network behind a union of blocks, where all their certificates are of that kind."""
+) -> NetworkStructure | ConetworkStructure | None:
+    """The network behind a group of blocks or their transposes, where there is one."""
+    kind = type(proven[0][1][1].part)
     parts = []
     for block, (_, certificate) in proven:
         part = certificate.part
-        if not isinstance(part, Network):
+        if not isinstance(part, Network | Conetwork):
             return None
-        rows = np.searchsorted(piece.rows, normal.rows[block.rows])
-        columns = np.searchsorted(piece.columns, normal.columns[block.columns])
-        parts.append((rows, columns, part.tree, part.arcs))
-    return glued(parts, piece.rows.size, piece.columns.size)
+        places = [
+            np.searchsorted(piece.rows, normal.rows[block.rows]),
+            np.searchsorted(piece.columns, normal.columns[block.columns]),
+        ]
+        of_tree, of_arcs = places if kind is Network else places[::-1]
+        parts.append((of_tree, of_arcs, part.tree, part.arcs))
+    if kind is Network:
+        return glued(parts, piece.rows.size, piece.columns.size)
+    return ConetworkStructure(glued(parts, piece.columns.size, piece.rows.size))
 
 
 def _by_path(
     request: _Request,
     part: NormalForm,
     findings: tuple[BlockFinding, ...],
-    structure: NetworkStructure | None,
+    structure: NetworkStructure | ConetworkStructure | None,
 ) -> PartAnswer:
     """Solve what is certified: a union of unimodular blocks is one itself."""
     since = time.perf_counter()

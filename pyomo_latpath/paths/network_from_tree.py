@@ -115,8 +115,8 @@ def network_from_tree(
     >>> flow.x(result), flow.prices(result)
     (array([1, 1, 1]), (array([2, 1, 1]), array([0, 0, 0])))
     """
-    lower = np.concatenate([_limits(col_lower, "column"), _limits(row_lower, "row")])
-    upper = np.concatenate([_limits(col_upper, "column"), _limits(row_upper, "row")])
+    lower = np.concatenate([whole_limits(col_lower, "column"), whole_limits(row_lower, "row")])
+    upper = np.concatenate([whole_limits(col_upper, "column"), whole_limits(row_upper, "row")])
     problem = FlowProblem.of(
         np.concatenate([arcs[:, 0], tree[:, 1]]),
         np.concatenate([arcs[:, 1], tree[:, 0]]),
@@ -128,7 +128,7 @@ def network_from_tree(
     return TreeFlow(problem, arcs.shape[0])
 
 
-def _limits(values: Floats, what: str) -> Whole:
+def whole_limits(values: Floats, what: str) -> Whole:
     """Whole numbers as int64, infinite ones as NO_LIMIT."""
     endless = np.isinf(values)
     whole = np.where(endless, 0.0, values)

@@ -13,6 +13,7 @@ from ..forms.normalise import NormalForm
 from ..highs import Basis, LinearProgram
 from ..proof import Proof, WholeCosts, prove_optimal
 from .box import Box, box_of
+from .conetwork_flow import ConetworkOracle, ConetworkStructure
 from .face_fixing import Walk, face_fixing_walk, step_bound
 from .network_oracle import NetworkOracle, NetworkStructure, largest_cost, repays
 from .vertex_oracle import (
@@ -27,7 +28,7 @@ from .vertex_oracle import (
 Floats = NDArray[np.float64]
 
 
-Oracle = HighsBasis | Tableau | NetworkOracle
+Oracle = HighsBasis | Tableau | NetworkOracle | ConetworkOracle
 
 
 @dataclass(frozen=True, eq=False)
@@ -44,7 +45,7 @@ class PathResult:
     walk : Walk
     box : Box
     engine : str
-        'network', 'highs' or 'tableau'.
+        'network', 'conetwork', 'highs' or 'tableau'.
     steps, pivots : int
     exact_steps : bool
         Whether `steps` is exact or an upper count.
@@ -71,7 +72,7 @@ def walk_to_optimum(
     costs: WholeCosts,
     deadline: Deadline,
     start: Floats | None = None,
-    structure: NetworkStructure | None = None,
+    structure: NetworkStructure | ConetworkStructure | None = None,
 ) -> PathResult:
     """Solve a block whose vertices are whole.
 
@@ -85,8 +86,8 @@ def walk_to_optimum(
     start : ndarray, shape (n,), float64, optional
         A whole feasible plan (scaled units) to walk from; without one the first vertex is an
         optimum of the costs, as far as the engine can tell them apart.
-    structure : NetworkStructure, optional
-        Of a block that is a network matrix.
+    structure : NetworkStructure or ConetworkStructure, optional
+        Of a block that is a network matrix, or whose transpose is one.
 
     Returns
     -------
@@ -105,7 +106,7 @@ def walk_to_optimum(
     """
     box = box_of(normal)
     first = None if start is None else vertex_at_least_as_good(normal, start, deadline)
-    oracle, largest = _engine(normal, box, first, structure)
+    oracle, largest = _engine(normal, costs, box, first, structure)
     proofs: list[Proof] = []
 
     def optimal(vertex: Vertex) -> bool:
@@ -187,12 +188,18 @@ def vertex_at_least_as_good(
 
 def _engine(
     normal: NormalForm,
+    costs: WholeCosts,
     box: Box,
     first: tuple[Basis, Floats] | None,
-    structure: NetworkStructure | None,
+    structure: NetworkStructure | ConetworkStructure | None,
 ) -> tuple[Oracle, int]:
     """The engine that serves as oracle, and the largest costs it takes as they are."""
-    if structure is not None and repays(structure):
+    if isinstance(structure, ConetworkStructure):
+        # It walks no vertices, so none from a start; and without a box costs must be exact.
+        exact = box.total is not None or np.abs(costs.numerators).max() <= structure.largest_cost
+        if first is None and exact and structure.fits(normal) and repays(structure.transpose):
+            return ConetworkOracle(normal, structure), structure.largest_cost
+    elif structure is not None and repays(structure):
         return NetworkOracle(normal, structure, first), largest_cost(structure)
     if first is None:
         return HighsBasis(normal), LARGEST_HIGHS_COST
