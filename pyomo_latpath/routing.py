@@ -222,6 +222,8 @@ def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
     ):
         slack = 1e-6 * np.maximum(1.0, np.abs(value))
         missed = (value < low - slack) | (value > high + slack)
+        if kind == "column":
+            missed &= ~(form.semicontinuous & (value == 0))
         if missed.any():
             i = int(np.argmax(missed))
             raise ValueError(
