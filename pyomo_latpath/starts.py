@@ -33,8 +33,8 @@ from .solution import Solution
 #: What a start may be: values in the order of the columns, or by their names.
 Start = ArrayLike | Mapping[str, float]
 
-#: Violations up to here are rounding.
-ROUNDING = 1e-9
+#: Violations up to here are rounding; up to there, HiGHS's tolerance.
+ROUNDING, FEASIBLE = 1e-9, 1e-6
 
 
 class StartError(ValueError):
@@ -199,7 +199,14 @@ def nearest_plan(form: LinearForm, start: Floats, **options: Any) -> tuple[str, 
     spread = spread_around(form, start)
     distance = spread.form.replace(cost=spread.slope, offset=0, sense="min")
     found = routing.solve(distance, **options)
-    return found.status, None if found.x is None else spread.plan(found.x)
+    if found.x is None:
+        return found.status, None
+    x = spread.plan(found.x)
+    x = np.where(form.integer, np.rint(x), x)
+    if largest_violation(form, x) > FEASIBLE:
+        # A row that meets no free column is missed by every plan.
+        return "infeasible", None
+    return found.status, x
 
 
 def nearest_optimum(

@@ -133,14 +133,9 @@ def _feasible(
             raise StartError(str(reason)) from None
         if form.semicontinuous.any():
             raise StartError(f"{reason}; semicontinuous columns stand against a repair") from None
-    _, nearest = nearest_plan(
-        form, wanted, time_limit=_seconds(deadline), samples=0, threads=threads
-    )
-    try:
-        return None if nearest is None else routing.feasible_start(form, nearest), True
-    except ValueError:
-        # A row without free columns is missed; so it is by every plan.
-        return None, True
+    left = _seconds(deadline)
+    _, nearest = nearest_plan(form, wanted, time_limit=left, samples=0, threads=threads)
+    return nearest, True
 
 
 def _with_moves(
@@ -261,7 +256,10 @@ def _between(
     matrix = matrix[rows, :]
     first, last = before[columns], after[columns]
     sides = matrix @ first, matrix @ last
-    whole = (np.rint(first) == first) & (np.rint(last) == last)
+    integer = form.integer[columns]
+    if not integer.any():
+        # Certificates are looked for beside integer columns only; whole plans have them too.
+        integer = (np.rint(first) == first) & (np.rint(last) == last)
     return LinearForm.from_arrays(
         matrix,
         row_lower=np.minimum(*sides),
@@ -270,7 +268,7 @@ def _between(
         col_upper=np.maximum(first, last),
         cost=form.cost[columns],
         sense=form.sense,
-        integer=form.integer[columns] | whole,
+        integer=integer,
         semicontinuous=form.semicontinuous[columns],
     )
 

@@ -32,14 +32,16 @@ import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from ..deadline import Deadline
+from ..forms.numbers import common_scale, nearby_fraction
 from ..highs import LinearProgram
 from .network_oracle import NetworkStructure
 
 Floats = NDArray[np.float64]
 Whole = NDArray[np.int64]
 
-#: Entries of a vertex below this are HiGHS's zeros.
-NOISE = 1e-9
+#: Entries of a vertex below this are HiGHS's zeros; how near their ratios come to fractions, and
+#: the largest common denominator of these.
+NOISE, NEAR, LARGEST_SCALE = 1e-9, 1e-6, 1000
 #: Differing columns from which on cycles are walked where there are any.
 MANY = 500
 #: Programs times their columns at most; it bounds the time (to about half a minute).
@@ -233,10 +235,13 @@ def _program(
 
 
 def _whole_multiple(x: Floats) -> Floats | None:
-    """The multiple of a vertex whose least entry is 1, where that is whole."""
+    """The least whole multiple of a vertex, unless its numbers are large."""
     entries = np.where(x > NOISE, x, 0.0)
     if not entries.any():
         return None
-    multiple = entries / entries[entries > 0].min()
-    vector = np.rint(multiple)
-    return vector if (np.abs(multiple - vector) <= 1e-6).all() else None
+    ratio = entries / entries[entries > 0].min()
+    scale = common_scale([nearby_fraction(value, NEAR) for value in np.unique(ratio).tolist()])
+    if scale > LARGEST_SCALE:
+        return None
+    vector = np.rint(ratio * scale)
+    return vector / np.gcd.reduce(vector.astype(np.int64))
