@@ -28,7 +28,7 @@ from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from .network_from_tree import whole_limits
 from .network_kernel import UNLIMITED
-from .network_oracle import REFINEMENTS, NetworkStructure
+from .network_oracle import NetworkStructure
 from .network_problem import NO_LIMIT, Flags, FlowProblem, FlowResult
 from .network_simplex import NetworkSimplex
 from .network_standard import MOST_COST
@@ -127,22 +127,25 @@ class ConetworkOracle:
     def optimise(self, cost: Whole, deadline: Deadline) -> Vertex:
         """Go to a vertex of the current face that minimises `cost`.
 
-        Costs beyond `ConetworkStructure.largest_cost` are met shifted right first, then by what
-        the flow on the tree, at the costs themselves, leaves to mend. A shift may mislead where
-        the block is unbounded.
+        Costs beyond `ConetworkStructure.largest_cost` are met digit by digit (Edmonds and Karp
+        1972). A cut found on the way may mislead where the block is unbounded.
         """
         size = max(int(cost.max()), -int(cost.min()))
         shift = max(0, (size // self._largest).bit_length())
         first, before = self._result is None, self.pivots
         self._result = self._run((cost >> shift).astype(np.int64), deadline)
         flow: Whole = self._result.flow
-        for _ in range(REFINEMENTS if shift else 0):
-            if self._result.status != "optimal":
-                break
-            flow = self._tree_flow(cost)
-            if flow.min(initial=0) >= 0:
-                break
-            self._result = self._mend(flow, deadline)
+        digit = 56 - (self._columns * flow.size).bit_length()
+        while shift and self._result.status == "optimal":
+            step = min(shift, max(1, digit))
+            rest = (cost >> (shift - step)) - ((cost >> shift) << step)
+            flow, shift = flow.astype(object) << step, shift - step
+            # Paths that bring the rest change no arc by more than the rest together.
+            reach = 1 + int(np.abs(self._supply(rest)).sum())
+            lower = -np.minimum(flow, reach).astype(np.int64)
+            self._result = self._run(rest.astype(np.int64), deadline, lower)
+            flow = flow + self._result.flow
+        self._priced = cost, flow
         self.steps += 0 if first else self.pivots - before
         return self._vertex(self._result, flow, deadline)
 
@@ -158,7 +161,9 @@ class ConetworkOracle:
     def basis_prices(self, costs: Whole, guess: Whole) -> Whole:
         """Exact prices of the rows for whole costs; the guess is not needed."""
         del guess
-        return self._net(self._tree_flow(costs))[self._columns :]
+        known, flow = self._priced
+        same = np.array_equal(known, costs)
+        return self._net(flow if same else self._tree_flow(costs))[self._columns :]
 
     def _limit(self, low: Whole, high: Whole) -> None:
         """Lay out the arcs for these limits."""
@@ -186,16 +191,6 @@ class ConetworkOracle:
         result = engine.run(deadline)
         self.pivots += engine.pivots
         return result
-
-    def _mend(self, flow: Whole, deadline: Deadline) -> FlowResult:
-        """Solve for the change of a flow of any size that is negative in places.
-
-        Shifted right until what is wanted fits; more is not taken back than all arcs may want.
-        """
-        most = UNLIMITED // (4 * flow.size)
-        shift = (-int(flow.min()) * flow.size // most).bit_length()
-        lower = np.maximum(-flow >> shift, -most).astype(np.int64)
-        return self._run(self._still, deadline, lower)
 
     def _along(self, node: Whole) -> Whole:
         """Differences of values at the nodes, columns first, then rows."""
