@@ -136,7 +136,7 @@ def describe(outcome: Outcome) -> Iterator[str]:
         gap = "" if solution.status == "optimal" else f" (bound {number(solution.bound)})"
         yield from _entry("objective", number(solution.objective) + gap)
     if report.repair is not None:
-        yield from _entry("repair", f"{len(report.repair.names)} columns of the start changed")
+        yield from _entry("repair", f"values of the start changed: {len(report.repair.names)}")
     if report.moves or report.further_moves:
         yield from _entry("moves", _moves_words(report))
     if report.largest_violation > 0:

@@ -44,8 +44,8 @@ Whole = NDArray[np.int64]
 NOISE, NEAR, LARGEST_SCALE = 1e-9, 1e-6, 1000
 #: Differing columns from which on cycles are walked where there are any.
 MANY = 500
-#: Programs times their columns at most; it bounds the time (to about half a minute).
-MOST_EFFORT = 10**7
+#: Programs times their columns at most; it bounds the time, to about ten seconds.
+MOST_EFFORT = 3 * 10**6
 
 
 @dataclass(frozen=True, eq=False)
