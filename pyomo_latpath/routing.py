@@ -385,7 +385,7 @@ def _finding(
     if is_whole(optimum.x, part.integer):
         block = Block(np.arange(part.rows.size), np.arange(part.columns.size), trivial=False)
         budget = request.deadline.within(max(request.clock.total, LONG_SECONDS))
-        found = certify(part, [block], budget)[0]
+        found = certify(part, [block], budget, "systems")[0]
         finding = None if found is None else proven_finding(part, block, found)
     if finding is None:
         count, budget = request.samples, request.deadline

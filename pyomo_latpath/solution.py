@@ -38,7 +38,7 @@ class WalkReport:
     dimension, box, max_entry : int
         n, k and alpha of the bound.
     engine : str
-        'tableau' or 'highs': what served as the oracle.
+        What served as the oracle: 'network', 'conetwork', 'tableau', 'highs', or 'several'.
     note : str
         Anything out of the ordinary, one sentence; empty as a rule.
     """
