@@ -188,12 +188,12 @@ class Solution:
     status : str
         One of `STATUSES`.
     x : ndarray, shape (n,), float64, or None
-        The best plan; None without one. Integer columns hold exact whole numbers on the
-        path route.
+        The best plan, or the one reached after `max_moves` moves from the start; None without
+        one. Integer columns hold exact whole numbers on the path route.
     objective, bound : float
         Value of `x` and the best bound proven, in the model's own sense; NaN without one.
     row_dual : ndarray, shape (m,), float64
-        d(objective)/d(side); NaN where a block has no prices.
+        d(objective)/d(side) at the best plan; NaN where a block has no prices.
     reduced_cost : ndarray, shape (n,), float64
         The same for columns.
     ray : ndarray, shape (n,), float64, or None

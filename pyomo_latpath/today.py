@@ -42,6 +42,8 @@ from .starts import (
 
 #: Relative differences up to here are no change.
 NOISE = 1e-9
+#: Share of the time limit that the repair of a start may take.
+REPAIR_SHARE = 0.5
 
 
 def solve(
@@ -134,7 +136,8 @@ def _feasible(
         if form.semicontinuous.any():
             raise StartError(f"{reason}; semicontinuous columns stand against a repair") from None
     left = _seconds(deadline)
-    _, nearest = nearest_plan(form, wanted, time_limit=left, samples=0, threads=threads)
+    share = None if left is None else REPAIR_SHARE * left
+    _, nearest = nearest_plan(form, wanted, time_limit=share, samples=0, threads=threads)
     return nearest, True
 
 
