@@ -165,7 +165,10 @@ def normalise(form: LinearForm) -> NormalForm:
         form.row_lower[rows] - shift[rows], form.row_upper[rows] - shift[rows], scaled
     )
     conflict = conflict or _crossed(form, "row", row_lower, row_upper, rows)
-    row_upper = np.maximum(row_lower, row_upper)
+    # Sides that cross by no more than noise are one; those that truly cross stay as they are.
+    with np.errstate(invalid="ignore"):
+        touch = (row_lower > row_upper) & (row_lower - row_upper <= SNAP * np.abs(row_lower))
+    row_upper = np.where(touch, row_lower, row_upper)
     factor = scaled.col_num / scaled.col_den
     low, high = col_lower[columns] / factor, col_upper[columns] / factor
     low_snapped, high_snapped = snap(low), snap(high)

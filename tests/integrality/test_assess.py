@@ -300,3 +300,17 @@ def test_less_effort_proves_less():
 def test_blocks_not_looked_at_in_time_have_no_certificate():
     normal = normalise(form_of(RUNS))
     assert certify(normal, blocks_of(normal), Deadline(0)) == [None]
+
+
+def test_sides_that_cross_are_no_equation():
+    form = LinearForm.from_arrays(
+        [[0, 0, 0], [0, 0, 3], [0, -3, 3], [-1, -2, 3]],
+        row_lower=[-2, -np.inf, -10, -np.inf],
+        row_upper=[-2, -3, -10, -4],
+        col_lower=[-np.inf, 1, -1],
+        col_upper=[1, 3, np.inf],
+        cost=0,
+    )
+    for block in assess(form).blocks:
+        if block.certificate is not None:
+            check_certificate(form, block.certificate)
