@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from .answers import PartAnswer, without_plan
 from .deadline import Deadline
-from .forms.linear_form import Floats, LinearForm
+from .forms.linear_form import Floats
 from .forms.normalise import NormalForm
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, branch_and_bound
@@ -101,33 +101,6 @@ def kinds_of(part: NormalForm) -> NDArray[np.int32]:
     """HiGHS's codes: 0 continuous, 1 integer, 2 semicontinuous, 3 semi-integer."""
     semicontinuous = part.form.semicontinuous[part.columns]
     return (part.integer + 2 * semicontinuous).astype(np.int32)
-
-
-def largest_violation(form: LinearForm, x: Floats) -> float:
-    """Largest amount by which a plan misses a row, a bound or a declaration of the model.
-
-    Parameters
-    ----------
-    form : LinearForm
-    x : ndarray, shape (n,), float64
-
-    Examples
-    --------
-    >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
-    ...                               col_upper=1, cost=0, integer=False)
-    >>> largest_violation(form, np.array([0.75, 0.5]))
-    0.25
-    """
-    activity = form.matrix @ x
-    off = form.semicontinuous & (x == 0.0)
-    missed = [
-        form.row_lower - activity,
-        activity - form.row_upper,
-        np.where(off, 0.0, form.col_lower - x),
-        np.where(off, 0.0, x - form.col_upper),
-        np.abs(x - np.rint(x))[form.integer],
-    ]
-    return max(0.0, *(float(values.max(initial=0.0)) for values in missed))
 
 
 def _rounded(part: NormalForm, x: Floats) -> Floats:

@@ -25,19 +25,21 @@ from numpy.typing import ArrayLike
 
 from .answers import Merged, PartAnswer, merge, walk_report, without_plan
 from .blame import Blame, blame, blame_conflict
-from .branching import branch_part, largest_violation
-from .certificates import BlockCertificate, Conetwork, Network, fingerprint
+from .branching import branch_part
+from .certificates import fingerprint
 from .deadline import Deadline
 from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm, normalise
+from .forms.plan import feasible_start, largest_violation
+from .grouping import groups_of
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
 from .paths.conetwork_flow import ConetworkStructure
-from .paths.network_oracle import NetworkStructure, glued
+from .paths.network_oracle import NetworkStructure
 from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
 from .proof import Proof, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
@@ -182,11 +184,9 @@ def solve(
     findings = tuple(proven_finding(normal, block, proof, mark) for block, proof in proven)
     clock.spend("assess", since)
     parts = []
-    for group in _groups(proven):
-        piece = _union(normal, [proven[k][0] for k in group])
-        told = tuple(findings[k] for k in group)
-        structure = _structure(normal, piece, [proven[k] for k in group])
-        parts.append(_by_path(request, piece, told, structure))
+    for group in groups_of(normal, proven):
+        told = tuple(findings[k] for k in group.members)
+        parts.append(_by_path(request, group.piece, told, group.structure))
     for block, proof in zip(blocks, found, strict=True):
         if any(part.status == "infeasible" for part in parts):
             break
@@ -194,84 +194,6 @@ def solve(
             piece = normal.restrict(block.rows, block.columns)
             parts.append(_by_relaxation(request, piece))
     return _report(request, normal, parts)
-
-
-def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
-    """Check that a start is a whole feasible plan.
-
-    Raises
-    ------
-    ValueError
-        Names the first column or row that is missed, and by how much.
-    """
-    x = np.asarray(start, dtype=np.float64)
-    if x.shape != (form.shape[1],):
-        raise ValueError(f"the start has shape {x.shape}; it needs {form.shape[1]} values")
-    bad = ~np.isfinite(x)
-    bad |= form.integer & (np.abs(x - np.rint(x)) > 1e-6)
-    if bad.any():
-        j = int(np.argmax(bad))
-        raise ValueError(
-            f"the start has the value {x[j]:g} at column {form.col_names[j]!r}, "
-            "which must be a whole number"
-        )
-    x = np.where(form.integer, np.rint(x), x)
-    for kind, names, value, low, high in (
-        ("column", form.col_names, x, form.col_lower, form.col_upper),
-        ("row", form.row_names, form.matrix @ x, form.row_lower, form.row_upper),
-    ):
-        slack = 1e-6 * np.maximum(1.0, np.abs(value))
-        missed = (value < low - slack) | (value > high + slack)
-        if kind == "column":
-            missed &= ~(form.semicontinuous & (value == 0))
-        if missed.any():
-            i = int(np.argmax(missed))
-            raise ValueError(
-                f"the start is not feasible: {kind} {names[i]!r} is at {value[i]:g}, outside "
-                f"[{low[i]:g}, {high[i]:g}]"
-            )
-    return x
-
-
-def _groups(proven: list[tuple[Block, tuple[str, BlockCertificate]]]) -> list[list[int]]:
-    """Certified blocks that are solved together: those of one kind, trivial ones last."""
-    groups: list[list[int]] = [[], [], [], []]
-    networks, conetworks, unimodular, trivial = groups
-    for k, (_, (structure, certificate)) in enumerate(proven):
-        if isinstance(certificate.part, Network):
-            networks.append(k)
-        elif isinstance(certificate.part, Conetwork):
-            conetworks.append(k)
-        else:
-            (trivial if structure == "trivial" else unimodular).append(k)
-    return [group for group in groups if group]
-
-
-def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
-    rows = np.sort(np.concatenate([block.rows for block in blocks]))
-    columns = np.sort(np.concatenate([block.columns for block in blocks]))
-    return normal.restrict(rows, columns)
-
-
-def _structure(
-    normal: NormalForm, piece: NormalForm, proven: list[tuple[Block, tuple[str, BlockCertificate]]]
-) -> NetworkStructure | ConetworkStructure | None:
-    """The network behind a group of blocks or their transposes, where there is one."""
-    kind = type(proven[0][1][1].part)
-    parts = []
-    for block, (_, certificate) in proven:
-        part = certificate.part
-        if not isinstance(part, Network | Conetwork):
-            return None
-        places = [
-            np.searchsorted(piece.rows, normal.rows[block.rows]),
-            np.searchsorted(piece.columns, normal.columns[block.columns]),
-        ]
-        of_tree, of_arcs = places if kind is Network else places[::-1]
-        parts.append((of_tree, of_arcs, part.tree, part.arcs))
-    if kind is Network:
-        return glued(parts, piece.rows.size, piece.columns.size)
-    return ConetworkStructure(glued(parts, piece.columns.size, piece.rows.size))
 
 
 def _by_path(

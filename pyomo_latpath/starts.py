@@ -23,9 +23,9 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from . import routing
-from .branching import largest_violation
 from .forms.linear_form import Floats, LinearForm
 from .forms.numbers import snap, whole_numbers
+from .forms.plan import largest_violation
 from .integrality.finding import Verdict
 from .proof import WholeCosts
 from .solution import Solution

@@ -19,9 +19,10 @@ from typing import Any
 
 import numpy as np
 
-from . import routing, today
+from . import today
 from .answers import exact_sum
 from .forms.linear_form import Floats, LinearForm
+from .forms.plan import feasible_start
 from .starts import Spread, Start, StartError, read_start, spread_around
 
 #: Values nearer than this (relative) are the same.
@@ -157,7 +158,7 @@ def stay_or_change(
     """
     values = read_start(form, start)
     try:
-        values = routing.feasible_start(form, values)
+        values = feasible_start(form, values)
     except ValueError as reason:
         raise StartError(str(reason)) from None
     spread = spread_around(form, values)

@@ -20,12 +20,12 @@ from numpy.typing import NDArray
 
 from . import routing
 from .answers import exact_sum
-from .branching import largest_violation
 from .certificates import BlockCertificate, Network
 from .deadline import Deadline
 from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm, normalise
+from .forms.plan import feasible_start, largest_violation
 from .integrality.assess import certify
 from .paths.moves import Change, elementary_changes
 from .paths.network_oracle import NetworkStructure
@@ -129,7 +129,7 @@ def _feasible(
 ) -> tuple[Floats | None, bool]:
     """A whole feasible plan from a start, or None without one, and whether it was repaired."""
     try:
-        return routing.feasible_start(form, wanted), False
+        return feasible_start(form, wanted), False
     except ValueError as reason:
         if not repair:
             raise StartError(str(reason)) from None

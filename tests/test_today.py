@@ -13,8 +13,8 @@ from random_models import random_form
 from tu_models import KINDS, feasible, tu_form
 
 from pyomo_latpath import routing
-from pyomo_latpath.branching import largest_violation
 from pyomo_latpath.forms.linear_form import LinearForm
+from pyomo_latpath.forms.plan import largest_violation
 from pyomo_latpath.starts import StartError
 from pyomo_latpath.today import changes_between, solve
 

@@ -1,0 +1,72 @@
+"""A plan held against its model: what it misses, and whether it may serve as a start."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from .linear_form import Floats, LinearForm
+
+
+def largest_violation(form: LinearForm, x: Floats) -> float:
+    """Largest amount by which a plan misses a row, a bound or a declaration of the model.
+
+    Parameters
+    ----------
+    form : LinearForm
+    x : ndarray, shape (n,), float64
+
+    Examples
+    --------
+    >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                               col_upper=1, cost=0, integer=False)
+    >>> largest_violation(form, np.array([0.75, 0.5]))
+    0.25
+    """
+    activity = form.matrix @ x
+    off = form.semicontinuous & (x == 0.0)
+    missed = [
+        form.row_lower - activity,
+        activity - form.row_upper,
+        np.where(off, 0.0, form.col_lower - x),
+        np.where(off, 0.0, x - form.col_upper),
+        np.abs(x - np.rint(x))[form.integer],
+    ]
+    return max(0.0, *(float(values.max(initial=0.0)) for values in missed))
+
+
+def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
+    """Check that a start is a whole feasible plan.
+
+    Raises
+    ------
+    ValueError
+        Names the first column or row that is missed, and by how much.
+    """
+    x = np.asarray(start, dtype=np.float64)
+    if x.shape != (form.shape[1],):
+        raise ValueError(f"the start has shape {x.shape}; it needs {form.shape[1]} values")
+    bad = ~np.isfinite(x)
+    bad |= form.integer & (np.abs(x - np.rint(x)) > 1e-6)
+    if bad.any():
+        j = int(np.argmax(bad))
+        raise ValueError(
+            f"the start has the value {x[j]:g} at column {form.col_names[j]!r}, "
+            "which must be a whole number"
+        )
+    x = np.where(form.integer, np.rint(x), x)
+    for kind, names, value, low, high in (
+        ("column", form.col_names, x, form.col_lower, form.col_upper),
+        ("row", form.row_names, form.matrix @ x, form.row_lower, form.row_upper),
+    ):
+        slack = 1e-6 * np.maximum(1.0, np.abs(value))
+        missed = (value < low - slack) | (value > high + slack)
+        if kind == "column":
+            missed &= ~(form.semicontinuous & (value == 0))
+        if missed.any():
+            i = int(np.argmax(missed))
+            raise ValueError(
+                f"the start is not feasible: {kind} {names[i]!r} is at {value[i]:g}, outside "
+                f"[{low[i]:g}, {high[i]:g}]"
+            )
+    return x
