@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
+from fractions import Fraction
 
 import numpy as np
 
@@ -59,6 +60,7 @@ class PartAnswer:
     farkas: Floats | None = None
     path: PathResult | None = None
     pivots: int = 0
+    short_by: Fraction | None = None
 
 
 def without_plan(

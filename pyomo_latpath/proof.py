@@ -144,13 +144,38 @@ def prove_optimal(
 
 
 def prove_infeasible(normal: NormalForm, farkas: Floats | None) -> bool:
-    """Check that row multipliers ask for more than any point within bounds can give.
+    """Check that row multipliers ask for more than any point within bounds can give."""
+    return shortfall(normal, farkas) is not None
+
+
+def shortfall(normal: NormalForm, farkas: Floats | None) -> Fraction | None:
+    """By how much rows ask for more than any point within bounds can give.
 
     Farkas' lemma, Schrijver (1986), section 7.3: no x satisfies the rows if, for some y, the
     largest y A x over the bounds lies below what the sides of the rows with y != 0 ask.
+
+    Parameters
+    ----------
+    normal : NormalForm
+    farkas : ndarray, shape (m,), float64, or None
+        A guess at y, up to sign and scale. On a network y is a cut, 1 on the rows of one side.
+
+    Returns
+    -------
+    Fraction or None
+        In units of the smallest multiplier; None where the multipliers prove nothing.
+
+    Examples
+    --------
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> from pyomo_latpath.forms.normalise import normalise
+    >>> form = LinearForm.from_arrays([[1, 1]], row_lower=5, row_upper=9, col_lower=0,
+    ...                               col_upper=1, cost=0)
+    >>> shortfall(normalise(form), np.array([1.0]))
+    Fraction(3, 1)
     """
     if farkas is None or not normal.whole_rows.all():
-        return False
+        return None
     sides = _finite_as_whole(normal.row_lower, normal.row_upper)
     bounds = _finite_as_whole(normal.col_lower, normal.col_upper)
     for multipliers in _whole_directions(farkas):
@@ -158,8 +183,8 @@ def prove_infeasible(normal: NormalForm, farkas: Floats | None) -> bool:
             asked = _support(-y, sides)
             given = _support(_times(normal.matrix.T, y), bounds)
             if asked is not None and given is not None and given < -asked:
-                return True
-    return False
+                return (-asked - given) / min(abs(int(v)) for v in y.tolist() if v)
+    return None
 
 
 def prove_unbounded(normal: NormalForm, costs: WholeCosts, ray: Floats | None) -> bool:

@@ -17,7 +17,7 @@ from __future__ import annotations
 
 import time
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -42,7 +42,7 @@ from .paths.conetwork_flow import ConetworkStructure
 from .paths.network_oracle import NetworkStructure
 from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
-from .proof import Proof, prove_infeasible, prove_optimal, prove_unbounded, whole_costs
+from .proof import Proof, prove_optimal, prove_unbounded, shortfall, whole_costs
 from .solution import RouteReport, Solution
 from .why import telling, why
 
@@ -214,10 +214,11 @@ def _by_path(
     if result.status == "optimal":
         return _planned(part, findings, result.x, result.proof, result)
     since = time.perf_counter()
-    exact = result.status == "infeasible" and prove_infeasible(part, result.farkas)
+    short_by = shortfall(part, result.farkas) if result.status == "infeasible" else None
+    exact = short_by is not None
     exact |= result.status == "unbounded" and prove_unbounded(part, costs, result.ray)
     request.clock.spend("proof", since)
-    return without_plan(
+    answer = without_plan(
         part,
         result.status if result.status in ("infeasible", "unbounded", "time_limit") else "error",
         "path",
@@ -227,6 +228,7 @@ def _by_path(
         farkas=result.farkas,
         path=result,
     )
+    return replace(answer, short_by=short_by)
 
 
 def _planned(

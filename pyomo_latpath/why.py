@@ -34,11 +34,21 @@ def why(parts: list[PartAnswer], status: str) -> str:
     if status in ("infeasible", "unbounded"):
         what = "its relaxation is" if ended.route == "path" else "branch and bound showed it"
         proof = ", proven in exact arithmetic" if ended.exact else ""
-        return f"{what} {status}{proof}"
+        return f"{what} {status}{proof}{_short(ended)}"
     clauses = [_clause(part) for part in telling(parts)]
     counted = Counter(clauses)
     told = [clause if k == 1 else f"{clause} ({k} blocks)" for clause, k in counted.items()]
     return "; ".join(told)
+
+
+def _short(part: PartAnswer) -> str:
+    """How much too much is asked, and by how many rows."""
+    if part.short_by is None or part.farkas is None:
+        return ""
+    names, suspects = part.normal.form.row_names, part.normal.rows[part.farkas.nonzero()[0]]
+    rows = ", ".join(str(names[int(i)]) for i in suspects[:3])
+    rows += f" and {suspects.size - 3} more" if suspects.size > 3 else ""
+    return f": {rows} ask for {part.short_by} more than can be had"
 
 
 def telling(parts: list[PartAnswer]) -> list[PartAnswer]:

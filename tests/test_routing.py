@@ -126,6 +126,14 @@ def test_farkas_multipliers_prove_infeasibility():
     assert y[0] * 2 + y[1] * 1 > max(0, 2 * (y @ [1, 1]))
 
 
+def test_the_shortfall_is_told_in_names():
+    form = form_of([[1, 1, 0], [0, 1, 1]], [3, 0], INF, [0, 0, 0], row_names=["market", "inn"])
+    solution = solve(form)
+    assert solution.status == "infeasible"
+    assert "market ask for 1 more than can be had" in solution.report.why
+    assert solution.report.proof == "exact"
+
+
 def test_rounding_alone_can_show_that_there_is_no_plan():
     solution = solve(form_of([[2, 2]], 1, 1, [0, 0]))
     assert solution.status == "infeasible"

@@ -15,7 +15,7 @@ from ..proof import Proof, WholeCosts, prove_optimal
 from .box import Box, box_of
 from .conetwork_flow import ConetworkOracle, ConetworkStructure
 from .face_fixing import Walk, face_fixing_walk, step_bound
-from .network_oracle import NetworkOracle, NetworkStructure, largest_cost, repays
+from .network_oracle import NetworkOracle, NetworkStructure, costs_too_wide, largest_cost, repays
 from .vertex_oracle import (
     LARGEST_HIGHS_COST,
     LARGEST_TABLEAU_COST,
@@ -199,7 +199,11 @@ def _engine(
         exact = box.total is not None or np.abs(costs.numerators).max() <= structure.largest_cost
         if first is None and exact and structure.fits(normal) and repays(structure.transpose):
             return ConetworkOracle(normal, structure), structure.largest_cost
-    elif structure is not None and repays(structure):
+    elif (
+        structure is not None
+        and repays(structure)
+        and (first is not None or not costs_too_wide(structure, costs.numerators))
+    ):
         return NetworkOracle(normal, structure, first), largest_cost(structure)
     if first is None:
         return HighsBasis(normal), LARGEST_HIGHS_COST
