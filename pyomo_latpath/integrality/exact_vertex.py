@@ -39,8 +39,8 @@ def exact_vertex(piece: NormalForm, basis: Basis) -> list[Fraction] | None:
     Returns
     -------
     list of Fraction, length n, or None
-        In scaled units. None if the basis is singular, its vertex not feasible, or the system
-        too large.
+        In scaled units. None if the basis is singular, its point no vertex or not feasible, or
+        the system too large.
     """
     inside = np.flatnonzero(basis.col_status == 1)
     tight = np.flatnonzero(basis.row_status != 1)
@@ -48,10 +48,9 @@ def exact_vertex(piece: NormalForm, basis: Basis) -> list[Fraction] | None:
         return None
     at_upper = basis.col_status == 2
     resting = np.where(at_upper, piece.col_upper, piece.col_lower)
-    resting[basis.col_status == 3] = 0.0
     resting[inside] = 0.0
     if not np.isfinite(resting).all():
-        return None
+        return None  # a free column that rests at no bound of its own: the point is no vertex
     values = _fractions(resting)
     columns = {int(j): k for k, j in enumerate(inside)}
     rows, right = [], []

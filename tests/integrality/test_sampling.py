@@ -13,6 +13,7 @@ from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
 from pyomo_latpath.highs import LpResult
+from pyomo_latpath.integrality.assess import assess
 from pyomo_latpath.integrality.sampling import program_of, sample_vertices
 
 
@@ -174,3 +175,17 @@ def test_a_known_outcome_that_is_no_vertex_ends_the_look():
         piece, samples=4, seed=0, deadline=Deadline(None), first=(program_of(piece), stopped)
     )
     assert sample.count == 0
+
+
+def test_a_free_column_at_rest_makes_no_vertex():
+    form = LinearForm.from_arrays(
+        [[-2, 2, -3, 1]],
+        row_lower=-np.inf,
+        row_upper=-2,
+        col_lower=[1, 1, -np.inf, -np.inf],
+        col_upper=np.inf,
+        cost=[1, 1, -1, 0],
+    )
+    finding = assess(form)
+    assert finding.blocks[0].witness is None
+    assert finding.verdict == "undecided"
