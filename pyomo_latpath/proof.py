@@ -94,7 +94,7 @@ def plan_holds(normal: NormalForm, x: Floats) -> bool:
         return False
     if not normal.whole_rows.all():
         return False
-    activity = _times(normal.matrix, plan)
+    activity = exact_product(normal.matrix, plan)
     return _within(activity, normal.row_lower, normal.row_upper, scale) and _within(
         plan, normal.col_lower, normal.col_upper, scale
     )
@@ -132,7 +132,7 @@ def prove_optimal(
     assert plan is not None
     tried = []
     for prices, multiple in _price_guesses(costs, row_dual, basis_prices):
-        reduced = costs.numerators * multiple - _times(normal.matrix.T, prices)
+        reduced = costs.numerators * multiple - exact_product(normal.matrix.T, prices)
         if _complementary(normal, plan, scale, prices, reduced):
             unit = costs.denominator * multiple
             return Proof(True, _quotient(prices, unit), _quotient(reduced, unit))
@@ -181,7 +181,7 @@ def shortfall(normal: NormalForm, farkas: Floats | None) -> Fraction | None:
     for multipliers in _whole_directions(farkas):
         for y in (multipliers, -multipliers):
             asked = _support(-y, sides)
-            given = _support(_times(normal.matrix.T, y), bounds)
+            given = _support(exact_product(normal.matrix.T, y), bounds)
             if asked is not None and given is not None and given < -asked:
                 return (-asked - given) / min(abs(int(v)) for v in y.tolist() if v)
     return None
@@ -195,7 +195,7 @@ def prove_unbounded(normal: NormalForm, costs: WholeCosts, ray: Floats | None) -
     if ray is None or not normal.whole_rows.all():
         return False
     for direction in _whole_directions(ray):
-        moves = _times(normal.matrix, direction)
+        moves = exact_product(normal.matrix, direction)
         stays = all(
             not ((np.isfinite(low) & (move < 0)) | (np.isfinite(high) & (move > 0))).any()
             for move, low, high in (
@@ -206,6 +206,43 @@ def prove_unbounded(normal: NormalForm, costs: WholeCosts, ray: Floats | None) -
         if stays and _dot(costs.numerators, direction) < 0:
             return True
     return False
+
+
+def exact_product(matrix: sp.sparray, vector: Whole) -> Whole:
+    """Multiply a matrix of whole floats with a vector of whole numbers, exactly.
+
+    Parameters
+    ----------
+    matrix : scipy.sparse array, shape (m, n), float64
+        Entries are whole numbers below 2**53.
+    vector : ndarray, shape (n,), int64 or object (Python integers)
+
+    Returns
+    -------
+    ndarray, shape (m,), int64 or object
+        Object where 64 bits might not hold the sums.
+
+    Examples
+    --------
+    >>> exact_product(sp.csc_array([[1.0, -2.0]]), np.array([2**80, 1], dtype=object))
+    array([1208925819614629174706174], dtype=object)
+    """
+    size = float(np.abs(vector).max(initial=0))
+    reach = abs(matrix).max() * size * max(matrix.shape[1], 1) if matrix.nnz else 0.0
+    if vector.dtype != object or size < EXACT:
+        if reach < EXACT:
+            return (matrix @ vector.astype(np.float64)).astype(np.int64)
+        row_reach = (abs(matrix) @ np.abs(vector).astype(np.float64)).max(initial=0.0)
+        if row_reach < EXACT:
+            return (matrix @ vector.astype(np.float64)).astype(np.int64)
+    by_row = sp.csr_array(matrix)
+    total = np.zeros(by_row.shape[0], dtype=object)
+    full = np.flatnonzero(np.diff(by_row.indptr) > 0)
+    if full.size:
+        entries = by_row.data.astype(np.int64).astype(object)
+        terms = entries * vector.astype(object)[by_row.indices]
+        total[full] = np.add.reduceat(terms, by_row.indptr[full])
+    return total
 
 
 def exact_objective(costs: WholeCosts, x: Floats) -> Fraction | None:
@@ -270,7 +307,7 @@ def _complementary(
     normal: NormalForm, plan: Whole, scale: int, prices: Whole, reduced: Whole
 ) -> bool:
     """Strong duality: a price is positive only at a lower limit, negative only at an upper."""
-    activity = _times(normal.matrix, plan)
+    activity = exact_product(normal.matrix, plan)
     return all(
         not ((price > 0) & ~_meets(value, low, scale)).any()
         and not ((price < 0) & ~_meets(value, high, scale)).any()
@@ -363,26 +400,6 @@ def _dot(left: Whole, right: Whole) -> int:
         if reach < 2.0**62:
             return int(left @ right)
     return sum(a * b for a, b in zip(left.tolist(), right.tolist(), strict=True))
-
-
-def _times(matrix: sp.sparray, vector: Whole) -> Whole:
-    """Exact product of a matrix of whole floats with a whole vector."""
-    size = float(np.abs(vector).max(initial=0))
-    reach = abs(matrix).max() * size * max(matrix.shape[1], 1) if matrix.nnz else 0.0
-    if vector.dtype != object or size < EXACT:
-        if reach < EXACT:
-            return (matrix @ vector.astype(np.float64)).astype(np.int64)
-        row_reach = (abs(matrix) @ np.abs(vector).astype(np.float64)).max(initial=0.0)
-        if row_reach < EXACT:
-            return (matrix @ vector.astype(np.float64)).astype(np.int64)
-    by_row = sp.csr_array(matrix)
-    total = np.zeros(by_row.shape[0], dtype=object)
-    full = np.flatnonzero(np.diff(by_row.indptr) > 0)
-    if full.size:
-        entries = by_row.data.astype(np.int64).astype(object)
-        terms = entries * vector.astype(object)[by_row.indices]
-        total[full] = np.add.reduceat(terms, by_row.indptr[full])
-    return total
 
 
 def _whole_directions(direction: Floats) -> Iterator[Whole]:

@@ -24,6 +24,7 @@ from numpy.typing import NDArray
 
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
+from ..proof import exact_product
 from .box import Box
 from .cost_scaling import phase_bound, scaling_walk
 from .vertex_oracle import Vertex, VertexOracle
@@ -188,20 +189,9 @@ def _seen_from_face(
     On the face the two differ by a constant, and the difference is exact.
     """
     prices = oracle.basis_prices(costs, np.zeros(rows.size, dtype=object))
-    seen = costs.astype(object) - _worth_of_rows(normal, np.where(rows, prices, 0))
+    seen = costs.astype(object) - exact_product(normal.matrix.T, np.where(rows, prices, 0))
     seen[columns] = 0
     return seen
-
-
-def _worth_of_rows(normal: NormalForm, prices: Whole) -> Whole:
-    """Exact A^T y for whole y."""
-    total = np.zeros(normal.matrix.shape[1], dtype=object)
-    full = np.flatnonzero(np.diff(normal.matrix.indptr) > 0)
-    if full.size:
-        entries = normal.matrix.data.astype(np.int64).astype(object)
-        terms = entries * prices.astype(object)[normal.matrix.indices]
-        total[full] = np.add.reduceat(terms, normal.matrix.indptr[full])
-    return total
 
 
 def _round(normal: NormalForm, costs: Whole, rows: Flags, columns: Flags, size: int) -> Whole:

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from ..highs import Basis, LinearProgram
+from ..proof import exact_product
 
 Floats = NDArray[np.float64]
 Whole = NDArray[Any]
@@ -177,7 +178,7 @@ class HighsBasis:
         wanted = costs.astype(object)[basic[structural]]
         for _ in range(12):
             residual = np.zeros(self.lp.m, dtype=object)
-            residual[structural] = wanted - _exact_product(columns, prices)
+            residual[structural] = wanted - exact_product(columns, prices)
             residual[~structural] = -prices[rows]
             if not residual.any():
                 break
@@ -200,16 +201,6 @@ def resting(
 
 def _limits(normal: NormalForm) -> list[Floats]:
     return [normal.row_lower, normal.row_upper, normal.col_lower, normal.col_upper]
-
-
-def _exact_product(matrix: Any, vector: Whole) -> Whole:
-    """Product of a CSR matrix of whole floats with Python integers."""
-    total = np.zeros(matrix.shape[0], dtype=object)
-    full = np.flatnonzero(np.diff(matrix.indptr) > 0)
-    if full.size:
-        terms = matrix.data.astype(np.int64).astype(object) * vector[matrix.indices]
-        total[full] = np.add.reduceat(terms, matrix.indptr[full])
-    return total
 
 
 class Tableau:
