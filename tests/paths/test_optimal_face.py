@@ -3,6 +3,7 @@
 import itertools
 
 import numpy as np
+import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
@@ -72,7 +73,10 @@ def test_a_whole_optimum_beside_a_fractional_one_is_found():
         assert x.tolist() == [0, 0, 0, 1]
 
 
-def test_no_time_no_search():
+@pytest.mark.parametrize(
+    ("most_pivots", "deadline"), [(10_000, Deadline(0)), (0, FOREVER)], ids=["time", "pivots"]
+)
+def test_without_time_or_pivots_there_is_no_search(most_pivots, deadline):
     form = LinearForm.from_arrays(
         [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
         row_lower=1,
@@ -83,18 +87,4 @@ def test_no_time_no_search():
     )
     normal = normalise(form)
     lp = program_of(normal)
-    assert whole_optimum(normal, lp, lp.solve(), 0, 10_000, Deadline(0)) is None
-
-
-def test_the_effort_is_counted_in_pivots():
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=1,
-        row_upper=2,
-        col_lower=0,
-        col_upper=1,
-        cost=[1, 1, 0],
-    )
-    normal = normalise(form)
-    lp = program_of(normal)
-    assert whole_optimum(normal, lp, lp.solve(), 0, 0, FOREVER) is None
+    assert whole_optimum(normal, lp, lp.solve(), 0, most_pivots, deadline) is None

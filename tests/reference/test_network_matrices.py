@@ -7,36 +7,13 @@ import numpy as np
 import pytest
 import scipy.sparse as sp
 from brute_force import is_tu
+from known_matrices import FANO, R10
 
 from pyomo_latpath.certificates import Conetwork, Network
 from pyomo_latpath.integrality import network
 from pyomo_latpath.integrality.assess import prove_tu
 from pyomo_latpath.integrality.graph_realisation import realise
 
-# The two matrices that represent R10: Seymour (1980), Decomposition of regular matroids;
-# Schrijver (1986), Theory of Linear and Integer Programming, section 19.4; from memory.
-R10 = (
-    np.array(
-        [
-            [1, -1, 0, 0, -1],
-            [-1, 1, -1, 0, 0],
-            [0, -1, 1, -1, 0],
-            [0, 0, -1, 1, -1],
-            [-1, 0, 0, -1, 1],
-        ]
-    ),
-    np.array(
-        [
-            [1, 1, 1, 1, 1],
-            [1, 1, 1, 0, 0],
-            [1, 0, 1, 1, 0],
-            [1, 0, 0, 1, 1],
-            [1, 1, 0, 0, 1],
-        ]
-    ),
-)
-# The Fano matroid as [I | A]: the points of the projective plane with two elements.
-FANO = np.array([[1, 1, 0, 1], [1, 0, 1, 1], [0, 1, 1, 1]])
 UTILITIES = nx.complete_bipartite_graph(3, 3)
 
 

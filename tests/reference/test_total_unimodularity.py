@@ -7,35 +7,11 @@ import numpy as np
 import pytest
 import scipy.sparse as sp
 from brute_force import determinant, is_tu, minors, network_matrix, vertices
+from known_matrices import FANO, R10
 
 from pyomo_latpath.certificates import CertificateError, Conetwork, Network
 from pyomo_latpath.integrality import incidence, interval
 from pyomo_latpath.integrality.assess import prove_tu
-
-# Schrijver (1986), Theory of Linear and Integer Programming, section 19.4, the two matrices
-# that represent R10; written down from memory.
-R10 = (
-    np.array(
-        [
-            [1, -1, 0, 0, -1],
-            [-1, 1, -1, 0, 0],
-            [0, -1, 1, -1, 0],
-            [0, 0, -1, 1, -1],
-            [-1, 0, 0, -1, 1],
-        ]
-    ),
-    np.array(
-        [
-            [1, 1, 1, 1, 1],
-            [1, 1, 1, 0, 0],
-            [1, 0, 1, 1, 0],
-            [1, 0, 0, 1, 1],
-            [1, 1, 0, 0, 1],
-        ]
-    ),
-)
-# The Fano matroid as [I | A]: the points of the projective plane with two elements.
-FANO = np.array([[1, 1, 0, 1], [1, 0, 1, 1], [0, 1, 1, 1]])
 
 
 def random_matrices(count, most_rows, most_columns, seed, entries=(0, 0, 1, 1, -1)):
