@@ -179,7 +179,8 @@ def certify(
     if not wide:
         return found
     columns = np.concatenate([blocks[k].columns for k in wide])
-    part = normal.matrix if len(blocks) == 1 else normal.matrix[:, columns]
+    everything = columns.size == normal.columns.size and len(wide) == 1
+    part = normal.matrix if everything else normal.matrix[:, columns]
     matrix = sp.csc_array((part.data.astype(np.int64), part.indices, part.indptr), part.shape)
     star, fits = incidence.star(matrix)
     start, place = 0, np.empty(matrix.shape[0] + 1, np.int64)
