@@ -134,4 +134,3 @@ def form_digest(form: LinearForm) -> str:
     ):
         digest.update(np.ascontiguousarray(values, dtype=kind).tobytes())
     return digest.hexdigest()
-
