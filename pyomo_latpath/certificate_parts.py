@@ -17,18 +17,9 @@ from typing import Any, ClassVar, Literal, NamedTuple, Protocol
 
 import numpy as np
 import scipy.sparse as sp
-from numpy.typing import NDArray
 from scipy.sparse.csgraph import connected_components
 
-from .certificate_reading import (
-    SAFE,
-    CertificateError,
-    read_indices,
-    read_pairs,
-    read_value,
-    require,
-    require_indices,
-)
+from .certificate_reading import CertificateError, read_pairs, read_table, read_value, require
 from .forms.numbers import Integers
 
 
@@ -151,6 +142,20 @@ class Step(NamedTuple):
     sign: int = 1
 
 
+def step_to_dict(step: Step) -> dict[str, Any]:
+    """Return a reduction as plain data."""
+    data: dict[str, Any] = {step.axis: int(step.line), "reason": step.reason}
+    return data | ({"of": int(step.of), "sign": int(step.sign)} if step.reason == "copy" else {})
+
+
+def step_from_dict(data: dict[str, Any]) -> Step:
+    """Read what `step_to_dict` wrote."""
+    axis: Axis = "row" if "row" in data else "column"
+    line, reason = read_value(data, axis, int), read_value(data, "reason", str)
+    of = [read_value(data, key, int) for key in ("of", "sign")] if reason == "copy" else []
+    return Step(axis, line, reason, *of)
+
+
 @dataclass(frozen=True, eq=False)
 class Reduced:
     """Zero, unit and copied (or negated) rows and columns are dropped, then the rest is proven.
@@ -169,25 +174,16 @@ class Reduced:
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON."""
-        steps: list[dict[str, Any]] = []
-        for step in self.steps:
-            steps.append({step.axis: int(step.line), "reason": step.reason})
-            if step.reason == "copy":
-                steps[-1] |= {"of": int(step.of), "sign": int(step.sign)}
+        steps = [step_to_dict(step) for step in self.steps]
         return {"kind": self.kind, "steps": steps, "rest": self.rest.to_dict()}
 
     @classmethod
     def from_dict(cls, data: dict[str, Any]) -> Reduced:
         """Read what `to_dict` wrote."""
-        steps = []
-        for step in read_value(data, "steps", list):
-            require(isinstance(step, dict), "a reduction is not an object")
-            axis: Axis = "row" if "row" in step else "column"
-            copied = step.get("reason") == "copy"
-            of = [read_value(step, key, int) for key in ("of", "sign")] if copied else []
-            line, reason = read_value(step, axis, int), read_value(step, "reason", str)
-            steps.append(Step(axis, line, reason, *of))
-        return cls(tuple(steps), part_from_dict(read_value(data, "rest", dict)))
+        steps = read_value(data, "steps", list)
+        require(all(isinstance(step, dict) for step in steps), "a reduction is not an object")
+        rest = part_from_dict(read_value(data, "rest", dict))
+        return cls(tuple(step_from_dict(step) for step in steps), rest)
 
     def check(self, matrix: sp.csc_array) -> None:
         """Check that every step holds at its time, and the rest."""
@@ -253,116 +249,103 @@ def _check_steps(
 
 @dataclass(frozen=True, eq=False)
 class Unimodular:
-    """A system Mx = b with M unimodular: all rows, and a slack column for each inequality.
+    """Row operations with equations that make the matrix TU, whatever the size of its entries.
 
-    For a basis B of M with determinant +-1 and B^-1 M TU, all vertices are whole for whole sides
-    and bounds, whatever the size of the entries: Mx = b and B^-1 Mx = B^-1 b are one system
-    (Schrijver 1986, section 19.1). Where B^-1 is not whole but B^-1 b is, they are whole for
-    these sides alone.
+    To add a multiple of an equation to another row changes no solution, and the sides stay whole.
+    The operations are the inverse of a basis in product form: where an inequality's slack is
+    basic, nothing is added from its row (Schrijver 1986, sections 19.1 and 4.1). Equations may
+    also be divided, where nothing but whole numbers comes out: that is whole for these sides alone.
 
     Attributes
     ----------
-    kept : ndarray, shape (k,), int64
-        Rows of M that generate the others, which then only repeat what these say.
-    slacks : ndarray, int64
-        Rows with a slack; M's columns are the matrix's, then these.
-    basis : ndarray, shape (k,), int64
-        Columns of M.
-    inverse : tuple of k tuples of k int
-        B^-1 times `denominator`.
-    denominator : int
-        1; above 1 where only these sides are claimed.
+    operations : ndarray, shape (k, 3), int64
+        In their order: [row, source, factor] adds `factor` times row `source`, an equation, to
+        the row; [row, row, factor] divides the row, an equation, by `factor`.
     rest : Part
-        For B^-1 M, k rows and all columns of M.
+        For the matrix that comes out. Rows that depend on others have become zero.
+
+    Examples
+    --------
+    >>> swap = Network(np.array([[0, 1], [1, 2]]), np.array([[1, 2], [0, 1]]))
+    >>> Unimodular(np.array([[0, 1, -2], [1, 0, -1]]), swap).check(sp.csc_array([[2, 3], [1, 1]]))
     """
 
-    kept: Integers
-    slacks: Integers
-    basis: Integers
-    inverse: tuple[tuple[int, ...], ...]
-    denominator: int
+    operations: Integers
     rest: Part
     kind: ClassVar[str] = "unimodular"
 
+    @property
+    def needs_sides(self) -> bool:
+        """Whether the claim holds for the sides that the model has, and perhaps for no others."""
+        return bool((self.operations[:, 0] == self.operations[:, 1]).any())
+
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON."""
-        places = {name: getattr(self, name).tolist() for name in ("kept", "slacks", "basis")}
-        inverse = [list(row) for row in self.inverse]
-        numbers = {"inverse": inverse, "denominator": self.denominator}
-        return {"kind": self.kind, **places, **numbers, "rest": self.rest.to_dict()}
+        operations = self.operations.tolist()
+        return {"kind": self.kind, "operations": operations, "rest": self.rest.to_dict()}
 
     @classmethod
     def from_dict(cls, data: dict[str, Any]) -> Unimodular:
         """Read what `to_dict` wrote."""
-        table = read_value(data, "inverse", list)
-        plain = all(isinstance(row, list) and all(type(x) is int for x in row) for row in table)
-        require(plain, "'inverse' is not a table of whole numbers")
-        return cls(
-            kept=read_indices(data, "kept"),
-            slacks=read_indices(data, "slacks"),
-            basis=read_indices(data, "basis"),
-            inverse=tuple(tuple(row) for row in table),
-            denominator=read_value(data, "denominator", int),
-            rest=part_from_dict(read_value(data, "rest", dict)),
-        )
+        operations = read_table(data, "operations", 3)
+        return cls(operations, part_from_dict(read_value(data, "rest", dict)))
 
     def check(self, matrix: sp.csc_array) -> None:
-        """Check basis, inverse and rest; whether M has all its slacks is for `check_sides`."""
-        require(not isinstance(self.rest, Unimodular), "B^-1 M must be TU")
-        m, k, count = matrix.shape[0], self.kept.size, self.slacks.size
-        require_indices(self.kept, m, "'kept'")
-        require_indices(self.slacks, m, "'slacks'")
-        require_indices(self.basis, matrix.shape[1] + count, "'basis'")
-        square = self.basis.size == len(self.inverse) == k
-        require(square and all(len(row) == k for row in self.inverse), "the basis is not square")
-        require(self.denominator >= 1, "the inverse's denominator is below 1")
-        slack = sp.csc_array(
-            (np.ones(count, np.int64), self.slacks, np.arange(count + 1)), shape=(m, count)
-        )
-        whole = sp.hstack([matrix, slack], format="csc")
-        generating = whole[self.kept, :]
-        inverse = np.array(self.inverse, dtype=object).reshape(k, k)
-        basic = _product(inverse, generating[:, self.basis])
-        is_inverse = (basic == self.denominator * np.eye(k, dtype=np.int64)).all()
-        require(is_inverse, "the inverse times the basis is not the identity")
-        scaled = _product(inverse, generating)
-        require((scaled % self.denominator == 0).all(), "B^-1 M is not whole")
-        rest = scaled // self.denominator
-        require((np.abs(rest) <= 1).all(), "B^-1 M has an entry other than 0, 1 and -1")
-        rest = rest.astype(np.int64)
-        again = _product(whole[:, self.basis], rest)
-        require((again == whole.toarray()).all(), "a row that is not kept says something else")
-        self.rest.check(sp.csc_array(rest))
+        """Do the operations, and check what comes out.
+
+        An operation takes as long as its source has entries. Which rows are equations is for
+        `check_sides`.
+        """
+        require(not isinstance(self.rest, Unimodular), "what comes out must be TU")
+        m, n = matrix.shape
+        inside = (self.operations[:, :2] >= 0) & (self.operations[:, :2] < m)
+        require(inside.all(), f"an operation is on a row outside 0 to {m - 1}")
+        rows: list[dict[int, int]] = [{} for _ in range(m)]
+        entries = matrix.tocoo()
+        for i, j, value in zip(*(x.tolist() for x in (*entries.coords, entries.data)), strict=True):
+            rows[i][j] = value
+        for row, source, factor in self.operations.tolist():
+            self._operate(rows[row], rows[source], factor)
+        start = np.cumsum([0, *map(len, rows)])
+        columns = np.array([j for row in rows for j in row], dtype=np.int64)
+        values = [value for row in rows for value in row.values()]
+        plain = all(-1 <= value <= 1 for value in values)
+        require(plain, "what comes out has an entry other than 0, 1 and -1")
+        table = sp.csr_array((np.array(values, np.int64), columns, start), shape=(m, n))
+        self.rest.check(table.tocsc())
 
     def check_sides(self, sides: Sequence[tuple[Fraction | None, Fraction | None]]) -> None:
-        """Check that inequalities have slacks and, if it is needed, that B^-1 b is whole.
+        """Check that sources are equations, and that divisions leave their sides whole.
 
         Parameters
         ----------
         sides : sequence of pairs, one per row
             Scaled sides, rounded where that is allowed; None where there is none.
         """
-        slack = set(self.slacks.tolist())
-        for i, (lower, upper) in enumerate(sides):
-            known = i in slack or (lower is not None and lower == upper)
-            require(known, f"its row {i} is an inequality without a slack")
-        if self.denominator > 1:
-            # A slack takes over its row's sides as bounds, which leaves 0 for b.
-            b = [(0 if i in slack else sides[i][0]) or 0 for i in self.kept.tolist()]
-            for row in self.inverse:
-                value = Fraction(sum(x * y for x, y in zip(row, b, strict=True)))
-                require((value / self.denominator).denominator == 1, "B^-1 b is not whole")
+        equation = [lower is not None and lower == upper for lower, upper in sides]
+        for source in self.operations[:, 1].tolist():
+            require(equation[source], f"its row {source} is added to others, but is no equation")
+        if self.needs_sides:
+            # What an inequality's sides become is not asked for.
+            shifted = [{0: lower or Fraction(0)} for lower, _ in sides]
+            for row, source, factor in self.operations.tolist():
+                self._operate(shifted[row], shifted[source], factor)
 
-
-def _product(left: Any, right: Any) -> NDArray[Any]:
-    """Exact product of tables, sparse or not: 64 bits where they hold it, else Python integers."""
-    both = (left, right)
-    largest = [int(np.abs(t.data if sp.issparse(t) else t).max(initial=0)) for t in both]
-    if max(largest) < SAFE and largest[0] * largest[1] * max(left.shape[1], 1) < SAFE:
-        a, b = (t if sp.issparse(t) else t.astype(np.int64) for t in both)
-        return np.asarray(a @ b)
-    a, b = ((t.toarray() if sp.issparse(t) else t).astype(object) for t in both)
-    return np.asarray(a @ b)
+    @staticmethod
+    def _operate(row: dict[int, Any], source: dict[int, Any], factor: int) -> None:
+        """Do one operation, in whole numbers of any size; a row has a value per column."""
+        if row is source:
+            require(factor > 0, "a row is divided by less than 1")
+            for j, value in row.items():
+                row[j], left = divmod(value, factor)
+                require(left == 0, "a division leaves a number that is not whole")
+            return
+        for j, value in source.items():
+            changed = row.get(j, 0) + factor * value
+            if changed:
+                row[j] = changed
+            else:
+                row.pop(j, None)
 
 
 @dataclass(frozen=True, eq=False)

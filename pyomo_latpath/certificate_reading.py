@@ -43,10 +43,15 @@ def read_indices(data: dict[str, Any], key: str) -> Integers:
 
 def read_pairs(data: dict[str, Any], key: str) -> Integers:
     """Return data[key], a list of pairs of whole numbers, as an array of shape (k, 2)."""
-    pairs = read_value(data, key, list)
-    plain = all(isinstance(pair, list) and len(pair) == 2 for pair in pairs)
-    require(plain, f"'{key}' is not a list of pairs")
-    return read_indices({key: [end for pair in pairs for end in pair]}, key).reshape(-1, 2)
+    return read_table(data, key, 2)
+
+
+def read_table(data: dict[str, Any], key: str, width: int) -> Integers:
+    """Return data[key], a list of lists of `width` whole numbers, as an array (k, width)."""
+    lines = read_value(data, key, list)
+    plain = all(isinstance(line, list) and len(line) == width for line in lines)
+    require(plain, f"'{key}' is not a list of lists of {width} numbers")
+    return read_indices({key: [value for line in lines for value in line]}, key).reshape(-1, width)
 
 
 def require_indices(values: Integers, size: int, what: str) -> None:

@@ -1,9 +1,12 @@
 """Equality systems that are unimodular, against all of their determinants and vertices."""
 
+import itertools
+import math
+
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu, maximal_minors, vertices
+from brute_force import is_tu, maximal_minors, solve, vertices
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
@@ -46,16 +49,42 @@ def with_slacks(matrix, equality):
     return np.hstack([matrix, np.eye(len(matrix), dtype=np.int64)[:, ~equality]])
 
 
-@settings(max_examples=200)
-@given(systems())
-def test_recognised_where_all_maximal_determinants_are_0_or_1(system):
+def basis_determinants(matrix, equality):
+    """Up to sign, for every basis of what the rows, with slacks, generate over the integers: the
+    greatest common divisor of the determinants in its columns."""
+    whole = with_slacks(matrix, equality)
+    rank = np.linalg.matrix_rank(whole)
+    found = [0]
+    for columns in itertools.combinations(range(whole.shape[1]), rank):
+        found.append(math.gcd(*maximal_minors(whole[:, columns].T)))
+    return found
+
+
+def is_whole_for(matrix, equality, sides):
+    """Whether some basis turns the sides into whole numbers; None where they contradict."""
+    whole, b = with_slacks(matrix, equality), np.where(equality, sides, 0)
+    rank = np.linalg.matrix_rank(whole)
+    if np.linalg.matrix_rank(np.column_stack([whole, b])) > rank:
+        return None
+    for columns in itertools.combinations(range(whole.shape[1]), rank):
+        for rows in itertools.combinations(range(len(whole)), rank):
+            point = solve(whole[np.ix_(rows, columns)].tolist(), b[list(rows)].tolist())
+            if point is not None:
+                return all(value.denominator == 1 for value in point)
+    return True
+
+
+@settings(max_examples=250)
+@given(systems(most_rows=4))
+def test_recognised_if_and_only_if_it_is_unimodular_or_whole_for_its_sides(system):
     matrix, equality, sides = system
     assume(equality.any())
-    values = {abs(value) for value in maximal_minors(with_slacks(matrix, equality))}
-    assume(values - {0})
+    values = set(basis_determinants(matrix, equality)) - {0}
+    whole = is_whole_for(matrix, equality, sides)
+    assume(whole is not None)
     part = recognise(matrix, equality, sides, by_definition)
-    holds = part is not None and part.denominator == 1
-    assert holds == (values <= {0, 1})
+    assert (part is not None) == (len(values) <= 1 and whole)
+    assert part is None or part.needs_sides == bool(values - {1})
 
 
 @settings(max_examples=150)
@@ -77,8 +106,16 @@ def test_what_is_recognised_has_whole_vertices(system, box):
 def test_the_right_one_of_dependent_rows_is_dropped():
     matrix = np.array([[1, 1], [1, -1], [1, 0]])
     part = recognise(matrix, np.full(3, True), [3, 1, 2])
-    assert part.denominator == 1
-    assert 2 in part.kept
+    assert not part.needs_sides
+    part.check(sp.csc_array(matrix))
+
+
+def test_rows_of_which_no_choice_generates_the_others():
+    """Differences of 6, 10 and 15 together make one of 1, any two of them do not."""
+    matrix = np.array([[1, 0], [1, 6], [1, 10], [1, 15]])
+    part = recognise(matrix, np.full(4, True), [0, 6, 10, 15])
+    assert not part.needs_sides
+    part.check(sp.csc_array(matrix))
 
 
 @pytest.mark.parametrize(("sides", "whole"), [((2, 0), True), ((3, 1), True), ((1, 0), False)])
@@ -86,7 +123,7 @@ def test_some_systems_are_whole_for_some_sides_only(sides, whole):
     part = recognise(np.array([[1, 1], [1, -1]]), np.full(2, True), sides)
     assert (part is not None) == whole
     if whole:
-        assert part.denominator == 2
+        assert part.needs_sides
 
 
 def test_entries_of_any_size_come_from_row_operations():
@@ -104,10 +141,17 @@ def test_entries_of_any_size_come_from_row_operations():
     again.check(sp.csc_array(matrix))
 
 
-def test_systems_without_an_equality_or_with_too_many_rows_are_left_to_others():
+def test_systems_without_an_equality_are_left_to_others():
     assert recognise(np.array([[2]]), np.array([False]), [0]) is None
-    large = np.eye(unimodular.MOST_ROWS + 1, dtype=np.int64)
-    assert recognise(large, np.full(len(large), True), np.zeros(len(large), np.int64)) is None
+
+
+def test_too_much_work_is_given_up(monkeypatch):
+    matrix = np.array([[2, 3], [1, 1]])
+    monkeypatch.setattr(unimodular, "MOST_TIMES", 0)
+    monkeypatch.setattr(unimodular, "MOST_WORK", 3)
+    assert recognise(matrix, np.full(2, True), [5, 2]) is not None
+    monkeypatch.setattr(unimodular, "MOST_WORK", 2)
+    assert recognise(matrix, np.full(2, True), [5, 2]) is None
 
 
 def test_time_is_kept():
