@@ -40,19 +40,24 @@ from .certificate_reading import (
     require,
     require_indices,
 )
+from .certificate_sums import R10, Pivot, Split, Sum
 from .forms.linear_form import Floats, LinearForm
 from .forms.numbers import SNAP, Integers, read_fractions, simplest_fraction, snap
 
 __all__ = [
     "KINDS",
+    "R10",
     "BlockCertificate",
     "Certificate",
     "CertificateError",
     "Conetwork",
     "Network",
     "Part",
+    "Pivot",
     "Reduced",
+    "Split",
     "Step",
+    "Sum",
     "Trivial",
     "Unimodular",
     "check_certificate",
