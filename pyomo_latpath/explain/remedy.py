@@ -2,20 +2,50 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
+from fractions import Fraction
 from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
+from ..forms.linear_form import LinearForm
 from .plain import plain
 
 Indices = NDArray[np.int64]
 Floats = NDArray[np.float64]
 
 #: What a remedy does: round sides, bounds or coefficients inwards; put several rows in place of
-#: one; add an inequality; drop integer declarations.
+#: one; add inequalities; drop integer declarations.
 Kind = Literal["round", "tighten", "split", "cut", "drop"]
+
+
+@dataclass(frozen=True, eq=False)
+class Derivation:
+    """How an inequality follows: a sum of rows and bounds, its right side rounded down.
+
+    Rows are taken after they were scaled to coprime whole numbers and their sides rounded
+    inwards. A multiplier above 0 belongs to an upper side or bound, one below 0 to a lower one.
+
+    Attributes
+    ----------
+    rows : ndarray, shape (p,), int64
+        Indices into the form; m + i stands for the remedy's inequality i, one before this.
+    row_names : tuple of str, length p
+    row_multipliers : tuple of Fraction, length p
+    columns : ndarray, shape (q,), int64
+        Columns whose bounds are added.
+    column_names : tuple of str, length q
+    bound_multipliers : tuple of Fraction, length q
+    """
+
+    rows: Indices = field(repr=False)
+    row_names: tuple[str, ...]
+    row_multipliers: tuple[Fraction, ...]
+    columns: Indices = field(repr=False)
+    column_names: tuple[str, ...]
+    bound_multipliers: tuple[Fraction, ...]
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,6 +62,8 @@ class Inequality:
     coefficients : ndarray, shape (k,), float64
     lower, upper : float
         Infinite where a side is missing.
+    derivation : Derivation or None
+        Of a cut.
     """
 
     name: str
@@ -40,6 +72,7 @@ class Inequality:
     coefficients: Floats
     lower: float
     upper: float
+    derivation: Derivation | None = None
 
 
 @dataclass(frozen=True, eq=False)
@@ -90,12 +123,16 @@ class BoundChange:
 
 @dataclass(frozen=True, eq=False)
 class Remedy:
-    """A change that keeps all whole plans, or all best ones, and makes the relaxation better.
+    """A change that keeps all whole plans (or a best one), and what it does to the relaxation.
+
+    Remedies stand in the order in which they go together; each also goes alone.
 
     Attributes
     ----------
     kind : str
         One of `Kind`.
+    name : str
+        What the rows that it brings are called, 'opening_split' say.
     title : str
         A few words.
     sentence : str
@@ -103,9 +140,13 @@ class Remedy:
     names : tuple of str
         Rows and columns that it touches.
     bound_before, bound_after : float
-        Optimum of the relaxation, in the model's own sense; NaN where not computed.
+        Optimum of the relaxation as declared, in the model's own sense, without and with this
+        remedy alone; NaN where not computed.
     fractional_before, fractional_after : int or None
-        Integer columns that are fractional there; None where not computed.
+        Columns declared integer that are fractional there; None where not computed.
+    bound_together : float
+        With all remedies up to this one.
+    fractional_together : int or None
     verified : str
         How it was checked that no whole plan is lost: one sentence.
     inequalities : tuple of Inequality
@@ -114,41 +155,70 @@ class Remedy:
     bound_changes : tuple of BoundChange
     dropped_rows : ndarray, int64
         Rows that the new ones replace.
+    dropped_row_names : tuple of str
     dropped_declarations : ndarray, int64
         Columns that need not be declared integer.
+    dropped_declaration_names : tuple of str
     """
 
     kind: Kind
+    name: str
     title: str
     sentence: str
     names: tuple[str, ...]
-    bound_before: float
-    bound_after: float
-    fractional_before: int | None
-    fractional_after: int | None
     verified: str
+    bound_before: float = math.nan
+    bound_after: float = math.nan
+    fractional_before: int | None = None
+    fractional_after: int | None = None
+    bound_together: float = math.nan
+    fractional_together: int | None = None
     inequalities: tuple[Inequality, ...] = ()
     row_changes: tuple[RowChange, ...] = ()
     bound_changes: tuple[BoundChange, ...] = ()
     dropped_rows: Indices = field(default_factory=lambda: np.empty(0, np.int64), repr=False)
+    dropped_row_names: tuple[str, ...] = ()
     dropped_declarations: Indices = field(default_factory=lambda: np.empty(0, np.int64), repr=False)
+    dropped_declaration_names: tuple[str, ...] = ()
 
-    def apply(self, form_or_model: Any) -> Any:
-        """Make the change.
+    def apply_to(self, form: LinearForm) -> LinearForm:
+        """Return the form with the change made.
 
         Parameters
         ----------
-        form_or_model : LinearForm or Pyomo model
-            The one that was explained. A Pyomo model is changed in place.
+        form : LinearForm
+            The one that was explained, or what `apply_to` of other remedies made of it.
+
+        Raises
+        ------
+        ValueError
+            If a row or column of the remedy is not at its place in the form.
+        """
+        from .changes import apply_to_form
+
+        return apply_to_form(self, form)
+
+    def apply(self, model: Any) -> Any:
+        """Make the change in a Pyomo model, in place.
+
+        Parameters
+        ----------
+        model : Pyomo model
+            The one that was explained, or one with the same names.
 
         Returns
         -------
-        LinearForm or Pyomo model
-            A new form; the same model.
-        """
-        from .on_pyomo import apply_remedy
+        Pyomo Constraint or None
+            The new rows, one indexed component; None where the remedy brings no rows.
 
-        return apply_remedy(self, form_or_model)
+        Raises
+        ------
+        ValueError
+            If the model has no row or variable of a name; nothing is changed then.
+        """
+        from .on_pyomo import apply_to_model
+
+        return apply_to_model(self, model)
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON."""
