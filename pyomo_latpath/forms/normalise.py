@@ -8,22 +8,15 @@ kept as factors, so that plans and prices find their way back.
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass, replace
-from fractions import Fraction
 from typing import Literal
 
 import numpy as np
 import scipy.sparse as sp
-from scipy.sparse.csgraph import breadth_first_order, connected_components
 
 from .linear_form import Flags, Floats, LinearForm
-from .numbers import EXACT, SNAP, Integers, read_fractions, snap
-
-#: Denominators up to this one are scaled away in whole arrays; others row by row.
-DECIMAL = 100_000
-#: Rows whose whole entries would be larger stay as they are: a solver's tolerances are absolute.
-LARGEST_ENTRY = 10**7
+from .numbers import SNAP, Integers, snap
+from .scaling import ScaledMatrix, scaled_matrix
 
 
 @dataclass(frozen=True)
@@ -70,6 +63,8 @@ class NormalForm:
     snapped : int
         Numbers read as another one nearby.
     conflict : Conflict or None
+    scaled : ScaledMatrix
+        Of the whole form, also in a part of it.
     """
 
     form: LinearForm
@@ -92,22 +87,27 @@ class NormalForm:
     fixed_value: Floats
     snapped: int
     conflict: Conflict | None
+    scaled: ScaledMatrix
 
     @property
     def certifiable(self) -> bool:
         """Whether all entries, sides and bounds are whole, as every certificate asks."""
         return bool(self.whole_rows.all() and self.whole_sides.all() and self.whole_bounds.all())
 
-    def restrict(self, rows: Integers, columns: Integers) -> NormalForm:
+    def restrict(
+        self, rows: Integers, columns: Integers, matrix: sp.csc_array | None = None
+    ) -> NormalForm:
         """Return the part with these rows and columns (ascending local indices).
 
-        The columns must have no nonzeros outside the rows, as those of a block.
+        The columns must have no nonzeros outside the rows, as those of a block. The part's matrix
+        may be given where it is known already.
         """
         if rows.size == self.rows.size and columns.size == self.columns.size:
             return self
-        part = self.matrix[:, columns]
-        place = np.searchsorted(rows, part.indices).astype(part.indices.dtype)
-        matrix = sp.csc_array((part.data, place, part.indptr), shape=(rows.size, columns.size))
+        if matrix is None:
+            part = self.matrix[:, columns]
+            place = np.searchsorted(rows, part.indices).astype(part.indices.dtype)
+            matrix = sp.csc_array((part.data, place, part.indptr), shape=(rows.size, columns.size))
         by_row = "rows row_lower row_upper row_num row_den whole_rows whole_sides"
         by_column = "columns col_lower col_upper cost integer col_num col_den whole_bounds"
         picked = {name: getattr(self, name)[rows] for name in by_row.split()}
@@ -127,12 +127,14 @@ class NormalForm:
         )
 
 
-def normalise(form: LinearForm) -> NormalForm:
+def normalise(form: LinearForm, earlier: NormalForm | None = None) -> NormalForm:
     """Normalise a form.
 
     Parameters
     ----------
     form : LinearForm
+    earlier : NormalForm, optional
+        Of a form with the same matrix; what is the same of both is not worked out again.
 
     Returns
     -------
@@ -147,20 +149,21 @@ def normalise(form: LinearForm) -> NormalForm:
     >>> normal.matrix.toarray(), normal.row_upper, normal.col_upper, normal.columns
     (array([[1.]]), array([1.]), array([2.]), array([1]))
     """
+    if earlier is not None and earlier.conflict is None and same_limits(form, earlier.form):
+        return replace(earlier, form=form, cost=_scaled_cost(form, earlier.scaled))
     col_lower, col_upper, moved = _round_columns(form)
     conflict = _crossed(form, "column", col_lower, col_upper)
     fixed = col_lower >= col_upper
     value = np.where(fixed, np.where(np.isfinite(col_lower), col_lower, 0.0), 0.0)
     shift = form.matrix @ value if fixed.any() else np.zeros(form.shape[0])
     columns = np.flatnonzero(~fixed)
-    matrix = form.matrix[:, columns] if fixed.any() else form.matrix
-    length = np.bincount(matrix.indices, minlength=form.shape[0])
     sided = np.isfinite(form.row_lower) | np.isfinite(form.row_upper)
-    rows = np.flatnonzero((length > 0) & sided)
-    conflict = conflict or _broken_constant(form, shift, (length == 0) & sided)
-    if rows.size < form.shape[0]:
-        matrix = matrix[rows, :]
-    scaled = _scale(matrix, form.integer[columns])
+    if earlier is not None and earlier.scaled.serves(columns, sided, form.integer[columns]):
+        scaled = earlier.scaled
+    else:
+        scaled = scaled_matrix(form, columns, sided)
+    rows = scaled.rows
+    conflict = conflict or _broken_constant(form, shift, scaled.constant)
     row_lower, row_upper, whole_sides, moved_sides = _round_sides(
         form.row_lower[rows] - shift[rows], form.row_upper[rows] - shift[rows], scaled
     )
@@ -174,7 +177,6 @@ def normalise(form: LinearForm) -> NormalForm:
     low_snapped, high_snapped = snap(low), snap(high)
     moved += int(np.sum((low_snapped != low) & np.isfinite(low)))
     moved += int(np.sum((high_snapped != high) & np.isfinite(high)))
-    sign = 1.0 if form.sense == "min" else -1.0
     return NormalForm(
         form=form,
         rows=rows,
@@ -184,8 +186,8 @@ def normalise(form: LinearForm) -> NormalForm:
         row_upper=row_upper,
         col_lower=low_snapped,
         col_upper=high_snapped,
-        cost=sign * form.cost[columns] * factor,
-        integer=form.integer[columns],
+        cost=_scaled_cost(form, scaled),
+        integer=scaled.integer,
         row_num=scaled.row_num,
         row_den=scaled.row_den,
         col_num=scaled.col_num,
@@ -196,21 +198,20 @@ def normalise(form: LinearForm) -> NormalForm:
         fixed_value=value,
         snapped=moved + moved_sides + scaled.snapped,
         conflict=conflict,
+        scaled=scaled,
     )
 
 
-@dataclass(frozen=True, eq=False)
-class _Scaled:
-    """A matrix with its factors; `pure` rows have integer columns only."""
+def same_limits(form: LinearForm, other: LinearForm) -> bool:
+    """Whether two forms with one matrix differ at most in costs, offset, sense and names."""
+    names = "row_lower row_upper col_lower col_upper integer semicontinuous"
+    return all(np.array_equal(getattr(form, k), getattr(other, k)) for k in names.split())
 
-    matrix: sp.csc_array
-    row_num: Integers
-    row_den: Integers
-    col_num: Integers
-    col_den: Integers
-    whole_rows: Flags
-    pure: Flags
-    snapped: int
+
+def _scaled_cost(form: LinearForm, scaled: ScaledMatrix) -> Floats:
+    """Costs of the kept columns in scaled units, to be minimised."""
+    sign = 1.0 if form.sense == "min" else -1.0
+    return sign * form.cost[scaled.columns] * (scaled.col_num / scaled.col_den)
 
 
 def _is_whole(values: Floats) -> Flags:
@@ -233,7 +234,7 @@ def _round_columns(form: LinearForm) -> tuple[Floats, Floats, int]:
 
 
 def _round_sides(
-    lower: Floats, upper: Floats, scaled: _Scaled
+    lower: Floats, upper: Floats, scaled: ScaledMatrix
 ) -> tuple[Floats, Floats, Flags, int]:
     """Scale sides, read those next to a whole number as it, round those of pure rows inwards."""
     with np.errstate(invalid="ignore"):
@@ -247,145 +248,6 @@ def _round_sides(
     inwards = scaled.pure & scaled.whole_rows
     low, high = np.where(inwards, np.ceil(low), low), np.where(inwards, np.floor(high), high)
     return low, high, _is_whole(low) & _is_whole(high), moved
-
-
-def _scale(matrix: sp.csc_array, integer: Flags) -> _Scaled:
-    """Find factors that make rows coprime whole numbers; continuous columns may be scaled too."""
-    m, n = matrix.shape
-    by_row = matrix.tocsr()
-    num, den, read = read_fractions(by_row.data)
-    row_of = np.repeat(np.arange(m), np.diff(by_row.indptr))
-    of_integer = integer[by_row.indices]
-    pure = np.full(m, True)
-    pure[row_of[~of_integer]] = False
-    snapped = int(np.sum(read & (num / den != by_row.data)))
-    row_num, row_den = _coprime_factors(by_row.indptr, row_of, num, den, read & of_integer, m)
-    readable = np.full(m, True)
-    readable[row_of[~read]] = False
-    row_num[~readable], row_den[~readable] = 1, 1
-    entries = _times(num, den, row_num[row_of], row_den[row_of])
-    grown = (np.abs(entries) > LARGEST_ENTRY) & (np.abs(entries) > np.abs(by_row.data))
-    if grown.any():
-        read = read & ~np.isin(row_of, row_of[grown])
-        row_num[row_of[grown]] = row_den[row_of[grown]] = 1
-        readable[row_of[grown]] = False
-        entries = _times(num, den, row_num[row_of], row_den[row_of])
-    col_num, col_den = np.ones(n, np.int64), np.ones(n, np.int64)
-    if not of_integer.all() and of_integer.any():
-        odd = ~of_integer & read & (np.abs(entries) != 1)
-        if odd.any():
-            _scale_continuous(
-                by_row, num, den, integer, entries, row_num, row_den, col_num, col_den
-            )
-            entries = _times(num, den, row_num[row_of], row_den[row_of])
-            entries *= (col_num / col_den)[by_row.indices]
-    near = np.rint(entries)
-    whole = read & (np.abs(entries - near) <= 1e-12 * np.abs(near)) & (np.abs(near) < EXACT)
-    whole_rows = np.full(m, True)
-    whole_rows[row_of[~whole]] = False
-    entries = np.where(whole_rows[row_of], near, entries)
-    unread = ~readable[row_of]
-    factor = (col_num / col_den)[by_row.indices]
-    entries[unread] = by_row.data[unread] * factor[unread]
-    scaled = sp.csr_array((entries, by_row.indices, by_row.indptr), shape=(m, n)).tocsc()
-    return _Scaled(scaled, row_num, row_den, col_num, col_den, whole_rows, pure, snapped)
-
-
-def _times(num: Integers, den: Integers, by_num: Integers, by_den: Integers) -> Floats:
-    """Products of fractions as floats; exact where the result is a whole number below 2**53."""
-    common = np.gcd(num, by_den)
-    other = np.gcd(by_num, den)
-    top = (num // common).astype(np.float64) * (by_num // other)
-    return top / ((by_den // common).astype(np.float64) * (den // other))
-
-
-def _coprime_factors(
-    start: Integers, row_of: Integers, num: Integers, den: Integers, used: Flags, m: int
-) -> tuple[Integers, Integers]:
-    """Factors lcm(denominators) / gcd(numerators) of each row, over its `used` entries."""
-    row_num, row_den = np.ones(m, np.int64), np.ones(m, np.int64)
-    full = np.flatnonzero(np.diff(start) > 0)
-    if not full.size:
-        return row_num, row_den
-    at = start[full]
-    plain = used & (den <= DECIMAL) & (DECIMAL % den == 0)
-    row_num[full] = np.lcm.reduceat(np.where(plain, den, 1), at)
-    scaled = np.where(used, num, 0)
-    if row_num.max() > 1:
-        scaled = np.where(plain, num * (row_num[row_of] // np.where(plain, den, 1)), scaled)
-    row_den[full] = np.maximum(np.gcd.reduceat(np.where(used, np.abs(scaled), 0), at), 1)
-    for i in np.unique(row_of[used & ~plain]):
-        here = slice(start[i], start[i + 1])
-        mine = used[here]
-        tops, bottoms = num[here][mine].tolist(), den[here][mine].tolist()
-        multiple = math.lcm(*bottoms)
-        divisor = math.gcd(*(t * (multiple // b) for t, b in zip(tops, bottoms, strict=True)))
-        fits = multiple < EXACT and divisor < EXACT
-        row_num[i], row_den[i] = (multiple, divisor) if fits else (1, 1)
-    common = np.gcd(row_num, row_den)
-    return row_num // common, row_den // common
-
-
-def _scale_continuous(
-    by_row: sp.csr_array,
-    num: Integers,
-    den: Integers,
-    integer: Flags,
-    entries: Floats,
-    row_num: Integers,
-    row_den: Integers,
-    col_num: Integers,
-    col_den: Integers,
-) -> None:
-    """Scale continuous columns, and rows of nothing else, towards entries of +-1, in place.
-
-    Factors spread from the rows that hold integer columns, whose factors stand, along a
-    breadth-first tree. Only connected parts whose integer columns have entries of +-1 already
-    are worth it.
-    """
-    m, n = by_row.shape
-    row_of = np.repeat(np.arange(m), np.diff(by_row.indptr))
-    of_integer = integer[by_row.indices]
-    pattern = sp.csr_array(
-        (np.arange(1, by_row.nnz + 1, dtype=np.int64), by_row.indices, by_row.indptr), shape=(m, n)
-    )
-    whole_graph = sp.block_array([[None, pattern], [pattern.T, None]], format="csr")
-    _, label = connected_components(whole_graph, directed=False)
-    spoilt = np.zeros(label.max() + 1, np.bool_)
-    spoilt[label[row_of[of_integer & (np.abs(entries) != 1)]]] = True
-    spoilt[label[row_of[entries == 0]]] = True
-    anchored = np.zeros(m, np.bool_)
-    anchored[row_of[of_integer]] = True
-    keep = ~of_integer & ~spoilt[label[row_of]]
-    links = sp.csr_array(
-        (np.arange(1, by_row.nnz + 1)[keep], (row_of[keep], by_row.indices[keep])), shape=(m, n)
-    )
-    source = sp.csr_array(np.where(anchored, by_row.nnz + 1, 0)[:, None])
-    graph = sp.block_array(
-        [[None, links, source], [links.T, None, None], [source.T, None, None]], format="csr"
-    )
-    order, before = breadth_first_order(graph, m + n, directed=False)
-    lookup = {}
-    for k in np.flatnonzero(keep):
-        lookup[int(row_of[k]), int(by_row.indices[k])] = k
-    for node in order[1:]:
-        parent = int(before[node])
-        if parent == m + n:
-            continue
-        row, col = (int(parent), int(node) - m) if node >= m else (int(node), parent - m)
-        k = lookup[row, col]
-        known = (
-            Fraction(int(row_num[row]), int(row_den[row]))
-            if node >= m
-            else Fraction(int(col_num[col]), int(col_den[col]))
-        )
-        factor = 1 / abs(known * Fraction(int(num[k]), int(den[k])))
-        if max(factor.numerator, factor.denominator) >= EXACT:
-            continue
-        if node >= m:
-            col_num[col], col_den[col] = factor.numerator, factor.denominator
-        else:
-            row_num[row], row_den[row] = factor.numerator, factor.denominator
 
 
 def _crossed(
