@@ -150,7 +150,7 @@ def diagonalise(system: SparseSystem, pivots: list[tuple[int, int]]) -> bool:
     GivenUp
     """
     pivot_row = {column: row for row, column in pivots}
-    own = {row: column for row, column in pivots}
+    own = dict(pivots)
     order = [row for row, _ in reversed(pivots)]
     order += [row for row in range(len(system.rows)) if row not in own]
     for row in order:
@@ -160,9 +160,9 @@ def diagonalise(system: SparseSystem, pivots: list[tuple[int, int]]) -> bool:
             # The other row's pivot is +-1 by now.
             source = pivot_row[other]
             system.add(row, source, -entries[other] * system.rows[source][other])
-        if column is not None and abs(entries[column]) > 1:
-            if not system.divide(row, abs(entries[column])):
-                return False
+        pivot = 1 if column is None else abs(entries[column])
+        if pivot > 1 and not system.divide(row, pivot):
+            return False
         if any(abs(value) > 1 for value in system.rows[row].values()):
             return False
     return True

@@ -82,11 +82,11 @@ class SparseSystem:
                 del entries[column]
             if not (old and new):
                 moved.append(column)
-        if row in self.open:
-            for column in moved:
-                (self.holders[column].add if column in entries else self.holders[column].remove)(
-                    row
-                )
+        for column in moved if row in self.open else ():
+            if column in entries:
+                self.holders[column].add(row)
+            else:
+                self.holders[column].remove(row)
         return moved
 
     def divide(self, row: int, divisor: int) -> bool:

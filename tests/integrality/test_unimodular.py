@@ -54,10 +54,8 @@ def basis_determinants(matrix, equality):
     greatest common divisor of the determinants in its columns."""
     whole = with_slacks(matrix, equality)
     rank = np.linalg.matrix_rank(whole)
-    found = [0]
-    for columns in itertools.combinations(range(whole.shape[1]), rank):
-        found.append(math.gcd(*maximal_minors(whole[:, columns].T)))
-    return found
+    choices = itertools.combinations(range(whole.shape[1]), rank)
+    return [math.gcd(*maximal_minors(whole[:, columns].T)) for columns in choices]
 
 
 def is_whole_for(matrix, equality, sides):
