@@ -15,6 +15,8 @@ import time
 from typing import Any
 
 from . import plugin
+from .batch.record import BatchRecord
+from .batch.runner import solve_many
 from .certificates import CertificateError, check_certificate
 from .forms.from_file import read
 from .forms.from_pyomo import compile_model
@@ -30,6 +32,7 @@ from .today import solve as _solve_form
 __version__ = ".".join(map(str, plugin.VERSION))
 
 __all__ = [
+    "BatchRecord",
     "BlockFinding",
     "CertificateError",
     "Finding",
@@ -48,6 +51,7 @@ __all__ = [
     "compile_model",
     "read",
     "solve",
+    "solve_many",
     "stay_or_change",
 ]
 

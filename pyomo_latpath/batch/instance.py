@@ -68,25 +68,22 @@ class SharedForm:
 class FileInstance:
     """A model file; its name is its path as the user wrote it."""
 
-    path: Path
-
-    @property
-    def name(self) -> str:
-        return str(self.path)
+    name: str
 
     def fingerprint(self) -> str:
-        return hashlib.sha256(self.path.read_bytes()).hexdigest()
+        return hashlib.sha256(Path(self.name).read_bytes()).hexdigest()
 
     def load(self) -> LinearForm:
-        return read(self.path)
+        return read(self.name)
 
 
 @dataclass(frozen=True, eq=False)
 class FormInstance:
-    """A form that travels with its instance."""
+    """A form that travels with its instance, and the seconds that it took to compile."""
 
     name: str
     form: LinearForm
+    compile_seconds: float = 0.0
 
     def fingerprint(self) -> str:
         return form_digest(self.form)
