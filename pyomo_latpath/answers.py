@@ -44,6 +44,12 @@ class PartAnswer:
         'none', 'true' or 'fixed plan'.
     ray, farkas : ndarray or None
     path : PathResult or None
+    pivots : int
+        Of the relaxation, where `path` is None.
+    short_by : Fraction or None
+        For 'infeasible' by certified rows: how much more they ask for than can be had.
+    told : int
+        Integer declarations that branch and bound was given.
     """
 
     normal: NormalForm
@@ -61,6 +67,7 @@ class PartAnswer:
     path: PathResult | None = None
     pivots: int = 0
     short_by: Fraction | None = None
+    told: int = 0
 
 
 def without_plan(
@@ -73,13 +80,24 @@ def without_plan(
     ray: Floats | None = None,
     farkas: Floats | None = None,
     path: PathResult | None = None,
+    told: int = 0,
 ) -> PartAnswer:
     """Return the answer to a part that has no optimal plan."""
     m, n = normal.matrix.shape
-    nothing = (np.full(m, np.nan), np.full(n, np.nan))
-    bound = math.inf if status == "infeasible" else -math.inf
     return PartAnswer(
-        normal, status, route, findings, None, bound, exact, *nothing, "none", ray, farkas, path
+        normal=normal,
+        status=status,
+        route=route,
+        findings=findings,
+        x=None,
+        bound=math.inf if status == "infeasible" else -math.inf,
+        exact=exact,
+        row_dual=np.full(m, np.nan),
+        reduced_cost=np.full(n, np.nan),
+        ray=ray,
+        farkas=farkas,
+        path=path,
+        told=told,
     )
 
 

@@ -136,7 +136,8 @@ def _run_mip(highs: Any, settings: MipSettings, deadline: Deadline) -> str:
     highs.run()
     if fixed:
         highs.resetGlobalScheduler(True)
-    return outcome(highs)
+    status = outcome(highs)
+    return "limit" if status == "pivot_limit" else status
 
 
 def _apply(highs: Any, settings: MipSettings) -> None:

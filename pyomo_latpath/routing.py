@@ -37,6 +37,7 @@ from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
+from .integrality.implied import mostly_implied
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
 from .paths.conetwork_flow import ConetworkStructure
 from .paths.network_oracle import NetworkStructure
@@ -324,6 +325,9 @@ def _branch(
     request: _Request, part: NormalForm, finding: BlockFinding, optimum: LpResult | None = None
 ) -> PartAnswer:
     since = time.perf_counter()
+    implied = mostly_implied(part, request.deadline)
+    request.clock.spend("assess", since)
+    since = time.perf_counter()
     answer = branch_part(
         part,
         (finding,),
@@ -332,6 +336,7 @@ def _branch(
         relaxation=optimum,
         start=None if request.start is None else request.start[part.columns],
         fixed_plan_prices=request.fixed_plan_prices,
+        implied=implied,
     )
     request.clock.spend("solve", since)
     return answer
@@ -400,6 +405,8 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
             prices=prices.pop() if len(prices) == 1 else "none" if not parts else "in part",
             blame=blamed.names,
             blame_is_minimal=blamed.minimal,
+            declared=int(normal.integer.sum()),
+            needed=sum(part.told for part in parts),
         ),
     )
 

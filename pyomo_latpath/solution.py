@@ -130,6 +130,9 @@ class RouteReport:
         Those that would lead on to the best plan known, where `max_moves` left them out.
     repair : Move or None
         The change that made the start feasible, where that was asked for and needed.
+    declared, needed : int
+        Integer columns that are not fixed, and how many of these declarations branch and bound
+        was given: none on the path route; not those that were found implied.
     """
 
     route: str
@@ -145,6 +148,8 @@ class RouteReport:
     moves: tuple[Move, ...] = ()
     further_moves: tuple[Move, ...] = ()
     repair: Move | None = None
+    declared: int = 0
+    needed: int = 0
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON; certificates are left to `finding.to_dict()`."""
@@ -176,6 +181,8 @@ class RouteReport:
             "moves": [move.to_dict() for move in self.moves],
             "further_moves": [move.to_dict() for move in self.further_moves],
             "repair": None if self.repair is None else self.repair.to_dict(),
+            "declared": self.declared,
+            "needed": self.needed,
         }
 
 

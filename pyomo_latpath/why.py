@@ -72,9 +72,17 @@ def _clause(part: PartAnswer) -> str:
         )
     if part.status == "time_limit":
         return "the time ran out in branch and bound"
-    if part.findings[0].verdict is Verdict.REFUTED:
-        return "the relaxation's optimum is fractional, so branch and bound solved it"
-    return "the relaxation gave no whole optimum, so branch and bound solved it"
+    fractional = part.findings[0].verdict is Verdict.REFUTED
+    what = "'s optimum is fractional" if fractional else " gave no whole optimum"
+    return f"the relaxation{what}, so branch and bound solved it{_spared(part)}"
+
+
+def _spared(part: PartAnswer) -> str:
+    """How many declarations branch and bound could do without."""
+    declared = int(part.normal.integer.sum())
+    if part.told == declared:
+        return ""
+    return f" with {part.told} of {declared} integer declarations, which imply the others"
 
 
 def _structures(findings: tuple[BlockFinding, ...]) -> str:
