@@ -1,0 +1,251 @@
+"""Smallest sets of row groups without which everything that is left is certified whole.
+
+Groups that cannot be certified together are a conflict; a set of culprits must meet all of them.
+So the search goes through the smallest sets that meet all conflicts known (Reiter 1987, A theory
+of diagnosis from first principles): either what is left without such a set is certified, or it
+holds a further conflict, thinned out until no group of it can be spared.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Collection, Iterator, Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from ..deadline import Deadline
+from ..forms.linear_form import Flags
+from ..forms.numbers import Integers
+from .groups import Group
+from .minimal import hitting_sets, thin_out
+from .relaxation import Place, Relaxation
+from .remains import Certified, Remains
+
+#: So many sets of culprits are told, at most.
+MOST_SETS = 5
+#: So many groups may be in one beside those that are to blame in any case.
+MOST_CHOSEN = 4
+#: So many groups are tried on their own, whatever their entries.
+MOST_ALONE = 30
+
+
+@dataclass(frozen=True, eq=False)
+class Culprit:
+    """A smallest set of groups without which everything that is left is certified whole.
+
+    Attributes
+    ----------
+    groups : tuple of str
+        None of them can stay.
+    smallest : bool
+        Whether all sets of fewer groups were tried, and left something without a certificate.
+    rows : tuple of str
+        Names of a set of rows among them that does, too.
+    row_indices : ndarray, int64
+    rows_minimal : bool
+        Whether none of those rows can stay; False where the time ran out before that was shown.
+    structures : tuple of str
+        Of what is left without the groups, largest block first ('network', ...).
+    remains : str
+        One sentence about that.
+    objective_without : float
+        Optimum without the groups, in the model's sense: also that of the best whole plan,
+        since what is left is certified. Infinite where unbounded.
+    price : float
+        By how much the model's best known plan is worse: what these side constraints cost (at
+        most, where `Gap.exact` is False). NaN without a plan.
+    """
+
+    groups: tuple[str, ...]
+    smallest: bool
+    rows: tuple[str, ...]
+    row_indices: Integers = field(repr=False)
+    rows_minimal: bool
+    structures: tuple[str, ...]
+    remains: str
+    objective_without: float
+    price: float
+
+
+@dataclass(frozen=True)
+class CulpritSet:
+    """Groups to blame, as places in the list of groups, and what is left without them."""
+
+    places: tuple[int, ...]
+    certified: Certified
+    smallest: bool
+
+
+class Search:
+    """The search for all smallest sets of culprits of one form.
+
+    Parameters
+    ----------
+    remains : Remains
+    groups : sequence of Group
+    suspects : sequence of Place
+        Where a known vertex is fractional: its rows' groups are tried first as a conflict.
+    relaxation : Relaxation
+    deadline : Deadline
+    tell : callable
+        Takes a line about the progress.
+
+    Attributes
+    ----------
+    exhausted : bool
+        Whether all sets up to some size were found.
+    alone : dict of int to bool
+        Groups that were tried on their own: certified or not.
+    """
+
+    def __init__(
+        self,
+        remains: Remains,
+        groups: Sequence[Group],
+        suspects: Sequence[Place],
+        relaxation: Relaxation,
+        deadline: Deadline,
+        tell: Callable[[str], None],
+    ) -> None:
+        self.remains, self.groups, self.relaxation = remains, groups, relaxation
+        self.deadline, self.tell = deadline, tell
+        self.exhausted, self.alone = False, dict[int, bool]()
+        self._group_of = np.zeros(remains.form.shape[0], np.int64)
+        for k, group in enumerate(groups):
+            self._group_of[group.rows] = k
+        self._suspects = [self._groups_at(place) for place in suspects]
+        self._conflicts: list[frozenset[int]] = []
+        self._found: list[frozenset[int]] = []
+
+    def run(self) -> Iterator[CulpritSet]:
+        """Yield the sets, smallest first; where all are large, one that cannot be made smaller."""
+        self._try_alone()
+        for size in range(1, len(self.groups) + 1):
+            forced = sum(len(those) == 1 for those in self._conflicts)
+            if size > forced + MOST_CHOSEN:
+                break
+            yield from self._of_size(size) if size >= forced else ()
+            if self.deadline.passed or len(self._found) == MOST_SETS:
+                return
+            further = hitting_sets(self._conflicts, forced + MOST_CHOSEN, self._found)
+            if next(further, None) is None:
+                self.exhausted = True
+                return
+        if not self._found:
+            yield from self._greedily()
+
+    def _greedily(self) -> Iterator[CulpritSet]:
+        """Put back one group after the other while what is there stays certified."""
+
+        def serves(chosen: list[int]) -> bool:
+            return self._certified(self._others(chosen)) is not None
+
+        everything = list(range(len(self.groups)))
+        if serves(everything):
+            chosen, _ = thin_out(everything, serves, self.deadline)
+            certified = self._certified(self._others(chosen))
+            if certified is not None:
+                yield CulpritSet(tuple(chosen), certified, smallest=False)
+
+    def _try_alone(self) -> None:
+        """A group that is not certified on its own is to blame in any case."""
+        for k, group in enumerate(self.groups):
+            if self.deadline.passed:
+                return
+            suspicious = group.beyond or group.broken_sides or group.continuous
+            if suspicious or len(self.groups) <= MOST_ALONE:
+                self.alone[k] = self._certified([k]) is not None
+                if not self.alone[k] and not self.deadline.passed:
+                    self._conflicts.append(frozenset({k}))
+
+    def _of_size(self, size: int) -> Iterator[CulpritSet]:
+        """Sets of so many groups: each new conflict starts the enumeration afresh."""
+        while not self.deadline.passed and len(self._found) < MOST_SETS:
+            chosen = next(hitting_sets(self._conflicts, size, self._found), None)
+            if chosen is None:
+                return
+            names = ", ".join(self.groups[k].name for k in sorted(chosen)) or "nothing"
+            self.tell(f"leaving out {names}")
+            kept = self._others(chosen)
+            certified = self._certified(kept)
+            if certified is not None:
+                self._found.append(chosen)
+                yield CulpritSet(tuple(sorted(chosen)), certified, smallest=True)
+            elif not self.deadline.passed:
+                conflict = self._conflict_among(kept)
+                if conflict is None:
+                    return
+                self._conflicts.append(conflict)
+
+    def _conflict_among(self, kept: list[int]) -> frozenset[int] | None:
+        """Groups among these that cannot be certified together, none of them needlessly."""
+        seeds = [those for those in self._suspects if those <= set(kept)]
+        if not seeds:
+            flags = self.flags(kept)[self.relaxation.normal.rows]
+            result = self.relaxation.optimum(self.deadline, flags)
+            if result.status == "optimal":
+                places = self.relaxation.places(result.x)
+                seeds = [self._groups_at(place) for place in places]
+        for seed in [*seeds, frozenset(kept)]:
+            if self._certified(sorted(seed)) is None:
+                thin, _ = thin_out(
+                    sorted(seed), lambda some: self._certified(some) is None, self.deadline
+                )
+                return None if self.deadline.passed else frozenset(thin)
+        return None
+
+    def _groups_at(self, place: Place) -> frozenset[int]:
+        rows = self.relaxation.normal.rows[place.rows]
+        return frozenset(np.unique(self._group_of[rows]).tolist())
+
+    def _others(self, chosen: Collection[int]) -> list[int]:
+        return [k for k in range(len(self.groups)) if k not in chosen]
+
+    def flags(self, kept: Sequence[int]) -> Flags:
+        """Rows of the form in these groups."""
+        chosen = np.zeros(len(self.groups), np.bool_)
+        chosen[list(kept)] = True
+        return np.asarray(chosen[self._group_of])
+
+    def _certified(self, kept: Sequence[int]) -> Certified | None:
+        return self.remains.certified(self.flags(kept), self.deadline)
+
+
+def smallest_rows(remains: Remains, rows: Integers, deadline: Deadline) -> tuple[Integers, bool]:
+    """Thin out rows without which what is left is certified.
+
+    Parameters
+    ----------
+    remains : Remains
+    rows : ndarray, int64
+        Indices into the form; what is left without them is certified.
+    deadline : Deadline
+
+    Returns
+    -------
+    rows : ndarray, int64
+    minimal : bool
+        Whether none of them can stay; False where the time ran out.
+    """
+
+    def certified_without(some: list[int]) -> bool:
+        kept = np.ones(remains.form.shape[0], np.bool_)
+        kept[some] = False
+        return remains.certified(kept, deadline) is not None
+
+    found, minimal = thin_out(rows.tolist(), certified_without, deadline)
+    return np.array(found, np.int64), minimal
+
+
+def objective_without(search: Search, places: Sequence[int], deadline: Deadline) -> float:
+    """Optimum without some groups; what is left being certified, a whole plan attains it."""
+    kept = [k for k in range(len(search.groups)) if k not in places]
+    flags = search.flags(kept)[search.relaxation.normal.rows]
+    result = search.relaxation.optimum(deadline, flags)
+    return search.relaxation.objective(result)
+
+
+def price(worse: float) -> float:
+    """What side constraints cost: never negative, NaN where there is no plan."""
+    return worse if math.isnan(worse) else max(0.0, worse)

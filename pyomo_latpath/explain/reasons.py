@@ -1,0 +1,188 @@
+"""Side reasons: numbers in the model that no certificate can do with."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+
+from ..forms.linear_form import Flags
+from ..forms.normalise import NormalForm
+from ..forms.numbers import Integers
+from .groups import Entries, entries_of
+from .parity import parity_conflict
+from .stems import Stems
+
+#: So many rows or columns are named as examples.
+EXAMPLES = 3
+COLUMNS_HAVE = "continuous columns beside integer ones have"
+Kind = Literal["coefficient", "side", "bound", "continuous", "parity", "semicontinuous"]
+
+
+@dataclass(frozen=True)
+class Reason:
+    """Numbers that no certificate can do with, of one row group or variable component.
+
+    Attributes
+    ----------
+    kind : str
+        'coefficient' (not 0 or +-1 after scaling), 'side' or 'bound' (not whole), 'continuous'
+        (continuous columns in rows of integer ones), 'parity' (equations that no whole numbers
+        satisfy) or 'semicontinuous'.
+    where : str
+        Name of the row group, or of the variable component.
+    count : int
+        How many.
+    examples : tuple of str
+        Names of rows or columns, worst first; a few.
+    sentence : str
+    """
+
+    kind: Kind
+    where: str
+    count: int
+    examples: tuple[str, ...]
+    sentence: str
+
+
+def find_reasons(normal: NormalForm, rows: Stems, columns: Stems) -> tuple[Reason, ...]:
+    """Collect side reasons, worst first.
+
+    Contradictions come first, then what is no linear relaxation at all, then by number.
+
+    Parameters
+    ----------
+    normal : NormalForm
+    rows, columns : Stems
+        Of the form's rows and columns.
+
+    Returns
+    -------
+    tuple of Reason
+
+    Examples
+    --------
+    >>> from pyomo_latpath.explain.stems import column_stems, row_stems
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> from pyomo_latpath.forms.normalise import normalise
+    >>> form = LinearForm.from_arrays([[1, 1], [3, 2]], row_lower=0, row_upper=[1, 4],
+    ...     col_lower=0, col_upper=1, cost=0, row_names=["town[1]", "budget"])
+    >>> (reason,) = find_reasons(normalise(form), row_stems(form), column_stems(form))
+    >>> reason.sentence
+    "budget: 2 coefficients are not 0 or +-1 after scaling, the largest 3
+    (row 'budget', column 'x1')"
+    """
+    entries = entries_of(normal)
+    found = [
+        *_parity(normal, rows),
+        *_semicontinuous(normal, columns),
+        *sorted(
+            [
+                *_coefficients(normal, entries, rows),
+                *_sides(normal, rows),
+                *_bounds(normal, entries, columns),
+                *_continuous(normal, entries, rows),
+            ],
+            key=lambda reason: -reason.count,
+        ),
+    ]
+    return tuple(found)
+
+
+def _parity(normal: NormalForm, rows: Stems) -> Iterator[Reason]:
+    conflict = parity_conflict(normal)
+    if conflict is None:
+        return
+    places = normal.rows[conflict]
+    names = tuple(normal.form.row_names[i] for i in places.tolist())
+    groups = dict.fromkeys(rows.names[k] for k in rows.label[places].tolist())
+    told = ", ".join(repr(name) for name in names[:EXAMPLES])
+    told += f" and {len(names) - EXAMPLES} more" if len(names) > EXAMPLES else ""
+    yield Reason(
+        "parity",
+        ", ".join(groups),
+        len(names),
+        names[:EXAMPLES],
+        f"no whole numbers satisfy {told} together: their sum has even coefficients "
+        "and an odd side",
+    )
+
+
+def _semicontinuous(normal: NormalForm, columns: Stems) -> Iterator[Reason]:
+    flags = normal.form.semicontinuous
+    places = np.flatnonzero(flags)
+    for where, members in _split(columns, places):
+        names = tuple(normal.form.col_names[j] for j in members[:EXAMPLES].tolist())
+        text = f"{where}: {_number(members.size, 'column is', 'columns are')} semicontinuous"
+        yield Reason("semicontinuous", where, members.size, names, text + ": no linear relaxation")
+
+
+def _coefficients(normal: NormalForm, entries: Entries, rows: Stems) -> Iterator[Reason]:
+    bad = np.flatnonzero(entries.beyond)
+    form_rows = normal.rows[entries.row[bad]]
+    size = np.abs(normal.matrix.data[bad])
+    for where, members in _split(rows, form_rows, places=np.arange(bad.size)):
+        worst = members[np.argsort(-size[members], kind="stable")]
+        names = [normal.form.row_names[int(form_rows[k])] for k in worst[: 10 * EXAMPLES].tolist()]
+        at = int(worst[0])
+        column = normal.form.col_names[int(normal.columns[entries.column[bad[at]]])]
+        text = (
+            f"{where}: {_number(members.size, 'coefficient is', 'coefficients are')} not 0 or +-1 "
+            f"after scaling, the largest {normal.matrix.data[bad[at]]:g} (row {names[0]!r}, "
+            f"column {column!r})"
+        )
+        examples = tuple(dict.fromkeys(names))[:EXAMPLES]
+        yield Reason("coefficient", where, members.size, examples, text)
+
+
+def _sides(normal: NormalForm, rows: Stems) -> Iterator[Reason]:
+    bad = np.flatnonzero(~normal.whole_sides)
+    for where, members in _split(rows, normal.rows[bad], places=bad):
+        names = tuple(normal.form.row_names[int(normal.rows[i])] for i in members[:EXAMPLES])
+        sides = normal.row_lower[members[0]], normal.row_upper[members[0]]
+        side = next(value for value in sides if np.rint(value) != value)
+        held = _number(members.size, "row has a side", "rows have sides")
+        text = (
+            f"{where}: {held} not whole after scaling, nor to be rounded: {side:g} at {names[0]!r}"
+        )
+        yield Reason("side", where, members.size, names, text)
+
+
+def _bounds(normal: NormalForm, entries: Entries, columns: Stems) -> Iterator[Reason]:
+    bad = np.flatnonzero(~normal.whole_bounds & _meets_integers(normal, entries))
+    for where, members in _split(columns, normal.columns[bad], places=bad):
+        names = tuple(normal.form.col_names[int(normal.columns[j])] for j in members[:EXAMPLES])
+        held = _number(members.size, "continuous column beside integer ones has", COLUMNS_HAVE)
+        text = f"{where}: {held} bounds that are not whole after scaling, {names[0]!r} for one"
+        yield Reason("bound", where, members.size, names, text)
+
+
+def _continuous(normal: NormalForm, entries: Entries, rows: Stems) -> Iterator[Reason]:
+    bad = np.unique(entries.row[entries.mixed])
+    for where, members in _split(rows, normal.rows[bad], places=bad):
+        names = tuple(normal.form.row_names[int(normal.rows[i])] for i in members[:EXAMPLES])
+        held = _number(members.size, "row holds", "rows hold")
+        text = f"{where}: {held} continuous columns beside integer ones, so sides cannot be rounded"
+        yield Reason("continuous", where, members.size, names, text)
+
+
+def _meets_integers(normal: NormalForm, entries: Entries) -> Flags:
+    """Continuous columns that share a row with integer ones."""
+    flags = np.zeros(normal.columns.size, np.bool_)
+    flags[entries.column[entries.mixed]] = True
+    return flags
+
+
+def _split(
+    stems: Stems, indices: Integers, places: Integers | None = None
+) -> Iterator[tuple[str, Integers]]:
+    """Split places by the part that their index into the form lies in."""
+    label = stems.label[indices]
+    for k in np.unique(label).tolist():
+        yield stems.names[k], (indices if places is None else places)[label == k]
+
+
+def _number(count: int, one: str, several: str) -> str:
+    return f"{count:,} {one if count == 1 else several}"

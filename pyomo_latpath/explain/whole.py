@@ -1,0 +1,145 @@
+"""Models whose vertices are all whole: why, what their declarations cost, what would break it."""
+
+from __future__ import annotations
+
+import time
+from collections import Counter
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..certificates import Unimodular
+from ..deadline import Deadline
+from ..forms.linear_form import LinearForm
+from ..highs_mip import MipSettings, branch_and_bound
+from ..integrality.verdicts import BECAUSE
+from .groups import entries_of
+from .remains import Certified
+
+#: What could break a structure, beside what could break any.
+BREAKS = {
+    "incidence": "a further row over columns that stand in two rows already, unless the structure "
+    "stays that of a network",
+    "interval": "a column whose rows are not consecutive, or a row between others that such a "
+    "column passes over, unless the structure stays that of a network",
+    "network": "a further row or column that is no path in the same network",
+    "conetwork": "a further row or column that is no path in the same network",
+    "sum": "a further row or column across the parts that it is put together from",
+}
+FOR_THESE_SIDES = "another side of an equation: the proof holds for the sides as they are"
+
+
+@dataclass(frozen=True)
+class Whole:
+    """A model whose vertices are all whole.
+
+    Attributes
+    ----------
+    sentences : tuple of str
+        What its blocks are, largest first; equal ones once, with their number.
+    breakers : tuple of str
+        What could break it; each true of the certificates at hand.
+    path_seconds : float
+        One run of the path route; NaN where it was not run.
+    highs_seconds : float
+        One run of HiGHS's branch and bound on the same form.
+    highs_ended : bool
+        False where that was cut off, and would have taken longer.
+    keepers : tuple of str
+        What may change freely.
+    """
+
+    sentences: tuple[str, ...]
+    breakers: tuple[str, ...]
+    path_seconds: float
+    highs_seconds: float
+    highs_ended: bool
+    keepers: tuple[str, ...] = ()
+
+
+def sentences(told: Sequence[str]) -> tuple[str, ...]:
+    """Say what is said of several blocks once, with their number.
+
+    Examples
+    --------
+    >>> sentences(["a network", "an interval matrix", "a network"])
+    ('a network (2 blocks)', 'an interval matrix')
+    """
+    counted = Counter(told)
+    return tuple(text if k == 1 else f"{text} ({k:,} blocks)" for text, k in counted.items())
+
+
+def remains(certified: Certified) -> str:
+    """Say in one sentence what is left of a model, and why it is whole."""
+    by_size = sorted(
+        zip(certified.proofs, certified.blocks, strict=True), key=lambda pair: -pair[1].columns.size
+    )
+    told = [BECAUSE[name] for (name, _), block in by_size if not block.trivial]
+    return "; ".join(sentences(told or [BECAUSE["trivial"]]))
+
+
+def breakers(certified: Certified) -> tuple[str, ...]:
+    """What could break the wholeness of certified blocks; true for the proofs at hand.
+
+    Parameters
+    ----------
+    certified : Certified
+
+    Returns
+    -------
+    tuple of str
+        Empty where nothing could, for want of rows over several integer columns.
+    """
+    normal = certified.normal
+    structures = [name for name in certified.structures if name != "trivial"]
+    if not structures:
+        return ()
+    told = ["a coefficient other than 0 and +-1 that scaling the row does not turn into one"]
+    told += [BREAKS[name] for name in structures if name in BREAKS]
+    if _needs_sides(certified):
+        told.append(FOR_THESE_SIDES)
+    entries = entries_of(normal)
+    if entries.mixed.any():
+        row = normal.form.row_names[int(normal.rows[entries.row[np.argmax(entries.mixed)]])]
+        told.append(
+            "a side that is not whole in a row with continuous columns, or a bound of theirs that "
+            f"is not (row {row!r} is such a row): these cannot be rounded"
+        )
+    return tuple(told)
+
+
+def keepers(certified: Certified) -> tuple[str, ...]:
+    """What may change freely without breaking it."""
+    if not [name for name in certified.structures if name != "trivial"]:
+        return ()
+    if _needs_sides(certified):
+        return ("costs",)
+    if entries_of(certified.normal).mixed.any():
+        return "costs", "sides and bounds, as long as they are whole"
+    return "costs", "sides and bounds: those that are not whole are rounded inwards"
+
+
+def _needs_sides(certified: Certified) -> bool:
+    parts = (block.part for _, block in certified.proofs)
+    return any(isinstance(part, Unimodular) and part.needs_sides for part in parts)
+
+
+def time_branch_and_bound(form: LinearForm, deadline: Deadline) -> tuple[float, bool]:
+    """Time HiGHS's branch and bound on a form as declared, one run.
+
+    Returns
+    -------
+    seconds : float
+    ended : bool
+        False where it was cut off.
+    """
+    since = time.perf_counter()
+    sign = 1.0 if form.sense == "min" else -1.0
+    limits = form.row_lower, form.row_upper, form.col_lower, form.col_upper
+    kinds = form.integer.astype(np.int32)
+    settings = MipSettings(rel_gap=0.0)
+    result = branch_and_bound(form.matrix, *limits, sign * form.cost, kinds, settings, deadline)
+    if result.status == "interrupted":
+        raise KeyboardInterrupt
+    return time.perf_counter() - since, result.status != "time_limit"
