@@ -13,6 +13,9 @@ from typing import Any
 import click
 
 from .certificates import Certificate, CertificateError, check_certificate
+from .cli_batch import batch
+from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_of, sentence
+from .cli_explain import explain
 from .cli_output import (
     Outcome,
     describe,
@@ -28,18 +31,7 @@ from .plan_files import read_plan, write_moves
 from .starts import StartError
 from .today import solve as solve_form
 
-OPTIMAL, NOT_OPTIMAL, UNREADABLE = 0, 1, 2
-
-
-def _in_a_folder(_: click.Context, parameter: click.Parameter, path: Path | None) -> Path | None:
-    """Refuse a file whose folder is missing before hours are spent on its content."""
-    if path is not None and not path.parent.is_dir():
-        raise click.BadParameter(f"there is no folder {str(path.parent)!r}", param=parameter)
-    return path
-
-
-_INPUT = click.Path(path_type=Path)
-_OUTPUT = click.Path(path_type=Path, dir_okay=False)
+OPTIMAL, NOT_OPTIMAL = 0, 1
 
 
 @click.group(context_settings={"help_option_names": ["-h", "--help"]})
@@ -47,32 +39,36 @@ def main() -> None:
     """Solve whole-number models as linear programs wherever that is proven safe."""
 
 
+main.add_command(batch)
+main.add_command(explain)
+
+
 @main.command()
-@click.argument("files", nargs=-1, required=True, type=_INPUT, metavar="FILE...")
+@click.argument("files", nargs=-1, required=True, type=INPUT, metavar="FILE...")
 @click.option("--json", "as_json", is_flag=True, help="One JSON object per file and line.")
 @click.option(
     "--plan",
-    type=_OUTPUT,
-    callback=_in_a_folder,
+    type=OUTPUT,
+    callback=in_a_folder,
     help="Write the solution as CSV with the header column,value. One FILE only.",
 )
 @click.option(
     "--certificate",
-    type=_OUTPUT,
-    callback=_in_a_folder,
+    type=OUTPUT,
+    callback=in_a_folder,
     help="Write the proof that every vertex is whole as JSON. One FILE only.",
 )
 @click.option(
     "--from",
     "start",
-    type=_INPUT,
+    type=INPUT,
     metavar="PLAN",
     help="Today's plan, as --plan writes it: tell the moves from it to the best one.",
 )
 @click.option(
     "--moves",
-    type=_OUTPUT,
-    callback=_in_a_folder,
+    type=OUTPUT,
+    callback=in_a_folder,
     help="Write these moves as CSV, largest gain first.",
 )
 @click.option("--max-moves", type=click.IntRange(min=0), help="Make only so many of the moves.")
@@ -122,7 +118,7 @@ def solve(
         raise click.UsageError("--moves, --max-moves and --repair-start need --from")
     if start is not None:
         options |= {"start": start, "max_moves": max_moves, "repair_start": repair_start}
-    names = _names(files)
+    names = names_of(files)
     tabular = len(files) > 1 and not as_json
     if tabular:
         click.echo(table_head(names))
@@ -139,8 +135,8 @@ def solve(
 
 
 @main.command()
-@click.argument("certificate", type=_INPUT)
-@click.argument("file", type=_INPUT)
+@click.argument("certificate", type=INPUT)
+@click.argument("file", type=INPUT)
 def check(certificate: Path, file: Path) -> None:
     """Check that CERTIFICATE proves the vertices of the model in FILE whole.
 
@@ -154,13 +150,13 @@ def check(certificate: Path, file: Path) -> None:
         form = read(file)
         data = _json(certificate)
     except (OSError, ValueError) as error:
-        _complain(_sentence(error))
+        complain(sentence(error))
         sys.exit(UNREADABLE)
     try:
         claim = Certificate.from_dict(data)
         check_certificate(form, claim)
     except CertificateError as error:
-        _complain(f"{certificate} does not prove {file}: {error}")
+        complain(f"{certificate} does not prove {file}: {error}")
         sys.exit(NOT_OPTIMAL)
     blocks = "1 block" if len(claim.blocks) == 1 else f"{len(claim.blocks)} blocks"
     covered = sum(block.columns.size for block in claim.blocks)
@@ -186,7 +182,7 @@ def _outcome(path: Path, name: str, options: dict[str, Any]) -> Outcome:
         if plan is not None:
             options = options | {"start": read_plan(plan, form)}
     except (OSError, ValueError) as error:
-        return Outcome(name, error=_sentence(error))
+        return Outcome(name, error=sentence(error))
     try:
         solution = solve_form(form, compile_seconds=time.perf_counter() - begun, **options)
     except StartError as error:
@@ -205,7 +201,7 @@ def _show(outcome: Outcome, as_json: bool, names: Sequence[str]) -> None:
         lines = describe(outcome) if len(names) == 1 else table_rows(outcome, names)
         click.echo("\n".join(lines))
     if outcome.error is not None:
-        _complain(outcome.error)
+        complain(outcome.error)
 
 
 def _code(outcome: Outcome) -> int:
@@ -230,25 +226,9 @@ def _write(
         try:
             writer(path, outcome.form, outcome.solution)
         except OSError as error:
-            _complain(_sentence(error))
+            complain(sentence(error))
             code = UNREADABLE
         except ValueError as error:
-            _complain(f"{path} is not written: {error}")
+            complain(f"{path} is not written: {error}")
             code = max(code, NOT_OPTIMAL)
     return code
-
-
-def _names(files: Sequence[Path]) -> list[str]:
-    """File names where they tell the files apart, else whole paths."""
-    names = [path.name for path in files]
-    return names if len(set(names)) == len(names) else [str(path) for path in files]
-
-
-def _sentence(error: Exception) -> str:
-    if isinstance(error, OSError) and error.filename is not None:
-        return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
-    return str(error)
-
-
-def _complain(sentence: str) -> None:
-    click.echo(f"latpath: {sentence}", err=True)

@@ -292,12 +292,14 @@ def write_certificate(path: Path, form: LinearForm, solution: Solution) -> None:
 
 
 @contextmanager
-def whole_file(path: Path) -> Iterator[IO[str]]:
-    """Open a file that takes its place only once it has been written to the end."""
+def whole_file(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
+    """Open a file that takes its place only once it is on disk to the end."""
     draft = path.with_name(f".{path.name}.{os.getpid()}")
     try:
-        with draft.open("x", encoding="utf-8", newline="") as file:
+        with draft.open("wb") if binary else draft.open("w", encoding="utf-8", newline="") as file:
             yield file
+            file.flush()
+            os.fsync(file.fileno())
         os.replace(draft, path)
     except BaseException:
         draft.unlink(missing_ok=True)

@@ -11,7 +11,7 @@ from __future__ import annotations
 import json
 import os
 import sys
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Container, Iterator, Mapping, Sequence
 from pathlib import Path
 from typing import IO, Any
 
@@ -38,6 +38,8 @@ class Journal:
     ----------
     notes : list of str
         What was found amiss and mended.
+    replaced : int
+        Records written for instances that had one already.
 
     Raises
     ------
@@ -53,7 +55,7 @@ class Journal:
     >>> with Journal(path, {"seed": 0}) as journal:
     ...     journal.append([BatchRecord("monday.mps", "0f", "optimal")])
     >>> with Journal(path, {"seed": 0}) as journal:
-    ...     [record.instance for record in journal]
+    ...     [record.instance for record in journal.records()]
     ['monday.mps']
     >>> Journal(path, {"seed": 1})
     Traceback (most recent call last):
@@ -65,6 +67,7 @@ class Journal:
     def __init__(self, path: Path, options: Mapping[str, Any]) -> None:
         self.path = path
         self.notes: list[str] = []
+        self.replaced = 0
         self._places: dict[str, int] = {}
         try:
             self._file: IO[bytes] = open(path, "ab", buffering=0)  # noqa: SIM115
@@ -95,10 +98,11 @@ class Journal:
     def __contains__(self, name: str) -> bool:
         return name in self._places
 
-    def __iter__(self) -> Iterator[BatchRecord]:
-        """Read all records anew, one at a time, in the order in which they were written."""
+    def records(self, names: Container[str] | None = None) -> Iterator[BatchRecord]:
+        """Read all records anew, or those of some instances, one at a time, as written."""
         for name in list(self._places):
-            yield self[name]
+            if names is None or name in names:
+                yield self[name]
 
     def __getitem__(self, name: str) -> BatchRecord:
         """Read the record of an instance; KeyError where there is none."""
@@ -116,7 +120,7 @@ class Journal:
         lines = [record.to_json().encode() + b"\n" for record in records]
         self._write(b"".join(lines))
         for record, line in zip(records, lines, strict=True):
-            self._places.pop(record.instance, None)
+            self.replaced += self._places.pop(record.instance, None) is not None
             self._places[record.instance] = self._end
             self._end += len(line)
 

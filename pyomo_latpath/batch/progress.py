@@ -45,11 +45,11 @@ class Progress:
         """Count a record."""
         self.counts[record.route if record.error is None and record.route else "error"] += 1
         self.count += 1
-        if kept:  # kept ones took no time, and do not count for the rate
-            self.kept += 1
-            self.bar.initial += 1
-        self.bar.set_postfix_str(self._routes(), refresh=False)
-        self.bar.update()
+        self.kept += kept
+        if not self.bar.disable:
+            self.bar.initial = self.kept  # they took no time, and do not count for the rate
+            self.bar.set_postfix_str(self._routes(), refresh=False)
+            self.bar.update()
         if self.lines and time.monotonic() >= self.told + PAUSE:
             self.told = time.monotonic()
             self.say(self._line())
