@@ -6,15 +6,19 @@ are one network; so thousands of small blocks cost one call of an engine.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections import deque
+from collections.abc import Sequence
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from .certificates import BlockCertificate, Conetwork, Network
 from .forms.blocks import Block
 from .forms.normalise import NormalForm
+from .forms.numbers import Integers
 from .paths.conetwork_flow import ConetworkStructure
 from .paths.network_oracle import NetworkStructure, glued
+from .paths.path_solver import LastWalk
 
 #: A block with its structure's name and its proof.
 Proven = tuple[Block, tuple[str, BlockCertificate]]
@@ -28,34 +32,49 @@ class Group:
     ----------
     members : list of int
         Places in the list of proven blocks.
+    rows, columns : ndarray, int64
+        Of their union, as indices into the normal form.
     piece : NormalForm
         Their union.
     structure : NetworkStructure, ConetworkStructure or None
         The network behind it, or behind its transpose.
+    last_walk : deque, at most one LastWalk
+        Where the last walk over it ended; taken out while another one goes on from there.
     """
 
     members: list[int]
+    rows: Integers
+    columns: Integers
     piece: NormalForm
     structure: NetworkStructure | ConetworkStructure | None
+    last_walk: deque[LastWalk] = field(default_factory=lambda: deque(maxlen=1))
+
+    def within(self, normal: NormalForm) -> Group:
+        """Return the same group of another normal form with the same scaled matrix."""
+        piece = normal.restrict(self.rows, self.columns, self.piece.matrix)
+        return replace(self, piece=piece)
 
 
-def groups_of(normal: NormalForm, proven: list[Proven]) -> list[Group]:
+def groups_of(normal: NormalForm, proven: Sequence[Proven]) -> list[Group]:
     """Group certified blocks by the kind of their certificate.
 
     Parameters
     ----------
     normal : NormalForm
-    proven : list of (Block, (str, BlockCertificate))
+    proven : sequence of (Block, (str, BlockCertificate))
     """
     groups = []
     for members in _kinds(proven):
-        piece = _union(normal, [proven[k][0] for k in members])
+        blocks = [proven[k][0] for k in members]
+        rows = np.sort(np.concatenate([block.rows for block in blocks]))
+        columns = np.sort(np.concatenate([block.columns for block in blocks]))
+        piece = normal.restrict(rows, columns)
         structure = _structure(normal, piece, [proven[k] for k in members])
-        groups.append(Group(members, piece, structure))
+        groups.append(Group(members, rows, columns, piece, structure))
     return groups
 
 
-def _kinds(proven: list[Proven]) -> list[list[int]]:
+def _kinds(proven: Sequence[Proven]) -> list[list[int]]:
     """Blocks by the kind of their certificate, trivial ones last."""
     groups: list[list[int]] = [[], [], [], []]
     networks, conetworks, unimodular, trivial = groups
@@ -67,12 +86,6 @@ def _kinds(proven: list[Proven]) -> list[list[int]]:
         else:
             (trivial if structure == "trivial" else unimodular).append(k)
     return [group for group in groups if group]
-
-
-def _union(normal: NormalForm, blocks: list[Block]) -> NormalForm:
-    rows = np.sort(np.concatenate([block.rows for block in blocks]))
-    columns = np.sort(np.concatenate([block.columns for block in blocks]))
-    return normal.restrict(rows, columns)
 
 
 def _structure(

@@ -175,6 +175,10 @@ class LinearProgram:
         held.valid = True
         ok(self._highs.setBasis(held), "set a basis")
 
+    def forget_basis(self) -> None:
+        """Start the next solve from nothing."""
+        ok(self._highs.clearSolver(), "start afresh")
+
     def basic_variables(self) -> NDArray[np.int32]:
         """Return what is basic in each row: a column j as j, row i's activity as -1 - i."""
         status, basic = self._highs.getBasicVariables()
@@ -214,7 +218,7 @@ class LinearProgram:
         set_option(self._highs, "simplex_iteration_limit", limit)
         status = self._run(deadline)
         if status == "error":  # seldom, on unbounded programs; a fresh start settles it
-            ok(self._highs.clearSolver(), "start afresh")
+            self.forget_basis()
             set_option(self._highs, "presolve", "on")
             status = self._run(deadline)
             set_option(self._highs, "presolve", "off")

@@ -26,23 +26,21 @@ from numpy.typing import ArrayLike
 from .answers import Merged, PartAnswer, merge, walk_report, without_plan
 from .blame import Blame, blame, blame_conflict
 from .branching import branch_part
-from .certificates import fingerprint
 from .deadline import Deadline
-from .forms.blocks import Block, blocks_of
+from .forms.blocks import Block
 from .forms.linear_form import Floats, LinearForm
-from .forms.normalise import NormalForm, normalise
+from .forms.normalise import NormalForm
 from .forms.plan import feasible_start, largest_violation
-from .grouping import groups_of
+from .grouping import Group
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, check_settings
 from .integrality.assess import certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.implied import mostly_implied
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
-from .paths.conetwork_flow import ConetworkStructure
-from .paths.network_oracle import NetworkStructure
 from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
+from .prepared import Rest, prepare
 from .proof import Proof, prove_optimal, prove_unbounded, shortfall, whole_costs
 from .solution import RouteReport, Solution
 from .why import telling, why
@@ -169,48 +167,40 @@ def solve(
         clock=clock,
     )
     since = time.perf_counter()
-    normal = normalise(form)
+    early = request.deadline
+    early = early if time_limit is None else early.within(CERTIFY_SHARE * time_limit)
+    prepared = prepare(form, early)
+    normal = prepared.normal
+    clock.spend("assess", since)
     if normal.conflict is not None:
-        clock.spend("assess", since)
         return _rounded_away(request, normal)
-    blocks = blocks_of(normal)
     if form.semicontinuous.any():
         parts = [branch_part(normal, (), request.settings, request.deadline)]
         return _report(request, normal, parts)
-    early = request.deadline
-    early = early if time_limit is None else early.within(CERTIFY_SHARE * time_limit)
-    found = certify(normal, blocks, early, "linear")
-    proven = [(block, proof) for block, proof in zip(blocks, found, strict=True) if proof]
-    mark = fingerprint(form) if proven else ""
-    findings = tuple(proven_finding(normal, block, proof, mark) for block, proof in proven)
-    clock.spend("assess", since)
     parts = []
-    for group in groups_of(normal, proven):
-        told = tuple(findings[k] for k in group.members)
-        parts.append(_by_path(request, group.piece, told, group.structure))
-    for block, proof in zip(blocks, found, strict=True):
+    for group in prepared.groups:
+        told = tuple(prepared.findings[k] for k in group.members)
+        parts.append(_by_path(request, group, told))
+    for rest in prepared.rest:
         if any(part.status == "infeasible" for part in parts):
             break
-        if proof is None:
-            piece = normal.restrict(block.rows, block.columns)
-            parts.append(_by_relaxation(request, piece))
+        parts.append(_by_relaxation(request, rest))
     return _report(request, normal, parts)
 
 
 def _by_path(
-    request: _Request,
-    part: NormalForm,
-    findings: tuple[BlockFinding, ...],
-    structure: NetworkStructure | ConetworkStructure | None,
+    request: _Request, group: Group, findings: tuple[BlockFinding, ...]
 ) -> PartAnswer:
     """Solve what is certified: a union of unimodular blocks is one itself."""
     since = time.perf_counter()
+    part = group.piece
     costs = whole_costs(part)
     start = None
     # What is trivial may have any coefficients: walks over whole vertices are not for it.
     if request.start is not None and findings[0].structure != "trivial":
         start = request.start[part.columns] * part.col_den / part.col_num
-    result = walk_to_optimum(part, costs, request.deadline, start, structure)
+    last = group.last_walk
+    result = walk_to_optimum(part, costs, request.deadline, start, group.structure, last)
     request.clock.spend("solve", since)
     if result.status == "optimal":
         return _planned(part, findings, result.x, result.proof, result)
@@ -256,9 +246,10 @@ def _planned(
     )
 
 
-def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
+def _by_relaxation(request: _Request, rest: Rest) -> PartAnswer:
     """Solve what is not certified: by its relaxation's optimum where that is whole."""
     since = time.perf_counter()
+    part = rest.piece
     lp = LinearProgram(
         part.matrix, part.row_lower, part.row_upper, part.col_lower, part.col_upper, part.cost
     )
@@ -274,7 +265,7 @@ def _by_relaxation(request: _Request, part: NormalForm) -> PartAnswer:
         return _branch(request, part, finding)
     whole = is_whole(optimum.x, part.integer)
     x = np.where(part.integer, np.rint(optimum.x), optimum.x) if whole else None
-    finding = _finding(request, part, lp, optimum)
+    finding = _finding(request, rest, lp, optimum)
     if x is None:
         since = time.perf_counter()
         reach = attainable(part, optimum.objective)
@@ -302,15 +293,17 @@ def _as_good_as(part: NormalForm, x: Floats, optimum: LpResult) -> bool:
 
 
 def _finding(
-    request: _Request, part: NormalForm, lp: LinearProgram, optimum: LpResult
+    request: _Request, rest: Rest, lp: LinearProgram, optimum: LpResult
 ) -> BlockFinding:
     """The verdict on a block whose optimum is known, by a few more vertices."""
     since = time.perf_counter()
-    finding = None
+    part, finding = rest.piece, None
     if is_whole(optimum.x, part.integer):
         block = Block(np.arange(part.rows.size), np.arange(part.columns.size), trivial=False)
-        budget = request.deadline.within(max(request.clock.total, LONG_SECONDS))
-        found = certify(part, [block], budget, "systems")[0]
+        if not rest.searched:
+            budget = request.deadline.within(max(request.clock.total, LONG_SECONDS))
+            rest.searched.append(certify(part, [block], budget, "systems")[0])
+        found = rest.searched[0]
         finding = None if found is None else proven_finding(part, block, found)
     if finding is None:
         count, budget = request.samples, request.deadline

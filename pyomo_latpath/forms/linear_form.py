@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from typing import Any, Literal, cast
 
 import numpy as np
@@ -66,6 +66,24 @@ class ComponentNames(Sequence[str]):
         return (list, (list(self),))
 
 
+class Memory:
+    """Room for what a solve found out about a matrix; `LinearForm.replace` hands it on.
+
+    Copies that travel (pickled, or made by `copy`) begin with an empty one.
+
+    Attributes
+    ----------
+    content : object or None
+        Whoever puts something in holds it against the matrix before believing it.
+    """
+
+    def __init__(self) -> None:
+        self.content: Any = None
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        return (Memory, ())
+
+
 @dataclass(frozen=True, eq=False)
 class LinearForm:
     """Rows L <= A x <= U, columns l <= x <= u, a linear cost, and which columns are integer.
@@ -88,6 +106,8 @@ class LinearForm:
         the components.
     semicontinuous : ndarray, shape (n,), bool
         Columns that are 0 or within their bounds; such models are never relaxed.
+    memory : Memory
+        Shared by all forms made from each other by `replace`.
     """
 
     matrix: sp.csc_array
@@ -102,6 +122,7 @@ class LinearForm:
     row_names: Sequence[str]
     col_names: Sequence[str]
     semicontinuous: Flags
+    memory: Memory = field(default_factory=Memory, repr=False)
 
     @property
     def shape(self) -> tuple[int, int]:
@@ -177,6 +198,9 @@ class LinearForm:
 
     def replace(self, **changes: Any) -> LinearForm:
         """Return the same structure with other data.
+
+        What a solve found out about the matrix serves the next one, too: a loop over
+        `solve(form.replace(cost=...))` recognises nothing twice.
 
         Parameters
         ----------

@@ -142,6 +142,16 @@ def _assess_further(
     return sampled_finding(piece, samples, first, seed, deadline)
 
 
+def certifiable(normal: NormalForm, block: Block) -> bool:
+    """Whether a block's numbers let a certificate speak of it: what it must say of A aside."""
+    if normal.form.semicontinuous[normal.columns[block.columns]].any():
+        return False
+    if block.trivial or not normal.integer[block.columns].any():
+        return True
+    whole_rows, whole_sides = normal.whole_rows[block.rows], normal.whole_sides[block.rows]
+    return bool(whole_rows.all() and whole_sides.all() and normal.whole_bounds[block.columns].all())
+
+
 def certify(
     normal: NormalForm, blocks: Sequence[Block], deadline: Deadline, effort: Effort = "full"
 ) -> list[tuple[str, BlockCertificate] | None]:
@@ -163,18 +173,13 @@ def certify(
         The structure's name and the proof.
     """
     found: list[tuple[str, BlockCertificate] | None] = [None] * len(blocks)
-    semicontinuous = normal.form.semicontinuous[normal.columns]
     wide: list[int] = []
     for k, block in enumerate(blocks):
-        if semicontinuous[block.columns].any():
+        if not certifiable(normal, block):
             continue
         if block.trivial or not normal.integer[block.columns].any():
             found[k] = "trivial", _trivial_certificate(normal, block)
-        elif (
-            normal.whole_rows[block.rows].all()
-            and normal.whole_sides[block.rows].all()
-            and normal.whole_bounds[block.columns].all()
-        ):
+        else:
             wide.append(k)
     if not wide:
         return found

@@ -29,7 +29,7 @@ from ..forms.normalise import NormalForm
 from .network_from_tree import whole_limits
 from .network_kernel import UNLIMITED
 from .network_oracle import NetworkStructure
-from .network_problem import NO_LIMIT, Flags, FlowProblem, FlowResult
+from .network_problem import NO_LIMIT, Flags, FlowProblem, FlowResult, FlowStart
 from .network_simplex import NetworkSimplex
 from .network_standard import MOST_COST
 from .vertex_oracle import Vertex
@@ -118,7 +118,32 @@ class ConetworkOracle:
         self._largest = structure.largest_cost
         self._compiled = compiled
         self._result: FlowResult | None = None
+        self._tree: FlowStart | None = None
         self.pivots = self.steps = 0
+        self._take_limits(normal)
+
+    def resume(self, normal: NormalForm, same_limits: bool) -> None:
+        """Begin again at the tree of the last optimum.
+
+        Parameters
+        ----------
+        normal : NormalForm
+            A block with the same matrix.
+        same_limits : bool
+            Whether it differs in costs only; where not, the tree is given up.
+        """
+        assert self._result is not None
+        tree, self._result = self._result.start, None
+        self.pivots = self.steps = 0
+        if same_limits:
+            self.release()
+        else:
+            self._take_limits(normal)
+        # Other limits may have laid out other arcs.
+        fits = same_limits and tree.flow.size == self._problem.tail.size
+        self._tree = tree if fits else None
+
+    def _take_limits(self, normal: NormalForm) -> None:
         columns = (whole_limits(v, "column") for v in (normal.col_lower, normal.col_upper))
         rows = (whole_limits(v, "row") for v in (normal.row_lower, normal.row_upper))
         self._whole_box = tuple(map(np.concatenate, zip(columns, rows, strict=True)))
@@ -133,7 +158,8 @@ class ConetworkOracle:
         size = max(int(cost.max()), -int(cost.min()))
         shift = max(0, (size // self._largest).bit_length())
         first, before = self._result is None, self.pivots
-        self._result = self._run((cost >> shift).astype(np.int64), deadline)
+        self._result = self._run((cost >> shift).astype(np.int64), deadline, tree=self._tree)
+        self._tree = None
         flow: Whole = self._result.flow
         digit = 56 - (self._columns * flow.size).bit_length()
         while shift and self._result.status == "optimal":
@@ -184,10 +210,16 @@ class ConetworkOracle:
         np.subtract.at(supply, self._ends[: self._columns, 1], cost)
         return supply
 
-    def _run(self, cost: Whole, deadline: Deadline, lower: Whole | None = None) -> FlowResult:
+    def _run(
+        self,
+        cost: Whole,
+        deadline: Deadline,
+        lower: Whole | None = None,
+        tree: FlowStart | None = None,
+    ) -> FlowResult:
         problem = replace(self._problem, supply=self._supply(cost))
         problem = problem if lower is None else replace(problem, lower=lower)
-        engine = NetworkSimplex(problem, compiled=self._compiled)
+        engine = NetworkSimplex(problem, tree, compiled=self._compiled)
         result = engine.run(deadline)
         self.pivots += engine.pivots
         return result

@@ -122,14 +122,14 @@ def face_fixing_walk(
     held_rows = normal.row_lower == normal.row_upper
     held_columns = normal.col_lower == normal.col_upper
     size = largest if stride else min(rounding_size(normal, box), largest)
-    whole = largest if _largest(costs) <= largest else size
+    whole = largest if largest_size(costs) <= largest else size
     bound = step_bound(normal, costs, box, largest, stride)
     sides = np.floor(box.upper) - np.ceil(box.lower)
     rounds = phases = fixed = 0
     current: Whole = costs
     while True:
         rounds += 1
-        final = _largest(current) <= whole
+        final = largest_size(current) <= whole
         rounded = current if final else _round(normal, current, held_rows, held_columns, size)
         if stride:
             vertex, walked = oracle.optimise(rounded, deadline), 1
@@ -149,7 +149,7 @@ def face_fixing_walk(
         held_rows, held_columns = held_rows | rows, held_columns | columns
         fixed += int(rows.sum() + columns.sum())
         seen = _seen_from_face(normal, costs, oracle, held_rows, held_columns)
-        if not (rows.any() or columns.any()) and 2 * _largest(seen) > _largest(current):
+        if not (rows.any() or columns.any()) and 2 * largest_size(seen) > largest_size(current):
             break
         current = seen
     # The vertex is best on its face; prices that prove it best of all are a matter of
@@ -170,14 +170,15 @@ def step_bound(
     """
     if box.total is None:
         return None
-    if _largest(costs) <= largest:
-        return phase_bound(box.total, _largest(costs))
+    if largest_size(costs) <= largest:
+        return phase_bound(box.total, largest_size(costs))
     size = largest if stride else min(rounding_size(normal, box), largest)
     a_round = box.total * size if stride else phase_bound(box.total, size)
     return max(1, box.dimension) * a_round
 
 
-def _largest(costs: Whole) -> int:
+def largest_size(costs: Whole) -> int:
+    """Largest |cost|."""
     return max(abs(int(costs.max())), abs(int(costs.min()))) if costs.size else 0
 
 
@@ -196,7 +197,7 @@ def _seen_from_face(
 
 def _round(normal: NormalForm, costs: Whole, rows: Flags, columns: Flags, size: int) -> Whole:
     """Project costs onto the face's directions, scale them to `size` and round them."""
-    shift = max(0, _largest(costs).bit_length() - 512)
+    shift = max(0, largest_size(costs).bit_length() - 512)
     direction = (costs // (1 << shift)).astype(np.float64)
     direction /= np.abs(direction).max()
     free = np.flatnonzero(~columns)

@@ -159,16 +159,10 @@ class NetworkOracle:
         start: tuple[Basis, Floats] | None = None,
         compiled: bool = True,
     ) -> None:
-        self._flow: TreeFlow = network_from_tree(
-            structure.tree,
-            structure.arcs,
-            row_lower=normal.row_lower,
-            row_upper=normal.row_upper,
-            col_lower=normal.col_lower,
-            col_upper=normal.col_upper,
-            cost=np.zeros(structure.arcs.shape[0], np.int64),
-        )
+        self._structure = structure
+        self._flow = self._flow_of(normal)
         self._start: FlowStart | None = None
+        self._tree: FlowStart | None = None
         if start is not None:
             basis, x = start
             basic = np.concatenate([basis.col_status == 1, basis.row_status == 1])
@@ -177,7 +171,40 @@ class NetworkOracle:
         self._largest = largest_cost(structure)
         self._compiled = compiled
         self._engine: NetworkSimplex | None = None
-        self._before_the_walk = 0
+        self._before_the_walk = self._pivots_before = 0
+
+    def resume(self, normal: NormalForm, same_limits: bool) -> None:
+        """Begin another walk where the last one ended.
+
+        With other sides or bounds its tree is the first one, and the way from there to the first
+        vertex is no part of the walk.
+
+        Parameters
+        ----------
+        normal : NormalForm
+            A block with the same matrix.
+        same_limits : bool
+            Whether it differs in costs only.
+        """
+        assert self._engine is not None
+        if same_limits:
+            self._engine.release()
+            self._before_the_walk, self._pivots_before = self._engine.steps, self._engine.pivots
+            return
+        self._flow, self._start = self._flow_of(normal), None
+        self._tree = self._engine.end
+        self._engine, self._before_the_walk, self._pivots_before = None, 0, 0
+
+    def _flow_of(self, normal: NormalForm) -> TreeFlow:
+        return network_from_tree(
+            self._structure.tree,
+            self._structure.arcs,
+            row_lower=normal.row_lower,
+            row_upper=normal.row_upper,
+            col_lower=normal.col_lower,
+            col_upper=normal.col_upper,
+            cost=np.zeros(self._structure.arcs.shape[0], np.int64),
+        )
 
     @property
     def steps(self) -> int:
@@ -187,7 +214,7 @@ class NetworkOracle:
     @property
     def pivots(self) -> int:
         """Basis changes."""
-        return 0 if self._engine is None else self._engine.pivots
+        return 0 if self._engine is None else self._engine.pivots - self._pivots_before
 
     def optimise(self, cost: Whole, deadline: Deadline) -> Vertex:
         """Walk to a vertex of the current face that minimises `cost`.
@@ -220,7 +247,8 @@ class NetworkOracle:
             self._engine.set_cost(costs)
             return self._engine.run(deadline)
         problem = replace(self._flow.problem, cost=costs)
-        self._engine = NetworkSimplex(problem, self._start, compiled=self._compiled)
+        first = self._start or self._tree
+        self._engine = NetworkSimplex(problem, first, compiled=self._compiled)
         result = self._engine.run(deadline)
         if self._start is None:
             self._before_the_walk = self._engine.steps

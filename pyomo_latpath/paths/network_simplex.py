@@ -135,6 +135,11 @@ class NetworkSimplex:
         """Pivots that changed the flow, so far."""
         return int(self._state.tally[STEPS])
 
+    @property
+    def end(self) -> FlowStart | None:
+        """Where the last run ended, for another engine to start from."""
+        return None if self._last is None else self._last.start
+
     def set_cost(self, cost: Whole) -> None:
         """Take other costs, at the same vertex; raises TooLargeError and then changes nothing."""
         self._state.place_costs(self._state.form.costs(cost))

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections import deque
 from collections.abc import Callable
 from dataclasses import dataclass, replace
+from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,7 +16,7 @@ from ..highs import Basis, LinearProgram
 from ..proof import Proof, WholeCosts, prove_optimal
 from .box import Box, box_of
 from .conetwork_flow import ConetworkOracle, ConetworkStructure
-from .face_fixing import Walk, face_fixing_walk, step_bound
+from .face_fixing import Walk, face_fixing_walk, largest_size, step_bound
 from .network_oracle import NetworkOracle, NetworkStructure, costs_too_wide, largest_cost, repays
 from .vertex_oracle import (
     LARGEST_HIGHS_COST,
@@ -29,6 +31,9 @@ Floats = NDArray[np.float64]
 
 
 Oracle = HighsBasis | Tableau | NetworkOracle | ConetworkOracle
+Engine = TypeVar("Engine", HighsBasis, NetworkOracle, ConetworkOracle)
+#: Outcomes of a walk from the last vertex after which another one starts afresh.
+UNSETTLED = ("optimal", "pivot_limit", "error")
 
 
 @dataclass(frozen=True, eq=False)
@@ -67,12 +72,35 @@ class PathResult:
     note: str
 
 
+@dataclass(frozen=True, eq=False)
+class LastWalk:
+    """Where a walk ended, for the next one over a block with the same matrix.
+
+    Attributes
+    ----------
+    normal : NormalForm
+        The block walked over.
+    box : Box
+    oracle : HighsBasis, NetworkOracle or ConetworkOracle
+        Standing at the optimum.
+    """
+
+    normal: NormalForm
+    box: Box
+    oracle: HighsBasis | NetworkOracle | ConetworkOracle
+
+    def had_limits_of(self, normal: NormalForm) -> bool:
+        """Whether the other block has the very same sides and bounds."""
+        return self.normal.row_lower is normal.row_lower
+
+
 def walk_to_optimum(
     normal: NormalForm,
     costs: WholeCosts,
     deadline: Deadline,
     start: Floats | None = None,
     structure: NetworkStructure | ConetworkStructure | None = None,
+    last_walk: deque[LastWalk] | None = None,
 ) -> PathResult:
     """Solve a block whose vertices are whole.
 
@@ -88,6 +116,8 @@ def walk_to_optimum(
         optimum of the costs, as far as the engine can tell them apart.
     structure : NetworkStructure or ConetworkStructure, optional
         Of a block that is a network matrix, or whose transpose is one.
+    last_walk : deque of LastWalk, at most one, optional
+        Without a start, the walk goes on from where this one ended, and leaves its own end.
 
     Returns
     -------
@@ -104,9 +134,11 @@ def walk_to_optimum(
     >>> result.x, result.proof.exact
     (array([0., 1.]), True)
     """
-    box = box_of(normal)
+    last = None if start is not None or last_walk is None else _taken(last_walk)
+    box = last.box if last is not None and last.had_limits_of(normal) else box_of(normal)
     first = None if start is None else vertex_at_least_as_good(normal, start, deadline)
-    oracle, largest = _engine(normal, costs, box, first, structure)
+    oracle, largest = _engine(normal, costs, box, first, structure, last)
+    resumed = last is not None and oracle is last.oracle
     proofs: list[Proof] = []
 
     def optimal(vertex: Vertex) -> bool:
@@ -117,7 +149,9 @@ def walk_to_optimum(
     walk = None
     if first is None or box.total is None:
         # Without a box the walk might run away at rounded costs where it does not at true ones.
-        walk = _at_true_costs(normal, costs, box, oracle, optimal, largest, deadline)
+        walk = _at_true_costs(normal, costs, box, oracle, optimal, largest, resumed, deadline)
+    if resumed and walk is not None and not walk.settled and walk.vertex.status in UNSETTLED:
+        return walk_to_optimum(normal, costs, deadline, None, structure, last_walk)
     if walk is None or (walk.vertex.status == "optimal" and not walk.settled and box.total):
         walk = face_fixing_walk(
             normal,
@@ -133,6 +167,9 @@ def walk_to_optimum(
     if vertex.status == "pivot_limit":
         again = walk_to_optimum(normal, costs, deadline, structure=structure)
         return replace(again, note="the walk from the start plan was lost among degenerate pivots")
+    if start is None and last_walk is not None and vertex.status == "optimal":
+        assert not isinstance(oracle, Tableau)
+        last_walk.append(LastWalk(normal, box, oracle))
     unproven = Proof(False, vertex.row_dual, vertex.reduced_cost, "no optimum was reached")
     return PathResult(
         status=vertex.status,
@@ -192,25 +229,47 @@ def _engine(
     box: Box,
     first: tuple[Basis, Floats] | None,
     structure: NetworkStructure | ConetworkStructure | None,
+    last: LastWalk | None,
 ) -> tuple[Oracle, int]:
     """The engine that serves as oracle, and the largest costs it takes as they are."""
     if isinstance(structure, ConetworkStructure):
         # It walks no vertices, so none from a start; and without a box costs must be exact.
         exact = box.total is not None or np.abs(costs.numerators).max() <= structure.largest_cost
         if first is None and exact and structure.fits(normal) and repays(structure.transpose):
-            return ConetworkOracle(normal, structure), structure.largest_cost
+            largest = structure.largest_cost
+            conetwork = _resumed(last, ConetworkOracle, normal)
+            return conetwork or ConetworkOracle(normal, structure), largest
     elif (
         structure is not None
         and repays(structure)
         and (first is not None or not costs_too_wide(structure, costs.numerators))
     ):
-        return NetworkOracle(normal, structure, first), largest_cost(structure)
+        largest = largest_cost(structure)
+        narrow = np.abs(costs.numerators).max(initial=0) <= largest
+        network = _resumed(last, NetworkOracle, normal) if narrow else None
+        return network or NetworkOracle(normal, structure, first), largest
     if first is None:
-        return HighsBasis(normal), LARGEST_HIGHS_COST
+        return _resumed(last, HighsBasis, normal) or HighsBasis(normal), LARGEST_HIGHS_COST
     basis, x = first
     if Tableau.fits(normal) and box.total is not None:
         return Tableau(normal, basis, x), LARGEST_TABLEAU_COST
     return HighsBasis(normal, basis), LARGEST_HIGHS_COST
+
+
+def _taken(last_walk: deque[LastWalk]) -> LastWalk | None:
+    """Take the last walk out, so that no other thread goes on from it at the same time."""
+    try:
+        return last_walk.pop()
+    except IndexError:
+        return None
+
+
+def _resumed(last: LastWalk | None, kind: type[Engine], normal: NormalForm) -> Engine | None:
+    """The engine of the last walk at its vertex, if it is of the kind wanted."""
+    if last is None or not isinstance(last.oracle, kind):
+        return None
+    last.oracle.resume(normal, last.had_limits_of(normal))
+    return last.oracle
 
 
 def _at_true_costs(
@@ -220,9 +279,14 @@ def _at_true_costs(
     oracle: Oracle,
     optimal: Callable[[Vertex], bool],
     largest: int,
+    resumed: bool,
     deadline: Deadline,
 ) -> Walk:
     """Let the oracle go to an optimum of the true costs, as far as it can tell them apart."""
     vertex = oracle.optimise(costs.numerators, deadline)
     settled = vertex.status == "optimal" and optimal(vertex)
-    return Walk(vertex, settled, 1, 1, 0, step_bound(normal, costs.numerators, box, largest))
+    if resumed:  # each step gains at least 1
+        bound = None if box.total is None else box.total * largest_size(costs.numerators)
+    else:
+        bound = step_bound(normal, costs.numerators, box, largest)
+    return Walk(vertex, settled, 1, 1, 0, bound)

@@ -29,6 +29,8 @@ LARGEST_TABLEAU_COST = 2**40
 #: Whole costs up to here are exact for HiGHS, whose reduced costs are good to 1e-7; larger
 #: ones reach it scaled down, and what that loses is for the exact check to find.
 LARGEST_HIGHS_COST = 2**24
+#: Pivots that a walk from the last basis may take beyond those of the first one.
+FEW_PIVOTS = 100
 
 
 @dataclass(frozen=True, eq=False)
@@ -112,21 +114,53 @@ class HighsBasis:
         self._walking = start is not None
         if start is not None:
             self.lp.set_basis(start)
+        self._from_nothing = 0
+        self._again: int | None = None
+        self._was_lost = self._held = False
         self.steps = 0
         self.pivots = 0
         self._x = np.zeros(normal.matrix.shape[1])
+
+    def resume(self, normal: NormalForm, same_limits: bool) -> None:
+        """Begin another walk from the last basis: for other costs, or for other limits.
+
+        Should it take more pivots than the first vertex took from nothing, it was no good idea:
+        then this walk and those to come begin with nothing, too.
+
+        Parameters
+        ----------
+        normal : NormalForm
+            A block with the same matrix.
+        same_limits : bool
+            Whether it differs in costs only.
+        """
+        if not same_limits or self._held:
+            self._set_limits(_limits(normal))
+        self._normal, self._held = normal, False
+        self.steps = self.pivots = 0
+        if self._was_lost:
+            self.lp.forget_basis()
+        else:
+            self._again = self._from_nothing + FEW_PIVOTS
+        self._walking = same_limits and not self._was_lost
 
     def optimise(self, cost: Whole, deadline: Deadline) -> Vertex:
         """Walk by the primal simplex; the very first vertex comes from the dual simplex."""
         scale = max(1.0, float(np.abs(cost).max(initial=0)) / LARGEST_HIGHS_COST)
         self.lp.set_cost((cost / scale).astype(np.float64))
-        method = "primal" if self._walking else "dual"
         # A primal walk that takes this long is lost among degenerate pivots.
         most = 20 * (self.lp.m + self.lp.n) + 1000 if self._walking else None
-        result = self.lp.solve(method=method, deadline=deadline, max_pivots=most)
+        method = "primal" if self._walking else "dual"
+        result = self.lp.solve(method=method, deadline=deadline, max_pivots=self._again or most)
         self.pivots += result.pivots
+        if self._again is not None and result.status == "pivot_limit":
+            self._was_lost, self._walking = True, False
+            self.lp.forget_basis()
+            result = self.lp.solve(method="dual", deadline=deadline)
+            self.pivots += result.pivots
         self.steps += result.pivots if self._walking else 0
-        self._walking = True
+        self._from_nothing = self._from_nothing or result.pivots
+        self._again, self._walking = None, True
         whole = np.rint(result.x)
         x = np.where(np.abs(result.x - whole) <= 1e-6, whole, result.x)
         self._x = x
@@ -143,26 +177,31 @@ class HighsBasis:
         """Fix rows at their activity and columns at their value."""
         activity = np.rint(self._normal.matrix @ self._x)
         row_low, row_up, col_low, col_up = self._limits
-        self._limits = [
-            np.where(rows, activity, row_low),
-            np.where(rows, activity, row_up),
-            np.where(columns, self._x, col_low),
-            np.where(columns, self._x, col_up),
-        ]
-        self.lp.set_row_bounds(*self._limits[:2])
-        self.lp.set_col_bounds(*self._limits[2:])
+        self._held = True
+        self._set_limits(
+            [
+                np.where(rows, activity, row_low),
+                np.where(rows, activity, row_up),
+                np.where(columns, self._x, col_low),
+                np.where(columns, self._x, col_up),
+            ]
+        )
 
     def release(self) -> None:
         """Give rows and columns their limits back; what is nonbasic rests at one of them."""
         held = self.lp.basis()
         normal = self._normal
-        self._limits = _limits(normal)
-        self.lp.set_row_bounds(*self._limits[:2])
-        self.lp.set_col_bounds(*self._limits[2:])
+        self._set_limits(_limits(normal))
+        self._held = False
         activity = np.rint(normal.matrix @ self._x)
         rows = resting(held.row_status, activity, normal.row_lower, normal.row_upper)
         columns = resting(held.col_status, self._x, normal.col_lower, normal.col_upper)
         self.lp.set_basis(Basis(columns, rows))
+
+    def _set_limits(self, limits: list[Floats]) -> None:
+        self._limits = limits
+        self.lp.set_row_bounds(*limits[:2])
+        self.lp.set_col_bounds(*limits[2:])
 
     def basis_prices(self, costs: Whole, guess: Whole) -> Whole:
         """Sharpen whole prices until they fit the basis exactly, by iterative refinement.
