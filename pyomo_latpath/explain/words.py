@@ -11,7 +11,7 @@ from collections.abc import Sequence
 from ..integrality.finding import Verdict
 from ..pages.markup import counted, number, shortened, visible
 from .explanation import Culprit, Explanation, Gap, Violator
-from .remedy import Remedy
+from .remedy import Inequality, Remedy
 
 #: Characters of a name within a sentence, at most.
 NAME_WIDTH = 40
@@ -39,6 +39,23 @@ def _blamed(told: Explanation) -> str:
     if not told.culprits:
         return " at the relaxation's optimum"
     return f" because of {listed(told.culprits[0].groups, 3)}"
+
+
+def in_short(told: Explanation) -> list[tuple[str, str]]:
+    """The answer as a handful of titled sentences, in the order of their use."""
+    why = " ".join(told.whole.sentences[:3]) if told.whole is not None else ""
+    breaks = told.whole.breakers[0] if told.whole is not None and told.whole.breakers else ""
+    entries = [
+        ("why", why),
+        ("how bad", how_bad(told)),
+        ("to blame", blame(told)),
+        ("conflict", conflict(told)),
+        ("remedy", best_remedy(told)),
+        ("breaks by", breaks),
+        ("rests on", standing(told)),
+        ("left open", " ".join(told.cut_off[:2])),
+    ]
+    return [(title, sentence) for title, sentence in entries if sentence]
 
 
 def how_bad(told: Explanation) -> str:
@@ -142,7 +159,7 @@ def best_remedy(told: Explanation) -> str:
     remedy = told.remedies[0]
     more = len(told.remedies) - 1
     others = f" {counted(more, 'other')} below." if more else ""
-    return f"{_sentence(remedy.title)} {effect(remedy)}{others}"
+    return f"{as_sentence(remedy.title)} {effect(remedy)}{others}"
 
 
 def effect(remedy: Remedy) -> str:
@@ -160,7 +177,7 @@ def effect(remedy: Remedy) -> str:
         parts.append(
             f"{remedy.fractional_before:,} fractional columns become {remedy.fractional_after:,}"
         )
-    return _sentence("; ".join(parts))
+    return as_sentence("; ".join(parts))
 
 
 def standing(told: Explanation) -> str:
@@ -207,6 +224,30 @@ def short(name: str) -> str:
     return shortened(visible(name), NAME_WIDTH)
 
 
-def _sentence(clause: str) -> str:
+def inequality(row: Inequality, most: int = 8) -> str:
+    """A row as people write it, at most so many of its terms."""
+    terms = ""
+    pairs = list(zip(row.coefficients.tolist(), row.column_names, strict=True))
+    for coefficient, name in pairs[:most]:
+        sign = "-" if coefficient < 0 else "+" if terms else ""
+        size = "" if abs(coefficient) == 1 else f"{number(abs(coefficient))} "
+        terms += f" {sign} {size}{short(name)}" if terms else f"{sign}{size}{short(name)}"
+    if len(pairs) > most:
+        terms += f" + {len(pairs) - most:,} more terms"
+    if row.lower == row.upper:
+        return f"{short(row.name)}: {terms} = {number(row.upper)}"
+    least = f"{number(row.lower)} <= " if math.isfinite(row.lower) else ""
+    greatest = f" <= {number(row.upper)}" if math.isfinite(row.upper) else ""
+    return f"{short(row.name)}: {least}{terms}{greatest}"
+
+
+def as_sentence(clause: str) -> str:
+    """A clause with a capital at its beginning and a stop at its end.
+
+    Examples
+    --------
+    >>> as_sentence("round the sides inwards"), as_sentence("")
+    ('Round the sides inwards.', '')
+    """
     clause = clause.strip().rstrip(".")
     return f"{clause[:1].upper()}{clause[1:]}." if clause else ""

@@ -11,6 +11,8 @@ from collections.abc import Iterable, Sequence
 #: Joiners that Persian, Indic and emoji names need; other invisible characters are spelled out.
 _JOINERS = "\u200c\u200d"
 _INVISIBLE = {"Cc", "Cf", "Cs", "Zl", "Zp"}
+#: Names in a list, and characters of a name, at most.
+NAMES, NAME_WIDTH = 60, 160
 _SUSPECT = re.compile(r"[^\x20-\x7e]")
 
 
@@ -45,7 +47,7 @@ def text(value: object) -> str:
     return html.escape(visible(str(value)))
 
 
-def name(value: object) -> str:
+def name(value: str) -> str:
     """The name of a row, column or group, kept apart from the text around it.
 
     `bdi` keeps a name written from right to left from turning its neighbours around.
@@ -55,7 +57,7 @@ def name(value: object) -> str:
     >>> name("demand[town & dairy]")
     '<bdi class="name">demand[town &amp; dairy]</bdi>'
     """
-    return f'<bdi class="name">{text(value)}</bdi>'
+    return f'<bdi class="name">{text(shortened(value, NAME_WIDTH))}</bdi>'
 
 
 def shortened(value: str, width: int) -> str:
@@ -102,6 +104,41 @@ def counted(count: int, one: str, many: str | None = None) -> str:
     return f"{count:,} {one if count == 1 else many or one + 's'}"
 
 
+def paragraphs(sentences: Iterable[str], css: str = "") -> str:
+    """Plain sentences as paragraphs; empty ones are left out."""
+    look = f' class="{css}"' if css else ""
+    return "".join(f"<p{look}>{text(sentence)}</p>" for sentence in sentences if sentence)
+
+
+def names(those: Sequence[str], most: int = NAMES) -> str:
+    """Names in a line, at most so many; the rest is counted.
+
+    Examples
+    --------
+    >>> names(["van", "cart", "sledge"], 1)
+    '<bdi class="name">van</bdi> and 2 more'
+    """
+    shown = ", ".join(name(each) for each in those[:most])
+    return shown + (f" and {len(those) - most:,} more" if len(those) > most else "")
+
+
+def numbered(those: Sequence[str]) -> str:
+    """Names as a numbered list."""
+    items = "".join(f"<li>{name(each)}</li>" for each in those[:NAMES])
+    rest = len(those) - NAMES
+    return f"<ol>{items}</ol>" + (f"<p>and {rest:,} more</p>" if rest > 0 else "")
+
+
+def cards(contents: Iterable[str]) -> str:
+    """Pieces of HTML as a list of sheets."""
+    return f'<ul class="cards">{"".join(f"<li>{each}</li>" for each in contents)}</ul>'
+
+
+def folded(title: str, body: str) -> str:
+    """What is shown only to those who ask for it."""
+    return f"<details><summary>{text(title)}</summary>{body}</details>"
+
+
 def figures(pairs: Iterable[tuple[str, str]]) -> str:
     """Key figures in a row: what is counted, and the count (both as HTML)."""
     items = "".join(f"<div><dt>{what}</dt><dd>{value}</dd></div>" for what, value in pairs)
@@ -136,6 +173,7 @@ def table(
     head: Sequence[str],
     rows: Iterable[Sequence[str]],
     numbers: Sequence[int] = (),
+    prose: Sequence[int] = (),
 ) -> str:
     """A table that scrolls within its own region; the first cell of a row is its heading.
 
@@ -147,12 +185,13 @@ def table(
         Plain text.
     rows : iterable of sequence of str
         Cells as HTML.
-    numbers : sequence of int
-        Columns that hold numbers.
+    numbers, prose : sequence of int
+        Columns that hold numbers; columns that hold sentences, and need room for them.
     """
 
     def align(k: int) -> str:
-        return ' class="number"' if k in numbers else ""
+        css = "number" if k in numbers else "prose" if k in prose else ""
+        return f' class="{css}"' if css else ""
 
     titles = "".join(f'<th scope="col"{align(k)}>{text(t)}</th>' for k, t in enumerate(head))
     lines = "".join(
@@ -163,6 +202,6 @@ def table(
     )
     return (
         f'<div class="scroll" role="region" tabindex="0" aria-labelledby="{key}">'
-        f'<table><caption id="{key}">{text(caption)}</caption>'
+        f'<table><caption id="{key}"><span>{text(caption)}</span></caption>'
         f"<thead><tr>{titles}</tr></thead><tbody>{lines}</tbody></table></div>"
     )

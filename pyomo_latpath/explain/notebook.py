@@ -1,0 +1,28 @@
+"""An explanation in a notebook: a few lines that take the colours of whatever surrounds them."""
+
+from __future__ import annotations
+
+from ..pages.markup import text
+from . import words
+from .explanation import Explanation
+
+#: Colours are inherited, so that the lines can be read on light and on dark ground alike.
+STYLE = """<style>
+.latpath-told { border-left: 4px solid currentColor; padding: .2em 0 .2em .9em; max-width: 46em; }
+.latpath-told p { margin: .3em 0; overflow-wrap: anywhere; }
+.latpath-told dl { display: grid; grid-template-columns: max-content minmax(0, 1fr);
+  gap: .2em 1em; margin: .4em 0; }
+.latpath-told dt { font-weight: 600; }
+.latpath-told dd { margin: 0; overflow-wrap: anywhere; }
+</style>"""
+
+
+def to_notebook(told: Explanation) -> str:
+    """Return the answer in short as a piece of HTML with styles of its own."""
+    entries = "".join(
+        f"<dt>{title}</dt><dd>{text(sentence)}</dd>" for title, sentence in words.in_short(told)
+    )
+    return (
+        f'{STYLE}<div class="latpath-told"><p><strong>{text(words.headline(told))}</strong></p>'
+        f"<dl>{entries}</dl></div>"
+    )
