@@ -34,13 +34,17 @@ class Port:
 
 @dataclass(frozen=True)
 class Piece:
-    """A matrix, the leaf that each of its lines is from, and the ports that are left."""
+    """A matrix, the leaf that each of its lines is from, and the ports that are left.
+
+    Leaf k was joined to a line or port of leaf `hosts[k - 1]` by a sum of order `orders[k - 1]`.
+    """
 
     matrix: np.ndarray
     rows: np.ndarray
     columns: np.ndarray
     ports: tuple[Port, ...] = ()
     orders: tuple[int, ...] = ()
+    hosts: tuple[int, ...] = ()
 
     @property
     def T(self) -> Piece:
@@ -49,7 +53,8 @@ class Piece:
             Port(tuple((OTHER[axis], k) for axis, k in port.lines), port.sign, not port.dual)
             for port in self.ports
         ]
-        return Piece(self.matrix.T, self.columns, self.rows, tuple(ports), self.orders)
+        lines = {"rows": self.columns, "columns": self.rows, "ports": tuple(ports)}
+        return replace(self, matrix=self.matrix.T, **lines)
 
     def kept(self, gone: list[Line]) -> tuple[np.ndarray, np.ndarray]:
         """Masks of the rows and columns but some."""
@@ -67,8 +72,8 @@ class Piece:
             for port in self.ports
             if not set(port.lines) & set(gone)
         ]
-        matrix = self.matrix[rows][:, columns]
-        return Piece(matrix, self.rows[rows], self.columns[columns], tuple(ports), self.orders)
+        lines = {"rows": self.rows[rows], "columns": self.columns[columns], "ports": tuple(ports)}
+        return replace(self, matrix=self.matrix[rows][:, columns], **lines)
 
     def line(self, line: Line) -> np.ndarray:
         """Entries of a row or column."""
@@ -103,12 +108,14 @@ def joined(
         for port in rest_too.ports
     ]
     upper, lower = upper[rows][:, columns_too], lower[rows_too][:, columns]
+    hosts = [first.rows[k] if axis == "row" else first.columns[k] for (axis, k), _, _ in links[:1]]
     return Piece(
         np.block([[rest.matrix, upper], [lower, rest_too.matrix]]),
         np.concatenate([rest.rows, rest_too.rows]),
         np.concatenate([rest.columns, rest_too.columns]),
         (*rest.ports, *moved),
         (*first.orders, *second.orders, len(links) + 1),
+        (*first.hosts, *second.hosts, int(hosts[0]) if hosts else 0),
     )
 
 
@@ -199,7 +206,8 @@ class Graph:
 def leaf(rng: np.random.Generator, kind: str, name: int, size: int, columns: int | None) -> Piece:
     """A piece of a kind, 'network', 'conetwork' or 'R10', of at least `size` rows and columns.
 
-    R10 has five, the others a few more. One port has as many columns among z1 and z2 as `columns` says, if it does.
+    R10 has five, the others a few more. One port has as many columns among z1 and z2 as `columns`
+    says, if it does.
     """
     if kind == "R10":
         matrix = R10[rng.integers(2)]
@@ -236,8 +244,7 @@ def regular(
 ) -> Piece:
     """A random sum of leaves of about `size` rows and columns each; not disguised.
 
-    `rows` and `columns` of the piece tell which leaf each line is from. Leaf k was joined with
-    all before it, by a sum of order `orders[k - 1]`; of order 2 where there was no port.
+    Of the given orders one is drawn for each joint; it is 2 where 3 was drawn and there is no port.
     """
     whole = leaf(rng, str(rng.choice(kinds)), 0, size, None)
     for name in range(1, leaves):
@@ -273,7 +280,7 @@ def two_sum(rng: np.random.Generator, first: Piece, second: Piece) -> Piece:
         busy = {k for port in piece.ports for a, k in port.lines if a == end}
         weights = np.abs(table).sum(axis=1)
         good = [k for k in range(len(table)) if weights[k] > 1 and k not in busy]
-        ends.append((end, int(rng.choice(good))))
+        ends.append((end, int(rng.choice(good or np.flatnonzero(weights)))))
     return joined(first, second, [(*ends, int(rng.choice([1, -1])))])
 
 
@@ -284,7 +291,7 @@ def pivoted(piece: Piece, i: int, j: int) -> Piece:
     result[i], result[:, j], result[i, j] = entry * matrix[i], -entry * matrix[:, j], entry
     rows, columns = piece.rows.copy(), piece.columns.copy()
     rows[i], columns[j] = piece.columns[j], piece.rows[i]
-    return Piece(result, rows, columns, (), piece.orders)
+    return replace(piece, matrix=result, rows=rows, columns=columns, ports=())
 
 
 def disguised(rng: np.random.Generator, piece: Piece, pivots: int = 0) -> Piece:
@@ -296,4 +303,5 @@ def disguised(rng: np.random.Generator, piece: Piece, pivots: int = 0) -> Piece:
     rows, columns = rng.permutation(m), rng.permutation(n)
     signs = rng.choice([1, -1], m)[:, None] * rng.choice([1, -1], n)
     matrix = signs * piece.matrix[rows][:, columns]
-    return Piece(matrix, piece.rows[rows], piece.columns[columns], (), piece.orders)
+    lines = {"rows": piece.rows[rows], "columns": piece.columns[columns], "ports": ()}
+    return replace(piece, matrix=matrix, **lines)
