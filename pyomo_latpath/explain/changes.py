@@ -9,7 +9,7 @@ import numpy as np
 import scipy.sparse as sp
 
 from ..forms.linear_form import LinearForm
-from .remedy import Remedy
+from .remedy import Inequality, Remedy, RowChange
 
 
 class JoinedNames(Sequence[str]):
@@ -40,7 +40,8 @@ def apply_to_form(remedy: Remedy, form: LinearForm) -> LinearForm:
     """Return the form with a remedy's change made.
 
     A changed row stays where it is, a dropped one stays without sides, so that the indices of
-    further remedies still hold.
+    further remedies still hold. Where two remedies change one row, the last one counts: each is
+    as good as the model's own row.
 
     Parameters
     ----------
@@ -57,7 +58,6 @@ def apply_to_form(remedy: Remedy, form: LinearForm) -> LinearForm:
         If a row or column of the remedy is not at its place in the form.
     """
     _refuse_another_form(remedy, form)
-    m, n = form.shape
     row_lower, row_upper = form.row_lower.copy(), form.row_upper.copy()
     for change in remedy.row_changes:
         row_lower[change.row], row_upper[change.row] = change.lower, change.upper
@@ -85,20 +85,23 @@ def apply_to_form(remedy: Remedy, form: LinearForm) -> LinearForm:
 
 
 def _changed_matrix(remedy: Remedy, matrix: sp.csc_array) -> sp.csc_array:
-    """Put new coefficients in the place of old ones, and new rows below."""
+    """Put changed rows in the place of old ones, and new rows below."""
     m, n = matrix.shape
     old = matrix.tocoo()
-    new = [(change.row, change) for change in remedy.row_changes]
-    changed = [row * n + change.columns for row, change in new]
-    stays = np.ones(old.nnz, dtype=np.bool_)
-    if changed:
-        stays = ~np.isin(old.coords[0].astype(np.int64) * n + old.coords[1], np.hstack(changed))
-    lines = [*new, *enumerate(remedy.inequalities, start=m)]
-    rows = [old.coords[0][stays], *(np.full(line.columns.size, row) for row, line in lines)]
-    columns = [old.coords[1][stays], *(line.columns for _, line in lines)]
-    data = [old.data[stays], *(line.coefficients for _, line in lines)]
-    shape = (m + len(remedy.inequalities), n)
-    return sp.csc_array((np.hstack(data), (np.hstack(rows), np.hstack(columns))), shape=shape)
+    rows, columns = old.coords
+    lines: list[tuple[int, RowChange | Inequality]] = [
+        *((change.row, change) for change in remedy.row_changes),
+        *enumerate(remedy.inequalities, start=m),
+    ]
+    stays = ~np.isin(rows, [row for row, _ in lines])
+    triplets = (
+        np.hstack([old.data[stays], *(line.coefficients for _, line in lines)]),
+        (
+            np.hstack([rows[stays], *(np.full(line.columns.size, row) for row, line in lines)]),
+            np.hstack([columns[stays], *(line.columns for _, line in lines)]),
+        ),
+    )
+    return sp.csc_array(triplets, shape=(m + len(remedy.inequalities), n))
 
 
 def _refuse_another_form(remedy: Remedy, form: LinearForm) -> None:
@@ -108,7 +111,8 @@ def _refuse_another_form(remedy: Remedy, form: LinearForm) -> None:
     columns = [(change.column, change.name) for change in remedy.bound_changes]
     dropped = remedy.dropped_declarations.tolist()
     columns += zip(dropped, remedy.dropped_declaration_names, strict=True)
-    for line in (*remedy.inequalities, *remedy.row_changes):
+    lines: list[RowChange | Inequality] = [*remedy.row_changes, *remedy.inequalities]
+    for line in lines:
         columns += zip(line.columns.tolist(), line.column_names, strict=True)
     for kind, names, wanted in (
         ("row", form.row_names, rows),

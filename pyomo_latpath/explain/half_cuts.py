@@ -140,7 +140,8 @@ def _orders(generators: _Generators) -> Iterable[list[int]]:
     step = max(1, math.ceil(len(columns) / MOST_ORDERS))
     for start in columns[::step] or [0]:
         rank = _ranks(generators, holders, start)
-        yield sorted(range(len(rank)), key=lambda g: (generators.costs[g], rank[g]))  # noqa: B023
+        places = sorted(zip(generators.costs, rank, range(len(rank)), strict=True))
+        yield [g for _, _, g in places]
 
 
 def _ranks(generators: _Generators, holders: dict[int, list[int]], start: int) -> list[int]:

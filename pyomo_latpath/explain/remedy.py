@@ -77,7 +77,7 @@ class Inequality:
 
 @dataclass(frozen=True, eq=False)
 class RowChange:
-    """A row with other coefficients or sides.
+    """A row with other coefficients or sides, told in full.
 
     Attributes
     ----------
@@ -85,10 +85,9 @@ class RowChange:
         Index into the form.
     name : str
     columns : ndarray, shape (k,), int64
-        Columns whose coefficients change; often none.
+        All columns of the new row.
     column_names : tuple of str, length k
     coefficients : ndarray, shape (k,), float64
-        The new ones; 0 takes the column out.
     lower, upper : float
         The new sides.
     """
@@ -125,7 +124,7 @@ class BoundChange:
 class Remedy:
     """A change that keeps all whole plans (or a best one), and what it does to the relaxation.
 
-    Remedies stand in the order in which they go together; each also goes alone.
+    Each goes alone, and several go together in any order.
 
     Attributes
     ----------
@@ -145,7 +144,7 @@ class Remedy:
     fractional_before, fractional_after : int or None
         Columns declared integer that are fractional there; None where not computed.
     bound_together : float
-        With all remedies up to this one.
+        With all remedies of the explanation up to this one.
     fractional_together : int or None
     verified : str
         How it was checked that no whole plan is lost: one sentence.

@@ -1,0 +1,238 @@
+"""Drafts that make single rows and bounds say more: rounded, shrunk and split."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from ..deadline import Deadline
+from ..forms.linear_form import LinearForm
+from ..forms.normalise import NormalForm
+from ..forms.numbers import Integers
+from ..pages.markup import number
+from .big_m import Prober, loose_state, shrunk, tightened
+from .drafts import Draft
+from .lines import Columns, Line, columns_of, float_above, float_below, lines_of
+from .remedy import BoundChange, Inequality, RowChange
+from .rounding import rounded_inwards
+from .splitting import Split, split
+from .stems import column_stems, row_stems
+from .words import inequality, short
+
+#: Rows that splits may bring, at most; a longer list helps nobody.
+MOST_ROWS = 20_000
+
+
+def rounding_drafts(normal: NormalForm) -> Iterator[Draft]:
+    """Round sides and bounds inwards."""
+    form, found = normal.form, rounded_inwards(normal)
+    stems = row_stems(form) if found.rows.size else None
+    for k, i in enumerate(found.rows.tolist()):
+        assert stems is not None
+        row = form.matrix[[i], :].tocoo()
+        limits = float(found.row_lower[k]), float(found.row_upper[k])
+        change = _row_change(form, i, np.asarray(row.coords[1], np.int64), row.data, limits)
+        before = _between(float(form.row_lower[i]), float(form.row_upper[i]))
+        yield Draft(
+            kind="round",
+            action="Round the sides of {} inwards",
+            suffix="rounded",
+            noun="row",
+            name=change.name,
+            group=stems.names[stems.label[i]],
+            sentence=(
+                f"At whole plans the left side of row {short(change.name)} moves in steps of "
+                f"{number(found.units[k])}: its sides {before} say no more than "
+                f"{_between(*limits)}"
+            ),
+            verified=(
+                "All columns of the row are whole, and so is every value that it can have after "
+                "scaling to coprime whole coefficients"
+            ),
+            change=change,
+        )
+    stems = column_stems(form) if found.columns.size else None
+    for k, j in enumerate(found.columns.tolist()):
+        assert stems is not None
+        bound = BoundChange(
+            j, form.col_names[j], float(found.col_lower[k]), float(found.col_upper[k])
+        )
+        before = _between(float(form.col_lower[j]), float(form.col_upper[j]))
+        yield Draft(
+            kind="round",
+            action="Round the bounds of {} inwards",
+            suffix="rounded",
+            noun="column",
+            name=bound.name,
+            group=stems.names[stems.label[j]],
+            sentence=(
+                f"Column {short(bound.name)} is whole: its bounds {before} say no more than "
+                f"{_between(bound.lower, bound.upper)}"
+            ),
+            verified="No whole number lies between the old and the new bounds",
+            change=bound,
+        )
+
+
+def tightening_drafts(
+    form: LinearForm, normal: NormalForm, first: Integers, deadline: Deadline
+) -> Iterator[Draft]:
+    """Shrink the coefficients of binary columns as far as is proven.
+
+    Parameters
+    ----------
+    form : LinearForm
+    normal : NormalForm
+        Of it.
+    first : ndarray, int64
+        Rows (of the form) for which linear programs may be solved, in this order.
+    deadline : Deadline
+    """
+    columns = columns_of(form)
+    before: dict[int, Line] = {}
+    after: dict[int, Line] = {}
+    for line in lines_of(form, columns):
+        if deadline.passed:
+            break
+        before[line.row], after[line.row] = line, tightened(line, columns)
+    wanted = [row for row in first.tolist() if row in after]
+    prober = Prober(normal, deadline) if wanted and not deadline.passed else None
+    probed = set()
+    for row in wanted:
+        if prober is None or deadline.passed:
+            break
+        line = _probed(prober, after[row], columns)
+        if line is not after[row]:
+            after[row] = line
+            probed.add(row)
+    stems = row_stems(form)
+    for row, line in after.items():
+        if line is not before[row]:
+            yield Draft(
+                kind="tighten",
+                action="Shrink the coefficients of switches in {}",
+                suffix="tight",
+                noun="row",
+                name=form.row_names[row],
+                group=stems.names[stems.label[row]],
+                sentence=_shrinking(form, before[row], line),
+                verified=(
+                    "The new limit is proven by a linear program over all rows, computed again "
+                    "exactly from its prices"
+                    if row in probed
+                    else "The new limit is proven by the bounds of the columns, exactly"
+                ),
+                change=_written_back(form, line),
+            )
+
+
+def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
+    """Split on/off rows."""
+    columns, stems, count = columns_of(form), row_stems(form), 0
+    for line in lines_of(form, columns):
+        part = split(line, columns)
+        count += 0 if part is None else len(part.columns)
+        if deadline.passed or count > MOST_ROWS:
+            return
+        if part is None:
+            continue
+        rows = tuple(_parts(form, part))
+        name, switch = form.row_names[line.row], short(form.col_names[part.switch])
+        instead = "In its place" if part.replaces else "Beside it"
+        yield Draft(
+            kind="split",
+            action="Split {} into rows for single columns",
+            suffix="split",
+            noun="row",
+            name=name,
+            group=stems.names[stems.label[line.row]],
+            sentence=(
+                f"{switch} switches all columns of row {short(name)}. {instead}, one row for each "
+                f"({inequality(rows[0]).removeprefix(': ')}) says more where {switch} is fractional"
+            ),
+            verified=(
+                "Each part is what the row and the bounds of its columns allow at either value of "
+                "the switch, exactly"
+            ),
+            inequalities=rows,
+            dropped=line.row if part.replaces else -1,
+        )
+
+
+def _probed(prober: Prober, line: Line, columns: Columns) -> Line:
+    """Shrink the largest coefficient of a line by a linear program, if it is a switch's."""
+    switch = max(line.terms, key=lambda j: abs(line.terms[j]))
+    if not columns.binary[switch]:
+        return line
+    most = prober.most(line, switch)
+    return line if most is None else shrunk(line, switch, most)
+
+
+def _shrinking(form: LinearForm, before: Line, after: Line) -> str:
+    """Say which coefficient of a row shrinks most, and why it may."""
+    y = max(before.terms, key=lambda j: abs(before.terms[j] - after.terms[j]))
+    name, state = short(form.col_names[y]), loose_state(before, y)
+    was, now = (float(line.sign * line.terms[y]) for line in (before, after))
+    limit = float(after.sign * (after.side - state * after.terms[y]))
+    comes = "never come to more than" if after.sign > 0 else "never fall below"
+    return (
+        f"In row {short(form.row_names[before.row])} the coefficient of {name} can go from "
+        f"{number(was)} to {number(now)}: where {name} is {state} the other columns {comes} "
+        f"{number(limit)}"
+    )
+
+
+def _written_back(form: LinearForm, line: Line) -> RowChange:
+    """A line as a row again; what floats do not hold is rounded so that nothing is lost."""
+    columns = np.array([j for j, a in line.terms.items() if a], np.int64)
+    exact = [line.terms[j] for j in columns.tolist()]
+    own = line.sign * form.matrix[:, columns].tocsr()[[line.row], :].toarray().ravel()
+    # A coefficient that did not change stays as it is written, 0.1 say.
+    coefficients = np.array(
+        [old if float(a) == old else float_below(a) for a, old in zip(exact, own, strict=True)]
+    )
+    side = line.sign * float_above(line.side)
+    limits = (side, np.inf) if line.sign < 0 else (-np.inf, side)
+    return _row_change(form, line.row, columns, line.sign * coefficients, limits)
+
+
+def _parts(form: LinearForm, part: Split) -> Iterator[Inequality]:
+    """The rows x <= at_0 + (at_1 - at_0) y of a split; floats are rounded outwards."""
+    for j, at_0, at_1, upper in zip(part.columns, part.at_0, part.at_1, part.upper, strict=True):
+        rounded = float_above if upper else float_below
+        side = rounded(at_0)
+        yield Inequality(
+            name="",
+            columns=np.array([j, part.switch]),
+            column_names=(form.col_names[j], form.col_names[part.switch]),
+            coefficients=np.array([1.0, -rounded(at_1 - at_0)]),
+            lower=-np.inf if upper else side,
+            upper=side if upper else np.inf,
+        )
+
+
+def _row_change(
+    form: LinearForm,
+    row: int,
+    columns: Integers,
+    coefficients: np.ndarray,
+    limits: tuple[float, float],
+) -> RowChange:
+    names = tuple(form.col_names[j] for j in columns.tolist())
+    return RowChange(row, form.row_names[row], columns, names, coefficients, *limits)
+
+
+def _between(lower: float, upper: float) -> str:
+    """Limits in words: '<= 3', '>= 2', '[2, 3]'.
+
+    Examples
+    --------
+    >>> _between(float("-inf"), 2.5), _between(2.0, 3.0)
+    ('<= 2.5', '[2, 3]')
+    """
+    if lower == -np.inf:
+        return f"<= {number(upper)}"
+    if upper == np.inf:
+        return f">= {number(lower)}"
+    return f"[{number(lower)}, {number(upper)}]"
