@@ -68,7 +68,8 @@ def check_settings(settings: MipSettings) -> None:
     OptionError
         Names the option that HiGHS does not take.
     """
-    _apply(SilentHighs(), settings)
+    if settings != MipSettings(log=settings.log):
+        _apply(SilentHighs(), settings)
 
 
 def branch_and_bound(

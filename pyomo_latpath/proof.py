@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
@@ -23,6 +23,7 @@ from .forms.numbers import EXACT, common_scale, nearby_fraction, whole_numbers
 
 Floats = NDArray[np.float64]
 Whole = NDArray[Any]
+Flags = NDArray[np.bool_]
 #: Prices of a basis: takes whole costs (n,) and a first guess (m,), returns whole prices (m,).
 BasisPrices = Callable[[Whole, Whole], Whole]
 
@@ -80,7 +81,9 @@ def whole_costs(normal: NormalForm) -> WholeCosts:
         common = math.lcm(*np.unique(normal.col_den).tolist())
         factor = normal.col_num.astype(object) * (common // normal.col_den.astype(object))
         numerators, denominator = numerators.astype(object) * factor, denominator * common
-    divisor = math.gcd(denominator, *np.unique(numerators).tolist()) if denominator > 1 else 1
+    if denominator == 1:
+        return WholeCosts(numerators, 1)
+    divisor = math.gcd(denominator, int(np.gcd.reduce(numerators)))
     return WholeCosts(numerators // divisor, denominator // divisor)
 
 
@@ -89,15 +92,7 @@ def plan_holds(normal: NormalForm, x: Floats) -> bool:
 
     Integer columns must hold whole numbers; continuous ones are read as simple fractions.
     """
-    plan, scale = _plan(x)
-    if plan is None or (normal.integer & (np.rint(x) != x)).any():
-        return False
-    if not normal.whole_rows.all():
-        return False
-    activity = exact_product(normal.matrix, plan)
-    return _within(activity, normal.row_lower, normal.row_upper, scale) and _within(
-        plan, normal.col_lower, normal.col_upper, scale
-    )
+    return _standing(normal, x) is not None
 
 
 def prove_optimal(
@@ -125,22 +120,20 @@ def prove_optimal(
     -------
     Proof
     """
-    guess = Proof(False, row_dual, normal.cost - normal.matrix.T @ row_dual)
-    if not plan_holds(normal, x):
-        return _failed(guess, "the plan does not satisfy every row exactly")
-    plan, scale = _plan(x)
-    assert plan is not None
+    standing = _standing(normal, x)
+    if standing is None:
+        return _failed(normal, row_dual, "the plan does not satisfy every row exactly")
     tried = []
     for prices, multiple in _price_guesses(costs, row_dual, basis_prices):
         reduced = costs.numerators * multiple - exact_product(normal.matrix.T, prices)
-        if _complementary(normal, plan, scale, prices, reduced):
+        if standing.rows.complements(prices) and standing.columns.complements(reduced):
             unit = costs.denominator * multiple
             return Proof(True, _quotient(prices, unit), _quotient(reduced, unit))
         tried.append((prices, reduced, multiple))
     for prices, reduced, multiple in tried:
-        if _gap_closed(normal, costs, plan, scale, prices, reduced, multiple):
-            return replace(guess, exact=True)
-    return _failed(guess, "no exact prices were found that prove the plan optimal")
+        if _gap_closed(normal, costs, standing, prices, reduced, multiple):
+            return Proof(True, row_dual, normal.cost - normal.matrix.T @ row_dual)
+    return _failed(normal, row_dual, "no exact prices were found that prove the plan optimal")
 
 
 def prove_infeasible(normal: NormalForm, farkas: Floats | None) -> bool:
@@ -228,7 +221,7 @@ def exact_product(matrix: sp.sparray, vector: Whole) -> Whole:
     array([1208925819614629174706174], dtype=object)
     """
     size = float(np.abs(vector).max(initial=0))
-    reach = abs(matrix).max() * size * max(matrix.shape[1], 1) if matrix.nnz else 0.0
+    reach = np.abs(matrix.data).max(initial=0.0) * size * max(matrix.shape[1], 1)
     if vector.dtype != object or size < EXACT:
         if reach < EXACT:
             return (matrix @ vector.astype(np.float64)).astype(np.int64)
@@ -253,8 +246,63 @@ def exact_objective(costs: WholeCosts, x: Floats) -> Fraction | None:
     return Fraction(_dot(costs.numerators, plan), costs.denominator * scale)
 
 
-def _failed(guess: Proof, reason: str) -> Proof:
-    return Proof(False, guess.row_dual, guess.reduced_cost, reason)
+def _failed(normal: NormalForm, row_dual: Floats, reason: str) -> Proof:
+    return Proof(False, row_dual, normal.cost - normal.matrix.T @ row_dual, reason)
+
+
+@dataclass(frozen=True, eq=False)
+class _Held:
+    """Where values lie between their limits, in exact arithmetic."""
+
+    inside: Flags
+    at_low: Flags
+    at_high: Flags
+
+    @classmethod
+    def between(cls, values: Whole, scale: int, lower: Floats, upper: Floats) -> _Held:
+        """Hold values / scale against limits."""
+        if scale == 1 and values.dtype != object and _whole(lower) and _whole(upper):
+            exact = values.astype(np.float64)  # they lie below 2**53
+            return cls((exact >= lower) & (exact <= upper), exact == lower, exact == upper)
+        limits = _finite_as_whole(lower, upper)
+        value = _product(values, limits.scale)
+        low, high = _product(limits.low, scale), _product(limits.high, scale)
+        return cls(
+            (limits.no_low | (value >= low)) & (limits.no_high | (value <= high)),
+            ~limits.no_low & (value == low),
+            ~limits.no_high & (value == high),
+        )
+
+    def complements(self, prices: Whole) -> bool:
+        """Strong duality: a price is positive only at a lower limit, negative only at an upper."""
+        odd = ((prices > 0) & ~self.at_low) | ((prices < 0) & ~self.at_high)
+        return not odd.any()
+
+
+@dataclass(frozen=True, eq=False)
+class _Standing:
+    """A plan as whole numbers over one denominator, and where it stands; it satisfies all."""
+
+    plan: Whole
+    scale: int
+    rows: _Held
+    columns: _Held
+
+
+def _standing(normal: NormalForm, x: Floats) -> _Standing | None:
+    plan, scale = _plan(x)
+    if plan is None or not normal.whole_rows.all() or (normal.integer & (np.rint(x) != x)).any():
+        return None
+    activity = exact_product(normal.matrix, plan)
+    rows = _Held.between(activity, scale, normal.row_lower, normal.row_upper)
+    columns = _Held.between(plan, scale, normal.col_lower, normal.col_upper)
+    holds = rows.inside.all() and columns.inside.all()
+    return _Standing(plan, scale, rows, columns) if holds else None
+
+
+def _whole(limits: Floats) -> bool:
+    """Whether all limits are whole or infinite."""
+    return np.array_equal(np.rint(limits), limits)
 
 
 def _plan(x: Floats) -> tuple[Whole | None, int]:
@@ -303,26 +351,10 @@ def _quotient(values: Whole, divisor: int) -> Floats:
     return values / float(divisor)
 
 
-def _complementary(
-    normal: NormalForm, plan: Whole, scale: int, prices: Whole, reduced: Whole
-) -> bool:
-    """Strong duality: a price is positive only at a lower limit, negative only at an upper."""
-    activity = exact_product(normal.matrix, plan)
-    return all(
-        not ((price > 0) & ~_meets(value, low, scale)).any()
-        and not ((price < 0) & ~_meets(value, high, scale)).any()
-        for price, value, low, high in (
-            (prices, activity, normal.row_lower, normal.row_upper),
-            (reduced, plan, normal.col_lower, normal.col_upper),
-        )
-    )
-
-
 def _gap_closed(
     normal: NormalForm,
     costs: WholeCosts,
-    plan: Whole,
-    scale: int,
+    standing: _Standing,
     prices: Whole,
     reduced: Whole,
     multiple: int,
@@ -335,7 +367,7 @@ def _gap_closed(
     columns = _support(-reduced, _finite_as_whole(normal.col_lower, normal.col_upper))
     if rows is None or columns is None:
         return False
-    value = Fraction(_dot(costs.numerators, plan), scale)
+    value = Fraction(_dot(costs.numerators, standing.plan), standing.scale)
     return value + Fraction(rows + columns) / multiple < unit
 
 
@@ -345,8 +377,8 @@ class _Limits:
 
     low: Whole
     high: Whole
-    no_low: NDArray[np.bool_]
-    no_high: NDArray[np.bool_]
+    no_low: Flags
+    no_high: Flags
     scale: int
 
 
@@ -364,22 +396,6 @@ def _support(direction: Whole, limits: _Limits) -> Fraction | None:
         return None
     best = np.where(up, limits.high, np.where(down, limits.low, 0))
     return Fraction(_dot(direction, best), limits.scale)
-
-
-def _within(values: Whole, lower: Floats, upper: Floats, scale: int) -> bool:
-    limits = _finite_as_whole(lower, upper)
-    scaled = _product(values, limits.scale)
-    return not (
-        (~limits.no_low & (scaled < _product(limits.low, scale)))
-        | (~limits.no_high & (scaled > _product(limits.high, scale)))
-    ).any()
-
-
-def _meets(values: Whole, limit: Floats, scale: int) -> NDArray[np.bool_]:
-    """Where values / scale equals a finite limit."""
-    finite = np.isfinite(limit)
-    whole, common = whole_numbers(np.where(finite, limit, 0.0))
-    return np.asarray(finite & (_product(values, common) == _product(whole, scale)), dtype=np.bool_)
 
 
 def _product(values: Whole, factor: int) -> Whole:

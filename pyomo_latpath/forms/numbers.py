@@ -206,6 +206,9 @@ def whole_numbers(values: Floats) -> tuple[NDArray[Any], int]:
     >>> whole_numbers(np.array([0.5, 2.25]))
     (array([2, 9]), 4)
     """
+    whole = np.rint(values)
+    if np.array_equal(whole, values) and np.abs(values).max(initial=0.0) < EXACT:
+        return whole.astype(np.int64), 1
     num, den, read = read_fractions(values, most_odd=MOST_ODD_COSTS)
     if read.all():
         common = math.lcm(*np.unique(den).tolist())

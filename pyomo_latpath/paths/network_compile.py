@@ -84,7 +84,7 @@ def compiled_before() -> bool:
     A look at file names only: code of an older version of the package may deceive it.
     """
     walk: Any = compiled().walk
-    if walk.signatures:
+    if walk.overloads:
         return True
     place = walk.stats.cache_path
     return place is not None and any(Path(place).glob("network_kernel.walk-*.nbi"))

@@ -172,6 +172,7 @@ class NetworkOracle:
         self._compiled = compiled
         self._engine: NetworkSimplex | None = None
         self._before_the_walk = self._pivots_before = 0
+        self._held = False
 
     def resume(self, normal: NormalForm, same_limits: bool) -> None:
         """Begin another walk where the last one ended.
@@ -188,12 +189,14 @@ class NetworkOracle:
         """
         assert self._engine is not None
         if same_limits:
-            self._engine.release()
+            if self._held:
+                self.release()
             self._before_the_walk, self._pivots_before = self._engine.steps, self._engine.pivots
             return
         self._flow, self._start = self._flow_of(normal), None
         self._tree = self._engine.end
-        self._engine, self._before_the_walk, self._pivots_before = None, 0, 0
+        self._engine, self._held = None, False
+        self._before_the_walk = self._pivots_before = 0
 
     def _flow_of(self, normal: NormalForm) -> TreeFlow:
         return network_from_tree(
@@ -284,11 +287,13 @@ class NetworkOracle:
         """Leave rows and columns where they are: their arcs are not priced."""
         assert self._engine is not None
         self._engine.hold(np.concatenate([columns, rows]))
+        self._held = True
 
     def release(self) -> None:
         """Let all arcs move again."""
         assert self._engine is not None
         self._engine.release()
+        self._held = False
 
     def basis_prices(self, costs: Whole, guess: Whole) -> Whole:
         """Exact prices of the rows for whole costs; the guess is not needed."""
