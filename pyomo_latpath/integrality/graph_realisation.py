@@ -59,12 +59,37 @@ def realise(
     >>> realise(fano) is None
     True
     """
+    found = _decomposed(matrix, deadline or Deadline(None))
+    if found is None:
+        return None
+    graph, firsts = found
     m, n = matrix.shape
-    deadline = deadline or Deadline(None)
+    zero_rows = np.flatnonzero(np.bincount(matrix.indices, minlength=m) == 0)
+    zero_columns = m + np.flatnonzero(np.diff(matrix.indptr) == 0)
+    ends = _hang_together(graph.graph()[: m + n], firsts, zero_rows, zero_columns)
+    return ends[:m], ends[m:]
+
+
+def is_graphic(matrix: sp.csc_array, deadline: Deadline | None = None) -> bool:
+    """Whether there is a tree in which the nonzeros of every column are a path.
+
+    False, too, if the time ran out.
+
+    Examples
+    --------
+    >>> is_graphic(sp.csc_array([[1, 0, 1], [1, 1, 0], [0, 1, 1]]))
+    True
+    """
+    return _decomposed(matrix, deadline or Deadline(None)) is not None
+
+
+def _decomposed(matrix: sp.csc_array, deadline: Deadline) -> tuple[Decomposition, list[int]] | None:
+    """All graphs with these cycles, and the first row of each block, if there is such a graph."""
+    m, n = matrix.shape
     start, rows = matrix.indptr.tolist(), matrix.indices
     graph = Decomposition(m + n)
     placed = bytearray(m)
-    firsts = []
+    firsts: list[int] = []
     for count, column in enumerate(_connected_order(matrix)):
         if count % PAUSE == 0 and deadline.passed:
             return None
@@ -84,10 +109,7 @@ def realise(
             edge = f
         if not _close(graph, old, edge):
             return None
-    zero_rows = np.flatnonzero(np.frombuffer(placed, np.uint8) == 0)
-    zero_columns = m + np.flatnonzero(np.diff(matrix.indptr) == 0)
-    ends = _hang_together(graph.graph()[: m + n], firsts, zero_rows, zero_columns)
-    return ends[:m], ends[m:]
+    return graph, firsts
 
 
 def _connected_order(matrix: sp.csc_array) -> Iterator[int]:

@@ -13,14 +13,14 @@ import numpy as np
 import scipy.sparse as sp
 from scipy.sparse.csgraph import connected_components
 
-from ...certificates import Conetwork, Network, Part, Step
 from ...certificate_sums import Sum
+from ...certificates import Conetwork, Network, Part, Step
 from ...deadline import Deadline
 from ...summands import Split
 from .. import network
 from ..reductions import reduce_matrix
+from . import r10
 from .clock import check_time
-from .r10 import recognise_r10
 from .separate import separation
 from .separation import Bits
 from .signs import odd_hole
@@ -93,15 +93,12 @@ class _Work:
         hole = odd_hole(summand.matrix, self.deadline)
         if hole is not None:
             raise Contradiction(hole, minimal=True)
-        matrix, m = summand.matrix, summand.rows.size
+        matrix = summand.matrix
         links = sp.block_array([[None, matrix], [matrix.T, None]], format="csr")
         count, block = connected_components(links, directed=False)
         if count > 1:
             return self._take_blocks_apart(k, summand, [block == c for c in range(count)])
         side = separation(matrix.toarray() != 0, self.deadline)
-        if side is None:
-            self.parts[k] = recognise_r10(matrix)
-            return []
         split, first, second = split_at(summand, side, self.next_row, self.next_column)
         self.next_row += split.order - 1
         self.next_column += (0, 1, 4)[split.order - 1]
@@ -125,7 +122,7 @@ class _Work:
 
 
 def _recognise(matrix: sp.csc_array, deadline: Deadline) -> Part | None:
-    """Recognise a network matrix, its transpose, or one without lines."""
+    """Recognise a network matrix, its transpose, R10, or a matrix without lines."""
     if not sum(matrix.shape):
         return Network(np.empty((0, 2), np.int64), np.empty((0, 2), np.int64))
     part = network.recognise(matrix, deadline)
@@ -134,7 +131,7 @@ def _recognise(matrix: sp.csc_array, deadline: Deadline) -> Part | None:
         return part
     part = network.recognise(matrix.T.tocsc(), deadline)
     check_time(deadline)
-    return None if part is None else Conetwork(part.tree, part.arcs)
+    return r10.recognise(matrix) if part is None else Conetwork(part.tree, part.arcs)
 
 
 def _numbered(step: Step, summand: Summand) -> Step:

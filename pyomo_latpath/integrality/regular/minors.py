@@ -11,7 +11,7 @@ Whatever falls apart on the way is replaced by a 3-connected part that is still 
 from __future__ import annotations
 
 from collections import deque
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -19,7 +19,7 @@ import scipy.sparse as sp
 
 from ...deadline import Deadline
 from ...forms.numbers import Integers
-from ..graph_realisation import realise
+from ..graph_realisation import is_graphic
 from ..reductions import reduce_matrix
 from .clock import check_time
 from .separation import Bits, smallest_separation
@@ -27,13 +27,11 @@ from .separation import Bits, smallest_separation
 
 def neither(support: Bits, deadline: Deadline) -> bool:
     """Whether a binary matroid is neither graphic nor cographic."""
-    return all(_realised(lines, deadline) is None for lines in (support, support.T))
-
-
-def _realised(support: Bits, deadline: Deadline) -> tuple[Integers, Integers] | None:
-    found = realise(csc_of(support), deadline)
+    if min(support.shape) < 3:
+        return False
+    either = any(is_graphic(csc_of(lines), deadline) for lines in (support, support.T))
     check_time(deadline)
-    return found
+    return not either
 
 
 def csc_of(dense: np.ndarray) -> sp.csc_array:
@@ -105,17 +103,19 @@ def near(support: Bits) -> Callable[[list[int]], list[int]]:
     return listed
 
 
-def restricted(matrix: np.ndarray, lines: list[int]) -> tuple[np.ndarray, Integers, Integers]:
-    """The submatrix on some lines, with its rows and columns, both ascending."""
-    m = matrix.shape[0]
+def rows_and_columns(lines: Iterable[int], m: int) -> tuple[Integers, Integers]:
+    """The rows and the columns among some lines, both ascending."""
     chosen = np.array(sorted(lines), dtype=np.int64)
-    rows, columns = chosen[chosen < m], chosen[chosen >= m] - m
-    return matrix[np.ix_(rows, columns)], rows, columns
+    return chosen[chosen < m], chosen[chosen >= m] - m
 
 
 def small_core(support: Bits, deadline: Deadline) -> list[int]:
     """Find a smallest set of lines that is neither graphic nor cographic."""
-    return smallest(near(support), lambda lines: neither(restricted(support, lines)[0], deadline))
+
+    def holds(lines: list[int]) -> bool:
+        return neither(support[np.ix_(*rows_and_columns(lines, len(support)))], deadline)
+
+    return smallest(near(support), holds)
 
 
 @dataclass(frozen=True, eq=False)
@@ -161,30 +161,27 @@ def pivoted(support: Bits, row: int, column: int) -> Bits:
     return support ^ change
 
 
-def smallest_minor(minor: Minor, deadline: Deadline) -> Minor:
-    """Find a smallest minor that is 3-connected and neither graphic nor cographic.
+def small_minor(minor: Minor, deadline: Deadline) -> Minor:
+    """Find a minor of at most 12 lines that is 3-connected and neither graphic nor cographic.
 
-    It is R10 (10 lines), R12 (12), or not regular (7).
+    If it is regular, it is R10 or, with 12 lines, R12.
 
     Parameters
     ----------
     minor : Minor
-        It has a 3-connected part that is neither.
+        It is 3-connected and neither itself.
     deadline : Deadline
     """
-    found = _rigid_part(minor, deadline)
-    assert found is not None
-    minor, needed = found, set()
-    while True:
-        line = next((x for x in minor.lines.tolist() if x not in needed), None)
-        if line is None:
-            return minor
+    needed: set[int] = set()
+    while minor.lines.size > 12:
+        line = next(x for x in minor.lines.tolist() if x not in needed)
         smaller = (_rigid_part(trial, deadline) for trial in _without(minor, line))
         found = next((part for part in smaller if part is not None), None)
         if found is None:
             needed.add(line)
         else:
             minor = found
+    return minor
 
 
 def _without(minor: Minor, line: int) -> Iterator[Minor]:

@@ -1,7 +1,6 @@
 """R10, in whatever order and with whatever signs its two matrices come.
 
-Seymour (1980), Decomposition of regular matroids. The automorphisms of R10 can take every line to
-every other, but few orders of five rows and columns are all that must be tried.
+Seymour (1980), Decomposition of regular matroids.
 """
 
 from __future__ import annotations
@@ -12,47 +11,57 @@ import numpy as np
 import scipy.sparse as sp
 
 from ...certificate_sums import R10, R10_MATRICES
-from .splitting import Contradiction
+from ...forms.numbers import Integers
+from .separation import Bits
 
 
-def recognise_r10(matrix: sp.csc_array) -> R10:
-    """Tell in which order and with which signs a matrix is one of those of R10.
+def recognise(matrix: sp.csc_array) -> R10 | None:
+    """Recognise one of the two matrices of R10.
 
     Parameters
     ----------
-    matrix : scipy.sparse.csc_array, shape (5, 5), int64
-        Its nonzeros are those of R10.
-
-    Raises
-    ------
-    Contradiction
-        If the signs are others, with all lines.
+    matrix : scipy.sparse.csc_array, shape (m, n), int64
 
     Examples
     --------
-    >>> part = recognise_r10(sp.csc_array(-R10_MATRICES[1].T))
-    >>> part.check(sp.csc_array(-R10_MATRICES[1].T))
+    >>> disguised = sp.csc_array(-R10_MATRICES[0].T)
+    >>> recognise(disguised).check(disguised)
+    >>> recognise(abs(disguised)) is None
+    True
     """
     table = matrix.toarray()
+    found = find(table != 0)
+    if found is None:
+        return None
+    known, rows, columns = found
+    signs = _signs(table[rows][:, columns] * known)
+    return R10(rows, columns, *signs) if signs else None
+
+
+def find(support: Bits) -> tuple[Integers, Integers, Integers] | None:
+    """Find the order in which nonzeros are those of a matrix of R10; returns that matrix first."""
+    if support.shape != (5, 5):
+        return None
     for known in R10_MATRICES:
+        if sorted(support.sum(axis=1)) != sorted(np.abs(known).sum(axis=1)):
+            continue
         for rows in map(list, permutations(range(5))):
             # With the rows in order, each column's nonzeros tell which one it is.
-            places = {tuple(column): k for k, column in enumerate((table[rows] != 0).T.tolist())}
-            columns = [places.get(tuple(column)) for column in (known != 0).T.tolist()]
-            if None in columns:
-                continue
-            signs = _signs(table[np.ix_(rows, columns)] * known)
-            if signs is not None:
-                return R10(np.array(rows), np.array(columns), *signs)
-    raise Contradiction(range(10))
+            places = {tuple(column): k for k, column in enumerate(support[rows].T.tolist())}
+            columns = [places.get(tuple(column), -1) for column in (known != 0).T.tolist()]
+            if -1 not in columns:
+                return known, np.array(rows), np.array(columns)
+    return None
 
 
-def _signs(ratio: np.ndarray) -> tuple[np.ndarray, np.ndarray] | None:
-    """Signs of rows and columns whose products are these where they are not 0."""
-    row_signs, column_signs = np.zeros(5, np.int64), np.zeros(5, np.int64)
-    row_signs[0] = 1
+def _signs(ratio: Integers) -> tuple[Integers, Integers] | None:
+    """Signs of rows and columns whose products are these where they are not 0, if there are any.
+
+    Where there are, more and more of the signs are known in each round, and all after a few.
+    """
+    row_signs, column_signs = np.array([1, 0, 0, 0, 0]), np.zeros(5, np.int64)
     for _ in range(5):
         column_signs = np.sign(row_signs @ ratio)
         row_signs = np.sign(ratio @ column_signs)
-    same = np.outer(row_signs, column_signs) * (ratio != 0) == ratio
+    same = np.outer(row_signs, column_signs) * np.abs(ratio) == ratio
     return (row_signs, column_signs) if same.all() else None

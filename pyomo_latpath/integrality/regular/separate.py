@@ -12,26 +12,34 @@ from __future__ import annotations
 import numpy as np
 
 from ...deadline import Deadline
+from . import r10
 from .clock import check_time
-from .minors import Minor, restricted, small_core, smallest_minor
-from .separation import Bits, Spread, adjacency, residual, smallest_separation, spread
-from .separation import three_separations
+from .minors import Minor, rows_and_columns, small_core, small_minor
+from .separation import (
+    Bits,
+    Spread,
+    adjacency,
+    residual,
+    smallest_separation,
+    spread,
+    three_separations,
+)
 from .splitting import Contradiction
 
 
-def separation(support: Bits, deadline: Deadline) -> Bits | None:
+def separation(support: Bits, deadline: Deadline) -> Bits:
     """Find a separation of order 2 or 3 with summands that are smaller.
 
     Parameters
     ----------
     support : ndarray, shape (m, n), bool
-        Connected, neither graphic nor cographic.
+        Connected, neither graphic nor cographic, nor R10.
     deadline : Deadline
 
     Returns
     -------
-    ndarray, shape (m + n,), bool, or None
-        The lines on one side. None: it is R10.
+    ndarray, shape (m + n,), bool
+        The lines on one side.
 
     Raises
     ------
@@ -43,7 +51,8 @@ def separation(support: Bits, deadline: Deadline) -> Bits | None:
     links, core = adjacency(support), small_core(support, deadline)
     while True:
         check_time(deadline)
-        part, rows, columns = restricted(support, core)
+        rows, columns = rows_and_columns(core, m)
+        part = support[np.ix_(rows, columns)]
         side = smallest_separation(part)
         if side is None:
             break
@@ -52,10 +61,7 @@ def separation(support: Bits, deadline: Deadline) -> Bits | None:
         if found.hit < 0:
             return found.reached
         core += found.way_to(found.hit)[:-1]
-    minor = smallest_minor(Minor(part, rows, m + columns, ()), deadline)
-    size = minor.lines.size
-    if size == 10 == m + n:
-        return None
+    minor = small_minor(Minor(part, rows, m + columns, ()), deadline)
     whole = Minor(support, np.arange(m), m + np.arange(n), ())
     for row, column in minor.pivots:
         place = np.flatnonzero(whole.rows == row), np.flatnonzero(whole.columns == column)
@@ -63,9 +69,11 @@ def separation(support: Bits, deadline: Deadline) -> Bits | None:
     places = np.argsort(whole.lines)
     links = adjacency(whole.support)[np.ix_(places, places)]
     needed = {*minor.lines.tolist(), *(line for pivot in minor.pivots for line in pivot)}
-    if size == 10:
-        return _beside_r10(links, minor, needed)
-    return _through_r12(links, minor, needed)
+    if minor.lines.size == 12:
+        return _through_r12(links, minor, needed)
+    if r10.find(minor.support) is None:
+        raise Contradiction(needed)
+    return _beside_r10(links, minor, needed)
 
 
 def _through(links: Bits, inside: np.ndarray, outside: np.ndarray) -> Spread:
@@ -75,8 +83,7 @@ def _through(links: Bits, inside: np.ndarray, outside: np.ndarray) -> Spread:
 
 def _through_r12(links: Bits, minor: Minor, needed: set[int]) -> Bits:
     """Find a separation into halves of R12 that runs through all lines."""
-    sides = three_separations(minor.support) if minor.lines.size == 12 else []
-    for side in sides:
+    for side in three_separations(minor.support):
         found = _through(links, minor.lines[side], minor.lines[~side])
         if found.hit < 0:
             return found.reached

@@ -60,7 +60,7 @@ def odd_hole(matrix: sp.csc_array, deadline: Deadline) -> list[int] | None:
     return None
 
 
-def _root(above: list[int], node: int) -> int:
+def _root(above: list[int] | dict[int, int], node: int) -> int:
     """The name of a set in a forest of sets."""
     while above[node] != node:
         above[node] = above[above[node]]
@@ -71,7 +71,7 @@ def _root(above: list[int], node: int) -> int:
 def _grow(beside: list[dict[int, int]], own: dict[int, int], ways: int) -> list[int] | None:
     """Tie the rows of a new column together by so many ways; return one that contradicts it."""
     source = {row: row for row in own}
-    parent = {row: -1 for row in own}
+    parent = dict.fromkeys(own, -1)
     product = dict(own)  # of the entries from the column to each line
     tied = {row: row for row in own}
     front = list(own)

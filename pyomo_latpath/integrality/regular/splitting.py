@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 import scipy.sparse as sp
@@ -163,7 +164,7 @@ def _corner(table: Table, rows: Integers, columns: Integers) -> _Corner:
     square = block[np.ix_(i, j)]
     left, right = block[:, j], np.rint(np.linalg.inv(square)).astype(np.int8) @ block[i]
     # A subdeterminant that is even, but not 0.
-    for p, q in np.argwhere((left @ right != block))[:1].tolist():
+    for p, q in np.argwhere(left @ right != block)[:1].tolist():
         raise Contradiction([*rows[[*i, p]], *(table.shape[0] + columns[[*j, q]])])
     for _, q in np.argwhere(np.abs(right) > 1)[:1].tolist():
         raise Contradiction([*rows[i], *(table.shape[0] + columns[[*j, q]])])
@@ -215,7 +216,7 @@ class _Half:
         found = spread(adjacency(self.table != 0), np.array([start]), np.array([end]))
         way = [int(start), *found.way_to(int(end))]
         m, entry = len(self.table), (-1) ** ((len(way) - 3) // 2)
-        for x, y in zip(way, way[1:], strict=False):
+        for x, y in pairwise(way):
             entry *= int(self.table[min(x, y), max(x, y) - m])
         return [self.lines[line] for line in way[1:-1]], entry
 
