@@ -12,12 +12,15 @@ The functions below take a Pyomo model or a `LinearForm`.
 from __future__ import annotations
 
 import time
+from collections.abc import Callable
 from typing import Any
 
 from . import plugin
 from .batch.record import BatchRecord
 from .batch.runner import solve_many
 from .certificates import CertificateError, check_certificate
+from .explain.explain import explain as _explain_form
+from .explain.explanation import Explanation
 from .forms.from_file import read
 from .forms.from_pyomo import compile_model
 from .forms.linear_form import LinearForm
@@ -35,6 +38,7 @@ __all__ = [
     "BatchRecord",
     "BlockFinding",
     "CertificateError",
+    "Explanation",
     "Finding",
     "LinearForm",
     "Move",
@@ -49,6 +53,7 @@ __all__ = [
     "assess",
     "check_certificate",
     "compile_model",
+    "explain",
     "read",
     "solve",
     "solve_many",
@@ -164,9 +169,60 @@ def stay_or_change(form_or_model: Any, start: Any, **options: Any) -> StayOrChan
     return _stay_or_change_form(form, start, **options)
 
 
+def explain(
+    form_or_model: Any,
+    *,
+    time_limit: float | None = None,
+    seed: int = 0,
+    progress: Callable[[str], None] | None = None,
+) -> Explanation:
+    """Explain where and why a model's relaxation is fractional, and what can be done.
+
+    Parameters
+    ----------
+    form_or_model : LinearForm or Pyomo model
+        It is only read; the remedies found can be applied to it.
+    time_limit : float, optional
+        Seconds. Without one, questions whose cost cannot be foreseen get 5 to 20 seconds each.
+    seed : int
+        Of the vertex sampler.
+    progress : callable, optional
+        Takes a line about what is being done.
+
+    Returns
+    -------
+    Explanation
+        After Ctrl-C with what was found by then.
+
+    Raises
+    ------
+    ValueError
+        For a negative time limit, and as `compile_model`.
+
+    Examples
+    --------
+    >>> import pyomo_latpath as latpath
+    >>> form = latpath.LinearForm.from_arrays([[1, 1, 0], [0, 1, 1], [3, 0, 2]], row_lower=0,
+    ...     row_upper=[1, 1, 4], col_lower=0, col_upper=1, cost=1, sense="max",
+    ...     row_names=["cave[1]", "cave[2]", "budget"])
+    >>> explanation = latpath.explain(form)
+    >>> explanation.culprits[0].groups, explanation.gap.exact
+    (('budget',), True)
+    """
+    form, seconds = _form_of(form_or_model)
+    left = time_limit
+    if time_limit is not None and time_limit > 0:
+        left = max(0.0, time_limit - seconds)
+    model = None if form is form_or_model else form_or_model
+    return _explain_form(form, time_limit=left, seed=seed, progress=progress, model=model)
+
+
 def _form_of(form_or_model: Any) -> tuple[LinearForm, float]:
     """The form, and the seconds it took to compile."""
     if isinstance(form_or_model, LinearForm):
         return form_or_model, 0.0
+    if not hasattr(form_or_model, "is_constructed"):
+        told = type(form_or_model).__name__
+        raise ValueError(f"a {told} is no model; give a LinearForm or a Pyomo model")
     begun = time.perf_counter()
     return compile_model(form_or_model), time.perf_counter() - begun

@@ -150,7 +150,7 @@ def minimal_violator(
     --------
     >>> wheel = sp.csc_array([[1, 1, 0, 1], [0, 1, 1, 0], [1, 0, 1, 0], [0, 0, 1, 1]])
     >>> minimal_violator(wheel, Deadline(None))
-    (array([0, 1, 2]), array([0, 1, 2]), True)
+    (array([0, 2, 3]), array([0, 2, 3]), True)
     """
     m, n = matrix.shape
     by_row = matrix.tocsr()

@@ -94,7 +94,7 @@ class Search:
     Attributes
     ----------
     exhausted : bool
-        Whether all sets up to some size were found.
+        Whether all sets of the smallest size were found.
     alone : dict of int to bool
         Groups that were tried on their own: certified or not.
     """
@@ -119,21 +119,17 @@ class Search:
         self._found: list[frozenset[int]] = []
 
     def run(self) -> Iterator[CulpritSet]:
-        """Yield the sets, smallest first; where all are large, one that cannot be made smaller."""
+        """Yield the sets; where all are large, one of which no group can stay."""
         self._try_alone()
         for size in range(1, len(self.groups) + 1):
             forced = sum(len(those) == 1 for those in self._conflicts)
             if size > forced + MOST_CHOSEN:
                 break
             yield from self._of_size(size) if size >= forced else ()
-            if self.deadline.passed or len(self._found) == MOST_SETS:
+            if self._found or self.deadline.passed:
+                self.exhausted = not self.deadline.passed and len(self._found) < MOST_SETS
                 return
-            further = hitting_sets(self._conflicts, forced + MOST_CHOSEN, self._found)
-            if next(further, None) is None:
-                self.exhausted = True
-                return
-        if not self._found:
-            yield from self._greedily()
+        yield from self._greedily()
 
     def _greedily(self) -> Iterator[CulpritSet]:
         """Put back one group after the other while what is there stays certified."""
@@ -162,7 +158,8 @@ class Search:
     def _of_size(self, size: int) -> Iterator[CulpritSet]:
         """Sets of so many groups: each new conflict starts the enumeration afresh."""
         while not self.deadline.passed and len(self._found) < MOST_SETS:
-            chosen = next(hitting_sets(self._conflicts, size, self._found), None)
+            sets = hitting_sets(self._conflicts, size, self._found, self._suspicion)
+            chosen = next(sets, None)
             if chosen is None:
                 return
             names = ", ".join(self.groups[k].name for k in sorted(chosen)) or "nothing"
@@ -198,6 +195,11 @@ class Search:
     def _groups_at(self, place: Place) -> frozenset[int]:
         rows = self.relaxation.normal.rows[place.rows]
         return frozenset(np.unique(self._group_of[rows]).tolist())
+
+    def _suspicion(self, k: int) -> tuple[bool, int]:
+        """Groups with odd numbers, then small ones, are looked at first: side constraints are."""
+        group = self.groups[k]
+        return not (group.beyond or group.broken_sides), group.size
 
     def _others(self, chosen: Collection[int]) -> list[int]:
         return [k for k in range(len(self.groups)) if k not in chosen]

@@ -20,6 +20,7 @@ from ..deadline import Deadline
 from ..forms.blocks import blocks_of
 from ..forms.linear_form import LinearForm
 from ..forms.normalise import normalise
+from ..highs import LpResult
 from ..integrality.assess import assess
 from ..integrality.finding import Finding, Verdict, Witness
 from ..solution import Solution
@@ -89,7 +90,7 @@ def explain(
     Raises
     ------
     ValueError
-        For a negative time limit.
+        For a negative time limit or seed.
 
     Examples
     --------
@@ -98,10 +99,12 @@ def explain(
     ...     row_names=["cave[1]", "cave[2]", "van"])
     >>> explanation = explain(form)
     >>> [culprit.groups for culprit in explanation.culprits], explanation.gap.absolute
-    ([('cave',), ('van',)], 0.5)
+    ([('van',), ('cave',)], 0.5)
     """
     if time_limit is not None and not time_limit >= 0:
         raise ValueError(f"time_limit is {time_limit}; it must be a number of seconds from 0 on")
+    if seed < 0:
+        raise ValueError(f"seed is {seed}; it must be a whole number from 0 on")
     draft = _Draft(form, Deadline(time_limit), seed, progress or (lambda line: None))
     try:
         draft.answer()
@@ -150,21 +153,35 @@ class _Draft:
 
     def answer(self) -> None:
         """Ask all questions in turn."""
-        with self._question("verdict", "assessing the model") as deadline:
-            self._assess(deadline)
         if self.normal.conflict is not None:
+            self._assess(samples=0)
             self._without_optimum()
             return
         relaxation = Relaxation(self.normal)
         with self._question("relaxation", "solving the relaxation"):
             optimum = relaxation.optimum(self.deadline)
-            basis = relaxation.program.basis()
+            places = relaxation.places(optimum.x) if optimum.status == "optimal" else []
+        # A fractional optimum settles the verdict; a whole one asks for further vertices.
+        self._assess(samples=1 if places else SAMPLES)
         if optimum.status in ("infeasible", "unbounded"):
             self._without_optimum()
-            return
-        if optimum.status != "optimal":
+        elif optimum.status == "optimal":
+            self._measure(relaxation, optimum)
+            if self.finding.verdict is Verdict.PROVEN:
+                self._tell_whole()
+            else:
+                self._tell_fractional(relaxation, places or self._places())
+            self._find_remedies(relaxation, optimum)
+        else:
             self.cut_off.append("the relaxation was not solved in time")
-            return
+
+    def _assess(self, samples: int) -> None:
+        with self._question("verdict", "assessing the model") as deadline:
+            limit = None if deadline.left == math.inf else deadline.left
+            self.finding = assess(self.form, samples=samples, time_limit=limit, seed=self.seed)
+
+    def _measure(self, relaxation: Relaxation, optimum: LpResult) -> None:
+        """What the relaxation's optimum is like."""
         self.groups = groups_of(self.normal, self.row_stems, optimum.x)
         with self._question("relaxation", "solving the relaxation as declared") as deadline:
             rounded = relaxation.objective(optimum)
@@ -178,29 +195,23 @@ class _Draft:
                 seed=self.seed,
                 deadline=deadline,
             )
-        if self.finding.verdict is Verdict.PROVEN:
-            self._tell_whole()
-        else:
-            self._tell_fractional(relaxation)
+
+    def _find_remedies(self, relaxation: Relaxation, optimum: LpResult) -> None:
         context = Context(
-            self.form,
-            self.normal,
-            self.blocks,
-            self.finding,
-            self.groups,
-            optimum,
-            basis,
-            self.fractional,
-            self._gap(),
-            tuple(self.violators),
-            self.seed,
+            form=self.form,
+            normal=self.normal,
+            blocks=self.blocks,
+            finding=self.finding,
+            groups=self.groups,
+            optimum=optimum,
+            basis=relaxation.basis,
+            fractional=self.fractional,
+            gap=self._gap(),
+            violators=tuple(self.violators),
+            seed=self.seed,
         )
         with self._question("remedies", "looking for remedies") as deadline:
             self.remedies = find_remedies(context, deadline)
-
-    def _assess(self, deadline: Deadline) -> None:
-        limit = None if deadline.left == math.inf else deadline.left
-        self.finding = assess(self.form, samples=SAMPLES, time_limit=limit, seed=self.seed)
 
     def _without_optimum(self) -> None:
         """Infeasible or unbounded: which of the two, and why."""
@@ -246,8 +257,7 @@ class _Draft:
         ]
         return Certified(self.normal, self.blocks, tuple(proofs))
 
-    def _tell_fractional(self, relaxation: Relaxation) -> None:
-        places = self._places()
+    def _tell_fractional(self, relaxation: Relaxation, places: list[Place]) -> None:
         with self._question("violators", "looking for the smallest conflict") as deadline:
             names = [self.row_stems.names[k] for k in self.row_stems.label.tolist()]
             for violator in violators(self.normal, places, names, deadline):

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Collection, Iterator, Sequence
-from typing import TypeVar
+from typing import Any, TypeVar
 
 from ..deadline import Deadline
 
@@ -55,7 +55,10 @@ def thin_out(
 
 
 def hitting_sets(
-    sets: Sequence[Collection[int]], size: int, barred: Sequence[frozenset[int]] = ()
+    sets: Sequence[Collection[int]],
+    size: int,
+    barred: Sequence[frozenset[int]] = (),
+    key: Callable[[int], Any] | None = None,
 ) -> Iterator[frozenset[int]]:
     """Go through the sets of so many members that meet all given ones.
 
@@ -69,6 +72,8 @@ def hitting_sets(
         Members at most.
     barred : sequence of frozenset
         What contains one of these is passed over.
+    key : callable, optional
+        Members with a smaller key are tried first.
 
     Yields
     ------
@@ -88,7 +93,7 @@ def hitting_sets(
         if missed is None:
             yield chosen
         elif len(chosen) < size:
-            for member in sorted(missed):
+            for member in sorted(missed, key=key):
                 yield from extend(chosen | {member})
 
     return extend(frozenset())

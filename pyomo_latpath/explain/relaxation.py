@@ -12,7 +12,7 @@ from ..deadline import Deadline
 from ..forms.linear_form import Flags, Floats
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
-from ..highs import LpResult
+from ..highs import Basis, LpResult
 from ..integrality.sampling import FRACTIONAL, program_of
 
 
@@ -41,6 +41,8 @@ class Relaxation:
     Attributes
     ----------
     program : LinearProgram
+    basis : Basis or None
+        The first optimal one.
 
     Examples
     --------
@@ -59,14 +61,23 @@ class Relaxation:
     def __init__(self, normal: NormalForm) -> None:
         self.normal = normal
         self.program = program_of(normal)
+        self.basis: Basis | None = None
 
     def optimum(self, deadline: Deadline, kept: Flags | None = None) -> LpResult:
-        """Optimise, with the kept rows of the normalised form alone where these are given."""
+        """Optimise, with the kept rows of the normalised form alone where these are given.
+
+        Each time but the first from the basis that was optimal then.
+        """
         lower, upper = self.normal.row_lower, self.normal.row_upper
         if kept is not None:
             lower, upper = np.where(kept, lower, -np.inf), np.where(kept, upper, np.inf)
         self.program.set_row_bounds(lower, upper)
-        return self.program.solve(deadline=deadline)
+        if self.basis is not None:
+            self.program.set_basis(self.basis)
+        result = self.program.solve(deadline=deadline)
+        if self.basis is None and result.status == "optimal":
+            self.basis = self.program.basis()
+        return result
 
     def objective(self, result: LpResult) -> float:
         """The optimum in the model's own units and sense; infinite where unbounded."""

@@ -16,12 +16,12 @@ from ..deadline import Deadline
 from ..forms.blocks import Block, blocks_of
 from ..forms.linear_form import Flags, LinearForm
 from ..forms.normalise import NormalForm, normalise
-from ..integrality.assess import Effort, certify
+from ..integrality.assess import certify
 
 Proof = tuple[str, BlockCertificate]
 
-#: The efforts in turn: what the first proves, the second need not be asked.
-EFFORTS: tuple[Effort, ...] = ("linear", "systems")
+#: Nonzeros up to which any block is looked at as a system of equations, and seconds for that.
+SMALL, SYSTEM_SECONDS = 2000, 0.5
 
 
 @dataclass(frozen=True, eq=False)
@@ -115,10 +115,21 @@ class Remains:
     def _certify(
         self, normal: NormalForm, blocks: Sequence[Block], deadline: Deadline
     ) -> list[Proof | None]:
-        proofs: list[Proof | None] = [None] * len(blocks)
-        for effort in EFFORTS:
-            open_ones = [k for k, proof in enumerate(proofs) if proof is None]
-            rest = [blocks[k] for k in open_ones]
-            for k, proof in zip(open_ones, certify(normal, rest, deadline, effort), strict=True):
-                proofs[k] = proof
+        """Certify by structure, and what is left and small, or has large entries, as a system."""
+        proofs = certify(normal, blocks, deadline, "linear")
+        for k, block in enumerate(blocks):
+            if proofs[k] is None and _may_be_a_system(normal, block):
+                one_by_one = certify(normal, [block], deadline.within(SYSTEM_SECONDS), "systems")
+                proofs[k] = one_by_one[0]
         return proofs
+
+
+def _may_be_a_system(normal: NormalForm, block: Block) -> bool:
+    """Whether it is worth asking if equations make a block whole in spite of its entries."""
+    start, end = normal.matrix.indptr[block.columns], normal.matrix.indptr[block.columns + 1]
+    count = int((end - start).sum())
+    if not (normal.row_lower[block.rows] == normal.row_upper[block.rows]).any():
+        return False
+    return count <= SMALL or any(
+        (np.abs(normal.matrix.data[s:e]) != 1).any() for s, e in zip(start, end, strict=True)
+    )
