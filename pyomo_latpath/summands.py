@@ -184,8 +184,10 @@ class Summands:
         first, second = self._part(split)
         corners = self._cut_corners(split)
         places = [(i, j) for i, j in split.entries.tolist()]
-        found = [k for place in places for k in (0, 1) if place in corners[k]]
-        require(len(found) == len(places), "a connecting entry is in no corner, or zero")
+        sides = {(first, second): 0, (second, first): 1}
+        homes = [(self._home_of("row", i), self._home_of("column", j)) for i, j in places]
+        found = [sides.get(home) for home in homes]
+        require(None not in found, "a connecting entry is in no corner")
         factors: dict[tuple[int, int], tuple[Entries, Entries]] = {}
         for k, corner in enumerate(corners):
             here = [place for place, at in zip(places, found, strict=True) if at == k]

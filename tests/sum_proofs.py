@@ -30,7 +30,7 @@ def split_off(table: np.ndarray, rows, columns, sign: int = 1) -> Split:
 
 
 def spanning(corner: np.ndarray) -> list[tuple[int, int]]:
-    """Nonzeros in the lines of a nonsingular submatrix, as large as there is one, at most 2x2."""
+    """Places in the lines of a nonsingular submatrix, as large as there is one, at most 2x2."""
     if not corner.any():
         return []
     i, j = np.argwhere(corner)[0].tolist()
@@ -38,7 +38,7 @@ def spanning(corner: np.ndarray) -> list[tuple[int, int]]:
     if not left.any():
         return [(i, j)]
     k, n = np.argwhere(left)[0].tolist()
-    return [(i, j), (k, n)] if corner[k, n] else [(i, n), (k, j)]
+    return [(i, j), (k, n)]
 
 
 def leaf_part(matrix: sp.csc_array) -> Part | None:
