@@ -54,7 +54,8 @@ class Culprit:
         since what is left is certified. Infinite where unbounded.
     price : float
         By how much the model's best known plan is worse: what these side constraints cost (at
-        most, where `Gap.exact` is False). NaN without a plan.
+        most, where `Gap.exact` is False). NaN without a plan, and where nothing bounds the
+        objective but them.
     """
 
     groups: tuple[str, ...]
@@ -249,5 +250,5 @@ def objective_without(search: Search, places: Sequence[int], deadline: Deadline)
 
 
 def price(worse: float) -> float:
-    """What side constraints cost: never negative, NaN where there is no plan."""
-    return worse if math.isnan(worse) else max(0.0, worse)
+    """What side constraints cost: never negative, NaN where there is no plan or no optimum."""
+    return max(0.0, worse) if math.isfinite(worse) else math.nan

@@ -31,7 +31,7 @@ from .culprits import Culprit, CulpritSet, Search
 from .explanation import Explanation
 from .fractional import Fractional, measure
 from .gap import Gap
-from .groups import groups_of
+from .groups import groups_of, oddities_of
 from .no_optimum import NoOptimum
 from .reasons import find_reasons
 from .relaxation import Place, Relaxation, places_of
@@ -125,7 +125,8 @@ class _Draft:
         self.normal = normalise(form)
         self.blocks = tuple(blocks_of(self.normal))
         self.row_stems, self.column_stems = row_stems(form), column_stems(form)
-        self.groups = groups_of(self.normal, self.row_stems, None)
+        self.odd = oddities_of(self.normal, self.blocks)
+        self.groups = groups_of(self.normal, self.row_stems, self.odd, None)
         self.finding = Finding((), self.normal.snapped, seed)
         self.fractional: Fractional | None = None
         self.bounds = math.nan, math.nan
@@ -171,7 +172,8 @@ class _Draft:
                 self._tell_whole()
             else:
                 self._tell_fractional(relaxation, places or self._places())
-            self._find_remedies(relaxation, optimum)
+            if self.no_optimum is None:
+                self._find_remedies(relaxation, optimum)
         else:
             self.cut_off.append("the relaxation was not solved in time")
 
@@ -182,7 +184,7 @@ class _Draft:
 
     def _measure(self, relaxation: Relaxation, optimum: LpResult) -> None:
         """What the relaxation's optimum is like."""
-        self.groups = groups_of(self.normal, self.row_stems, optimum.x)
+        self.groups = groups_of(self.normal, self.row_stems, self.odd, optimum.x)
         with self._question("relaxation", "solving the relaxation as declared") as deadline:
             rounded = relaxation.objective(optimum)
             self.bounds = gap.declared_bound(self.normal, rounded, deadline), rounded
@@ -271,9 +273,10 @@ class _Draft:
         if solution.status == "infeasible":
             with self._question("infeasible", "finding out what conflicts") as deadline:
                 self._tell_infeasible(solution, deadline)
-        elif solution.status == "interrupted":
+            return
+        if solution.status == "interrupted":
             raise KeyboardInterrupt
-        elif solution.status != "optimal":
+        if solution.status != "optimal":
             self.cut_off.append(
                 "the best whole plan was not found in time; the gap is an upper one"
             )
@@ -385,7 +388,7 @@ class _Draft:
             grouped_by=self.row_stems.by,
             culprits=tuple(told),
             violators=tuple(self.violators),
-            reasons=find_reasons(self.normal, self.row_stems, self.column_stems),
+            reasons=find_reasons(self.normal, self.odd, self.row_stems, self.column_stems),
             whole=self.whole,
             no_optimum=self.no_optimum,
             remedies=self.remedies,

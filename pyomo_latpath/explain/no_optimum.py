@@ -8,8 +8,9 @@ from typing import Literal
 
 import numpy as np
 
+from ..blame import SHARE, blame
 from ..deadline import Deadline
-from ..forms.normalise import NormalForm
+from ..forms.normalise import NormalForm, normalise
 from ..forms.numbers import Integers
 from ..highs_mip import MipSettings, branch_and_bound
 from ..solution import Solution
@@ -86,19 +87,26 @@ def infeasible(
 
     Examples
     --------
-    >>> from pyomo_latpath.explain.groups import groups_of
+    >>> from pyomo_latpath.explain.groups import groups_of, oddities_of
     >>> from pyomo_latpath.explain.stems import row_stems
+    >>> from pyomo_latpath.forms.blocks import blocks_of
     >>> from pyomo_latpath.forms.linear_form import LinearForm
     >>> from pyomo_latpath.forms.normalise import normalise
     >>> from pyomo_latpath.routing import solve
     >>> form = LinearForm.from_arrays([[1, 1], [1, 0], [0, 1]], row_lower=[3, 0, 0],
     ...     row_upper=[9, 1, 1], col_lower=0, col_upper=9, cost=1,
     ...     row_names=["asked", "cave[1]", "cave[2]"])
-    >>> groups = groups_of(normalise(form), row_stems(form), None)
+    >>> normal = normalise(form)
+    >>> odd = oddities_of(normal, blocks_of(normal))
+    >>> groups = groups_of(normal, row_stems(form), odd, None)
     >>> infeasible(Remains(form), solve(form), groups, Deadline(None)).groups
     ('asked', 'cave')
     """
     names, minimal = solution.report.blame, solution.report.blame_is_minimal
+    if not names or not minimal:
+        seconds = min(deadline.left, SECONDS) / SHARE
+        blamed = blame(normalise(remains.form), None, False, seconds, deadline)
+        names, minimal = (blamed.names or names), blamed.minimal
     held = _holders(remains, names, groups)
     suspects = held or list(range(len(groups)))
     statuses: list[str] = []

@@ -8,16 +8,14 @@ from typing import Literal
 
 import numpy as np
 
-from ..forms.linear_form import Flags
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
-from .groups import Entries, entries_of
+from .groups import Oddities
 from .parity import parity_conflict
 from .stems import Stems
 
 #: So many rows or columns are named as examples.
 EXAMPLES = 3
-COLUMNS_HAVE = "continuous columns beside integer ones have"
 Kind = Literal["coefficient", "side", "bound", "continuous", "parity", "semicontinuous"]
 
 
@@ -47,7 +45,9 @@ class Reason:
     sentence: str
 
 
-def find_reasons(normal: NormalForm, rows: Stems, columns: Stems) -> tuple[Reason, ...]:
+def find_reasons(
+    normal: NormalForm, odd: Oddities, rows: Stems, columns: Stems
+) -> tuple[Reason, ...]:
     """Collect side reasons, worst first.
 
     Contradictions come first, then what is no linear relaxation at all, then by number.
@@ -55,6 +55,7 @@ def find_reasons(normal: NormalForm, rows: Stems, columns: Stems) -> tuple[Reaso
     Parameters
     ----------
     normal : NormalForm
+    odd : Oddities
     rows, columns : Stems
         Of the form's rows and columns.
 
@@ -64,26 +65,29 @@ def find_reasons(normal: NormalForm, rows: Stems, columns: Stems) -> tuple[Reaso
 
     Examples
     --------
+    >>> from pyomo_latpath.explain.groups import oddities_of
     >>> from pyomo_latpath.explain.stems import column_stems, row_stems
+    >>> from pyomo_latpath.forms.blocks import blocks_of
     >>> from pyomo_latpath.forms.linear_form import LinearForm
     >>> from pyomo_latpath.forms.normalise import normalise
     >>> form = LinearForm.from_arrays([[1, 1], [3, 2]], row_lower=0, row_upper=[1, 4],
     ...     col_lower=0, col_upper=1, cost=0, row_names=["town[1]", "budget"])
-    >>> (reason,) = find_reasons(normalise(form), row_stems(form), column_stems(form))
+    >>> normal = normalise(form)
+    >>> odd = oddities_of(normal, blocks_of(normal))
+    >>> (reason,) = find_reasons(normal, odd, row_stems(form), column_stems(form))
     >>> reason.sentence
     "budget: 2 coefficients are not 0 or +-1 after scaling, the largest 3
     (row 'budget', column 'x1')"
     """
-    entries = entries_of(normal)
     found = [
         *_parity(normal, rows),
         *_semicontinuous(normal, columns),
         *sorted(
             [
-                *_coefficients(normal, entries, rows),
-                *_sides(normal, rows),
-                *_bounds(normal, entries, columns),
-                *_continuous(normal, entries, rows),
+                *_coefficients(normal, odd, rows),
+                *_sides(normal, odd, rows),
+                *_bounds(normal, odd, columns),
+                *_continuous(normal, odd, rows),
             ],
             key=lambda reason: -reason.count,
         ),
@@ -119,15 +123,15 @@ def _semicontinuous(normal: NormalForm, columns: Stems) -> Iterator[Reason]:
         yield Reason("semicontinuous", where, members.size, names, text + ": no linear relaxation")
 
 
-def _coefficients(normal: NormalForm, entries: Entries, rows: Stems) -> Iterator[Reason]:
-    bad = np.flatnonzero(entries.beyond)
-    form_rows = normal.rows[entries.row[bad]]
+def _coefficients(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Reason]:
+    bad = np.flatnonzero(odd.beyond)
+    form_rows = normal.rows[odd.row[bad]]
     size = np.abs(normal.matrix.data[bad])
     for where, members in _split(rows, form_rows, places=np.arange(bad.size)):
         worst = members[np.argsort(-size[members], kind="stable")]
         names = [normal.form.row_names[int(form_rows[k])] for k in worst[: 10 * EXAMPLES].tolist()]
         at = int(worst[0])
-        column = normal.form.col_names[int(normal.columns[entries.column[bad[at]]])]
+        column = normal.form.col_names[int(normal.columns[odd.column[bad[at]]])]
         text = (
             f"{where}: {_number(members.size, 'coefficient is', 'coefficients are')} not 0 or +-1 "
             f"after scaling, the largest {normal.matrix.data[bad[at]]:g} (row {names[0]!r}, "
@@ -137,8 +141,8 @@ def _coefficients(normal: NormalForm, entries: Entries, rows: Stems) -> Iterator
         yield Reason("coefficient", where, members.size, examples, text)
 
 
-def _sides(normal: NormalForm, rows: Stems) -> Iterator[Reason]:
-    bad = np.flatnonzero(~normal.whole_sides)
+def _sides(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Reason]:
+    bad = np.flatnonzero(odd.sides)
     for where, members in _split(rows, normal.rows[bad], places=bad):
         names = tuple(normal.form.row_names[int(normal.rows[i])] for i in members[:EXAMPLES])
         sides = normal.row_lower[members[0]], normal.row_upper[members[0]]
@@ -150,29 +154,22 @@ def _sides(normal: NormalForm, rows: Stems) -> Iterator[Reason]:
         yield Reason("side", where, members.size, names, text)
 
 
-def _bounds(normal: NormalForm, entries: Entries, columns: Stems) -> Iterator[Reason]:
-    bad = np.flatnonzero(~normal.whole_bounds & _meets_integers(normal, entries))
+def _bounds(normal: NormalForm, odd: Oddities, columns: Stems) -> Iterator[Reason]:
+    bad = np.flatnonzero(odd.bounds)
     for where, members in _split(columns, normal.columns[bad], places=bad):
         names = tuple(normal.form.col_names[int(normal.columns[j])] for j in members[:EXAMPLES])
-        held = _number(members.size, "continuous column beside integer ones has", COLUMNS_HAVE)
+        held = _number(members.size, "continuous column has", "continuous columns have")
         text = f"{where}: {held} bounds that are not whole after scaling, {names[0]!r} for one"
         yield Reason("bound", where, members.size, names, text)
 
 
-def _continuous(normal: NormalForm, entries: Entries, rows: Stems) -> Iterator[Reason]:
-    bad = np.unique(entries.row[entries.mixed])
+def _continuous(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Reason]:
+    bad = np.unique(odd.row[odd.mixed])
     for where, members in _split(rows, normal.rows[bad], places=bad):
         names = tuple(normal.form.row_names[int(normal.rows[i])] for i in members[:EXAMPLES])
         held = _number(members.size, "row holds", "rows hold")
         text = f"{where}: {held} continuous columns beside integer ones, so sides cannot be rounded"
         yield Reason("continuous", where, members.size, names, text)
-
-
-def _meets_integers(normal: NormalForm, entries: Entries) -> Flags:
-    """Continuous columns that share a row with integer ones."""
-    flags = np.zeros(normal.columns.size, np.bool_)
-    flags[entries.column[entries.mixed]] = True
-    return flags
 
 
 def _split(

@@ -14,12 +14,13 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+import scipy.sparse as sp
 
 from ..forms.linear_form import ComponentNames, LinearForm, NumberedNames
 from ..forms.numbers import Integers
 
 #: Stems that say nothing.
-BLANK = frozenset({"", "r", "c", "x", "e", "row", "rows", "con", "cons", "constr", "constraint"})
+BLANK = frozenset({"#", "r", "c", "x", "e", "row", "rows", "con", "cons", "constr", "constraint"})
 #: So many names for each stem, at least, or the names are taken to say nothing.
 FEW = 2
 #: Up to so many rows each may be a group of its own.
@@ -27,7 +28,7 @@ SMALL = 20
 
 WRITTEN = re.compile(r"^[cr]_[elu]_(.*)_$")
 INDEX = re.compile(r"\[[^\[\]]*\]|\([^()]*\)")
-NUMBER = re.compile(r"(?<=.)[_.#:-]*\d+(?:[_.,#:-]+\d+)*$")
+NUMBER = re.compile(r"[_.#:-]*\d+(?:[_.,#:-]+\d+)*[_.#:-]*$")
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,6 +58,8 @@ class Stems:
 def stem_of(name: str) -> str:
     """Return a name without its indices; those of an enclosing block become a star.
 
+    A name that is nothing but a number has the stem "#".
+
     Examples
     --------
     >>> [stem_of(name) for name in ("demand[3]", "demand(3)", "demand_3", "c_e_demand(3)_")]
@@ -67,7 +70,7 @@ def stem_of(name: str) -> str:
     written = WRITTEN.match(name)
     name = written.group(1) if written else name
     bare = NUMBER.sub("", re.sub(r"[\[(][^\[\]()]*[\])]$", "", name))
-    return INDEX.sub("[*]", bare) or name
+    return INDEX.sub("[*]", bare) or "#"
 
 
 def row_stems(form: LinearForm) -> Stems:
@@ -118,15 +121,27 @@ def _numbered(stems: list[str], by: Literal["component", "name"]) -> Stems:
 
 
 def _patterns(form: LinearForm) -> Stems:
-    """Rows with the same kind of sides and the same set of entries, named after the first."""
-    by_row = form.matrix.tocsr()
+    """Rows with the same kind of sides and the same set of entries, named after the first.
+
+    Where that leaves too many groups, entries other than +-1 count by their sign alone.
+    """
+    stems = _by_entries(form, form.matrix.tocsr())
+    if len(stems.names) <= SMALL:
+        return stems
+    signs = form.matrix.tocsr()
+    large = np.abs(signs.data) != 1
+    signs.data[large] = 2 * np.sign(signs.data[large])
+    return _by_entries(form, signs)
+
+
+def _by_entries(form: LinearForm, by_row: sp.csr_array) -> Stems:
     kind = np.where(form.row_lower == form.row_upper, 0, 1 + np.isfinite(form.row_lower))
     place: dict[tuple[object, ...], int] = {}
     label, names = np.empty(form.shape[0], np.int64), list[str]()
     for i in range(form.shape[0]):
         here = slice(by_row.indptr[i], by_row.indptr[i + 1])
         whole = bool(form.integer[by_row.indices[here]].all())
-        key = (int(kind[i]), whole, tuple(np.unique(by_row.data[here]).tolist()))
+        key = (int(kind[i]), whole, *np.unique(by_row.data[here]).tolist())
         if key not in place:
             place[key] = len(names)
             names.append(f"rows like {form.row_names[i]}")

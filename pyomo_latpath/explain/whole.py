@@ -14,7 +14,7 @@ from ..deadline import Deadline
 from ..forms.linear_form import LinearForm
 from ..highs_mip import MipSettings, branch_and_bound
 from ..integrality.verdicts import BECAUSE
-from .groups import entries_of
+from .groups import oddities_of
 from .remains import Certified
 
 #: What could break a structure, beside what could break any.
@@ -75,7 +75,7 @@ def remains(certified: Certified) -> str:
     by_size = sorted(
         zip(certified.proofs, certified.blocks, strict=True), key=lambda pair: -pair[1].columns.size
     )
-    told = [BECAUSE[name] for (name, _), block in by_size if not block.trivial]
+    told = [BECAUSE[name] for (name, _), _ in by_size if name != "trivial"]
     return "; ".join(sentences(told or [BECAUSE["trivial"]]))
 
 
@@ -99,9 +99,9 @@ def breakers(certified: Certified) -> tuple[str, ...]:
     told += [BREAKS[name] for name in structures if name in BREAKS]
     if _needs_sides(certified):
         told.append(FOR_THESE_SIDES)
-    entries = entries_of(normal)
-    if entries.mixed.any():
-        row = normal.form.row_names[int(normal.rows[entries.row[np.argmax(entries.mixed)]])]
+    odd = oddities_of(normal, certified.blocks)
+    if odd.mixed.any():
+        row = normal.form.row_names[int(normal.rows[odd.row[np.argmax(odd.mixed)]])]
         told.append(
             "a side that is not whole in a row with continuous columns, or a bound of theirs that "
             f"is not (row {row!r} is such a row): these cannot be rounded"
@@ -115,7 +115,7 @@ def keepers(certified: Certified) -> tuple[str, ...]:
         return ()
     if _needs_sides(certified):
         return ("costs",)
-    if entries_of(certified.normal).mixed.any():
+    if oddities_of(certified.normal, certified.blocks).mixed.any():
         return "costs", "sides and bounds, as long as they are whole"
     return "costs", "sides and bounds: those that are not whole are rounded inwards"
 
