@@ -173,40 +173,40 @@ class R10:
 
     Attributes
     ----------
-    rows, columns : ndarray, shape (5,), int64
+    row_order, column_order : ndarray, shape (5,), int64
         Which line of the matrix stands at each place of `R10_MATRICES`.
     row_signs, column_signs : ndarray, shape (5,), int64
         1 or -1 along these; times both signs, the entries are those of R10.
     """
 
-    rows: Integers
-    columns: Integers
+    row_order: Integers
+    column_order: Integers
     row_signs: Integers
     column_signs: Integers
     kind: ClassVar[str] = "r10"
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON."""
-        names = ("rows", "columns", "row_signs", "column_signs")
+        names = ("row_order", "column_order", "row_signs", "column_signs")
         return {"kind": self.kind, **{name: getattr(self, name).tolist() for name in names}}
 
     @classmethod
     def from_dict(cls, data: dict[str, Any]) -> R10:
         """Read what `to_dict` wrote."""
-        names = ("rows", "columns", "row_signs", "column_signs")
+        names = ("row_order", "column_order", "row_signs", "column_signs")
         return cls(*(read_indices(data, name) for name in names))
 
     def check(self, matrix: sp.csc_array) -> None:
         """Compare with both matrices."""
         require(matrix.shape == (5, 5), "R10 has five rows and five columns")
         for lines, signs, axis in (
-            (self.rows, self.row_signs, "rows"),
-            (self.columns, self.column_signs, "columns"),
+            (self.row_order, self.row_signs, "row"),
+            (self.column_order, self.column_signs, "column"),
         ):
-            require(lines.size == signs.size == 5, f"R10 needs five {axis} and signs of {axis}")
-            require_indices(lines, 5, f"'{axis}'")
-            require((np.abs(signs) == 1).all(), f"a sign of {axis} is not 1 or -1")
-        table = matrix.toarray()[np.ix_(self.rows, self.columns)]
+            require(lines.size == signs.size == 5, f"R10 needs five {axis}s and their signs")
+            require_indices(lines, 5, f"'{axis}_order'")
+            require((np.abs(signs) == 1).all(), f"a {axis}'s sign is not 1 or -1")
+        table = matrix.toarray()[np.ix_(self.row_order, self.column_order)]
         table = self.row_signs[:, None] * table * self.column_signs
         same = any(np.array_equal(table, known) for known in R10_MATRICES)
         require(same, "its lines in this order and with these signs are not those of R10")
