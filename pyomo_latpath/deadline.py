@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import time
+from collections.abc import Iterator, Sequence
 
 
 class Deadline:
@@ -38,3 +39,19 @@ class Deadline:
     def within(self, seconds: float) -> Deadline:
         """Return a deadline that lies at most `seconds` ahead and not after this one."""
         return Deadline(min(seconds, self.left)) if seconds < math.inf else self
+
+    def shared(self, sizes: Sequence[float]) -> Iterator[Deadline]:
+        """Share what is left among pieces of work, in proportion to their sizes, as each begins.
+
+        What one piece leaves, the others have; so none can use up the time of those after it.
+
+        Examples
+        --------
+        >>> shares = Deadline(60).shared([1, 2])
+        >>> round(next(shares).left), round(next(shares).left)
+        (20, 60)
+        """
+        total = math.fsum(sizes)
+        for size in sizes:
+            yield self.within(self.left * size / total if size else 0.0)
+            total -= size

@@ -181,16 +181,15 @@ def solve(
     for group in prepared.groups:
         told = tuple(prepared.findings[k] for k in group.members)
         parts.append(_by_path(request, group, told))
-    for rest in prepared.rest:
+    shares = request.deadline.shared([rest.piece.columns.size for rest in prepared.rest])
+    for rest, share in zip(prepared.rest, shares, strict=True):
         if any(part.status == "infeasible" for part in parts):
             break
-        parts.append(_by_relaxation(request, rest))
+        parts.append(_by_relaxation(replace(request, deadline=share), rest))
     return _report(request, normal, parts)
 
 
-def _by_path(
-    request: _Request, group: Group, findings: tuple[BlockFinding, ...]
-) -> PartAnswer:
+def _by_path(request: _Request, group: Group, findings: tuple[BlockFinding, ...]) -> PartAnswer:
     """Solve what is certified: a union of unimodular blocks is one itself."""
     since = time.perf_counter()
     part = group.piece
@@ -292,9 +291,7 @@ def _as_good_as(part: NormalForm, x: Floats, optimum: LpResult) -> bool:
     return bool(inside.all() and dearer <= ROUNDING * (1.0 + abs(part.cost) @ np.abs(x)))
 
 
-def _finding(
-    request: _Request, rest: Rest, lp: LinearProgram, optimum: LpResult
-) -> BlockFinding:
+def _finding(request: _Request, rest: Rest, lp: LinearProgram, optimum: LpResult) -> BlockFinding:
     """The verdict on a block whose optimum is known, by a few more vertices."""
     since = time.perf_counter()
     part, finding = rest.piece, None

@@ -207,6 +207,17 @@ def test_a_time_limit_holds_for_all_stages_together(limit):
         assert solution.report.largest_violation <= 1e-6
 
 
+def test_one_hard_block_leaves_time_for_the_others():
+    hard, rng = knapsacks(), np.random.default_rng(1)
+    A, worth = rng.integers(1, 100, (40, 60)), rng.integers(50, 99, 60)
+    both = form_of(sp.block_diag([hard.matrix, A], format="csc"), -INF, 1000, [*hard.cost, *-worth])
+    solution = solve(both, time_limit=4.0)
+    assert solution.status == "time_limit"
+    assert solution.x is not None
+    assert solution.x[:60].any()
+    assert solution.x[60:].any()
+
+
 def test_limits_among_highs_options_are_told_apart_from_optima():
     solution = solve(knapsacks(), highs_options={"mip_max_nodes": 1})
     assert solution.status == "limit"

@@ -110,7 +110,10 @@ def assess(
     early = deadline if time_limit is None else deadline.within(CERTIFY_SHARE * time_limit)
     mark, findings = fingerprint(form), []
     broken = conflict_finding(normal)
-    for block, found in zip(blocks, certify(normal, blocks, early, "linear"), strict=True):
+    certified = certify(normal, blocks, early, "linear")
+    sizes = [0 if found else b.columns.size for b, found in zip(blocks, certified, strict=True)]
+    shares = deadline.shared(sizes)
+    for block, found, share in zip(blocks, certified, shares, strict=True):
         if broken is not None and np.isin(broken.rows, normal.rows[block.rows]).any():
             rows, columns = normal.rows[block.rows], normal.columns[block.columns]
             findings.append(replace(broken, rows=rows, columns=columns))
@@ -119,13 +122,13 @@ def assess(
             findings.append(proven_finding(normal, block, found, mark))
         else:
             piece = normal.restrict(block.rows, block.columns)
-            findings.append(_assess_further(piece, mark, samples, seed, early, deadline))
+            findings.append(_assess_further(piece, mark, samples, seed, share))
     findings += [broken] if broken is not None else []
     return Finding(tuple(findings), normal.snapped, seed)
 
 
 def _assess_further(
-    piece: NormalForm, mark: str, samples: int, seed: int, early: Deadline, deadline: Deadline
+    piece: NormalForm, mark: str, samples: int, seed: int, deadline: Deadline
 ) -> BlockFinding:
     """Look at one vertex, which often refutes; then search long for a certificate; then sample."""
     first = None
@@ -136,6 +139,7 @@ def _assess_further(
         if finding.verdict not in (Verdict.SAMPLED, Verdict.UNDECIDED):
             return finding
     block = Block(np.arange(piece.rows.size), np.arange(piece.columns.size), trivial=False)
+    early = deadline.within(CERTIFY_SHARE * deadline.left)
     found = certify(piece, [block], early, "systems")[0]
     if found is not None:
         return proven_finding(piece, block, found, mark)
@@ -190,21 +194,22 @@ def certify(
     star, fits = incidence.star(matrix)
     start, place = 0, np.empty(matrix.shape[0] + 1, np.int64)
     known: dict[bytes, tuple[str, Part] | None] = {}
-    for k in wide:
+    shares = deadline.shared([blocks[k].columns.size for k in wide])
+    for k, share in zip(wide, shares, strict=True):
         block, here = blocks[k], slice(start, start + blocks[k].columns.size)
         start = here.stop
         place[block.rows], place[-1] = np.arange(block.rows.size), block.rows.size
         proof: tuple[str, Part] | None = None
         if fits[here].all():
             proof = "incidence", Network(place[star.tree[block.rows]], place[star.arcs[here]])
-        elif not deadline.passed:
+        elif not share.passed:
             inner = _cut(matrix, here, place)
             key = b"|".join(a.tobytes() for a in (inner.data, inner.indices, inner.indptr))
             if effort != "systems" and key not in known:  # blocks that recur cost little
-                known[key] = prove_tu(inner, deadline, quick=effort == "quick")
+                known[key] = prove_tu(inner, share, quick=effort == "quick")
             proof = known.get(key)
             if proof is None and effort in ("systems", "full"):
-                proof = _prove_system(normal, block, inner, deadline)
+                proof = _prove_system(normal, block, inner, share)
         if proof is not None:
             found[k] = proof[0], _block_certificate(normal, block, proof[1])
     return found
