@@ -30,6 +30,8 @@ Flags = NDArray[np.bool_]
 #: Rows and columns from which on the engine repays: its call, where numba is loaded; loading it,
 #: where machine code lies on disk; compiling it.
 REPAYS_CALL, REPAYS_LOADING, REPAYS_COMPILING = 1_000, 30_000, 100_000
+#: The same, added up over walks one after another: loading takes the time of so many small walks.
+LOADING_OVER_WALKS, COMPILING_OVER_WALKS = 200_000, 5_000_000
 #: Costs of so many orders of magnitude, on blocks of this size, are met sooner by HiGHS's dual
 #: simplex (1.9 times at 200,000 arcs; measured in the engine's benchmark).
 WIDE_COSTS, WIDE_SIZE = 6, 40_000
@@ -83,14 +85,23 @@ def glued(
     return NetworkStructure(tree, arcs)
 
 
-def repays(structure: NetworkStructure) -> bool:
-    """Whether the block is large enough for the engine, as things stand in this process."""
+def repays(structure: NetworkStructure, walks: int = 0) -> bool:
+    """Whether the engine is worth its start, as things stand in this process.
+
+    Parameters
+    ----------
+    structure : NetworkStructure
+    walks : int
+        Walks over blocks of this structure so far; more of them are then to be expected.
+    """
     size = structure.tree.shape[0] + structure.arcs.shape[0]
     if size < REPAYS_CALL:
         return False
-    if "numba" not in sys.modules and size < REPAYS_LOADING:
+    loading = size >= REPAYS_LOADING or size * walks >= LOADING_OVER_WALKS
+    if "numba" not in sys.modules and not loading:
         return False
-    return size >= REPAYS_COMPILING or compiled_before()
+    compiling = size >= REPAYS_COMPILING or size * walks >= COMPILING_OVER_WALKS
+    return compiling or compiled_before()
 
 
 def costs_too_wide(structure: NetworkStructure, costs: Whole) -> bool:

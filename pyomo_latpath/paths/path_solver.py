@@ -83,11 +83,14 @@ class LastWalk:
     box : Box
     oracle : HighsBasis, NetworkOracle or ConetworkOracle
         Standing at the optimum.
+    walks : int
+        How many there were, this one included.
     """
 
     normal: NormalForm
     box: Box
     oracle: HighsBasis | NetworkOracle | ConetworkOracle
+    walks: int
 
     def had_limits_of(self, normal: NormalForm) -> bool:
         """Whether the other block has the very same sides and bounds."""
@@ -169,7 +172,8 @@ def walk_to_optimum(
         return replace(again, note="the walk from the start plan was lost among degenerate pivots")
     if start is None and last_walk is not None and vertex.status == "optimal":
         assert not isinstance(oracle, Tableau)
-        last_walk.append(LastWalk(normal, box, oracle))
+        walks = 1 if last is None else last.walks + 1
+        last_walk.append(LastWalk(normal, box, oracle, walks))
     unproven = Proof(False, vertex.row_dual, vertex.reduced_cost, "no optimum was reached")
     return PathResult(
         status=vertex.status,
@@ -232,16 +236,22 @@ def _engine(
     last: LastWalk | None,
 ) -> tuple[Oracle, int]:
     """The engine that serves as oracle, and the largest costs it takes as they are."""
+    walks = 0 if last is None else last.walks
     if isinstance(structure, ConetworkStructure):
         # It walks no vertices, so none from a start; and without a box costs must be exact.
         exact = box.total is not None or np.abs(costs.numerators).max() <= structure.largest_cost
-        if first is None and exact and structure.fits(normal) and repays(structure.transpose):
+        if (
+            first is None
+            and exact
+            and structure.fits(normal)
+            and repays(structure.transpose, walks)
+        ):
             largest = structure.largest_cost
             conetwork = _resumed(last, ConetworkOracle, normal)
             return conetwork or ConetworkOracle(normal, structure), largest
     elif (
         structure is not None
-        and repays(structure)
+        and repays(structure, walks)
         and (first is not None or not costs_too_wide(structure, costs.numerators))
     ):
         largest = largest_cost(structure)

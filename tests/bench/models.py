@@ -6,9 +6,10 @@ import numpy as np
 import pyomo.environ as pyo
 
 
-def assignment(size: int, seed: int = 0) -> pyo.ConcreteModel:
+def assignment(size: int, seed: int = 0, cost: np.ndarray | None = None) -> pyo.ConcreteModel:
     """Every keeper one cave, every cave one keeper; size**2 binaries."""
-    cost = np.random.default_rng(seed).integers(1, 1000, (size, size)).tolist()
+    drawn = np.random.default_rng(seed).integers(1, 1000, (size, size)) if cost is None else cost
+    cost = drawn.reshape(size, size).tolist()
     model = pyo.ConcreteModel()
     model.places = pyo.RangeSet(0, size - 1)
     model.x = pyo.Var(model.places, model.places, domain=pyo.Binary)

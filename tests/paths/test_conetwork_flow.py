@@ -256,7 +256,7 @@ def test_the_compiled_engine_schedules():
 
 @pytest.mark.parametrize("repays", [False, True])
 def test_models_are_solved_by_the_engine_that_repays(monkeypatch, repays):
-    monkeypatch.setattr(path_solver, "repays", lambda structure: repays)
+    monkeypatch.setattr(path_solver, "repays", lambda structure, walks: repays)
     solution = solve(schedule(40))
     assert solution.report.proof == "exact"
     assert solution.report.walk.engine == ("conetwork" if repays else "highs")
@@ -265,7 +265,7 @@ def test_models_are_solved_by_the_engine_that_repays(monkeypatch, repays):
 
 
 def test_blocks_are_glued_to_one_network(monkeypatch):
-    monkeypatch.setattr(path_solver, "repays", lambda structure: True)
+    monkeypatch.setattr(path_solver, "repays", lambda structure, walks: True)
     rng = np.random.default_rng(3)
     # Stretches of days in each of four caves.
     days = np.array([[1, 1, 1, 0, 0], [0, 1, 1, 1, 0], [0, 0, 1, 1, 1], [1, 1, 1, 1, 1]])

@@ -169,7 +169,7 @@ def test_an_endless_improvement_comes_with_its_ray():
 
 
 def test_blocks_are_glued_to_one_network(monkeypatch):
-    monkeypatch.setattr(path_solver, "repays", lambda structure: True)
+    monkeypatch.setattr(path_solver, "repays", lambda structure, walks: True)
     A = np.kron(np.eye(3), [[1, 1, 0, 0], [0, 0, 1, 1], [1, 0, 1, 0], [0, 1, 0, 1]])
     form = LinearForm.from_arrays(
         A, row_lower=1, row_upper=1, col_lower=0, col_upper=1, cost=[3, 1, 1, 3] * 3
