@@ -6,7 +6,7 @@ Importing the package registers the solver `latpath` with Pyomo:
 >>> import pyomo_latpath as latpath
 >>> solver = pyo.SolverFactory("latpath")
 
-The functions below take a Pyomo model or a `LinearForm`.
+The functions below take a Pyomo model or a `LinearForm`; `totally_unimodular` takes a matrix.
 """
 
 from __future__ import annotations
@@ -26,6 +26,7 @@ from .forms.from_pyomo import compile_model
 from .forms.linear_form import LinearForm
 from .integrality.assess import assess as _assess_form
 from .integrality.finding import BlockFinding, Finding, Verdict, Witness
+from .integrality.regular.decision import TuDecision, totally_unimodular
 from .solution import Move, RouteReport, Solution, WalkReport
 from .starts import StartError
 from .stay import StayOrChange, StayPoint
@@ -47,6 +48,7 @@ __all__ = [
     "StartError",
     "StayOrChange",
     "StayPoint",
+    "TuDecision",
     "Verdict",
     "WalkReport",
     "Witness",
@@ -58,6 +60,7 @@ __all__ = [
     "solve",
     "solve_many",
     "stay_or_change",
+    "totally_unimodular",
 ]
 
 
