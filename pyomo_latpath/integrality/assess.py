@@ -1,8 +1,8 @@
 """Assessment: for each block a certificate, else vertices to look at, else "undecided".
 
 Certificates come first, and of these the cheapest: one look at all blocks at once, then block by
-block the linear-time structures, reductions, what these leave, and equality systems at last. A
-new structure is one new module, and one line in `RECOGNISERS`.
+block the linear-time structures, reductions, what these leave; at last sums of such matrices, and
+equality systems. A new structure is one new module, and one line in `RECOGNISERS`.
 """
 
 from __future__ import annotations
@@ -29,12 +29,18 @@ from ..forms.normalise import NormalForm, normalise
 from ..forms.numbers import EXACT, Integers, simplest_fraction
 from . import incidence, interval, network, reductions, unimodular
 from .finding import BlockFinding, Finding, Verdict
+from .regular.clock import OutOfTime
+from .regular.decompose import take_apart
+from .regular.signs import odd_hole
+from .regular.splitting import Contradiction
 from .sampling import program_of
 from .verdicts import conflict_finding, proven_finding, sampled_finding
 
 Recogniser = Callable[[sp.csc_array, Deadline], Part | None]
 #: Share of the time limit that certificates may take.
 CERTIFY_SHARE = 0.5
+#: Seconds that taking a matrix apart may take in an assessment.
+SUM_SECONDS = 10.0
 
 
 def _at_once(recognise: Callable[[sp.csc_array], Part | None]) -> Recogniser:
@@ -63,8 +69,8 @@ RECOGNISERS: tuple[tuple[str, Recogniser], ...] = (
     ("network", network.recognise),
     ("conetwork", _transposed(network.recognise)),
 )
-#: What to look for: structures by `QUICK` alone; reductions and `RECOGNISERS` too; systems of
-#: equations alone, where the others have failed; all of these.
+#: What to look for: structures by `QUICK` alone; reductions and `RECOGNISERS` too; sums and systems
+#: of equations alone, where the others have failed; all of these.
 Effort = Literal["quick", "linear", "systems", "full"]
 
 
@@ -168,8 +174,8 @@ def certify(
     deadline : Deadline
         Blocks that were not looked at in time have no certificate.
     effort : 'quick', 'linear', 'systems' or 'full'
-        Tests that take about as long as reading the matrix; all in near-linear time; systems
-        of equations alone, where the others have failed; all.
+        Tests that take about as long as reading the matrix; all in near-linear time; sums and
+        systems of equations alone, where the others have failed; all.
 
     Returns
     -------
@@ -209,7 +215,8 @@ def certify(
                 known[key] = prove_tu(inner, share, quick=effort == "quick")
             proof = known.get(key)
             if proof is None and effort in ("systems", "full"):
-                proof = _prove_system(normal, block, inner, share)
+                half = share.within(share.left / 2)
+                proof = _prove_sum(inner, half) or _prove_system(normal, block, inner, share)
         if proof is not None:
             found[k] = proof[0], _block_certificate(normal, block, proof[1])
     return found
@@ -234,11 +241,27 @@ def _prove_system(
         return None
 
     def rest(reduced: sp.csc_array) -> Part | None:
-        proof = prove_tu(reduced, deadline)
+        proof = prove_tu(reduced, deadline) or _prove_sum(reduced, deadline)
         return None if proof is None else proof[1]
 
     part = unimodular.recognise(matrix, equality, sides.astype(np.int64), rest, deadline)
     return None if part is None else ("unimodular", part)
+
+
+def _prove_sum(matrix: sp.csc_array, deadline: Deadline) -> tuple[str, Part] | None:
+    """Prove a matrix totally unimodular that has no other structure, by taking it apart.
+
+    Signs that contradict each other are found soon, and most matrices that are not TU have such.
+    """
+    if (np.abs(matrix.data) != 1).any():
+        return None
+    deadline = deadline.within(SUM_SECONDS)
+    try:
+        if odd_hole(matrix, deadline) is not None:
+            return None
+        return "sum", take_apart(matrix, deadline)
+    except (Contradiction, OutOfTime):
+        return None
 
 
 def prove_tu(
