@@ -10,8 +10,13 @@ from ..forms.blocks import Block
 from ..forms.normalise import NormalForm
 from ..highs import LinearProgram, LpResult
 from .finding import BlockFinding, Verdict
+from .regular.clock import OutOfTime
+from .regular.conflict import determinant
+from .regular.signs import odd_hole
 from .sampling import Sample, sample_vertices
 
+#: Seconds that the search for what speaks against total unimodularity may take.
+REASON_SECONDS = 0.1
 #: Why the structure makes all vertices whole.
 BECAUSE = {
     "trivial": "each row bounds one column, or no column is integer",
@@ -19,7 +24,7 @@ BECAUSE = {
     "interval": "the nonzeros of each column are consecutive rows",
     "network": "a network matrix: each column is a path in a tree",
     "conetwork": "the transpose of a network matrix: each row is a path in a tree",
-    "sum": "put together from network matrices (Seymour 1980)",
+    "sum": "put together from network matrices, their transposes and R10 (Seymour 1980)",
     "unimodular": "an equality system with a unimodular matrix (Schrijver 1986, section 19.1)",
 }
 
@@ -96,7 +101,7 @@ def sampled_finding(
         verdict, reason = Verdict.UNDECIDED, "it has semicontinuous columns: no linear relaxation"
     else:
         sample = sample_vertices(piece, samples=samples, seed=seed, deadline=deadline, first=first)
-        verdict, reason = _judge(piece, sample, samples)
+        verdict, reason = _judge(piece, sample, samples, deadline)
     return BlockFinding(
         rows=piece.rows,
         columns=piece.columns,
@@ -109,13 +114,15 @@ def sampled_finding(
     )
 
 
-def _judge(piece: NormalForm, sample: Sample, asked: int) -> tuple[Verdict, str]:
+def _judge(
+    piece: NormalForm, sample: Sample, asked: int, deadline: Deadline
+) -> tuple[Verdict, str]:
     if sample.infeasible:
         if sample.conflict is None:
             return Verdict.UNDECIDED, "it seems to be infeasible, but not beyond doubt"
         rows = _listed([piece.form.row_names[int(piece.rows[i])] for i in sample.conflict])
         return Verdict.PROVEN, f"infeasible: no point within all bounds satisfies {rows}"
-    obstacle = _obstacle(piece)
+    obstacle = _obstacle(piece, deadline)
     if sample.witness is not None:
         integer = dict(zip(piece.columns.tolist(), piece.integer.tolist(), strict=True))
         column, value = next(
@@ -140,7 +147,7 @@ def _listed(names: list[str]) -> str:
     )
 
 
-def _obstacle(piece: NormalForm) -> str:
+def _obstacle(piece: NormalForm, deadline: Deadline) -> str:
     """Why there is no certificate, as far as a look at the numbers tells."""
     form = piece.form
     for kind, names, places, whole, what in (
@@ -159,4 +166,20 @@ def _obstacle(piece: NormalForm) -> str:
         column = form.col_names[int(piece.columns[place])]
         entry = piece.matrix.data[large[0]]
         return f"row {row!r} has the coefficient {entry:g} at column {column!r} after scaling"
-    return "the matrix has no structure known here"
+    return _contradiction(piece, deadline) or "the matrix has no structure known here"
+
+
+def _contradiction(piece: NormalForm, deadline: Deadline) -> str | None:
+    """Name an odd cycle, which shows that a matrix of 0, 1 and -1 is not totally unimodular."""
+    matrix = piece.matrix.astype(np.int64)
+    try:
+        lines = odd_hole(matrix, deadline.within(REASON_SECONDS))
+    except OutOfTime:
+        return None
+    if lines is None:
+        return None
+    m = matrix.shape[0]
+    rows, columns = ([k for k in lines if k < m], [k - m for k in lines if k >= m])
+    value = determinant(matrix[rows, :][:, columns].toarray())
+    names = _listed([piece.form.row_names[int(piece.rows[i])] for i in sorted(rows)])
+    return f"{names} and as many columns have determinant {value}"
