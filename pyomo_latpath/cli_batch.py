@@ -20,7 +20,14 @@ from .batch.family import Family
 from .batch.inputs import InputError, family_of, from_paths
 from .batch.instance import Instance
 from .batch.journal import Journal, JournalError
-from .batch.output import summary_text, write_csv, write_parquet, write_summary
+from .batch.output import (
+    RESULTS,
+    make_folder,
+    summary_text,
+    write_csv,
+    write_parquet,
+    write_summary,
+)
 from .batch.page import batch_page
 from .batch.progress import Progress
 from .batch.record import Summary
@@ -121,11 +128,14 @@ def batch(
     try:
         instances = _instances(paths, data, changes)
         tasks = Tasks(instances, settings, compare or 0)
-        (out / "plans" if plans else out).mkdir(parents=True, exist_ok=True)
+        out.mkdir(parents=True, exist_ok=True)
         with ExitStack() as stack:
             options = {"changes": changes, "compare": compare, **settings.plain()}
             journal = stack.enter_context(Journal(out / "journal.jsonl", options))
             _refuse_other_inputs(journal, instances)
+            make_folder(out, RESULTS)
+            if plans:
+                make_folder(out / "plans", ["*.csv"])
             crew = _crew(stack, cluster, workers, settings)
             shown = stack.enter_context(Progress(tasks.total, not quiet))
             ending = _work(tasks, crew, journal, Deadline(stop_after), shown, as_json)
@@ -179,6 +189,7 @@ def _work(
                 click.echo(done.record.to_json())
     except KeyboardInterrupt:
         early = INTERRUPTED
+        journal.read()
         shown.say("stopped; run the same command again to go on")
     except (BatchError, JournalError) as error:
         early = STOPPED

@@ -18,7 +18,7 @@ from .instance import BrokenInstance, FileInstance, FormInstance, Instance
 from .scripts import ScriptInstance
 
 #: What Pyomo calls a model that has no name.
-NAMELESS = "unknown"
+NAMELESS = ("ConcreteModel", "AbstractModel", "unknown")
 
 
 class InputError(ValueError):
@@ -83,7 +83,7 @@ def _from_item(number: int, item: Any) -> Iterable[Instance]:
         return [cast(Instance, item)]
     if not hasattr(item, "component_data_objects"):
         raise TypeError(f"item {number} of the batch is a {type(item).__name__}, and no instance")
-    own = "" if item.name == NAMELESS else item.name
+    own = "" if item.name in NAMELESS else item.name
     return [_from_model(name or own or f"instance {number}", item)]
 
 

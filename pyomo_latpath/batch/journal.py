@@ -65,17 +65,16 @@ class Journal:
     """
 
     def __init__(self, path: Path, options: Mapping[str, Any]) -> None:
-        self.path = path
+        self.path, self._options = path, dict(options)
         self.notes: list[str] = []
         self.replaced = 0
-        self._places: dict[str, int] = {}
         try:
             self._file: IO[bytes] = open(path, "ab", buffering=0)  # noqa: SIM115
         except OSError as error:
             raise JournalError(f"{path}: {_words(error)}") from error
         try:
             _lock(self._file, path)
-            self._end = self._read(options)
+            self.read()
             self._reader: IO[bytes] = open(path, "rb")  # noqa: SIM115
         except BaseException:
             self._file.close()
@@ -133,13 +132,13 @@ class Journal:
         except OSError as error:
             self._file.truncate(self._end)
             raise JournalError(
-                f"{self.path}: {_words(error)}; the {len(self)} records in it are safe: make room "
-                "and run the same command again to go on"
+                f"{self.path}: {_words(error)}; the {len(self)} records in it are safe"
             ) from error
 
-    def _read(self, options: Mapping[str, Any]) -> int:
-        """Find the records, cut off a half line, and return where the next one goes."""
-        head = {"schema": SCHEMA, "options": dict(options)}
+    def read(self) -> None:
+        """Find the records anew, and cut off a half line; an interrupt may have left both."""
+        self._places: dict[str, int] = {}
+        head = {"schema": SCHEMA, "options": self._options}
         end = place = 0
         first = json.dumps(head).encode() + b"\n"
         with open(self.path, "rb") as lines:
@@ -153,12 +152,11 @@ class Journal:
                     self._check_head(line, head)
                 else:
                     self._note_place(place, number, line)
+        self._end = end
         if end == 0:
-            self._end = 0
             self._write(first)
+            self._end = len(first)
             _sync_folder(self.path.parent)
-            return len(first)
-        return end
 
     def _cut(self, place: int, number: int) -> int:
         self._file.truncate(place)

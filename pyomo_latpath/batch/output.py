@@ -14,6 +14,8 @@ from typing import Any
 from ..cli_output import WIDTH, number, whole_file
 from .record import BatchRecord, Comparison, Summary, Unsolved
 
+#: What a batch writes beside its journal.
+RESULTS = ("table.csv", "table.parquet", "summary.json", "report.html")
 STAGES = ("compile", "assess", "solve", "proof")
 _PLAIN = tuple(item.name for item in fields(BatchRecord) if item.name != "seconds")
 #: Columns of the table: all fields of a record, its seconds by stage.
@@ -24,6 +26,14 @@ NUMBERS = ("objective", "bound", "highs_seconds", *(f"{stage}_seconds" for stage
 CHUNK = 10_000
 #: Unsolved instances, and lines of one reason, that the text at the end shows.
 SHOWN, REASON_LINES = 10, 3
+
+
+def make_folder(folder: Path, names: Iterable[str]) -> None:
+    """Make a folder, or clear one of the drafts that a killed run may have left of these files."""
+    folder.mkdir(parents=True, exist_ok=True)
+    for name in names:
+        for draft in folder.glob(f".{name}.*"):
+            draft.unlink(missing_ok=True)
 
 
 def row_of(record: BatchRecord) -> tuple[Any, ...]:

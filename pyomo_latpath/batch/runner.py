@@ -16,6 +16,7 @@ from .executors import InExecutor
 from .inputs import instances_of
 from .instance import Instance
 from .journal import Journal
+from .output import make_folder
 from .progress import Progress
 from .record import BatchRecord
 from .task import Settings, Task
@@ -110,7 +111,7 @@ def solve_many(
         if value is not None and not value >= least:
             raise ValueError(f"{name} is {value}; it must be {least} or more")
     if plans is not None:
-        Path(plans).mkdir(parents=True, exist_ok=True)
+        make_folder(Path(plans), ["*.csv"])
     settings = Settings(
         time_limit=time_limit,
         rel_gap=rel_gap,

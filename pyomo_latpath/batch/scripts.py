@@ -49,7 +49,7 @@ class ScriptInstance:
             Names the file, and the line of the script where it failed.
         """
         script = Path(self.script)
-        module = _module(script.resolve(), script.stat().st_mtime_ns)
+        module = _module(script, script.stat().st_mtime_ns)
         model = getattr(module, "model", None)
         build = getattr(module, "create_model", None)
         if callable(build) and (model is None or self.data is not None):
@@ -93,16 +93,17 @@ def _arguments(path: Path) -> dict[str, Any]:
 def _module(path: Path, changed: int) -> ModuleType:
     """Run a script, as if it were imported; files beside it can be imported by it."""
     del changed
-    spec = importlib.util.spec_from_file_location(f"latpath_script_{abs(hash(path))}", path)
+    place = path.resolve()
+    spec = importlib.util.spec_from_file_location(f"latpath_script_{abs(hash(place))}", place)
     if spec is None or spec.loader is None:
         raise ModelFileError(path, None, "it is no Python file")
     module = importlib.util.module_from_spec(spec)
     sys.modules[spec.name] = module
-    sys.path.insert(0, str(path.parent))
+    sys.path.insert(0, str(place.parent))
     try:
         _run(path, spec.loader.exec_module, module)
     finally:
-        sys.path.remove(str(path.parent))
+        sys.path.remove(str(place.parent))
     return module
 
 
@@ -114,7 +115,8 @@ def _run(path: Path, function: Any, *arguments: Any, **keywords: Any) -> Any:
         raise
     except BaseException as error:
         frames = traceback.extract_tb(error.__traceback__)
-        line = next((f.lineno for f in reversed(frames) if Path(f.filename) == path), None)
+        place = str(path.resolve())
+        line = next((f.lineno for f in reversed(frames) if f.filename == place), None)
         line = error.lineno if isinstance(error, SyntaxError) else line
         told = f"{type(error).__name__}: {error}".strip(": ")
         raise ModelFileError(path, line, f"it fails with {told}") from error

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import threading
 import time
 import traceback
 from collections.abc import Sequence
@@ -97,6 +98,9 @@ class Lost:
     reason: str
 
 
+#: HiGHS has one set of threads for a whole process: two instances in it must take turns.
+_TURN = threading.Lock()
+
 #: What comes back of a task.
 Answer = BatchRecord | Lost
 
@@ -136,7 +140,8 @@ def run_task(task: Task) -> BatchRecord:
     'lost.mps: no such file or directory'
     """
     try:
-        return _run(task)
+        with _TURN:
+            return _run(task)
     except MemoryError:
         raise
     except Exception:

@@ -46,13 +46,12 @@ class Processes:
     count : int
         Processes at most; they are started as tasks come in.
     time_limit : float or None
-        Seconds that a task promises to take; it is ended `grace` seconds later.
-    grace : float
+        Seconds that a task promises to take; it is ended `GRACE` seconds later.
     """
 
-    def __init__(self, count: int, time_limit: float | None, grace: float = GRACE) -> None:
+    def __init__(self, count: int, time_limit: float | None) -> None:
         self.count = count
-        self.patience = math.inf if time_limit is None else time_limit + grace
+        self.patience = math.inf if time_limit is None else time_limit + GRACE
         self.time_limit = time_limit
         self.waiting: deque[Task] = deque()
         self.workers: list[_Worker] = []
