@@ -25,7 +25,7 @@ from .words import inequality, listed
 #: Rounds, cuts of one round, and cuts after which no further round begins.
 MOST_ROUNDS, CUTS_A_ROUND, MANY_CUTS = 10, 30, 100
 #: Rounds without a better bound after which cutting ends, and the relative change that counts.
-PATIENCE, BETTER = 2, 1e-7
+PATIENCE, BETTER = 3, 1e-7
 
 
 def cut_rounds(normal: NormalForm, deadline: Deadline) -> list[Cut]:

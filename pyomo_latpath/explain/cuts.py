@@ -33,6 +33,8 @@ class System:
     col_lower, col_upper : ndarray, shape (n,), float64
         Whole or infinite.
     integer : ndarray, shape (n,), bool
+    cuts : int
+        So many of the last rows are cuts themselves.
     """
 
     matrix: sp.csr_array
@@ -41,6 +43,7 @@ class System:
     col_lower: Floats
     col_upper: Floats
     integer: Flags
+    cuts: int = 0
 
     def terms(self, row: int) -> list[tuple[int, int]]:
         """Return the columns of a row with their coefficients."""
@@ -57,6 +60,7 @@ class System:
             matrix=sp.vstack([self.matrix, rows_of(cuts, self.integer.size)], format="csr"),
             row_lower=np.append(self.row_lower, np.full(len(cuts), -np.inf)),
             row_upper=np.append(self.row_upper, [float(cut.side) for cut in cuts]),
+            cuts=self.cuts + len(cuts),
         )
 
 

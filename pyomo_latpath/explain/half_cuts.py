@@ -36,12 +36,14 @@ class _Generators:
     """Vectors over GF(2), as Python integers: bit 0 the right side, then one bit a column.
 
     The first generators are row sides, (row, sign) each; one follows for each column that is
-    off its bounds.
+    off its bounds. Rows that are cuts themselves are used with reluctance: what follows from the
+    model's own rows is easier to read, and as a rule stronger.
     """
 
     sides: list[tuple[int, int]]
     vectors: list[int]
     costs: list[float]
+    reluctant: list[bool]
     neighbours: list[list[int]]
 
 
@@ -63,8 +65,9 @@ def half_cuts(
     Returns
     -------
     list of Cut
-        Smallest total slack first, then fewest rows; each has a row that those before it do
-        without. Not all cuts there are: an empty list proves nothing.
+        Smallest total slack first, then fewest rows that are cuts, then fewest rows; each has a
+        row that those before it do without. One is found wherever there is one without any
+        slack; otherwise an empty list proves nothing.
 
     Examples
     --------
@@ -76,7 +79,7 @@ def half_cuts(
     """
     deadline = deadline or Deadline(None)
     generators = _generators(system, x)
-    candidates: dict[int, tuple[float, int]] = {}
+    candidates: dict[int, tuple[float, int, int]] = {}
     for order in _orders(generators):
         if deadline.passed:
             break
@@ -109,6 +112,7 @@ def _generators(system: System, x: Floats) -> _Generators:
     sides: list[tuple[int, int]] = []
     vectors: list[int] = []
     costs: list[float] = []
+    reluctant: list[bool] = []
     neighbours: list[list[int]] = []
     for sign, limit in ((1, system.row_upper), (-1, system.row_lower)):
         slack = np.maximum(sign * (limit - activity), 0.0)
@@ -121,13 +125,15 @@ def _generators(system: System, x: Floats) -> _Generators:
             sides.append((row, sign))
             vectors.append((right & 1) | sum(2 << k for k in bits))
             costs.append(float(slack[row]) if slack[row] > NEAR else 0.0)
+            reluctant.append(row >= slack.size - system.cuts)
             neighbours.append(bits)
     for j, k in bit_of.items():
         if distance[j] < 1 - NEAR:
             vectors.append(2 << k)
             costs.append(float(distance[j]))
+            reluctant.append(False)
             neighbours.append([k])
-    return _Generators(sides, vectors, costs, neighbours)
+    return _Generators(sides, vectors, costs, reluctant, neighbours)
 
 
 def _orders(generators: _Generators) -> Iterable[list[int]]:
@@ -140,8 +146,8 @@ def _orders(generators: _Generators) -> Iterable[list[int]]:
     step = max(1, math.ceil(len(columns) / MOST_ORDERS))
     for start in columns[::step] or [0]:
         rank = _ranks(generators, holders, start)
-        places = sorted(zip(generators.costs, rank, range(len(rank)), strict=True))
-        yield [g for _, _, g in places]
+        places = zip(generators.costs, generators.reluctant, rank, range(len(rank)), strict=True)
+        yield [g for *_, g in sorted(places)]
 
 
 def _ranks(generators: _Generators, holders: dict[int, list[int]], start: int) -> list[int]:
@@ -200,10 +206,13 @@ def _shortened(generators: _Generators, members: int, even: list[int]) -> int:
     return members
 
 
-def _weight(generators: _Generators, members: int) -> tuple[float, int]:
-    """Total slack, then size."""
-    total = sum(generators.costs[g] for g in _bits(members))
-    return round(total, 9), members.bit_count()
+def _weight(generators: _Generators, members: int) -> tuple[float, int, int]:
+    """Total slack, then the number of cuts, then the number of all generators."""
+    total, cuts = 0.0, 0
+    for g in _bits(members):
+        total += generators.costs[g]
+        cuts += generators.reluctant[g]
+    return round(total, 9), cuts, members.bit_count()
 
 
 def _bits(members: int) -> Iterable[int]:
