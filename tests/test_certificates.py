@@ -11,6 +11,7 @@ from brute_force import is_tu, network_matrix
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import random_form
+from system_models import FAMILIES
 
 from pyomo_latpath.certificates import (
     KINDS,
@@ -102,22 +103,20 @@ def reduced_holds(matrix, data) -> bool:
 
 
 def unimodular_holds(matrix, data) -> bool:
-    """Multiply with one elementary matrix after the other."""
-    m = len(matrix)
+    """Do the operations in fractions, each on a whole row."""
+    m, wrong = len(matrix), False
     table = matrix.astype(object)
     for row, source, factor in data["operations"]:
         if not (0 <= row < m and 0 <= source < m):
             return False
-        step = np.array([[Fraction(int(i == j)) for j in range(m)] for i in range(m)])
-        step[row, source] = Fraction(factor)
-        if row == source:
-            if factor < 1:
-                return False
-            step[row, row] = Fraction(1, factor)
-        table = step @ table
-        if any(Fraction(x).denominator != 1 for x in table.flat):
+        if row != source:
+            table[row] = table[row] + factor * table[source]
+        elif factor < 1:
             return False
-    if any(abs(x) > 1 for x in table.flat):
+        else:
+            table[row] = table[row] * Fraction(1, factor)
+            wrong |= any(x.denominator != 1 for x in table[row])
+    if wrong or any(abs(x) > 1 for x in table.flat):
         return False
     return REST_HOLDS[data["rest"]["kind"]](table.astype(np.int64), data["rest"])
 
@@ -207,6 +206,35 @@ def test_any_change_is_refused_unless_it_is_valid_too(seed, kind):
         place = tuple(rng.integers(0, size) for size in other.shape)
         other[place] += rng.choice([-2, -1, 1])
         assert accepts_part(other, data) == HOLDS[kind](other, data), (place, data)
+
+
+@pytest.mark.parametrize("family", FAMILIES)
+def test_any_change_of_a_system_is_refused_unless_it_is_valid_too(family):
+    rng = np.random.default_rng(5)
+    system = family(15, rng)
+    part = unimodular.recognise(*system, lambda rest: prove_tu(rest)[1], Deadline(None))
+    matrix, data = system.matrix.toarray(), part.to_dict()
+    assert accepts_part(matrix, data) and unimodular_holds(matrix, data)
+    every = range(len(data["operations"]))
+    for k in rng.permutation(every)[:30].tolist():
+        for place in range(3):
+            value = data["operations"][k][place] + int(rng.choice([-1, 1]))
+            changed = change(data, ("operations", k, place), value)
+            assert accepts_part(matrix, changed) == unimodular_holds(matrix, changed), (k, place)
+    for k in rng.permutation(every)[:10].tolist():
+        without = {**data, "operations": [data["operations"][i] for i in every if i != k]}
+        assert accepts_part(matrix, without) == unimodular_holds(matrix, without), k
+
+
+def test_operations_may_make_numbers_of_any_size():
+    """Back and forth in three hundred steps, by way of numbers of hundreds of bits."""
+    there = [[k % 2, 1 - k % 2, 3] for k in range(300)]
+    back = [[row, source, -factor] for row, source, factor in reversed(there)]
+    swap = {"kind": "network", "tree": [[0, 1], [1, 2]], "arcs": [[0, 1], [1, 2]]}
+    data = {"kind": "unimodular", "operations": there + back, "rest": swap}
+    assert accepts_part(np.eye(2, dtype=np.int64), data)
+    data["operations"][299][2] = 2
+    assert not accepts_part(np.eye(2, dtype=np.int64), data)
 
 
 @settings(max_examples=60)

@@ -10,9 +10,12 @@ zero on the way. Then, last pivot first, each row loses the pivots of the later 
 
 from __future__ import annotations
 
-import heapq
+from collections import deque
 
 from .sparse_system import SparseSystem
+
+#: Columns with more entries than this are not looked at; their entries are found in the rows.
+SHORT = 4
 
 
 def triangulate(system: SparseSystem) -> list[tuple[int, int]]:
@@ -54,11 +57,34 @@ def triangulate(system: SparseSystem) -> list[tuple[int, int]]:
     return pivots
 
 
+class _Queue:
+    """Items in the order of small whole numbers; of equal ones, the first comes first."""
+
+    def __init__(self) -> None:
+        self.least = 0
+        self.items: list[deque[int]] = []
+
+    def push(self, number: int, item: int) -> None:
+        """Put an item in."""
+        while number >= len(self.items):
+            self.items.append(deque())
+        self.items[number].append(item)
+        self.least = min(self.least, number)
+
+    def pop(self) -> tuple[int, int] | None:
+        """Take the next item out."""
+        while self.least < len(self.items):
+            if self.items[self.least]:
+                return self.least, self.items[self.least].popleft()
+            self.least += 1
+        return None
+
+
 class _Lines:
     """Open rows (0 to m - 1) and columns (m to m + n - 1), those with the fewest entries first.
 
-    A line stands in the heap with each count that it has had since it was last looked at. As all
-    rows that change come back, no entry +-1 is missed.
+    A line waits under each count that it has had since it was last looked at. Rows without an
+    entry +-1 are set aside; as each comes back when it changes, none is missed.
     """
 
     def __init__(self, system: SparseSystem) -> None:
@@ -69,8 +95,8 @@ class _Lines:
             for column in row:
                 self.beyond[column] += 1
         lines = [*system.open, *range(self.m, self.m + len(self.beyond))]
-        self.heap = [(self.count(line), line) for line in lines]
-        heapq.heapify(self.heap)
+        self.waiting, self.aside = _Queue(), _Queue()
+        self._push(lines)
 
     def count(self, line: int) -> int:
         """Entries of a line; 0 for rows that are closed and columns without an open row."""
@@ -82,8 +108,8 @@ class _Lines:
     def next_unit(self) -> tuple[int, int] | None:
         """The entry +-1 to take next: in a shortest line, the one whose line across is shortest."""
         rows, holders = self.system.rows, self.system.holders
-        while self.heap:
-            count, line = heapq.heappop(self.heap)
+        while (found := self.waiting.pop()) is not None:
+            count, line = found
             if not count or count != self.count(line):
                 continue
             if line < self.m:
@@ -95,6 +121,16 @@ class _Lines:
                 best = min(units, key=lambda unit: len(rows[unit[0]]), default=None)
             if best is not None:
                 return best
+            if line < self.m:
+                self.aside.push(count, line)
+        return None
+
+    def next_aside(self) -> int | None:
+        """The shortest of all open rows, where none has an entry +-1."""
+        while (found := self.aside.pop()) is not None:
+            count, row = found
+            if count == self.count(row):
+                return row
         return None
 
     def add(self, row: int, source: int, factor: int) -> None:
@@ -109,16 +145,18 @@ class _Lines:
 
     def _push(self, lines: list[int]) -> None:
         for line in lines:
-            heapq.heappush(self.heap, (self.count(line), line))
+            count = self.count(line)
+            if line < self.m or 0 < count <= SHORT:
+                self.waiting.push(count, line)
 
 
 def _euclid(system: SparseSystem, lines: _Lines) -> tuple[int, int] | None:
     """Leave the greatest common divisor of some column in one row, or stop at an entry +-1."""
-    rows = [row for row in system.open if system.rows[row]]
-    if not rows:
+    row = lines.next_aside()
+    if row is None:
         return None
-    shortest = system.rows[min(rows, key=lambda row: len(system.rows[row]))]
-    column = min(shortest, key=lambda j: (len(system.holders[j]), abs(shortest[j])))
+    entries = system.rows[row]
+    column = min(entries, key=lambda j: (len(system.holders[j]), abs(entries[j])))
     holders = system.holders[column]
     while True:
         least = min(holders, key=lambda row: (abs(system.rows[row][column]), row))

@@ -25,8 +25,8 @@ from .hermite import diagonalise, triangulate
 from .sparse_system import GivenUp, SparseSystem
 
 #: Entries that may be changed on the way, beyond a number of times those that are there.
-MOST_WORK = 20_000_000
-MOST_TIMES = 200
+MOST_WORK = 1_000_000
+MOST_TIMES = 20
 
 
 def recognise(

@@ -1,7 +1,9 @@
 """Equality systems that are unimodular, against all of their determinants and vertices."""
 
 import itertools
+import json
 import math
+from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -9,11 +11,19 @@ import scipy.sparse as sp
 from brute_force import is_tu, maximal_minors, solve, vertices
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
+from system_models import FAMILIES, mixed_rows, sums_and_differences
 
-from pyomo_latpath.certificates import Trivial, Unimodular
+from pyomo_latpath.certificates import (
+    CertificateError,
+    Network,
+    Trivial,
+    Unimodular,
+    check_certificate,
+)
 from pyomo_latpath.deadline import Deadline
+from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.integrality import unimodular
-from pyomo_latpath.integrality.assess import prove_tu
+from pyomo_latpath.integrality.assess import assess, prove_tu
 
 
 @st.composite
@@ -122,6 +132,67 @@ def test_some_systems_are_whole_for_some_sides_only(sides, whole):
     assert (part is not None) == whole
     if whole:
         assert part.needs_sides
+
+
+def sides_of(system):
+    """As the checker asks for them."""
+    limits = zip(system.sides.tolist(), system.equality.tolist(), strict=True)
+    return [(Fraction(side) if equal else None, Fraction(side)) for side, equal in limits]
+
+
+@pytest.mark.parametrize("family", FAMILIES)
+def test_thousands_of_rows(family):
+    system = family(1500, np.random.default_rng(1))
+    assert prove_tu(system.matrix) is None
+    part = unimodular.recognise(*system, rest, Deadline(60))
+    assert isinstance(part.rest, Network)
+    assert part.needs_sides == (family is sums_and_differences)
+    again = Unimodular.from_dict(json.loads(json.dumps(part.to_dict())))
+    again.check(system.matrix)
+    again.check_sides(sides_of(system))
+
+
+def test_five_thousand_rows_of_ten_thousand_columns():
+    system = mixed_rows(5000, np.random.default_rng(2))
+    assert system.matrix.shape == (5000, 10000)
+    part = unimodular.recognise(*system, rest, Deadline(60))
+    part.check(system.matrix)
+    spoilt = system.matrix.copy()
+    spoilt.data[1234] += 1
+    with pytest.raises(CertificateError):
+        part.check(spoilt)
+
+
+@pytest.mark.parametrize("family", FAMILIES)
+def test_families_with_an_entry_changed_against_all_determinants(family):
+    rng = np.random.default_rng(3)
+    seen = set()
+    for k in range(16):
+        system = family(6, rng)
+        matrix = system.matrix.toarray()[:, :8]
+        for _ in range(k % 3):
+            matrix[tuple(rng.integers(0, size) for size in matrix.shape)] += rng.choice([-1, 1])
+        values = set(basis_determinants(matrix, system.equality)) - {0}
+        sides = matrix @ rng.integers(0, 3, matrix.shape[1])
+        whole = is_whole_for(matrix, system.equality, sides)
+        part = recognise(matrix, system.equality, sides, by_definition)
+        assert (part is not None) == (len(values) <= 1 and whole)
+        seen.add(part is not None)
+    assert seen == {True, False}
+
+
+@pytest.mark.parametrize("family", FAMILIES)
+def test_families_as_models(family):
+    system = family(100, np.random.default_rng(4))
+    low = np.where(system.equality, system.sides, system.sides - 3)
+    form = LinearForm.from_arrays(
+        system.matrix, row_lower=low, row_upper=system.sides, col_lower=0, col_upper=3, cost=0
+    )
+    finding = assess(form, samples=1)
+    assert finding.verdict == "proven"
+    assert {block.structure for block in finding.blocks} - {"trivial"} == {"unimodular"}
+    for block in finding.blocks:
+        check_certificate(form, block.certificate)
 
 
 def test_entries_of_any_size_come_from_row_operations():
