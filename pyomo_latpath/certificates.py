@@ -65,6 +65,7 @@ __all__ = [
 ]
 
 SCHEMA = "latpath-certificate/1"
+NESTED = "parts are nested too deeply"
 
 
 @dataclass(frozen=True, eq=False)
@@ -148,9 +149,13 @@ class Certificate:
         require(data.get("schema") == SCHEMA, f"the schema is not {SCHEMA!r}")
         blocks = read_value(data, "blocks", list)
         require(all(isinstance(block, dict) for block in blocks), "a block is not an object")
+        try:
+            read = tuple(BlockCertificate.from_dict(block) for block in blocks)
+        except RecursionError:
+            raise CertificateError(NESTED) from None
         return cls(
             fingerprint=read_value(data, "fingerprint", str),
-            blocks=tuple(BlockCertificate.from_dict(block) for block in blocks),
+            blocks=read,
             complete=read_value(data, "complete", bool),
         )
 
@@ -221,6 +226,8 @@ def check_certificate(form_or_matrix: Any, certificate: Certificate) -> None:
                 block.part.check_sides(claim.sides(block.rows))
     except CertificateError as error:
         raise CertificateError(f"block {k}: {error}") from None
+    except RecursionError:
+        raise CertificateError(f"block {k}: {NESTED}") from None
 
 
 class _Claim:

@@ -171,6 +171,8 @@ def _json(path: Path) -> Any:
         raise ModelFileError(path, error.lineno, f"no JSON ({error.msg})") from error
     except UnicodeDecodeError as error:
         raise ModelFileError(path, None, f"no JSON ({error})") from error
+    except RecursionError as error:
+        raise ModelFileError(path, None, "its JSON is nested too deeply") from error
 
 
 def _outcome(path: Path, name: str, options: dict[str, Any]) -> Outcome:

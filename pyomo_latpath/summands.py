@@ -124,13 +124,11 @@ class Summands:
         m, n = matrix.shape
         require((np.abs(matrix.data) <= 1).all(), "an entry is not 0, 1 or -1")
         self._rows: list[Entries] = [{} for _ in range(m)]
-        self._columns: list[Entries] = []
-        start, row, value = (a.tolist() for a in (matrix.indptr, matrix.indices, matrix.data))
-        for j in range(n):
-            here = slice(start[j], start[j + 1])
-            self._columns.append(dict(zip(row[here], value[here], strict=True)))
-            for i, entry in self._columns[j].items():
-                self._rows[i][j] = entry
+        self._columns: list[Entries] = [{} for _ in range(n)]
+        entries = matrix.tocoo()
+        for i, j, v in zip(*(x.tolist() for x in (*entries.coords, entries.data)), strict=True):
+            if v:
+                self._rows[i][j] = self._columns[j][i] = v
         self._lines: dict[Axis, list[Entries]] = {"row": self._rows, "column": self._columns}
         self._home: dict[Axis, list[int]] = {"row": [0] * m, "column": [0] * n}
         self._members: list[dict[Axis, set[int]]] = [

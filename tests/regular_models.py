@@ -217,7 +217,7 @@ def leaf(rng: np.random.Generator, kind: str, name: int, size: int, columns: int
     for node in range(1, nodes):
         ends = (node, int(rng.integers(max(0, node - 4), node)))
         graph.add_tree_arc(*(ends if rng.random() < 0.5 else ends[::-1]))
-    for _ in range(nodes):
+    for _ in range(2 * nodes):  # enough not to be planar, as a rule
         graph.add_arc(*rng.choice(nodes, 2, replace=False))
     further = rng.integers(0, 3, 2).tolist()
     if kind == "network":
@@ -240,7 +240,7 @@ def regular(
     size: int = 8,
     *,
     orders: tuple[int, ...] = (2, 3, 3, 3),
-    kinds: tuple[str, ...] = ("network", "conetwork", "R10"),
+    kinds: tuple[str, ...] = ("network", "network", "conetwork", "conetwork", "R10"),
 ) -> Piece:
     """A random sum of leaves of about `size` rows and columns each; not disguised.
 
