@@ -19,7 +19,6 @@ from collections import deque
 from dataclasses import dataclass, field, replace
 
 import numpy as np
-import scipy.sparse as sp
 
 from .certificates import BlockCertificate, Unimodular, fingerprint
 from .deadline import Deadline
@@ -72,8 +71,6 @@ class Prepared:
     blocks : list of Block
     found : list of (str, BlockCertificate) or None
         For each block.
-    asked : list of bool
-        Whether a certificate was looked for; blocks with sides that are not whole have none.
     findings : tuple of BlockFinding
         For each block with a certificate.
     groups : list of Group
@@ -85,24 +82,9 @@ class Prepared:
     normal: NormalForm
     blocks: list[Block]
     found: list[Found | None]
-    asked: list[bool]
     findings: tuple[BlockFinding, ...]
     groups: list[Group]
     rest: list[Rest]
-
-
-@dataclass(frozen=True, eq=False)
-class _Remembered:
-    """What the last solve prepared, and the matrix that it speaks of."""
-
-    matrix: sp.csc_array
-    prepared: Prepared
-
-    def speaks_of(self, matrix: sp.csc_array) -> bool:
-        return self.matrix.shape == matrix.shape and all(
-            np.array_equal(getattr(self.matrix, part), getattr(matrix, part))
-            for part in ("indptr", "indices", "data")
-        )
 
 
 def prepare(form: LinearForm, deadline: Deadline) -> Prepared:
@@ -129,29 +111,44 @@ def prepare(form: LinearForm, deadline: Deadline) -> Prepared:
     >>> again.found is first.found, again.groups[0].piece.cost
     (True, array([4., 3.]))
     """
-    held = form.memory.content
-    earlier = held.prepared if held is not None and held.speaks_of(form.matrix) else None
-    # What is remembered must not remember: the form would never be freed.
-    bare = replace(form, memory=Memory())
-    normal = normalise(bare, None if earlier is None else earlier.normal)
+    earlier = form.memory.content
+    if earlier is not None and not _same_matrix(earlier.normal.form, form):
+        earlier = None
+    if earlier is not None and _same_limits(earlier.normal.form, form):
+        return _with_other_costs(earlier, replace(form, memory=Memory()))
+    normal = normalise(_copy(form), None if earlier is None else earlier.normal.scaled)
     if normal.conflict is not None or form.semicontinuous.any():
-        return Prepared(normal, [], [], [], (), [], [])
-    if earlier is not None and normal.row_lower is earlier.normal.row_lower:
-        return _with_other_costs(earlier, normal)
+        return Prepared(normal, [], [], (), [], [])
     if earlier is not None and normal.scaled is earlier.normal.scaled:
         prepared = _with_other_limits(earlier, normal, deadline)
     else:
         blocks = blocks_of(normal)
-        asked = [certifiable(normal, block) for block in blocks]
-        found = certify(normal, blocks, deadline, "linear")
-        prepared = _grouped(normal, blocks, found, asked)
+        prepared = _grouped(normal, blocks, certify(normal, blocks, deadline, "linear"))
     if not deadline.passed:
-        kept = form.matrix.copy() if earlier is None else held.matrix
-        form.memory.content = _Remembered(kept, prepared)
+        form.memory.content = prepared
     return prepared
 
 
-def _with_other_costs(earlier: Prepared, normal: NormalForm) -> Prepared:
+def _same_matrix(form: LinearForm, other: LinearForm) -> bool:
+    one, two = form.matrix, other.matrix
+    pairs = (one.indptr, two.indptr), (one.indices, two.indices), (one.data, two.data)
+    return one.shape == two.shape and all(np.array_equal(a, b) for a, b in pairs)
+
+
+def _same_limits(form: LinearForm, other: LinearForm) -> bool:
+    names = "row_lower row_upper col_lower col_upper integer semicontinuous"
+    return all(np.array_equal(getattr(form, k), getattr(other, k)) for k in names.split())
+
+
+def _copy(form: LinearForm) -> LinearForm:
+    """Return a form to remember: out of reach of its owner, and without a memory of its own."""
+    vectors = "row_lower row_upper col_lower col_upper cost integer semicontinuous"
+    copies = {name: getattr(form, name).copy() for name in vectors.split()}
+    return replace(form, matrix=form.matrix.copy(), memory=Memory(), **copies)
+
+
+def _with_other_costs(earlier: Prepared, form: LinearForm) -> Prepared:
+    normal = earlier.normal.priced_as(form)
     groups = [
         replace(group, piece=_priced(group.piece, normal, group.columns))
         for group in earlier.groups
@@ -165,45 +162,43 @@ def _with_other_costs(earlier: Prepared, normal: NormalForm) -> Prepared:
 
 def _priced(piece: NormalForm, normal: NormalForm, columns: Integers) -> NormalForm:
     whole = columns.size == normal.columns.size
-    return replace(piece, form=normal.form, cost=normal.cost if whole else normal.cost[columns])
+    return normal if whole else replace(piece, form=normal.form, cost=normal.cost[columns])
 
 
 def _with_other_limits(earlier: Prepared, normal: NormalForm, deadline: Deadline) -> Prepared:
     """Hold each block's certificate against the new sides and bounds; look for those missing."""
-    asked = [certifiable(normal, block) for block in earlier.blocks]
-    found: list[Found | None] = [None] * len(asked)
+    found: list[Found | None] = [None] * len(earlier.blocks)
     unknown = []
-    for k, proof in enumerate(earlier.found):
-        speaks_of_sides = proof is not None and isinstance(proof[1].part, Unimodular)
-        if asked[k] and earlier.asked[k] and not speaks_of_sides:
-            found[k] = proof
-        elif asked[k]:
-            unknown.append(k)
+    for k, (block, proof) in enumerate(zip(earlier.blocks, earlier.found, strict=True)):
+        if not certifiable(normal, block):
+            continue
+        if proof is None:
+            known = certifiable(earlier.normal, block)  # and yet no certificate was found
+        else:
+            known = not isinstance(proof[1].part, Unimodular)  # these speak of the sides, too
+        found[k] = proof if known else None
+        unknown += [] if known else [k]
     if unknown:
         proofs = certify(normal, [earlier.blocks[k] for k in unknown], deadline, "linear")
         for k, proof in zip(unknown, proofs, strict=True):
             found[k] = proof
     if found != earlier.found:
-        return _grouped(normal, earlier.blocks, found, asked)
+        return _grouped(normal, earlier.blocks, found)
     return replace(
         earlier,
         normal=normal,
-        asked=asked,
         findings=_findings(normal, earlier.blocks, found),
         groups=[group.within(normal) for group in earlier.groups],
         rest=[rest.within(normal) for rest in earlier.rest],
     )
 
 
-def _grouped(
-    normal: NormalForm, blocks: list[Block], found: list[Found | None], asked: list[bool]
-) -> Prepared:
+def _grouped(normal: NormalForm, blocks: list[Block], found: list[Found | None]) -> Prepared:
     pairs = list(zip(blocks, found, strict=True))
     return Prepared(
         normal=normal,
         blocks=blocks,
         found=found,
-        asked=asked,
         findings=_findings(normal, blocks, found),
         groups=groups_of(normal, [(block, proof) for block, proof in pairs if proof]),
         rest=[

@@ -259,9 +259,11 @@ class _Held:
     at_high: Flags
 
     @classmethod
-    def between(cls, values: Whole, scale: int, lower: Floats, upper: Floats) -> _Held:
-        """Hold values / scale against limits."""
-        if scale == 1 and values.dtype != object and _whole(lower) and _whole(upper):
+    def between(
+        cls, values: Whole, scale: int, lower: Floats, upper: Floats, whole: Flags
+    ) -> _Held:
+        """Hold values / scale against limits, of which those flagged are whole or infinite."""
+        if scale == 1 and values.dtype != object and whole.all():
             exact = values.astype(np.float64)  # they lie below 2**53
             return cls((exact >= lower) & (exact <= upper), exact == lower, exact == upper)
         limits = _finite_as_whole(lower, upper)
@@ -294,15 +296,12 @@ def _standing(normal: NormalForm, x: Floats) -> _Standing | None:
     if plan is None or not normal.whole_rows.all() or (normal.integer & (np.rint(x) != x)).any():
         return None
     activity = exact_product(normal.matrix, plan)
-    rows = _Held.between(activity, scale, normal.row_lower, normal.row_upper)
-    columns = _Held.between(plan, scale, normal.col_lower, normal.col_upper)
+    sides = normal.row_lower, normal.row_upper, normal.whole_sides
+    bounds = normal.col_lower, normal.col_upper, normal.whole_bounds
+    rows = _Held.between(activity, scale, *sides)
+    columns = _Held.between(plan, scale, *bounds)
     holds = rows.inside.all() and columns.inside.all()
     return _Standing(plan, scale, rows, columns) if holds else None
-
-
-def _whole(limits: Floats) -> bool:
-    """Whether all limits are whole or infinite."""
-    return np.array_equal(np.rint(limits), limits)
 
 
 def _plan(x: Floats) -> tuple[Whole | None, int]:

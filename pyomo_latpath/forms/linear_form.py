@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any, Literal, cast
 
@@ -193,7 +193,8 @@ class LinearForm:
                 False if semicontinuous is None else semicontinuous, n, "semicontinuous"
             ),
         )
-        _refuse_bad_numbers(form)
+        _refuse_bad_entries(form)
+        _refuse_bad_data(form, ("cost", "offset", "row_lower", "col_lower"))
         return form
 
     def replace(self, **changes: Any) -> LinearForm:
@@ -231,7 +232,7 @@ class LinearForm:
         if "offset" in changes:
             changes["offset"] = float(changes["offset"])
         form = replace(self, **changes)
-        _refuse_bad_numbers(form)
+        _refuse_bad_data(form, changes)
         return form
 
 
@@ -274,10 +275,8 @@ def _names(names: Sequence[str] | None, size: int, stem: str, what: str) -> Sequ
     return names
 
 
-def _refuse_bad_numbers(form: LinearForm) -> None:
-    """Name the first entry that no solver could make sense of."""
-    if not np.isfinite(form.offset):
-        raise ValueError(f"the objective's constant is {form.offset}; it must be finite")
+def _refuse_bad_entries(form: LinearForm) -> None:
+    """Name the first coefficient that no solver could make sense of."""
     bad = ~np.isfinite(form.matrix.data)
     if bad.any():
         k = int(np.argmax(bad))
@@ -287,8 +286,14 @@ def _refuse_bad_numbers(form: LinearForm) -> None:
             f"row {form.row_names[i]!r} has the coefficient {form.matrix.data[k]} at column "
             f"{form.col_names[j]!r}; coefficients must be finite"
         )
+
+
+def _refuse_bad_data(form: LinearForm, changed: Iterable[str]) -> None:
+    """Name the first number among costs, sides and bounds that makes no sense."""
+    if "offset" in changed and not np.isfinite(form.offset):
+        raise ValueError(f"the objective's constant is {form.offset}; it must be finite")
     bad = ~np.isfinite(form.cost)
-    if bad.any():
+    if "cost" in changed and bad.any():
         j = int(np.argmax(bad))
         raise ValueError(
             f"column {form.col_names[j]!r} has the cost {form.cost[j]}; costs must be finite"
@@ -297,6 +302,8 @@ def _refuse_bad_numbers(form: LinearForm) -> None:
         ("row", form.row_names, form.row_lower, form.row_upper),
         ("column", form.col_names, form.col_lower, form.col_upper),
     ):
+        if not {f"{kind[:3]}_lower", f"{kind[:3]}_upper"} & set(changed):
+            continue
         bad = np.isnan(lower) | np.isnan(upper) | (lower == np.inf) | (upper == -np.inf)
         if bad.any():
             i = int(np.argmax(bad))

@@ -114,6 +114,10 @@ class NormalForm:
         picked |= {name: getattr(self, name)[columns] for name in by_column.split()}
         return replace(self, matrix=matrix, **picked)
 
+    def priced_as(self, form: LinearForm) -> NormalForm:
+        """Return the normal form of a form that differs in costs, offset, sense or names only."""
+        return replace(self, form=form, cost=_scaled_cost(form, self.scaled))
+
     def x_original(self, x: Floats) -> Floats:
         """Undo the column scaling: values of the kept columns in the form's units."""
         return x * self.col_num / self.col_den
@@ -127,14 +131,14 @@ class NormalForm:
         )
 
 
-def normalise(form: LinearForm, earlier: NormalForm | None = None) -> NormalForm:
+def normalise(form: LinearForm, known: ScaledMatrix | None = None) -> NormalForm:
     """Normalise a form.
 
     Parameters
     ----------
     form : LinearForm
-    earlier : NormalForm, optional
-        Of a form with the same matrix; what is the same of both is not worked out again.
+    known : ScaledMatrix, optional
+        Of a form with the same matrix; taken where the same rows and columns are kept.
 
     Returns
     -------
@@ -149,8 +153,6 @@ def normalise(form: LinearForm, earlier: NormalForm | None = None) -> NormalForm
     >>> normal.matrix.toarray(), normal.row_upper, normal.col_upper, normal.columns
     (array([[1.]]), array([1.]), array([2.]), array([1]))
     """
-    if earlier is not None and earlier.conflict is None and same_limits(form, earlier.form):
-        return replace(earlier, form=form, cost=_scaled_cost(form, earlier.scaled))
     col_lower, col_upper, moved = _round_columns(form)
     conflict = _crossed(form, "column", col_lower, col_upper)
     fixed = col_lower >= col_upper
@@ -158,10 +160,8 @@ def normalise(form: LinearForm, earlier: NormalForm | None = None) -> NormalForm
     shift = form.matrix @ value if fixed.any() else np.zeros(form.shape[0])
     columns = np.flatnonzero(~fixed)
     sided = np.isfinite(form.row_lower) | np.isfinite(form.row_upper)
-    if earlier is not None and earlier.scaled.serves(columns, sided, form.integer[columns]):
-        scaled = earlier.scaled
-    else:
-        scaled = scaled_matrix(form, columns, sided)
+    serves = known is not None and known.serves(columns, sided, form.integer[columns])
+    scaled = known if known is not None and serves else scaled_matrix(form, columns, sided)
     rows = scaled.rows
     conflict = conflict or _broken_constant(form, shift, scaled.constant)
     row_lower, row_upper, whole_sides, moved_sides = _round_sides(
@@ -200,12 +200,6 @@ def normalise(form: LinearForm, earlier: NormalForm | None = None) -> NormalForm
         conflict=conflict,
         scaled=scaled,
     )
-
-
-def same_limits(form: LinearForm, other: LinearForm) -> bool:
-    """Whether two forms with one matrix differ at most in costs, offset, sense and names."""
-    names = "row_lower row_upper col_lower col_upper integer semicontinuous"
-    return all(np.array_equal(getattr(form, k), getattr(other, k)) for k in names.split())
 
 
 def _scaled_cost(form: LinearForm, scaled: ScaledMatrix) -> Floats:
