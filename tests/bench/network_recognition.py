@@ -6,12 +6,13 @@ Run: python tests/bench/network_recognition.py [PLOT.png]
 from __future__ import annotations
 
 import sys
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from functools import partial
 from itertools import repeat
 
 import numpy as np
 import scipy.sparse as sp
-from timing import medians
+from growth import measure, plot
 
 from pyomo_latpath.integrality import network
 
@@ -103,37 +104,21 @@ KINDS: tuple[Callable[..., sp.csc_array], ...] = (
 )
 
 
+def work(kind: Callable[..., sp.csc_array]) -> Iterator[tuple[int, Callable[[], object]]]:
+    """Recognition at each size; what is found is checked, outside of the time."""
+    for size in SIZES:
+        matrix = kind(size, np.random.default_rng(0))
+        part = network.recognise(matrix)
+        assert part is not None, kind
+        part.check(matrix)
+        yield matrix.nnz, partial(network.recognise, matrix)
+
+
 def main() -> None:
     """Print seconds by size and the exponent of their growth, and plot them."""
-    curves = {}
-    for kind in KINDS:
-        nonzeros, seconds = [], []
-        for size in SIZES:
-            matrix = kind(size, np.random.default_rng(0))
-            part = network.recognise(matrix)
-            assert part is not None, kind
-            part.check(matrix)
-            nonzeros.append(matrix.nnz)
-            seconds.append(medians({"": lambda m=matrix: network.recognise(m)}, 3)[""])
-        growth = np.polyfit(np.log(nonzeros), np.log(seconds), 1)[0]
-        told = ", ".join(f"{n:,}: {s:.2f} s" for n, s in zip(nonzeros, seconds, strict=True))
-        print(f"{kind.__name__:16} {told}; growth exponent {growth:.2f}", flush=True)
-        curves[f"{kind.__name__}, exponent {growth:.2f}"] = nonzeros, seconds
+    curves = [measure(kind.__name__, work(kind)) for kind in KINDS]
     if len(sys.argv) > 1:
         plot(curves, sys.argv[1])
-
-
-def plot(curves: dict[str, tuple[list[int], list[float]]], path: str) -> None:
-    """Draw the growth curves, with a line of exponent 1 beside them."""
-    from matplotlib import pyplot
-
-    for name, (nonzeros, seconds) in curves.items():
-        pyplot.loglog(nonzeros, seconds, marker="o", label=name)
-    pyplot.loglog(SIZES, [size * 5e-6 for size in SIZES], "k:", label="5 µs a nonzero")
-    pyplot.xlabel("nonzeros")
-    pyplot.ylabel("seconds")
-    pyplot.legend()
-    pyplot.savefig(path, dpi=150)
 
 
 if __name__ == "__main__":
