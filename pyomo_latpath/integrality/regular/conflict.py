@@ -14,7 +14,7 @@ from ...deadline import Deadline
 from ...forms.numbers import Integers
 from .decompose import take_apart
 from .minors import rows_and_columns
-from .splitting import Contradiction
+from .summand import Contradiction
 
 
 def smallest_conflict(

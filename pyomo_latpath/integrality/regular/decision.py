@@ -16,7 +16,7 @@ from ...forms.numbers import Integers, read_fractions, simplest_fraction
 from .clock import OutOfTime
 from .conflict import determinant, smallest_conflict
 from .decompose import take_apart
-from .splitting import Contradiction
+from .summand import Contradiction
 
 
 @dataclass(frozen=True, eq=False)

@@ -24,7 +24,8 @@ from .clock import check_time
 from .separate import separation
 from .separation import Bits
 from .signs import odd_hole
-from .splitting import Contradiction, Summand, split_at
+from .splitting import split_at
+from .summand import Contradiction, Summand
 
 
 def take_apart(matrix: sp.csc_array, deadline: Deadline) -> Part:
@@ -98,7 +99,7 @@ class _Work:
         count, block = connected_components(links, directed=False)
         if count > 1:
             return self._take_blocks_apart(k, summand, [block == c for c in range(count)])
-        side = separation(matrix.toarray() != 0, self.deadline)
+        side = separation(matrix, self.deadline)
         split, first, second = split_at(summand, side, self.next_row, self.next_column)
         self.next_row += split.order - 1
         self.next_column += (0, 1, 4)[split.order - 1]

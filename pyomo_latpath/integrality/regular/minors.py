@@ -22,23 +22,16 @@ from ...forms.numbers import Integers
 from ..graph_realisation import is_graphic
 from ..reductions import reduce_matrix
 from .clock import check_time
-from .separation import Bits, smallest_separation
+from .separation import Links, pivot, smallest_separation
 
 
-def neither(support: Bits, deadline: Deadline) -> bool:
-    """Whether a binary matroid is neither graphic nor cographic."""
-    if min(support.shape) < 3:
+def neither(matrix: sp.csc_array, deadline: Deadline) -> bool:
+    """Whether the matroid of a matrix's nonzeros is neither graphic nor cographic."""
+    if min(matrix.shape) < 3:
         return False
-    either = any(is_graphic(csc_of(lines), deadline) for lines in (support, support.T))
+    either = is_graphic(matrix, deadline) or is_graphic(matrix.T.tocsc(), deadline)
     check_time(deadline)
     return not either
-
-
-def csc_of(dense: np.ndarray) -> sp.csc_array:
-    """A dense matrix as a canonical sparse one."""
-    columns, rows = np.nonzero(dense.T)
-    start = np.searchsorted(columns, np.arange(dense.shape[1] + 1))
-    return sp.csc_array((dense[rows, columns].astype(np.int64), rows, start), shape=dense.shape)
 
 
 def smallest(
@@ -80,27 +73,19 @@ def smallest(
     return kept
 
 
-def near(support: Bits) -> Callable[[list[int]], list[int]]:
+def near(links: Links, starts: list[int]) -> list[int]:
     """List all lines, those near to given ones first."""
-    m = support.shape[0]
-    beside = [(m + np.flatnonzero(row)).tolist() for row in support]
-    beside += [np.flatnonzero(column).tolist() for column in support.T]
-
-    def listed(starts: list[int]) -> list[int]:
-        seen = dict.fromkeys(starts)
-        queue = deque(starts)
-        for other in range(len(beside)):
-            while queue:
-                for line in beside[queue.popleft()]:
-                    if line not in seen:
-                        seen[line] = None
-                        queue.append(line)
-            if other not in seen:
-                seen[other] = None
-                queue.append(other)
-        return list(seen)
-
-    return listed
+    seen, queue = dict.fromkeys(starts), deque(starts)
+    for other in range(len(links)):
+        if other not in seen:
+            seen[other] = None
+            queue.append(other)
+        while queue:
+            for line in links[queue.popleft()]:
+                if line not in seen:
+                    seen[line] = None
+                    queue.append(line)
+    return list(seen)
 
 
 def rows_and_columns(lines: Iterable[int], m: int) -> tuple[Integers, Integers]:
@@ -109,13 +94,14 @@ def rows_and_columns(lines: Iterable[int], m: int) -> tuple[Integers, Integers]:
     return chosen[chosen < m], chosen[chosen >= m] - m
 
 
-def small_core(support: Bits, deadline: Deadline) -> list[int]:
+def small_core(matrix: sp.csc_array, links: Links, deadline: Deadline) -> list[int]:
     """Find a smallest set of lines that is neither graphic nor cographic."""
 
     def holds(lines: list[int]) -> bool:
-        return neither(support[np.ix_(*rows_and_columns(lines, len(support)))], deadline)
+        rows, columns = rows_and_columns(lines, matrix.shape[0])
+        return neither(matrix[:, columns][rows, :], deadline)
 
-    return smallest(near(support), holds)
+    return smallest(lambda kept: near(links, kept), holds)
 
 
 @dataclass(frozen=True, eq=False)
@@ -124,41 +110,41 @@ class Minor:
 
     Attributes
     ----------
-    support : ndarray, shape (m, n), bool
-    rows, columns : ndarray, int64
-        Their lines in the matroid; pivots exchange rows and columns.
+    links : Links
+        Its lines, ascending, each with its neighbours.
+    rows : frozenset of int
+        The lines that are rows.
     pivots : tuple of (int, int)
-        In their order: the lines that are exchanged, one a row and one a column.
+        In their order: pairs of lines, one a row and one a column, that were exchanged.
     """
 
-    support: Bits
-    rows: Integers
-    columns: Integers
-    pivots: tuple[tuple[int, int], ...]
+    links: Links
+    rows: frozenset[int]
+    pivots: tuple[tuple[int, int], ...] = ()
 
-    @property
-    def lines(self) -> Integers:
-        """Lines in the order of the minor's own."""
-        return np.concatenate((self.rows, self.columns))
+    def restricted(self, lines: Iterable[int]) -> Minor:
+        """The minor on some of its lines."""
+        kept = set(lines)
+        links = {line: self.links[line] & kept for line in sorted(kept)}
+        return Minor(links, self.rows & kept, self.pivots)
 
-    def restricted(self, rows: Integers, columns: Integers) -> Minor:
-        """The minor on some of the rows and columns."""
-        support = self.support[np.ix_(rows, columns)]
-        return Minor(support, self.rows[rows], self.columns[columns], self.pivots)
+    def pivoted(self, x: int, y: int) -> Minor:
+        """The minor after a pivot at two neighbours."""
+        links = {line: set(beside) for line, beside in self.links.items()}
+        pivot(links, x, y)
+        return Minor(links, self.rows ^ {x, y}, (*self.pivots, (x, y)))
 
-    def pivoted(self, row: int, column: int) -> Minor:
-        """The minor after a pivot at one of its ones."""
-        rows, columns = self.rows.copy(), self.columns.copy()
-        pivots = (*self.pivots, (int(rows[row]), int(columns[column])))
-        rows[row], columns[column] = columns[column], rows[row]
-        return Minor(pivoted(self.support, row, column), rows, columns, pivots)
-
-
-def pivoted(support: Bits, row: int, column: int) -> Bits:
-    """Exchange a row and a column over GF(2)."""
-    change = np.outer(support[:, column], support[row])
-    change[row], change[:, column] = False, False
-    return support ^ change
+    def matrix(self) -> tuple[sp.csc_array, Integers]:
+        """Its matrix, and the lines behind rows and columns."""
+        rows = [line for line in self.links if line in self.rows]
+        columns = [line for line in self.links if line not in self.rows]
+        place = {row: k for k, row in enumerate(rows)}
+        entries = [sorted(place[row] for row in self.links[column]) for column in columns]
+        index = np.array([k for places in entries for k in places], np.int64)
+        start = np.cumsum([0, *map(len, entries)])
+        matrix = (np.ones(index.size, np.int64), index, start)
+        shape = (len(rows), len(columns))
+        return sp.csc_array(matrix, shape=shape), np.array([*rows, *columns], np.int64)
 
 
 def small_minor(minor: Minor, deadline: Deadline) -> Minor:
@@ -173,8 +159,8 @@ def small_minor(minor: Minor, deadline: Deadline) -> Minor:
     deadline : Deadline
     """
     needed: set[int] = set()
-    while minor.lines.size > 12:
-        line = next(x for x in minor.lines.tolist() if x not in needed)
+    while len(minor.links) > 12:
+        line = next(line for line in minor.links if line not in needed)
         smaller = (_rigid_part(trial, deadline) for trial in _without(minor, line))
         found = next((part for part in smaller if part is not None), None)
         if found is None:
@@ -186,49 +172,28 @@ def small_minor(minor: Minor, deadline: Deadline) -> Minor:
 
 def _without(minor: Minor, line: int) -> Iterator[Minor]:
     """Both ways to lose a line: as it stands, and after a pivot."""
-    m, n = minor.support.shape
-    for turn in (False, True):
-        place = int(np.flatnonzero(minor.lines == line)[0])
-        if turn and place < m:
-            minor = minor.pivoted(place, int(np.argmax(minor.support[place])))
-            place += m
-            place = int(np.flatnonzero(minor.lines == line)[0])
-        elif turn:
-            minor = minor.pivoted(int(np.argmax(minor.support[:, place - m])), place - m)
-            place = int(np.flatnonzero(minor.lines == line)[0])
-        rows, columns = np.arange(m), np.arange(n)
-        if place < m:
-            yield minor.restricted(np.delete(rows, place), columns)
-        else:
-            yield minor.restricted(rows, np.delete(columns, place - m))
+    others = [other for other in minor.links if other != line]
+    yield minor.restricted(others)
+    yield minor.pivoted(line, min(minor.links[line])).restricted(others)
 
 
 def _rigid_part(minor: Minor, deadline: Deadline) -> Minor | None:
     """A 3-connected part that is neither graphic nor cographic, if there is one."""
-    reduction = reduce_matrix(csc_of(minor.support))
+    matrix, lines = minor.matrix()
+    reduction = reduce_matrix(matrix)
     if reduction.steps:
-        minor = minor.restricted(reduction.rows, reduction.columns)
-    if not neither(minor.support, deadline):
+        matrix = reduction.matrix
+        lines = lines[np.concatenate((reduction.rows, len(minor.rows) + reduction.columns))]
+        minor = minor.restricted(lines.tolist())
+    if not neither(matrix, deadline):
         return None
-    side = smallest_separation(minor.support)
+    side = smallest_separation(matrix)
     if side is None:
         return minor
-    for part in _parts(minor, side):
-        found = _rigid_part(part, deadline)
+    for inside in (set(lines[side].tolist()), set(lines[~side].tolist())):
+        # Any one line that meets a side of a 2-separation stands for all beyond it.
+        beyond = {line for other in inside for line in minor.links[other]} - inside
+        found = _rigid_part(minor.restricted([*inside, *sorted(beyond)[:1]]), deadline)
         if found is not None:
             return found
     return None
-
-
-def _parts(minor: Minor, side: Bits) -> Iterator[Minor]:
-    """Both parts of a 1- or 2-separation, as submatrices: a side, and a line that meets it."""
-    m = minor.support.shape[0]
-    for rows, columns in ((side[:m], side[m:]), (~side[:m], ~side[m:])):
-        rows, columns = rows.copy(), columns.copy()
-        across = ~rows & minor.support[:, columns].any(axis=1)
-        down = ~columns & minor.support[rows].any(axis=0)
-        if across.any():
-            rows[np.argmax(across)] = True
-        elif down.any():
-            columns[np.argmax(down)] = True
-        yield minor.restricted(np.flatnonzero(rows), np.flatnonzero(columns))

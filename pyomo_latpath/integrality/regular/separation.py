@@ -25,44 +25,72 @@ from scipy.sparse.csgraph import breadth_first_order, connected_components
 from ...forms.numbers import Integers
 
 Bits = NDArray[np.bool_]
+#: The neighbours of each line.
+Links = dict[int, set[int]]
 
 
-def adjacency(support: Bits) -> Bits:
-    """Adjacency between all lines.
+def links_of(matrix: sp.csc_array) -> Links:
+    """The bipartite graph of a matrix.
 
     Examples
     --------
-    >>> adjacency(np.array([[True, False]])).astype(int).tolist()
-    [[0, 1, 0], [1, 0, 0], [0, 0, 0]]
+    >>> links_of(sp.csc_array([[1, 0], [-1, 1]]))
+    {0: {2}, 1: {2, 3}, 2: {0, 1}, 3: {1}}
     """
-    m, n = support.shape
-    links = np.zeros((m + n, m + n), np.bool_)
-    links[:m, m:] = support
-    links[m:, :m] = support.T
-    return links
+    by_row, m = matrix.tocsr(), matrix.shape[0]
+    across = np.split(m + by_row.indices, by_row.indptr[1:-1])[: matrix.shape[0]]
+    down = np.split(matrix.indices, matrix.indptr[1:-1])[: matrix.shape[1]]
+    return {line: set(beside.tolist()) for line, beside in enumerate((*across, *down))}
 
 
-def residual(links: Bits, inside: Integers, outside: Integers) -> Bits:
-    """What a separation that keeps two sets apart must respect.
+def pivot(links: Links, x: int, y: int) -> None:
+    """Exchange a row and a column that are adjacent, in place, as a pivot over GF(2) does."""
+    others, beyond = links[x] - {y}, links[y] - {x}
+    for line in others:
+        links[line] ^= beyond | {x, y}
+    for line in beyond:
+        links[line] ^= others | {x, y}
+    links[x], links[y] = beyond | {y}, others | {x}
+
+
+class Residual:
+    """What a separation must respect that keeps two sets of lines apart.
 
     Parameters
     ----------
-    links : ndarray, shape (N, N), bool
-        Adjacency.
+    links : Links
     inside, outside : ndarray, int64
         Disjoint sets of lines.
-
-    Returns
-    -------
-    ndarray, shape (N, N), bool
     """
-    rest = links
-    while True:
-        places = np.argwhere(rest[np.ix_(inside, outside)])
-        if not len(places):
-            return rest
-        x, y = inside[places[0, 0]], outside[places[0, 1]]
-        rest = rest ^ np.outer(rest[:, y], rest[x])
+
+    def __init__(self, links: Links, inside: Integers, outside: Integers) -> None:
+        self._links = links
+        self._terms: list[tuple[Bits, Bits]] = []
+        for x in inside.tolist():
+            places = np.flatnonzero(self[x][outside])
+            if places.size:
+                y = int(outside[places[0]])  # x and y are a pair of Q
+                self._terms.append((self._column(y), self[x]))
+
+    def __getitem__(self, x: int) -> Bits:
+        """The lines that must be inside where x is."""
+        row = self._flags(x)
+        for weight, vector in self._terms:
+            if weight[x]:
+                row ^= vector
+        return row
+
+    def _column(self, y: int) -> Bits:
+        column = self._flags(y)
+        for weight, vector in self._terms:
+            if vector[y]:
+                column ^= weight
+        return column
+
+    def _flags(self, line: int) -> Bits:
+        flags = np.zeros(len(self._links), np.bool_)
+        flags[list(self._links[line])] = True
+        return flags
 
 
 @dataclass(frozen=True, eq=False)
@@ -92,27 +120,26 @@ class Spread:
         return way[::-1]
 
 
-def spread(rest: Bits, inside: Integers, outside: Integers) -> Spread:
-    """Follow the implications of a residual, breadth first.
+def spread(links: Links, inside: Integers, outside: Integers) -> Spread:
+    """Follow what a separation must respect that keeps two sets apart, breadth first.
 
     Examples
     --------
     Can the first row and column be a side of a 1-separation that the last column is not on?
 
-    >>> links = adjacency(np.array([[1, 0, 0], [0, 1, 1]], dtype=bool))
+    >>> links = links_of(sp.csc_array([[1, 0, 0], [0, 1, 1]]))
     >>> found = spread(links, np.array([0, 2]), np.array([4]))
     >>> found.hit, found.reached.astype(int).tolist()
     (-1, [1, 0, 1, 0, 0])
     """
-    size = len(rest)
-    barred = np.zeros(size, np.bool_)
-    barred[outside] = True
+    size, residual = len(links), Residual(links, inside, outside)
     free, parent = np.ones(size, np.bool_), np.full(size, -1)
-    free[inside] = False
+    barred = np.zeros(size, np.bool_)
+    free[inside], barred[outside] = False, True
     queue = deque(inside.tolist())
     while queue:
         x = queue.popleft()
-        fresh = np.flatnonzero(rest[x] & free)
+        fresh = np.flatnonzero(residual[x] & free)
         parent[fresh], free[fresh] = x, False
         stop = fresh[barred[fresh]]
         if stop.size:
@@ -121,16 +148,16 @@ def spread(rest: Bits, inside: Integers, outside: Integers) -> Spread:
     return Spread(~free, parent, -1)
 
 
-def smallest_separation(support: Bits) -> Bits | None:
+def smallest_separation(matrix: sp.csc_array) -> Bits | None:
     """Find a 1-separation, else a 2-separation with two lines or more on each side.
 
     A 2-separation of a connected matrix cuts some edge (a, b) of each spanning tree. With this
     pair in Q it exists if and only if the implications among the other lines do not tie all of
-    them together.
+    them together. Time and space are for matrices of up to some hundred lines.
 
     Parameters
     ----------
-    support : ndarray, shape (m, n), bool
+    matrix : scipy.sparse.csc_array, shape (m, n)
 
     Returns
     -------
@@ -139,14 +166,16 @@ def smallest_separation(support: Bits) -> Bits | None:
 
     Examples
     --------
-    >>> smallest_separation(np.array([[1, 1, 1], [1, 1, 0], [0, 0, 1]], dtype=bool)).astype(int)
+    >>> smallest_separation(sp.csc_array([[1, 1, 1], [1, 1, 0], [0, 0, 1]])).astype(int)
     array([0, 0, 0, 1, 1, 0])
-    >>> wheel = np.array([[1, 0, 1], [1, 1, 0], [0, 1, 1]], dtype=bool)
+    >>> wheel = sp.csc_array([[1, 0, 1], [1, 1, 0], [0, 1, 1]])
     >>> smallest_separation(wheel) is None
     True
     """
-    links = adjacency(support)
-    size = len(links)
+    m, size = matrix.shape[0], sum(matrix.shape)
+    links = np.zeros((size, size), np.bool_)
+    links[:m, m:] = matrix.toarray() != 0
+    links |= links.T
     graph = sp.csr_array(links)
     count, label = connected_components(graph, directed=False)
     if count > 1:
@@ -173,7 +202,7 @@ def _last(within: Bits, label: Integers, count: int) -> int:
     return int(np.argmin(leaves))
 
 
-def three_separations(support: Bits) -> list[Bits]:
+def three_separations(matrix: sp.csc_array) -> list[Bits]:
     """Find all 3-separations into two halves, by enumeration: for small matrices alone.
 
     Returns
@@ -181,8 +210,8 @@ def three_separations(support: Bits) -> list[Bits]:
     list of ndarray, shape (m + n,), bool
         The sides with line 0.
     """
-    size = sum(support.shape)
-    links = [sum(1 << y for y in np.flatnonzero(row).tolist()) for row in adjacency(support)]
+    size = sum(matrix.shape)
+    links = [sum(1 << y for y in beside) for beside in links_of(matrix).values()]
     found = []
     for others in combinations(range(1, size), size // 2 - 1):
         side = (0, *others)
