@@ -28,7 +28,7 @@ from .forms.normalise import NormalForm, normalise
 from .forms.numbers import Integers
 from .grouping import Group, groups_of
 from .highs import LinearProgram
-from .integrality.assess import certifiable, certify
+from .integrality.assess import KnownProofs, certifiable, certify
 from .integrality.finding import BlockFinding
 from .integrality.verdicts import proven_finding
 
@@ -77,6 +77,9 @@ class Prepared:
         The blocks with certificates.
     rest : list of Rest
         The others.
+    recognition : str
+        'found' where recognition looked at the matrix, 'stored' where a store had proofs of it,
+        'remembered' where an earlier solve had left them.
     """
 
     normal: NormalForm
@@ -85,9 +88,10 @@ class Prepared:
     findings: tuple[BlockFinding, ...]
     groups: list[Group]
     rest: list[Rest]
+    recognition: str
 
 
-def prepare(form: LinearForm, deadline: Deadline) -> Prepared:
+def prepare(form: LinearForm, deadline: Deadline, store: KnownProofs | None = None) -> Prepared:
     """Make a form ready to be solved, by what is remembered of its matrix as far as that goes.
 
     Parameters
@@ -95,6 +99,8 @@ def prepare(form: LinearForm, deadline: Deadline) -> Prepared:
     form : LinearForm
     deadline : Deadline
         Blocks that are not looked at in time have no certificate.
+    store : KnownProofs, optional
+        Asked for the proofs that are not remembered.
 
     Returns
     -------
@@ -118,12 +124,13 @@ def prepare(form: LinearForm, deadline: Deadline) -> Prepared:
         return _with_other_costs(earlier, replace(form, memory=Memory()))
     normal = normalise(_copy(form), None if earlier is None else earlier.normal.scaled)
     if normal.conflict is not None or form.semicontinuous.any():
-        return Prepared(normal, [], [], (), [], [])
+        return Prepared(normal, [], [], (), [], [], "found")
     if earlier is not None and normal.scaled is earlier.normal.scaled:
-        prepared = _with_other_limits(earlier, normal, deadline)
+        prepared = _with_other_limits(earlier, normal, deadline, store)
     else:
         blocks = blocks_of(normal)
-        prepared = _grouped(normal, blocks, certify(normal, blocks, deadline, "linear"))
+        found, recognition = _certify(normal, blocks, deadline, store)
+        prepared = _grouped(normal, blocks, found, recognition)
     if not deadline.passed:
         form.memory.content = prepared
     return prepared
@@ -157,7 +164,7 @@ def _with_other_costs(earlier: Prepared, form: LinearForm) -> Prepared:
         replace(block, piece=_priced(block.piece, normal, block.block.columns))
         for block in earlier.rest
     ]
-    return replace(earlier, normal=normal, groups=groups, rest=rest)
+    return replace(earlier, normal=normal, groups=groups, rest=rest, recognition="remembered")
 
 
 def _priced(piece: NormalForm, normal: NormalForm, columns: Integers) -> NormalForm:
@@ -165,7 +172,9 @@ def _priced(piece: NormalForm, normal: NormalForm, columns: Integers) -> NormalF
     return normal if whole else replace(piece, form=normal.form, cost=normal.cost[columns])
 
 
-def _with_other_limits(earlier: Prepared, normal: NormalForm, deadline: Deadline) -> Prepared:
+def _with_other_limits(
+    earlier: Prepared, normal: NormalForm, deadline: Deadline, store: KnownProofs | None
+) -> Prepared:
     """Hold each block's certificate against the new sides and bounds; look for those missing."""
     found: list[Found | None] = [None] * len(earlier.blocks)
     unknown = []
@@ -178,22 +187,36 @@ def _with_other_limits(earlier: Prepared, normal: NormalForm, deadline: Deadline
             known = not isinstance(proof[1].part, Unimodular)  # these speak of the sides, too
         found[k] = proof if known else None
         unknown += [] if known else [k]
+    recognition = "remembered"
     if unknown:
-        proofs = certify(normal, [earlier.blocks[k] for k in unknown], deadline, "linear")
+        blocks = [earlier.blocks[k] for k in unknown]
+        proofs, recognition = _certify(normal, blocks, deadline, store)
         for k, proof in zip(unknown, proofs, strict=True):
             found[k] = proof
     if found != earlier.found:
-        return _grouped(normal, earlier.blocks, found)
+        return _grouped(normal, earlier.blocks, found, recognition)
     return replace(
         earlier,
         normal=normal,
         findings=_findings(normal, earlier.blocks, found),
         groups=[group.within(normal) for group in earlier.groups],
         rest=[rest.within(normal) for rest in earlier.rest],
+        recognition=recognition,
     )
 
 
-def _grouped(normal: NormalForm, blocks: list[Block], found: list[Found | None]) -> Prepared:
+def _certify(
+    normal: NormalForm, blocks: list[Block], deadline: Deadline, store: KnownProofs | None
+) -> tuple[list[Found | None], str]:
+    """Certificates of blocks, and whether a store had any of them."""
+    before = 0 if store is None else store.recalled
+    found = certify(normal, blocks, deadline, "linear", store)
+    return found, "stored" if store is not None and store.recalled > before else "found"
+
+
+def _grouped(
+    normal: NormalForm, blocks: list[Block], found: list[Found | None], recognition: str
+) -> Prepared:
     pairs = list(zip(blocks, found, strict=True))
     return Prepared(
         normal=normal,
@@ -206,6 +229,7 @@ def _grouped(normal: NormalForm, blocks: list[Block], found: list[Found | None])
             for block, proof in pairs
             if proof is None
         ],
+        recognition=recognition,
     )
 
 

@@ -34,13 +34,13 @@ from .forms.plan import feasible_start, largest_violation
 from .grouping import Group
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, check_settings
-from .integrality.assess import certify
+from .integrality.assess import KnownProofs, certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.implied import mostly_implied
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding
 from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
-from .prepared import Rest, prepare
+from .prepared import Prepared, Rest, prepare
 from .proof import Proof, prove_optimal, prove_unbounded, shortfall, whole_costs
 from .solution import RouteReport, Solution
 from .why import telling, why
@@ -86,6 +86,7 @@ class _Request:
     fixed_plan_prices: bool
     deadline: Deadline
     clock: _Clock
+    store: KnownProofs | None
 
 
 def solve(
@@ -102,6 +103,7 @@ def solve(
     fixed_plan_prices: bool = False,
     log: Callable[[str], None] | None = None,
     compile_seconds: float = 0.0,
+    store: KnownProofs | None = None,
 ) -> Solution:
     """Solve a form by the route that its integrality allows.
 
@@ -130,6 +132,8 @@ def solve(
         Takes HiGHS's log, line by line.
     compile_seconds : float
         Spent before; reported.
+    store : KnownProofs, optional
+        Certificates kept from other solves, say a `batch.store.CertificateStore`.
 
     Returns
     -------
@@ -165,18 +169,19 @@ def solve(
         fixed_plan_prices=fixed_plan_prices,
         deadline=Deadline(time_limit),
         clock=clock,
+        store=store,
     )
     since = time.perf_counter()
     early = request.deadline
     early = early if time_limit is None else early.within(CERTIFY_SHARE * time_limit)
-    prepared = prepare(form, early)
+    prepared = prepare(form, early, store)
     normal = prepared.normal
     clock.spend("assess", since)
     if normal.conflict is not None:
         return _rounded_away(request, normal)
     if form.semicontinuous.any():
         parts = [branch_part(normal, (), request.settings, request.deadline)]
-        return _report(request, normal, parts)
+        return _report(request, prepared, parts)
     parts = []
     for group in prepared.groups:
         told = tuple(prepared.findings[k] for k in group.members)
@@ -186,7 +191,7 @@ def solve(
         if any(part.status == "infeasible" for part in parts):
             break
         parts.append(_by_relaxation(replace(request, deadline=share), rest))
-    return _report(request, normal, parts)
+    return _report(request, prepared, parts)
 
 
 def _by_path(request: _Request, group: Group, findings: tuple[BlockFinding, ...]) -> PartAnswer:
@@ -299,7 +304,7 @@ def _finding(request: _Request, rest: Rest, lp: LinearProgram, optimum: LpResult
         block = Block(np.arange(part.rows.size), np.arange(part.columns.size), trivial=False)
         if not rest.searched:
             budget = request.deadline.within(max(request.clock.total, LONG_SECONDS))
-            rest.searched.append(certify(part, [block], budget, "systems")[0])
+            rest.searched.append(certify(part, [block], budget, "systems", request.store)[0])
         found = rest.searched[0]
         finding = None if found is None else proven_finding(part, block, found)
     if finding is None:
@@ -363,8 +368,9 @@ def _rounded_away(request: _Request, normal: NormalForm) -> Solution:
     )
 
 
-def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> Solution:
+def _report(request: _Request, prepared: Prepared, parts: list[PartAnswer]) -> Solution:
     """Merge the parts and say which way they went."""
+    normal = prepared.normal
     merged = merge(request.form, normal, parts)
     findings = tuple(finding for part in parts for finding in part.findings)
     routes = {part.route for part in telling(parts)}
@@ -397,6 +403,7 @@ def _report(request: _Request, normal: NormalForm, parts: list[PartAnswer]) -> S
             blame_is_minimal=blamed.minimal,
             declared=int(normal.integer.sum()),
             needed=sum(part.told for part in parts),
+            recognition=prepared.recognition,
         ),
     )
 

@@ -133,6 +133,9 @@ class RouteReport:
     declared, needed : int
         Integer columns that are not fixed, and how many of these declarations branch and bound
         was given: none on the path route; not those that were found implied.
+    recognition : str
+        'found' where recognition looked at the matrix, 'stored' where a store had proofs of it,
+        'remembered' where an earlier solve of the same matrix had left them.
     """
 
     route: str
@@ -150,6 +153,7 @@ class RouteReport:
     repair: Move | None = None
     declared: int = 0
     needed: int = 0
+    recognition: str = "found"
 
     def to_dict(self) -> dict[str, Any]:
         """Plain data, ready for JSON; certificates are left to `finding.to_dict()`."""
@@ -183,6 +187,7 @@ class RouteReport:
             "repair": None if self.repair is None else self.repair.to_dict(),
             "declared": self.declared,
             "needed": self.needed,
+            "recognition": self.recognition,
         }
 
 

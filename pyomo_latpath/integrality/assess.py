@@ -7,19 +7,23 @@ equality systems. A new structure is one new module, and one line in `RECOGNISER
 
 from __future__ import annotations
 
+import time
 from collections.abc import Callable, Sequence
 from dataclasses import replace
-from typing import Literal
+from fractions import Fraction
+from typing import Literal, Protocol
 
 import numpy as np
 import scipy.sparse as sp
 
 from ..certificates import (
     BlockCertificate,
+    CertificateError,
     Conetwork,
     Network,
     Part,
     Trivial,
+    Unimodular,
     fingerprint,
 )
 from ..deadline import Deadline
@@ -32,7 +36,7 @@ from .finding import BlockFinding, Finding, Verdict
 from .regular.clock import OutOfTime
 from .regular.decompose import take_apart
 from .regular.signs import odd_hole
-from .regular.splitting import Contradiction
+from .regular.summand import Contradiction
 from .sampling import program_of
 from .verdicts import conflict_finding, proven_finding, sampled_finding
 
@@ -162,8 +166,30 @@ def certifiable(normal: NormalForm, block: Block) -> bool:
     return bool(whole_rows.all() and whole_sides.all() and normal.whole_bounds[block.columns].all())
 
 
+class KnownProofs(Protocol):
+    """Proofs found before, by the matrix of a block.
+
+    Attributes
+    ----------
+    recalled : int
+        How many proofs it gave so far.
+    """
+
+    recalled: int
+
+    def recall(self, matrix: sp.csc_array) -> tuple[str, Part] | None:
+        """Return a structure's name and a proof that was checked against this matrix."""
+
+    def keep(self, matrix: sp.csc_array, proof: tuple[str, Part], seconds: float) -> None:
+        """Keep a proof that took some seconds to find."""
+
+
 def certify(
-    normal: NormalForm, blocks: Sequence[Block], deadline: Deadline, effort: Effort = "full"
+    normal: NormalForm,
+    blocks: Sequence[Block],
+    deadline: Deadline,
+    effort: Effort = "full",
+    store: KnownProofs | None = None,
 ) -> list[tuple[str, BlockCertificate] | None]:
     """Look for a certificate of each block.
 
@@ -176,6 +202,8 @@ def certify(
     effort : 'quick', 'linear', 'systems' or 'full'
         Tests that take about as long as reading the matrix; all in near-linear time; sums and
         systems of equations alone, where the others have failed; all.
+    store : KnownProofs, optional
+        Asked before a search, and told what one finds.
 
     Returns
     -------
@@ -210,16 +238,51 @@ def certify(
             proof = "incidence", Network(place[star.tree[block.rows]], place[star.arcs[here]])
         elif not share.passed:
             inner = _cut(matrix, here, place)
-            key = b"|".join(a.tobytes() for a in (inner.data, inner.indices, inner.indptr))
-            if effort != "systems" and key not in known:  # blocks that recur cost little
-                known[key] = prove_tu(inner, share, quick=effort == "quick")
-            proof = known.get(key)
-            if proof is None and effort in ("systems", "full"):
-                half = share.within(share.left / 2)
-                proof = _prove_sum(inner, half) or _prove_system(normal, block, inner, share)
+            proof = None if store is None else _recalled(store, normal, block, inner)
+            if proof is None:
+                begun = time.perf_counter()
+                proof = _search(normal, block, inner, share, effort, known)
+                if proof is not None and store is not None:
+                    store.keep(inner, proof, time.perf_counter() - begun)
         if proof is not None:
             found[k] = proof[0], _block_certificate(normal, block, proof[1])
     return found
+
+
+def _recalled(
+    store: KnownProofs, normal: NormalForm, block: Block, matrix: sp.csc_array
+) -> tuple[str, Part] | None:
+    """A proof from the store, if it holds for the block's sides as well."""
+    proof = store.recall(matrix)
+    if proof is not None and isinstance(proof[1], Unimodular):
+        limits = zip(normal.row_lower[block.rows], normal.row_upper[block.rows], strict=True)
+        sides = [
+            tuple(Fraction(side) if np.isfinite(side) else None for side in pair) for pair in limits
+        ]
+        try:
+            proof[1].check_sides(sides)
+        except CertificateError:
+            return None
+    return proof
+
+
+def _search(
+    normal: NormalForm,
+    block: Block,
+    matrix: sp.csc_array,
+    deadline: Deadline,
+    effort: Effort,
+    known: dict[bytes, tuple[str, Part] | None],
+) -> tuple[str, Part] | None:
+    """Look for a proof of one block; those that recur cost little, as `known` has them."""
+    key = b"|".join(a.tobytes() for a in (matrix.data, matrix.indices, matrix.indptr))
+    if effort != "systems" and key not in known:
+        known[key] = prove_tu(matrix, deadline, quick=effort == "quick")
+    proof = known.get(key)
+    if proof is None and effort in ("systems", "full"):
+        half = deadline.within(deadline.left / 2)
+        proof = _prove_sum(matrix, half) or _prove_system(normal, block, matrix, deadline)
+    return proof
 
 
 def _cut(matrix: sp.csc_array, here: slice, place: Integers) -> sp.csc_array:
