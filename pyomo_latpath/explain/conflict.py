@@ -2,25 +2,24 @@
 
 A matrix that is not totally unimodular, while every proper submatrix is, has determinant +-2 and
 even row and column sums (Camion 1965, Characterization of totally unimodular matrices). At a
-fractional vertex with whole sides, the tight rows at the fractional columns hold one: deleting
-lines while the rest is not totally unimodular leads to it. Where each line of it has two entries,
-it is a cycle: the odd cycle of the textbooks.
+fractional vertex with whole sides, the tight rows at the fractional columns hold one. Where each
+line of it has two entries, it is a cycle: the odd cycle of the textbooks.
 """
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
-import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
-from ..integrality.assess import prove_tu
-from .minimal import thin_out
+from ..integrality.regular.conflict import determinant
+from ..integrality.regular.decision import totally_unimodular
 from .relaxation import Place
 
 #: Conflicts are told from so many places, at most.
@@ -46,7 +45,7 @@ class Violator:
     cycle : bool
         Whether each row and each column has exactly two entries, all on one cycle.
     minimal : bool
-        Whether every proper submatrix is known to be totally unimodular.
+        Whether every proper submatrix is totally unimodular.
     groups : tuple of str
         Names of the groups that its rows belong to.
     block : int
@@ -115,86 +114,19 @@ def _violator_at(
     """A conflict of entries +-1 where there is one, else the entry furthest from that."""
     columns = place.columns
     rows = place.rows[normal.whole_rows[place.rows]]
-    matrix = normal.matrix[:, columns].tocsr()[rows, :].astype(np.int64)
-    large = np.abs(matrix).max(axis=1).toarray().ravel() > 1 if rows.size else np.empty(0, bool)
-    lines = minimal_violator(matrix[~large, :].tocsc(), deadline)
-    if lines is not None:
-        picked = rows[~large][lines[0]], columns[lines[1]]
-        return _told(normal, *picked, group_names, lines[2])
-    if not large.any():
-        return None
+    matrix = normal.matrix[:, columns].tocsr()[rows, :]
     size = np.abs(matrix).tocoo()
+    large = np.zeros(rows.size, np.bool_)
+    large[size.row[size.data > 1]] = True
+    limit = None if deadline.left == math.inf else deadline.left
+    decision = totally_unimodular(matrix[~large, :], time_limit=limit)
+    if decision.violator is not None:
+        found = decision.violator
+        return _told(normal, rows[~large][found.rows], columns[found.columns], group_names)
+    if decision.holds is None or not large.any():
+        return None
     k = int(np.argmax(size.data))
-    picked = rows[size.row[k : k + 1]], columns[size.col[k : k + 1]]
-    return _told(normal, *picked, group_names, minimal=True)
-
-
-def minimal_violator(
-    matrix: sp.csc_array, deadline: Deadline
-) -> tuple[Integers, Integers, bool] | None:
-    """Find a square submatrix of determinant +-2 by deleting lines.
-
-    Parameters
-    ----------
-    matrix : scipy.sparse.csc_array, shape (m, n), int64
-        Entries 0 and +-1.
-    deadline : Deadline
-
-    Returns
-    -------
-    rows, columns : ndarray, int64
-    minimal : bool
-        Whether every proper submatrix is known to be totally unimodular.
-
-    Examples
-    --------
-    >>> wheel = sp.csc_array([[1, 1, 0, 1], [0, 1, 1, 0], [1, 0, 1, 0], [0, 0, 1, 1]])
-    >>> minimal_violator(wheel, Deadline(None))
-    (array([0, 2, 3]), array([0, 2, 3]), True)
-    """
-    m, n = matrix.shape
-    by_row = matrix.tocsr()
-
-    def part(lines: list[int]) -> sp.csc_array:
-        rows, columns = [i for i in lines if i < m], [i - m for i in lines if i >= m]
-        return by_row[rows, :].tocsc()[:, columns]
-
-    def not_unimodular(lines: list[int]) -> bool:
-        return prove_tu(part(lines), Deadline(None)) is None
-
-    everything = list(range(m + n))
-    if not not_unimodular(everything):
-        return None
-    lines, minimal = thin_out(everything, not_unimodular, deadline)
-    kept = part(lines)
-    if kept.shape[0] != kept.shape[1] or abs(determinant(kept.toarray())) != 2:
-        return None
-    rows = np.array([i for i in lines if i < m], np.int64)
-    columns = np.array([i - m for i in lines if i >= m], np.int64)
-    return rows, columns, minimal
-
-
-def determinant(entries: NDArray[np.int64]) -> int:
-    """Determinant of a square matrix of whole numbers, exact (Bareiss 1968).
-
-    Examples
-    --------
-    >>> determinant(np.array([[1, 1, 0], [0, 1, 1], [1, 0, 1]]))
-    2
-    """
-    table: list[list[int]] = entries.tolist()
-    size, sign, before = len(table), 1, 1
-    for k in range(size - 1):
-        pivot = next((i for i in range(k, size) if table[i][k]), None)
-        if pivot is None:
-            return 0
-        if pivot != k:
-            table[k], table[pivot], sign = table[pivot], table[k], -sign
-        for i in range(k + 1, size):
-            for j in range(k + 1, size):
-                table[i][j] = (table[i][j] * table[k][k] - table[i][k] * table[k][j]) // before
-        before = table[k][k]
-    return sign * table[-1][-1] if size else 1
+    return _told(normal, rows[size.row[k : k + 1]], columns[size.col[k : k + 1]], group_names)
 
 
 def cycle_order(entries: NDArray[np.int64]) -> tuple[list[int], list[int]] | None:
@@ -228,11 +160,7 @@ def cycle_order(entries: NDArray[np.int64]) -> tuple[list[int], list[int]] | Non
 
 
 def _told(
-    normal: NormalForm,
-    rows: Integers,
-    columns: Integers,
-    group_names: Sequence[str],
-    minimal: bool,
+    normal: NormalForm, rows: Integers, columns: Integers, group_names: Sequence[str]
 ) -> Violator:
     """A violator in names, its lines along the cycle where it is one."""
     entries = normal.matrix[:, columns].tocsr()[rows, :].toarray().astype(np.int64)
@@ -248,9 +176,9 @@ def _told(
         row_names=tuple(form.row_names[i] for i in rows.tolist()),
         column_names=tuple(form.col_names[j] for j in columns.tolist()),
         entries=entries,
-        determinant=determinant(entries),
+        determinant=int(entries[0, 0]) if rows.size == 1 else determinant(entries),
         cycle=order is not None,
-        minimal=minimal,
+        minimal=True,
         groups=tuple(dict.fromkeys(group_names[i] for i in rows.tolist())),
         block=-1,
     )

@@ -1,9 +1,13 @@
 """Smallest sets of row groups without which everything that is left is certified whole.
 
-Groups that cannot be certified together are a conflict; a set of culprits must meet all of them.
-So the search goes through the smallest sets that meet all conflicts known (Reiter 1987, A theory
-of diagnosis from first principles): either what is left without such a set is certified, or it
-holds a further conflict, thinned out until no group of it can be spared.
+First each group is left out alone. Then: groups that together are not totally unimodular, or have
+sides that are not whole, are a conflict, and stay one beside further groups; so a set of culprits
+must meet all conflicts. The search goes through the smallest sets that meet all those known
+(Reiter 1987, A theory of diagnosis from first principles): either what is left without such a set
+is certified, or it holds a further conflict, thinned out until no group of it can be spared.
+
+Equations may make whole what is fractional without them. So where there are equations, a set of
+two groups may be overlooked that leaves no totally unimodular matrix and yet whole vertices.
 """
 
 from __future__ import annotations
@@ -15,7 +19,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from ..deadline import Deadline
-from ..forms.linear_form import Flags
+from ..forms.linear_form import Flags, LinearForm
 from ..forms.numbers import Integers
 from .groups import Group
 from .minimal import hitting_sets, thin_out
@@ -39,7 +43,7 @@ class Culprit:
     groups : tuple of str
         None of them can stay.
     smallest : bool
-        Whether all sets of fewer groups were tried, and left something without a certificate.
+        Whether it is known that no set of fewer groups leaves what is certified.
     rows : tuple of str
         Names of a set of rows among them that does, too.
     row_indices : ndarray, int64
@@ -112,7 +116,9 @@ class Search:
         self.remains, self.groups, self.relaxation = remains, groups, relaxation
         self.deadline, self.tell = deadline, tell
         self.exhausted, self.alone = False, dict[int, bool]()
-        self._group_of = np.zeros(remains.form.shape[0], np.int64)
+        form = remains.form
+        self._has_equations = bool(_equations(form).any())
+        self._group_of = np.zeros(form.shape[0], np.int64)
         for k, group in enumerate(groups):
             self._group_of[group.rows] = k
         self._suspects = [self._groups_at(place) for place in suspects]
@@ -122,15 +128,33 @@ class Search:
     def run(self) -> Iterator[CulpritSet]:
         """Yield the sets; where all are large, one of which no group can stay."""
         self._try_alone()
+        yield from self._singles()
         for size in range(1, len(self.groups) + 1):
             forced = sum(len(those) == 1 for those in self._conflicts)
-            if size > forced + MOST_CHOSEN:
+            if self._found or self.deadline.passed or size > forced + MOST_CHOSEN:
                 break
-            yield from self._of_size(size) if size >= forced else ()
-            if self._found or self.deadline.passed:
-                self.exhausted = not self.deadline.passed and len(self._found) < MOST_SETS
-                return
-        yield from self._greedily()
+            if size >= forced:
+                yield from self._of_size(size)
+        if not self._found:
+            yield from self._greedily()
+        elif not self.deadline.passed:
+            self.exhausted = len(self._found) < MOST_SETS
+
+    def _singles(self) -> Iterator[CulpritSet]:
+        """Groups to blame alone, by any certificate of what is left."""
+        if len(self.groups) > MOST_ALONE:
+            return
+        for k in sorted(range(len(self.groups)), key=self._suspicion):
+            if len(self._found) < MOST_SETS and not self.deadline.passed:
+                yield from self._tried(frozenset({k}), smallest=True)
+
+    def _tried(self, chosen: frozenset[int], smallest: bool) -> Iterator[CulpritSet]:
+        names = ", ".join(self.groups[k].name for k in sorted(chosen)) or "nothing"
+        self.tell(f"leaving out {names}")
+        certified = self._certified(self._others(chosen))
+        if certified is not None:
+            self._found.append(chosen)
+            yield CulpritSet(tuple(sorted(chosen)), certified, smallest)
 
     def _greedily(self) -> Iterator[CulpritSet]:
         """Put back one group after the other while what is there stays certified."""
@@ -140,9 +164,9 @@ class Search:
 
         everything = list(range(len(self.groups)))
         if serves(everything):
-            chosen, _ = thin_out(everything, serves, self.deadline)
+            chosen, minimal = thin_out(everything, serves, self.deadline)
             certified = self._certified(self._others(chosen))
-            if certified is not None:
+            if minimal and certified is not None:
                 yield CulpritSet(tuple(chosen), certified, smallest=False)
 
     def _try_alone(self) -> None:
@@ -153,7 +177,7 @@ class Search:
             suspicious = group.beyond or group.broken_sides or group.continuous
             if suspicious or len(self.groups) <= MOST_ALONE:
                 self.alone[k] = self._certified([k]) is not None
-                if not self.alone[k] and not self.deadline.passed:
+                if self._in_conflict([k]) and not self.deadline.passed:
                     self._conflicts.append(frozenset({k}))
 
     def _of_size(self, size: int) -> Iterator[CulpritSet]:
@@ -163,15 +187,10 @@ class Search:
             chosen = next(sets, None)
             if chosen is None:
                 return
-            names = ", ".join(self.groups[k].name for k in sorted(chosen)) or "nothing"
-            self.tell(f"leaving out {names}")
-            kept = self._others(chosen)
-            certified = self._certified(kept)
-            if certified is not None:
-                self._found.append(chosen)
-                yield CulpritSet(tuple(sorted(chosen)), certified, smallest=True)
-            elif not self.deadline.passed:
-                conflict = self._conflict_among(kept)
+            before = len(self._found)
+            yield from self._tried(chosen, smallest=size <= 2 or not self._has_equations)
+            if len(self._found) == before and not self.deadline.passed:
+                conflict = self._conflict_among(self._others(chosen))
                 if conflict is None:
                     return
                 self._conflicts.append(conflict)
@@ -186,10 +205,8 @@ class Search:
                 places = self.relaxation.places(result.x)
                 seeds = [self._groups_at(place) for place in places]
         for seed in [*seeds, frozenset(kept)]:
-            if self._certified(sorted(seed)) is None:
-                thin, _ = thin_out(
-                    sorted(seed), lambda some: self._certified(some) is None, self.deadline
-                )
+            if self._in_conflict(sorted(seed)):
+                thin, _ = thin_out(sorted(seed), self._in_conflict, self.deadline)
                 return None if self.deadline.passed else frozenset(thin)
         return None
 
@@ -210,6 +227,11 @@ class Search:
         chosen = np.zeros(len(self.groups), np.bool_)
         chosen[list(kept)] = True
         return np.asarray(chosen[self._group_of])
+
+    def _in_conflict(self, kept: Sequence[int]) -> bool:
+        """Whether no group beside these could make a totally unimodular matrix of them."""
+        certified = self._certified(kept)
+        return certified is None or "unimodular" in certified.structures
 
     def _certified(self, kept: Sequence[int]) -> Certified | None:
         return self.remains.certified(self.flags(kept), self.deadline)
@@ -238,7 +260,16 @@ def smallest_rows(remains: Remains, rows: Integers, deadline: Deadline) -> tuple
         return remains.certified(kept, deadline) is not None
 
     found, minimal = thin_out(rows.tolist(), certified_without, deadline)
+    count = len(rows)
+    # With equations among them, rows that were needed at first may not be needed at last.
+    while minimal and len(found) < count and _equations(remains.form).any():
+        count = len(found)
+        found, minimal = thin_out(found, certified_without, deadline)
     return np.array(found, np.int64), minimal
+
+
+def _equations(form: LinearForm) -> Flags:
+    return np.asarray(form.row_lower == form.row_upper)
 
 
 def objective_without(search: Search, places: Sequence[int], deadline: Deadline) -> float:

@@ -17,11 +17,13 @@ from ..forms.blocks import Block, blocks_of
 from ..forms.linear_form import Flags, LinearForm
 from ..forms.normalise import NormalForm, normalise
 from ..integrality.assess import certify
+from ..integrality.regular.clock import OutOfTime
+from ..integrality.regular.signs import odd_hole
 
 Proof = tuple[str, BlockCertificate]
 
-#: Nonzeros up to which any block is looked at as a system of equations, and seconds for that.
-SMALL, SYSTEM_SECONDS = 2000, 0.5
+#: Nonzeros up to which any block is looked at by all means, and seconds for that.
+SMALL, SECONDS = 2000, 0.5
 
 
 @dataclass(frozen=True, eq=False)
@@ -115,21 +117,25 @@ class Remains:
     def _certify(
         self, normal: NormalForm, blocks: Sequence[Block], deadline: Deadline
     ) -> list[Proof | None]:
-        """Certify by structure, and what is left and small, or has large entries, as a system."""
+        """Certify by structure; what is left as a sum of such, or as a system of equations."""
         proofs = certify(normal, blocks, deadline, "linear")
         for k, block in enumerate(blocks):
-            if proofs[k] is None and _may_be_a_system(normal, block):
-                one_by_one = certify(normal, [block], deadline.within(SYSTEM_SECONDS), "systems")
-                proofs[k] = one_by_one[0]
+            if proofs[k] is None and _worth_more(normal, block, deadline.within(SECONDS)):
+                more = certify(normal, [block], deadline.within(SECONDS), "systems")
+                proofs[k] = more[0]
         return proofs
 
 
-def _may_be_a_system(normal: NormalForm, block: Block) -> bool:
-    """Whether it is worth asking if equations make a block whole in spite of its entries."""
-    start, end = normal.matrix.indptr[block.columns], normal.matrix.indptr[block.columns + 1]
-    count = int((end - start).sum())
-    if not (normal.row_lower[block.rows] == normal.row_upper[block.rows]).any():
+def _worth_more(normal: NormalForm, block: Block, deadline: Deadline) -> bool:
+    """Whether a block is small, has large entries, or signs that do not contradict each other.
+
+    A contradiction of signs, soon found, leaves nothing but a system of equations, and of those
+    with entries +-1 hardly any are whole in spite of it.
+    """
+    matrix = normal.matrix[:, block.columns]
+    if matrix.nnz <= SMALL or (np.abs(matrix.data) != 1).any():
+        return True
+    try:
+        return odd_hole(matrix.astype(np.int64), deadline) is None
+    except OutOfTime:
         return False
-    return count <= SMALL or any(
-        (np.abs(normal.matrix.data[s:e]) != 1).any() for s, e in zip(start, end, strict=True)
-    )

@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
@@ -96,7 +96,11 @@ def row_stems(form: LinearForm) -> Stems:
     scattered = len(form.row_names) > SMALL and len(stems.names) * FEW > len(form.row_names)
     if stems.by == "name" and (blank or scattered):
         return _patterns(form)
-    return stems
+    names = list(stems.names)
+    if "#" in names:
+        k = names.index("#")
+        names[k] = f"rows like {form.row_names[int(np.argmax(stems.label == k))]}"
+    return replace(stems, names=tuple(names))
 
 
 def column_stems(form: LinearForm) -> Stems:
