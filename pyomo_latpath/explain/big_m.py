@@ -22,10 +22,10 @@ from ..forms.linear_form import Floats
 from ..forms.normalise import NormalForm
 from ..forms.numbers import nearby_fraction, simplest_fraction
 from ..highs import LinearProgram
-from .lines import Columns, Line
+from .lines import Columns, Exact, Line, size
 
 #: Relative size of what is no change but noise.
-NOISE = Fraction(1, 10**9)
+NOISE = 1e-9
 
 
 def tightened(line: Line, columns: Columns) -> Line:
@@ -43,26 +43,25 @@ def tightened(line: Line, columns: Columns) -> Line:
 
     Examples
     --------
-    >>> zero, one = Fraction(0), Fraction(1)
-    >>> columns = Columns([zero] * 2, [4 * one, one], np.full(2, True), np.array([False, True]))
-    >>> tightened(Line(0, 1, {0: one, 1: -1000 * one}, zero), columns).terms
-    {0: Fraction(1, 1), 1: Fraction(-4, 1)}
+    >>> columns = Columns([0, 0], [4, 1], np.full(2, True), np.array([False, True]))
+    >>> tightened(Line(0, 1, {0: 1, 1: -1000}, 0), columns).terms
+    {0: 1, 1: -4}
     """
-    total = Fraction(0)
+    total: Exact = 0
     for j, a in line.terms.items():
         most = columns.most(j, a)
         if most is None:
             return line
         total += most
-    for y in sorted(line.terms, key=lambda j: -abs(line.terms[j])):
+    for y in sorted(line.terms, key=lambda j: -size(line.terms[j])):
         if columns.binary[y]:
-            total -= max(line.terms[y], Fraction(0))
+            total -= max(line.terms[y], 0)
             line = shrunk(line, y, total)
-            total += max(line.terms[y], Fraction(0))
+            total += max(line.terms[y], 0)
     return line
 
 
-def shrunk(line: Line, switch: int, most: Fraction) -> Line:
+def shrunk(line: Line, switch: int, most: Exact) -> Line:
     """Replace the larger side of a switched row by the most that the other terms can be.
 
     Parameters
@@ -70,13 +69,13 @@ def shrunk(line: Line, switch: int, most: Fraction) -> Line:
     line : Line
     switch : int
         A binary column of it.
-    most : Fraction
+    most : int or Fraction
         No whole plan in the state with the larger side has other terms that sum to more.
     """
     a = line.terms[switch]
     off, on = line.side, line.side - a
     new = max(most, min(off, on))
-    if new >= max(off, on) - NOISE * max(Fraction(1), abs(off), abs(on)):
+    if new >= max(off, on) - NOISE * max(1, size(off), size(on)):
         return line
     if off > on:
         off = new
@@ -94,8 +93,8 @@ def loose_state(line: Line, switch: int) -> int:
 class _Target:
     """What is to be maximised: terms of a line over a normalised form's columns."""
 
-    terms: dict[int, Fraction]
-    constant: Fraction
+    terms: dict[int, Exact]
+    constant: Exact
     whole: bool
 
 
@@ -161,24 +160,26 @@ class Prober:
     def _target(self, line: Line, switch: int) -> _Target:
         """Write the other terms of a line in the units of the normalised columns."""
         normal = self.normal
-        terms, constant, whole = {}, Fraction(0), True
+        terms: dict[int, Exact] = {}
+        constant: Exact = 0
+        whole = True
         for j, a in line.terms.items():
             k = self._place.get(j)
             if j == switch:
                 continue
             if k is None:
                 constant += a * simplest_fraction(float(normal.fixed_value[j]))
-                whole &= constant.denominator == 1
             else:
                 terms[k] = a * Fraction(int(normal.col_num[k]), int(normal.col_den[k]))
                 whole &= bool(normal.integer[k]) and terms[k].denominator == 1
-        return _Target(terms, constant, whole)
+        return _Target(terms, constant, whole and constant.denominator == 1)
 
     def _limit(
-        self, objective: dict[int, Fraction], prices: list[Fraction], lower: Floats, upper: Floats
+        self, objective: dict[int, Exact], prices: list[Fraction], lower: Floats, upper: Floats
     ) -> Fraction | None:
         """Bound an objective from above by any row prices: weak duality, exact."""
-        normal, rest, bound = self.normal, dict(objective), Fraction(0)
+        normal, bound = self.normal, Fraction(0)
+        rest = {j: Fraction(a) for j, a in objective.items()}
         for i, price in enumerate(prices):
             if not price:
                 continue

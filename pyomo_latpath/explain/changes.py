@@ -94,10 +94,11 @@ def _changed_matrix(remedy: Remedy, matrix: sp.csc_array) -> sp.csc_array:
         *enumerate(remedy.inequalities, start=m),
     ]
     stays = ~np.isin(rows, [row for row, _ in lines])
+    sizes = [line.columns.size for _, line in lines]
     triplets = (
         np.hstack([old.data[stays], *(line.coefficients for _, line in lines)]),
         (
-            np.hstack([rows[stays], *(np.full(line.columns.size, row) for row, line in lines)]),
+            np.append(rows[stays], np.repeat([row for row, _ in lines], sizes)),
             np.hstack([columns[stays], *(line.columns for _, line in lines)]),
         ),
     )

@@ -6,7 +6,6 @@ import numpy as np
 
 from ..deadline import Deadline
 from ..forms.linear_form import Floats, LinearForm
-from ..forms.normalise import normalise
 from ..forms.numbers import Integers
 from ..integrality.sampling import FRACTIONAL
 from .context import Context
@@ -15,7 +14,7 @@ from .declarations import declaration_remedy
 from .remedy import Remedy
 from .row_drafts import rounding_drafts, splitting_drafts, tightening_drafts
 from .stems import row_stems
-from .trial import Trial, optimum_of
+from .trial import Trial, declared_basis, optimum_of
 
 #: Shares of the time left: for linear programs behind smaller coefficients, for cuts, and for
 #: the search for declarations that can go.
@@ -46,26 +45,26 @@ def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:
     form, normal = context.form, context.normal
     if normal.conflict is not None or form.semicontinuous.any():
         return ()
-    first = optimum_of(form, deadline)
+    near = None if context.basis is None else declared_basis(normal, context.basis)
+    first = optimum_of(form, deadline, near)
     if first is None:
         return ()
-    trial = Trial(form, first, deadline)
+    trial = Trial(normal, first, deadline)
     trial.keep_useful(list(rounding_drafts(normal)))
-    early = deadline.within(PROBING_SHARE * deadline.left)
     rows = _rows_to_probe(form, first.x)
-    trial.keep_useful(list(tightening_drafts(trial.form, normalise(trial.form), rows, early)))
+    early = deadline.within(PROBING_SHARE * deadline.left)
+    trial.keep_useful(list(tightening_drafts(trial.normal, rows, early)))
     trial.keep_useful(list(splitting_drafts(trial.form, deadline)))
     if trial.now.fractional:
-        changed = normalise(trial.form)
-        cuts = cut_rounds(changed, deadline.within(CUTTING_SHARE * deadline.left))
-        told = trial.tried(cut_remedy(changed, cuts, trial.namer)) if cuts else None
-        if told is not None and trial.helps(told):
-            trial.keep(told)
+        cuts = cut_rounds(trial.normal, deadline.within(CUTTING_SHARE * deadline.left))
+        tried = trial.tried(cut_remedy(trial.normal, cuts, trial.namer)) if cuts else None
+        if tried is not None and trial.helps(tried):
+            trial.keep(tried)
     early = deadline.within(DROPPING_SHARE * deadline.left)
     dropped = None if early.passed else declaration_remedy(normal, trial.namer, early)
-    told = None if dropped is None else trial.tried(dropped)
-    if told is not None:
-        trial.keep(told)
+    tried = None if dropped is None else trial.tried(dropped)
+    if tried is not None:
+        trial.keep(tried)
     return tuple(trial.kept)
 
 

@@ -13,7 +13,7 @@ from ..forms.numbers import Integers
 from ..pages.markup import number
 from .big_m import Prober, loose_state, shrunk, tightened
 from .drafts import Draft
-from .lines import Columns, Line, columns_of, float_above, float_below, lines_of
+from .lines import Line, columns_of, float_above, float_below, lines_of, outlook_of, size
 from .remedy import BoundChange, Inequality, RowChange
 from .rounding import rounded_inwards
 from .splitting import Split, split
@@ -75,34 +75,32 @@ def rounding_drafts(normal: NormalForm) -> Iterator[Draft]:
         )
 
 
-def tightening_drafts(
-    form: LinearForm, normal: NormalForm, first: Integers, deadline: Deadline
-) -> Iterator[Draft]:
+def tightening_drafts(normal: NormalForm, first: Integers, deadline: Deadline) -> Iterator[Draft]:
     """Shrink the coefficients of binary columns as far as is proven.
 
     Parameters
     ----------
-    form : LinearForm
     normal : NormalForm
-        Of it.
     first : ndarray, int64
         Rows (of the form) for which linear programs may be solved, in this order.
     deadline : Deadline
     """
-    columns = columns_of(form)
+    form = normal.form
+    columns, outlook = columns_of(form), outlook_of(form)
+    probable = outlook.one_sided & outlook.switched & np.isin(np.arange(form.shape[0]), first)
     before: dict[int, Line] = {}
     after: dict[int, Line] = {}
-    for line in lines_of(form, columns):
+    for line in lines_of(form, outlook.may_shrink | probable):
         if deadline.passed:
             break
         before[line.row], after[line.row] = line, tightened(line, columns)
-    wanted = [row for row in first.tolist() if row in after]
+    wanted = [row for row in first[probable[first]].tolist() if row in after]
     prober = Prober(normal, deadline) if wanted and not deadline.passed else None
     probed = set()
     for row in wanted:
         if prober is None or deadline.passed:
             break
-        line = _probed(prober, after[row], columns)
+        line = _probed(prober, after[row], before[row].largest)
         if line is not after[row]:
             after[row] = line
             probed.add(row)
@@ -130,7 +128,7 @@ def tightening_drafts(
 def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
     """Split on/off rows."""
     columns, stems, count = columns_of(form), row_stems(form), 0
-    for line in lines_of(form, columns):
+    for line in lines_of(form, outlook_of(form).may_split):
         part = split(line, columns)
         count += 0 if part is None else len(part.columns)
         if deadline.passed or count > MOST_ROWS:
@@ -160,18 +158,15 @@ def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
         )
 
 
-def _probed(prober: Prober, line: Line, columns: Columns) -> Line:
-    """Shrink the largest coefficient of a line by a linear program, if it is a switch's."""
-    switch = max(line.terms, key=lambda j: abs(line.terms[j]))
-    if not columns.binary[switch]:
-        return line
+def _probed(prober: Prober, line: Line, switch: int) -> Line:
+    """Shrink the coefficient of a switch by a linear program."""
     most = prober.most(line, switch)
     return line if most is None else shrunk(line, switch, most)
 
 
 def _shrinking(form: LinearForm, before: Line, after: Line) -> str:
     """Say which coefficient of a row shrinks most, and why it may."""
-    y = max(before.terms, key=lambda j: abs(before.terms[j] - after.terms[j]))
+    y = max(before.terms, key=lambda j: size(before.terms[j] - after.terms[j]))
     name, state = short(form.col_names[y]), loose_state(before, y)
     was, now = (float(line.sign * line.terms[y]) for line in (before, after))
     limit = float(after.sign * (after.side - state * after.terms[y]))

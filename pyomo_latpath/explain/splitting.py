@@ -13,7 +13,7 @@ import math
 from dataclasses import dataclass
 from fractions import Fraction
 
-from .lines import Columns, Line
+from .lines import Columns, Exact, Line, size
 
 
 @dataclass(frozen=True)
@@ -27,7 +27,7 @@ class Split:
     switch : int
         The binary column y.
     columns : tuple of int
-    at_0, at_1 : tuple of Fraction
+    at_0, at_1 : tuple of int or Fraction
         The limit of each column where y = 0 and where y = 1.
     upper : tuple of bool
         Whether it is an upper limit.
@@ -38,8 +38,8 @@ class Split:
     row: int
     switch: int
     columns: tuple[int, ...]
-    at_0: tuple[Fraction, ...]
-    at_1: tuple[Fraction, ...]
+    at_0: tuple[Exact, ...]
+    at_1: tuple[Exact, ...]
     upper: tuple[bool, ...]
     replaces: bool
 
@@ -63,37 +63,34 @@ def split(line: Line, columns: Columns) -> Split | None:
     A cave may ripen three lots once it is open:
 
     >>> import numpy as np
-    >>> zero, one = Fraction(0), Fraction(1)
-    >>> columns = Columns([zero] * 4, [one] * 4, np.full(4, True), np.full(4, True))
-    >>> found = split(Line(0, 1, {0: one, 1: one, 2: one, 3: -3 * one}, zero), columns)
-    >>> found.columns, found.at_0 == (0, 0, 0), found.at_1 == (1, 1, 1), found.replaces
-    ((0, 1, 2), True, True, True)
+    >>> columns = Columns([0] * 4, [1] * 4, np.full(4, True), np.full(4, True))
+    >>> found = split(Line(0, 1, {0: 1, 1: 1, 2: 1, 3: -3}, 0), columns)
+    >>> found.columns, found.at_0, found.at_1, found.replaces
+    ((0, 1, 2), (0, 0, 0), (1, 1, 1), True)
     """
     switch = _switch_of(line, columns)
-    if switch is None:
-        return None
     others = [j for j in line.terms if j != switch]
-    least = {j: columns.least(j, line.terms[j]) for j in others}
-    floor = sum((v for v in least.values() if v is not None), Fraction(0))
-    if len(others) < 2 or any(value is None for value in least.values()):
+    least = [columns.least(j, line.terms[j]) for j in others]
+    if switch is None or len(others) < 2 or None in least:
         return None
+    floor = sum(value for value in least if value is not None)
     sides = line.side, line.side - line.terms[switch]
     off = 0 if sides[0] < sides[1] else 1
-    limits: list[tuple[Fraction, Fraction]] = []
+    limits: list[tuple[Exact, Exact]] = []
     sharper: list[bool] = []
-    for j in others:
-        a, rest = line.terms[j], floor - (least[j] or 0)
-        exact = [(side - rest) / a for side in sides]
+    for j, smallest in zip(others, least, strict=True):
+        a, rest = line.terms[j], floor - (smallest or 0)
+        exact = _quotient(sides[0] - rest, a), _quotient(sides[1] - rest, a)
         pair = _limit(j, a, exact[0], columns), _limit(j, a, exact[1], columns)
-        if pair[off] * a != least[j]:
+        if pair[off] * a != smallest:
             return None
         limits.append(pair)
-        sharper.append(list(pair) != exact)
-    on_total = sum(line.terms[j] * pair[1 - off] for j, pair in zip(others, limits, strict=True))
-    replaces = on_total <= sides[1 - off]
-    kept = [k for k in range(len(others)) if (replaces or sharper[k])]
+        sharper.append(pair != exact)
     if not any(sharper):
         return None
+    on_total = sum(line.terms[j] * pair[1 - off] for j, pair in zip(others, limits, strict=True))
+    replaces = on_total <= sides[1 - off]
+    kept = [k for k in range(len(others)) if replaces or sharper[k]]
     return Split(
         row=line.row,
         switch=switch,
@@ -107,17 +104,24 @@ def split(line: Line, columns: Columns) -> Split | None:
 
 def _switch_of(line: Line, columns: Columns) -> int | None:
     """The one binary column whose coefficient is the largest."""
-    largest = max(abs(a) for a in line.terms.values())
-    found = [j for j, a in line.terms.items() if abs(a) == largest]
-    return found[0] if len(found) == 1 and columns.binary[found[0]] else None
+    largest = size(line.terms[line.largest])
+    alone = sum(size(a) == largest for a in line.terms.values()) == 1
+    return line.largest if alone and columns.binary[line.largest] else None
 
 
-def _limit(column: int, a: Fraction, exact: Fraction, columns: Columns) -> Fraction:
+def _limit(column: int, a: Exact, exact: Exact, columns: Columns) -> Exact:
     """The limit that the row sets, within the column's bounds, whole for an integer column."""
+    whole = bool(columns.integer[column])
     if a > 0:
-        value = Fraction(math.floor(exact)) if columns.integer[column] else exact
-        bound = columns.upper[column]
-        return value if bound is None else min(value, bound)
-    value = Fraction(math.ceil(exact)) if columns.integer[column] else exact
-    bound = columns.lower[column]
-    return value if bound is None else max(value, bound)
+        upper, value = columns.upper[column], math.floor(exact) if whole else exact
+        return value if upper is None else min(value, upper)
+    lower, value = columns.lower[column], math.ceil(exact) if whole else exact
+    return value if lower is None else max(value, lower)
+
+
+def _quotient(value: Exact, by: Exact) -> Exact:
+    """Divide exactly."""
+    if by in (1, -1):
+        return value * by
+    quotient = Fraction(value) / by
+    return quotient.numerator if quotient.denominator == 1 else quotient

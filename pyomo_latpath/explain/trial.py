@@ -10,6 +10,7 @@ import numpy as np
 
 from ..deadline import Deadline
 from ..forms.linear_form import Floats, LinearForm
+from ..forms.normalise import NormalForm, normalise
 from ..highs import Basis, LinearProgram
 from ..integrality.sampling import FRACTIONAL
 from .drafts import Draft, Namer, by_group, combined
@@ -68,8 +69,8 @@ def optimum_of(form: LinearForm, deadline: Deadline, near: Basis | None = None) 
     limits = form.row_lower, form.row_upper, form.col_lower, form.col_upper
     program = LinearProgram(form.matrix, *limits, sign * form.cost)
     if near is not None:
-        new = np.ones(form.shape[0] - near.row_status.size, np.int8)
-        program.set_basis(Basis(near.col_status, np.append(near.row_status, new)))
+        basic = np.ones(form.shape[0] - near.row_status.size, np.int8)
+        program.set_basis(Basis(near.col_status, np.append(near.row_status, basic)))
     result = program.solve(deadline=deadline)
     if result.status == "infeasible":
         return Optimum(sign * math.inf, 0, result.x, program.basis())
@@ -80,86 +81,129 @@ def optimum_of(form: LinearForm, deadline: Deadline, near: Basis | None = None) 
     return Optimum(bound, int(off.sum()), result.x, program.basis())
 
 
+def declared_basis(normal: NormalForm, basis: Basis) -> Basis:
+    """A basis of the normalised relaxation as one of the relaxation as declared.
+
+    Columns that normalisation fixed rest at a bound, rows that it left out are basic.
+    """
+    form = normal.form
+    col_status, row_status = np.zeros(form.shape[1], np.int8), np.ones(form.shape[0], np.int8)
+    col_status[normal.columns], row_status[normal.rows] = basis.col_status, basis.row_status
+    return Basis(col_status, row_status)
+
+
+@dataclass(frozen=True, eq=False)
+class Tried:
+    """A remedy made on the model alone.
+
+    Attributes
+    ----------
+    remedy : Remedy
+        It tells what it does alone.
+    form : LinearForm
+        The model with it.
+    optimum : Optimum
+        Of that.
+    """
+
+    remedy: Remedy
+    form: LinearForm
+    optimum: Optimum
+
+
 class Trial:
     """Remedies tried one after the other.
 
     Parameters
     ----------
-    form : LinearForm
+    normal : NormalForm
+        Of the model.
     first : Optimum
-        Of it.
+        Of the model's relaxation as declared.
     deadline : Deadline
 
     Attributes
     ----------
     form : LinearForm
-        With all remedies kept so far.
+        The model with all remedies kept so far.
     now : Optimum
         Of that.
     kept : list of Remedy
     namer : Namer
     """
 
-    def __init__(self, form: LinearForm, first: Optimum, deadline: Deadline) -> None:
-        self._declared, self._first, self._deadline = form, first, deadline
-        self._sign = 1.0 if form.sense == "min" else -1.0
-        self.form, self.now, self.namer = form, first, Namer(form)
+    def __init__(self, normal: NormalForm, first: Optimum, deadline: Deadline) -> None:
+        self._declared, self._first, self._deadline = normal.form, first, deadline
+        self._sign = 1.0 if normal.form.sense == "min" else -1.0
+        self._normal = normal
+        self.form, self.now, self.namer = normal.form, first, Namer(normal.form)
         self.kept: list[Remedy] = []
+
+    @property
+    def normal(self) -> NormalForm:
+        """The model with all remedies kept so far, normalised."""
+        if self._normal.form is not self.form:
+            self._normal = normalise(self.form)
+        return self._normal
 
     def keep_useful(self, drafts: Sequence[Draft]) -> None:
         """Keep what helps of drafts of one kind: group by group, or else all in one."""
-        if not drafts:
-            return
-        joint = self.tried(combined(drafts, self.namer))
+        joint = self.tried(combined(drafts, self.namer)) if drafts else None
         if joint is None or not self.helps(joint):
             return
         groups, single = by_group(drafts), []
         if 1 < len(groups) <= MOST_GROUPS:
             tried = [self.tried(combined(group, self.namer)) for group in groups]
             single = [each for each in tried if each is not None and self.helps(each)]
-        for told in sorted(single, key=self._gain, reverse=True) or [joint]:
-            self.keep(told)
+        for each in sorted(single, key=self._gain, reverse=True) or [joint]:
+            self.keep(each)
 
-    def tried(self, remedy: Remedy) -> Remedy | None:
+    def tried(self, remedy: Remedy) -> Tried | None:
         """Work out what a remedy does alone; None where the time ran out."""
-        after = optimum_of(remedy.apply_to(self._declared), self._deadline, self._first.basis)
+        form = remedy.apply_to(self._declared)
+        after = optimum_of(form, self._deadline, self._first.basis)
         if after is None:
             return None
-        return replace(
+        told = replace(
             remedy,
             bound_before=self._first.bound,
             bound_after=after.bound,
             fractional_before=self._first.fractional,
             fractional_after=after.fractional,
         )
+        return Tried(told, form, after)
 
-    def helps(self, told: Remedy) -> bool:
+    def helps(self, tried: Tried) -> bool:
         """Whether a remedy, alone or after those kept, makes the relaxation better.
 
         That is a better bound, or the same with fewer fractional columns.
         """
-        if self._better(told.bound_after, told.fractional_after or 0, self._first):
+        if self._better(tried.optimum, self._first):
             return True
         if not self.kept:
             return False
-        reached = optimum_of(told.apply_to(self.form), self._deadline, self.now.basis)
-        return reached is not None and self._better(reached.bound, reached.fractional, self.now)
-
-    def keep(self, told: Remedy) -> None:
-        """Keep a remedy, and work out what all that are kept do together."""
-        told = self.namer.settled(told)
-        form = told.apply_to(self.form)
+        form = tried.remedy.apply_to(self.form)
         reached = optimum_of(form, self._deadline, self.now.basis)
-        if reached is not None:
-            self.form, self.now = form, reached
-            together = reached.bound, reached.fractional
-            told = replace(told, bound_together=together[0], fractional_together=together[1])
-            self.kept.append(told)
+        return reached is not None and self._better(reached, self.now)
 
-    def _gain(self, told: Remedy) -> tuple[float, int]:
-        return self._sign * told.bound_after, -(told.fractional_after or 0)
+    def keep(self, tried: Tried) -> None:
+        """Keep a remedy, and work out what all that are kept do together."""
+        told = self.namer.settled(tried.remedy)
+        form, reached = tried.form, tried.optimum
+        if self.kept:
+            form = told.apply_to(self.form)
+            together = optimum_of(form, self._deadline, self.now.basis)
+            if together is None:
+                return
+            reached = together
+        self.form, self.now = form, reached
+        bound, fractional = reached.bound, reached.fractional
+        self.kept.append(replace(told, bound_together=bound, fractional_together=fractional))
 
-    def _better(self, bound: float, fractional: int, than: Optimum) -> bool:
-        gain = self._sign * (bound - than.bound) if bound != than.bound else 0.0
+    def _gain(self, tried: Tried) -> tuple[float, int]:
+        return self._sign * tried.optimum.bound, -tried.optimum.fractional
+
+    def _better(self, reached: Optimum, than: Optimum) -> bool:
+        gain = self._sign * (reached.bound - than.bound) if reached.bound != than.bound else 0.0
         noise = BETTER * max(1.0, abs(than.bound))
-        return gain > noise or (gain >= -noise and fractional < than.fractional)
+        return gain > noise or (gain >= -noise and reached.fractional < than.fractional)

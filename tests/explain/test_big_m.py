@@ -18,6 +18,7 @@ from pyomo_latpath.explain.lines import (
     float_above,
     float_below,
     lines_of,
+    outlook_of,
 )
 from pyomo_latpath.explain.splitting import split
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -25,7 +26,10 @@ from pyomo_latpath.forms.normalise import normalise
 
 
 def whole_points(columns):
-    ranges = [range(int(low), int(high) + 1) for low, high in zip(columns.lower, columns.upper)]
+    ranges = [
+        range(int(low), int(high) + 1)
+        for low, high in zip(columns.lower, columns.upper, strict=True)
+    ]
     return list(itertools.product(*ranges))
 
 
@@ -135,7 +139,7 @@ def test_what_a_linear_program_proves_holds_at_every_whole_plan(seed):
     if normal.conflict is not None or not len(plans):
         return
     columns, prober = columns_of(form), Prober(normal, Deadline(10))
-    for line in lines_of(form, columns):
+    for line in lines_of(form, outlook_of(form).one_sided):
         switch = max(line.terms, key=lambda j: abs(line.terms[j]))
         if not columns.binary[switch]:
             continue
@@ -166,7 +170,7 @@ def test_other_rows_prove_a_smaller_coefficient_than_bounds(whole):
         integer=[whole, whole, True],
     )
     columns = columns_of(form)
-    line = next(lines_of(form, columns))
+    line = next(lines_of(form, np.array([True] + [False] * (form.shape[0] - 1))))
     assert tightened(line, columns).terms[2] == -100
     most = Prober(normalise(form), Deadline(None)).most(line, 2)
     assert most == (3 if whole else Fraction(7, 2))
@@ -183,7 +187,7 @@ def test_no_limit_no_proof():
         integer=[False, True],
     )
     columns = columns_of(form)
-    line = next(lines_of(form, columns))
+    line = next(lines_of(form, np.array([True] + [False] * (form.shape[0] - 1))))
     assert tightened(line, columns) is line
     # The row itself is the only limit: 1000, which is no gain.
     most = Prober(normalise(form), Deadline(None)).most(line, 1)
