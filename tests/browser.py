@@ -1,7 +1,7 @@
-"""A real browser for the page tests: one headless Chromium for all of them.
+"""A real browser for the page tests: headless Chromium, asked what a person would meet.
 
-`from browser import browser` makes the fixture known to a test module. On a machine without
-Chromium the tests that ask for it are skipped, unless CI is set: there they fail.
+On a machine without Chromium the tests that ask for it are skipped, unless CI is set: there they
+fail. `conftest.py` starts one for all tests.
 """
 
 from __future__ import annotations
@@ -10,6 +10,7 @@ import json
 import os
 import shutil
 from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any
 
@@ -110,15 +111,10 @@ class Browser:
     def __init__(self, driver: webdriver.Chrome) -> None:
         self.driver = driver
 
-    def open(
-        self, page: Path, size: tuple[int, int] = WIDE, scheme: str = "light", calm: bool = False
-    ) -> None:
+    def open(self, page: Path, size: tuple[int, int] = WIDE, scheme: str = "light") -> None:
         """Load a page in a view of the given size and colour scheme."""
-        features = [
-            {"name": "prefers-color-scheme", "value": scheme},
-            {"name": "prefers-reduced-motion", "value": "reduce" if calm else "no-preference"},
-        ]
-        self._command("Emulation.setEmulatedMedia", features=features)
+        features = [{"name": "prefers-color-scheme", "value": scheme}]
+        self._command("Emulation.setEmulatedMedia", media="", features=features)
         width, height = size
         self._command(
             "Emulation.setDeviceMetricsOverride",
@@ -134,6 +130,13 @@ class Browser:
     def run(self, script: str, *arguments: Any) -> Any:
         """The value that a script in the page returns."""
         return self.driver.execute_script(script, *arguments)
+
+    def settle(self) -> None:
+        """Wait until the page has drawn itself anew."""
+        self.driver.execute_async_script(
+            "const done = arguments[0];"
+            "requestAnimationFrame(() => requestAnimationFrame(() => setTimeout(done)));"
+        )
 
     def complaints(self) -> list[str]:
         """What the console says: errors, warnings, what the page's policy refused."""
@@ -216,8 +219,9 @@ def _found(*names: str) -> str | None:
     return next((path for path in map(shutil.which, names) if path), None)
 
 
-@pytest.fixture(scope="session")
-def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Browser]:
+@contextmanager
+def running_browser(profile: Path) -> Iterator[Browser]:
+    """A Chromium with a fresh profile, for as long as the context lasts."""
     chromium, driver = _found("chromium", "chromium-browser"), _found("chromedriver")
     if chromium is None or driver is None:
         reason = "page tests need the commands chromium and chromedriver (apt: chromium-driver)"
@@ -226,7 +230,6 @@ def browser(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Browser]:
         pytest.skip(reason)
     options = webdriver.ChromeOptions()
     options.binary_location = chromium
-    profile = tmp_path_factory.mktemp("chromium")
     for flag in (*FLAGS, f"--user-data-dir={profile}"):
         options.add_argument(flag)
     options.set_capability("goog:loggingPrefs", {"browser": "ALL", "performance": "ALL"})

@@ -12,6 +12,8 @@ from ..pages.drawing import box, label, picture
 from ..pages.markup import counted, number, shortened, text, visible
 from .explanation import BlockSummary, Sketch, Violator
 
+Point = tuple[float, float]
+
 #: Rows of a cycle drawn with their names, and with their numbers.
 NAMED, NUMBERED = 12, 18
 #: Blocks with a number of their own in the picture of the matrix.
@@ -35,18 +37,24 @@ def cycle(key: str, violator: Violator, named: bool) -> str:
     k = len(violator.row_names)
     radius = max(110.0, (15.5 if named else 10.5) * k)
     margin = 215 if named else 50
-    width, height = 2 * (radius + margin), 2 * radius + 70
-    points = [
-        (
-            width / 2 + radius * math.sin(math.pi * (node + 0.5) / k),
-            height / 2 - radius * math.cos(math.pi * (node + 0.5) / k),
-        )
-        for node in range(2 * k)
-    ]
+    width, height = 2 * (radius + margin), 2 * radius + 80
+
+    def points(radius: float) -> list[Point]:
+        angles = [math.pi * (node + 0.5) / k for node in range(2 * k)]
+        return [
+            (width / 2 + radius * math.sin(angle), height / 2 - radius * math.cos(angle))
+            for angle in angles
+        ]
+
+    places = points(radius)
     body = "".join(
-        _edge(points[node], points[(node + 1) % (2 * k)], _sign(violator, node))
-        for node in range(2 * k)
-    ) + "".join(_node(node, points[node], k, violator, named) for node in range(2 * k))
+        _edge(a, b, _sign(violator, node))
+        for node, (a, b) in enumerate(zip(places, places[1:] + places[:1], strict=True))
+    )
+    body += "".join(_node(node, place, k) for node, place in enumerate(places))
+    if named:
+        outside = enumerate(points(radius + 20))
+        body += "".join(_name(node, place, violator) for node, place in outside)
     minus = sum(_sign(violator, node) < 0 for node in range(2 * k))
     told = (
         f"{counted(k, 'row')} and {counted(k, 'column')} by turns, each sharing an entry with the "
@@ -62,39 +70,36 @@ def _sign(violator: Violator, node: int) -> int:
     return int(np.sign(violator.entries[(i + is_column) % k, i]))
 
 
-def _edge(a: tuple[float, float], b: tuple[float, float], sign: int) -> str:
+def _edge(a: Point, b: Point, sign: int) -> str:
     css = "edge minus" if sign < 0 else "edge"
     x, y = (a[0] + b[0]) / 2, (a[1] + b[1]) / 2
+    edge = f'<path d="M{a[0]:.5g} {a[1]:.5g}L{b[0]:.5g} {b[1]:.5g}" class="{css}"/>'
+    if math.dist(a, b) < 32:
+        return edge
     return (
-        f'<path d="M{a[0]:.5g} {a[1]:.5g}L{b[0]:.5g} {b[1]:.5g}" class="{css}"/>'
-        f'<circle cx="{x:.5g}" cy="{y:.5g}" r="7" class="paper"/>'
+        f'{edge}<circle cx="{x:.5g}" cy="{y:.5g}" r="7" class="paper"/>'
         + label(x, y + 4.5, "−" if sign < 0 else "+", anchor="middle")
     )
 
 
-def _node(node: int, point: tuple[float, float], k: int, violator: Violator, named: bool) -> str:
+def _node(node: int, point: Point, k: int) -> str:
+    """A row's square or a column's circle, with its number where there is room for it."""
     (x, y), (i, is_column) = point, divmod(node, 2)
-    css = "node column" if is_column else "node row"
     size = 10 if k <= NUMBERED else 4
     shape = (
-        f'<circle cx="{x:.5g}" cy="{y:.5g}" r="{size + 1}" class="{css}"/>'
+        f'<circle cx="{x:.5g}" cy="{y:.5g}" r="{size + 1}" class="node column"/>'
         if is_column
-        else box(x - size, y - size, 2 * size, 2 * size, css)
+        else box(x - size, y - size, 2 * size, 2 * size, "node")
     )
-    if k > NUMBERED:
-        return shape
-    shape += label(x, y + 4.5, str(i + 1), anchor="middle")
-    if not named:
-        return shape
+    return shape + (label(x, y + 4.5, str(i + 1), anchor="middle") if k <= NUMBERED else "")
+
+
+def _name(node: int, point: Point, violator: Violator) -> str:
+    """A node's name, running away from the circle."""
+    (x, y), (i, is_column) = point, divmod(node, 2)
     words = visible((violator.column_names if is_column else violator.row_names)[i])
-    right = node < k
-    return shape + label(
-        x + (18 if right else -18),
-        y + 4.5,
-        shortened(words, 24),
-        "mono",
-        "start" if right else "end",
-    )
+    anchor = "start" if node < len(violator.row_names) else "end"
+    return label(x, y + 4.5, shortened(words, 24), "mono", anchor)
 
 
 def matrix(key: str, sketch: Sketch, blocks: Sequence[BlockSummary]) -> str:

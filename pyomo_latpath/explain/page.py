@@ -68,7 +68,7 @@ def _figures(told: Explanation) -> str:
     if told.fractional is not None:
         share = f"{told.fractional.count:,} of {told.fractional.integers:,}"
         pairs.append(("integer columns fractional", share))
-    if told.gap is not None and math.isfinite(told.gap.absolute):
+    if told.gap is not None and math.isfinite(told.gap.plan - told.gap.declared_bound):
         gap = f"{number(float(f'{told.gap.absolute:.6g}'))} ({told.gap.relative:.2%})"
         pairs.append(("gap" if told.gap.exact else "gap, at most", gap))
     sizes = (("rows", told.rows), ("columns", told.columns), ("nonzeros", told.nonzeros))
@@ -78,9 +78,13 @@ def _figures(told: Explanation) -> str:
 def _whole(told: Explanation) -> str:
     if told.whole is None:
         return ""
-    body = paragraphs([*told.whole.sentences, words.how_bad(told)])
-    if told.whole.breakers:
-        body += f"<h3>What would break it</h3>{paragraphs(told.whole.breakers)}"
+    body = paragraphs([*map(words.as_sentence, told.whole.sentences), words.how_bad(told)])
+    for title, clauses in (
+        ("What would break it", told.whole.breakers),
+        ("What may change", told.whole.keepers),
+    ):
+        if clauses:
+            body += f"<h3>{title}</h3>{paragraphs(map(words.as_sentence, clauses))}"
     return section("whole", "Why every vertex is whole", body + _times(told.whole))
 
 
@@ -104,7 +108,7 @@ def _how_bad(told: Explanation) -> str:
                 number(each.fractional),
                 "–"
                 if each.worst_name is None
-                else f"{name(each.worst_name)} = {text(each.worst_value)}",
+                else f"{name(each.worst_name)} = {text(words.fraction(each.worst_value))}",
                 number(each.sampled),
             ]
             for each in told.fractional.components[:COMPONENTS]
@@ -131,7 +135,9 @@ def _witness(told: Explanation) -> str:
         zip(told.witness.columns.tolist(), told.witness.values, strict=True),
     )
     split = [(names_[j], value) for j, value in pairs if value.denominator > 1]
-    shown = ", ".join(f"{name(column)} = {text(value)}" for column, value in split[:NAMES])
+    shown = ", ".join(
+        f"{name(column)} = {text(words.fraction(value))}" for column, value in split[:NAMES]
+    )
     rest = len(split) - NAMES
     shown += f" and {rest:,} more" if rest > 0 else ""
     title = f"An exact vertex with {counted(len(split), 'fractional column')}"
@@ -153,7 +159,7 @@ def _rests(told: Explanation) -> str:
     stopped = "The work was interrupted; this is the best answer until then."
     body = paragraphs([words.standing(told), stopped if told.interrupted else ""])
     if told.cut_off:
-        body += f"<h3>Left open</h3>{paragraphs(told.cut_off)}"
+        body += f"<h3>Left open</h3>{paragraphs(map(words.as_sentence, told.cut_off))}"
     spent = ", ".join(f"{part} {seconds:.2f}" for part, seconds in told.seconds.items())
     body += paragraphs([f"Seconds spent: {spent}." if spent else ""], "note")
     return section("rests", "What this rests on", body)

@@ -36,7 +36,8 @@ def _remedy(key: str, remedy: Remedy, plan: float) -> str:
     body = f"<h3>{text(words.as_sentence(remedy.title).rstrip('.'))}</h3>"
     body += paragraphs([remedy.sentence, words.effect(remedy)])
     bounds = [("as it is", remedy.bound_before), ("with it alone", remedy.bound_after)]
-    body += _gap_bars(key, bounds, plan)
+    if remedy.bound_before != remedy.bound_after:
+        body += _gap_bars(key, bounds, plan)
     body += paragraphs([f"Checked: {remedy.verified}" if remedy.verified else ""], "note")
     if remedy.inequalities:
         shown = paragraphs(words.inequality(each) for each in remedy.inequalities[:BARS])

@@ -23,6 +23,8 @@ from .explanation import Culprit, Explanation, Group, Violator
 
 #: Groups in the table, at most; those to blame come first.
 GROUPS = 300
+#: Groups of one culprit named at once.
+SHOWN = 12
 #: Rows and columns of a conflict shown as a grid, at most.
 GRID = 12
 
@@ -35,7 +37,7 @@ GROUPED_BY = {
 
 def blame(told: Explanation) -> str:
     """The section on groups of rows; empty where there are none."""
-    if told.culprits:
+    if told.culprits and told.no_optimum is None:
         body = cards(_culprit(culprit) for culprit in told.culprits)
     else:
         body = paragraphs([words.blame(told)])
@@ -46,15 +48,13 @@ def blame(told: Explanation) -> str:
 
 
 def _culprit(culprit: Culprit) -> str:
-    open_question = "None of these groups can stay; whether fewer groups do was not settled."
-    least = "No set of fewer groups does." if culprit.smallest else open_question
-    body = f"<p><strong>{names(culprit.groups)}</strong></p>"
-    body += paragraphs([words.culprit_words(culprit), culprit.remains])
-    body += paragraphs([least], "note")
+    body = f"<p><strong>{names(culprit.groups, SHOWN)}</strong></p>"
+    body += paragraphs([words.culprit_words(culprit), words.remains(culprit)])
+    body += paragraphs([words.culprit_least(culprit)], "note")
+    if len(culprit.groups) > SHOWN:
+        body += folded("All these groups", f"<p>{names(culprit.groups)}</p>")
     if culprit.rows:
-        sure = "none of these can stay" if culprit.rows_minimal else "perhaps fewer would do"
-        title = f"{counted(len(culprit.rows), 'row')} of them would do; {sure}"
-        body += folded(title, f"<p>{names(culprit.rows)}</p>")
+        body += folded(words.culprit_rows(culprit), f"<p>{names(culprit.rows)}</p>")
     return body
 
 
@@ -85,7 +85,8 @@ def _without(told: Explanation, group: Group) -> str:
             return "the rest is proven whole" + (f", optimum {optimum}" if known else "")
         if group.name in culprit.groups:
             others = [each for each in culprit.groups if each != group.name]
-            return f"and without {names(others, 4)}, the rest is proven whole"
+            more = names(others) if len(others) < 4 else f"{len(others):,} other groups"
+            return f"and without {more}, the rest is proven whole"
     return "–"
 
 
@@ -108,7 +109,7 @@ def conflict(told: Explanation) -> str:
         body = paragraphs([words.conflict(told)]) + numbered(told.no_optimum.names)
         body += paragraphs([f"{least} could be left out."], "note")
         return section("conflict", "The conflict", body)
-    if not told.violators:
+    if not told.violators or told.no_optimum is not None:
         return ""
     title = "Smallest conflicts" if len(told.violators) > 1 else "The smallest conflict"
     drawn = (_violator(f"conflict-{k}", each) for k, each in enumerate(told.violators, 1))
@@ -127,10 +128,11 @@ def _violator(key: str, violator: Violator) -> str:
     size = f"{counted(k, 'row')} and {counted(k, 'column')}"
     body += paragraphs([f"{size} with determinant {violator.determinant}; {least}."])
     body += _cycle(key, violator) if violator.cycle else _grid(key, violator)
-    return body + (
+    names_ = (
         f'<div class="pair"><div><h4>Rows</h4>{numbered(violator.row_names)}</div>'
         f"<div><h4>Columns</h4>{numbered(violator.column_names)}</div></div>"
     )
+    return body + (names_ if k <= NAMED else folded("Names of the rows and columns", names_))
 
 
 def _cycle(key: str, violator: Violator) -> str:

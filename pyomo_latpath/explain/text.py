@@ -37,21 +37,29 @@ def _size(told: Explanation) -> str:
 def _details(told: Explanation) -> Iterator[str]:
     """Everything else, under headings."""
     if told.whole is not None:
-        yield from _part("What would break it", told.whole.breakers)
-    if told.no_optimum is None and told.whole is None:
-        yield from _components(told)
-        yield from _groups(told)
-    for k, culprit in enumerate(told.culprits, 1):
-        yield from _part(f"Culprit {k} of {len(told.culprits)}", _culprit(culprit))
-    for k, violator in enumerate(told.violators, 1):
-        yield from _violator(f"Conflict {k} of {len(told.violators)}", violator)
+        yield from _part("What would break it", map(words.as_sentence, told.whole.breakers))
+        yield from _part("What may change", map(words.as_sentence, told.whole.keepers))
+    elif told.no_optimum is not None:
+        names = [words.short(name) for name in told.no_optimum.names]
+        yield from _part("What conflicts", [", ".join(names)])
+    else:
+        yield from _fractional(told)
     for k, remedy in enumerate(told.remedies, 1):
         yield from _part(f"Remedy {k} of {len(told.remedies)}", _remedy(remedy))
     yield from _part("Side reasons", [reason.sentence for reason in told.reasons])
     yield from _part("Blocks", _blocks(told))
     yield from _part("Samples", [words.sampled_shares(told)])
-    yield from _part("Left open", told.cut_off)
+    yield from _part("Left open", map(words.as_sentence, told.cut_off))
     yield from _part("Please note", [words.LABOUR])
+
+
+def _fractional(told: Explanation) -> Iterator[str]:
+    yield from _components(told)
+    yield from _groups(told)
+    for k, culprit in enumerate(told.culprits, 1):
+        yield from _part(f"Culprit {k} of {len(told.culprits)}", _culprit(culprit))
+    for k, violator in enumerate(told.violators, 1):
+        yield from _violator(f"Conflict {k} of {len(told.violators)}", violator)
 
 
 def _components(told: Explanation) -> Iterator[str]:
@@ -59,7 +67,12 @@ def _components(told: Explanation) -> Iterator[str]:
         return
     head = ["variables", "integer", "fractional", "furthest"]
     rows = [
-        [each.name, number(each.integers), number(each.fractional), str(each.worst_value)]
+        [
+            each.name,
+            number(each.integers),
+            number(each.fractional),
+            words.fraction(each.worst_value),
+        ]
         for each in told.fractional.components
         if each.fractional
     ]
@@ -80,16 +93,10 @@ def _groups(told: Explanation) -> Iterator[str]:
 
 
 def _culprit(culprit: Culprit) -> list[str]:
-    few = (
-        "No set of fewer groups does."
-        if culprit.smallest
-        else ("Whether fewer groups do was not settled.")
-    )
-    told = [words.culprit_words(culprit), culprit.remains, few]
+    told = [words.culprit_words(culprit), words.remains(culprit)]
+    told.append(words.culprit_least(culprit))
     if culprit.rows:
-        sure = "none of these can stay" if culprit.rows_minimal else "perhaps fewer would do"
-        count = counted(len(culprit.rows), "row")
-        told.append(f"{count} of them would do ({sure}): {words.listed(culprit.rows, 12)}.")
+        told.append(f"{words.culprit_rows(culprit)}: {words.listed(culprit.rows, 12)}.")
     return told
 
 

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
+from fractions import Fraction
 
 from ..integrality.finding import Verdict
 from ..pages.markup import counted, number, shortened, visible
@@ -29,22 +30,34 @@ def headline(told: Explanation) -> str:
     if told.fractional is None:
         return "Not known yet: the time ran out before the relaxation was solved"
     if told.fractional.count:
-        return f"Fractional{_blamed(told)}"
+        return _blamed(told)
     if told.verdict is Verdict.REFUTED:
         return "Whole at this objective, but not at every other one"
     return "Whole at this objective; about other objectives there is no proof"
 
 
 def _blamed(told: Explanation) -> str:
-    if not told.culprits:
-        return " at the relaxation's optimum"
-    return f" because of {listed(told.culprits[0].groups, 3)}"
+    telling = [culprit.groups for culprit in told.culprits if not holds_all(culprit)]
+    if not telling:
+        return "The relaxation is fractional at its optimum"
+    groups = telling[0]
+    few = len(groups) <= 3
+    return "Fractional because of " + (
+        listed(groups, 3) if few else counted(len(groups), "group") + " of rows"
+    )
+
+
+def holds_all(culprit: Culprit) -> bool:
+    """Whether a culprit is all that ties integer columns together, and so singles out nothing."""
+    return culprit.structures == ("trivial",)
 
 
 def in_short(told: Explanation) -> list[tuple[str, str]]:
     """The answer as a handful of titled sentences, in the order of their use."""
-    why = " ".join(told.whole.sentences[:3]) if told.whole is not None else ""
-    breaks = told.whole.breakers[0] if told.whole is not None and told.whole.breakers else ""
+    why = breaks = ""
+    if told.whole is not None:
+        why = " ".join(map(as_sentence, told.whole.sentences[:3]))
+        breaks = " ".join(map(as_sentence, told.whole.breakers[:1]))
     entries = [
         ("why", why),
         ("how bad", how_bad(told)),
@@ -52,8 +65,8 @@ def in_short(told: Explanation) -> list[tuple[str, str]]:
         ("conflict", conflict(told)),
         ("remedy", best_remedy(told)),
         ("breaks by", breaks),
-        ("rests on", standing(told)),
-        ("left open", " ".join(told.cut_off[:2])),
+        ("rests on", "" if told.no_optimum is not None else standing(told)),
+        ("left open", " ".join(map(as_sentence, told.cut_off[:2]))),
     ]
     return [(title, sentence) for title, sentence in entries if sentence]
 
@@ -61,7 +74,7 @@ def in_short(told: Explanation) -> list[tuple[str, str]]:
 def how_bad(told: Explanation) -> str:
     """How many columns are fractional, and how far the relaxation is from a whole plan."""
     if told.no_optimum is not None:
-        return f"{told.no_optimum.sentence.rstrip('.')}."
+        return as_sentence(told.no_optimum.sentence)
     parts = []
     if told.fractional is not None:
         integers = counted(told.fractional.integers, "integer column")
@@ -69,7 +82,9 @@ def how_bad(told: Explanation) -> str:
         parts.append(f"{count:,} of {integers} {'is' if count == 1 else 'are'} fractional.")
         if told.fractional.worst_name is not None:
             worst = told.fractional.worst_name
-            parts.append(f"Furthest from whole: {short(worst)} = {told.fractional.worst_value}.")
+            parts.append(
+                f"Furthest from whole: {short(worst)} = {fraction(told.fractional.worst_value)}."
+            )
     if told.gap is not None:
         parts.append(gap_words(told.gap))
     return " ".join(parts)
@@ -78,6 +93,8 @@ def how_bad(told: Explanation) -> str:
 def gap_words(gap: Gap) -> str:
     """What wholeness costs, and how far that is known."""
     bound = f"The relaxation's optimum is {number(gap.declared_bound)}"
+    if number(gap.rounded_bound) not in (number(gap.declared_bound), number(math.nan)):
+        bound += f" ({number(gap.rounded_bound)} with sides and bounds rounded inwards)"
     if math.isnan(gap.declared_bound):
         return ""
     if gap.plan_status == "infeasible":
@@ -114,7 +131,11 @@ def blame(told: Explanation) -> str:
 
 def culprit_words(culprit: Culprit) -> str:
     """What leaving a culprit out does."""
-    sentence = f"Without {listed(culprit.groups, 6)} what is left is proven whole"
+    groups = listed(culprit.groups, 6)
+    if holds_all(culprit):
+        tie = "ties" if len(culprit.groups) == 1 else "tie"
+        return f"Only {groups} {tie} integer columns together: no part of the model stands out."
+    sentence = f"Without {groups} what is left is proven whole"
     if culprit.structures:
         sentence += f" ({', '.join(culprit.structures)})"
     if not math.isnan(culprit.objective_without):
@@ -122,6 +143,26 @@ def culprit_words(culprit: Culprit) -> str:
         if not math.isnan(culprit.price):
             sentence += f", so these rows cost {number(culprit.price)}"
     return f"{sentence}."
+
+
+def remains(culprit: Culprit) -> str:
+    """What is left without a culprit."""
+    return f"What is left: {culprit.remains.rstrip('.')}." if culprit.remains else ""
+
+
+def culprit_rows(culprit: Culprit) -> str:
+    """How many of a culprit's rows it takes."""
+    enough = f"It is enough to leave out {counted(len(culprit.rows), 'row')}"
+    if len(culprit.rows) == 1:
+        return enough
+    return f"{enough} ({'each of them must go' if culprit.rows_minimal else 'perhaps fewer'})"
+
+
+def culprit_least(culprit: Culprit) -> str:
+    """Whether fewer groups would do."""
+    if culprit.smallest:
+        return "No set of fewer groups does."
+    return "None of these groups can stay; whether fewer groups do was not settled."
 
 
 def conflict(told: Explanation) -> str:
@@ -153,30 +194,32 @@ def violator_words(violator: Violator) -> str:
 
 
 def best_remedy(told: Explanation) -> str:
-    """The first remedy and what it does."""
+    """The remedy that does most by itself, and what it does."""
     if not told.remedies:
         return ""
-    remedy = told.remedies[0]
-    more = len(told.remedies) - 1
-    others = f" {counted(more, 'other')} below." if more else ""
-    return f"{as_sentence(remedy.title)} {effect(remedy)}{others}"
+    sign = 1 if told.sense == "min" else -1
+    gains = [sign * (each.bound_after - each.bound_before) for each in told.remedies]
+    best = max(range(len(gains)), key=lambda k: (not math.isnan(gains[k]), gains[k], -k))
+    words = f"{as_sentence(told.remedies[best].title)} {effect(told.remedies[best])}"
+    others = len(told.remedies) - 1
+    if not others:
+        return words
+    together = told.remedies[-1].bound_together
+    bound = "" if math.isnan(together) else f"; all together bring the bound to {number(together)}"
+    return f"{words} There {'is 1 more' if others == 1 else f'are {others} more'}{bound}."
 
 
 def effect(remedy: Remedy) -> str:
-    """What a remedy does to the bound and to the number of fractional columns."""
+    """What a remedy by itself does to the bound and to the number of fractional columns."""
     parts = []
-    before, after = remedy.bound_before, remedy.bound_after
-    if not math.isnan(before) and not math.isnan(after):
-        same = number(before) == number(after)
-        parts.append(
-            f"the bound stays at {number(after)}"
-            if same
-            else f"the bound goes from {number(before)} to {number(after)}"
-        )
-    if remedy.fractional_before is not None and remedy.fractional_after is not None:
-        parts.append(
-            f"{remedy.fractional_before:,} fractional columns become {remedy.fractional_after:,}"
-        )
+    before, after = number(remedy.bound_before), number(remedy.bound_after)
+    if not math.isnan(remedy.bound_before) and not math.isnan(remedy.bound_after):
+        moved = f"the bound goes from {before} to {after}"
+        parts.append(f"the bound stays at {after}" if before == after else moved)
+    was, now = remedy.fractional_before, remedy.fractional_after
+    if was is not None and now is not None and (was or now):
+        columns = counted(was, "fractional column")
+        parts.append(f"{columns} stay" if was == now else f"{columns} become {now:,}")
     return as_sentence("; ".join(parts))
 
 
@@ -202,6 +245,19 @@ def sampled_shares(told: Explanation) -> str:
         f"Of {counted(k, 'sampled vertex', 'sampled vertices')} {bad:,} had a fractional column. "
         "That is a sample, no proof."
     )
+
+
+def fraction(value: Fraction | None) -> str:
+    """A fraction, or about what it is where it takes too long to read.
+
+    Examples
+    --------
+    >>> fraction(Fraction(7, 15)), fraction(Fraction(10**30 + 1, 10**30)), fraction(None)
+    ('7/15', 'about 1', '–')
+    """
+    if value is None:
+        return "–"
+    return str(value) if len(str(value)) <= 15 else f"about {float(value):.6g}"
 
 
 def listed(names: Sequence[str], most: int) -> str:
@@ -233,7 +289,7 @@ def inequality(row: Inequality, most: int = 8) -> str:
         size = "" if abs(coefficient) == 1 else f"{number(abs(coefficient))} "
         terms += f" {sign} {size}{short(name)}" if terms else f"{sign}{size}{short(name)}"
     if len(pairs) > most:
-        terms += f" + {len(pairs) - most:,} more terms"
+        terms += f" + {counted(len(pairs) - most, 'more term')}"
     if row.lower == row.upper:
         return f"{short(row.name)}: {terms} = {number(row.upper)}"
     least = f"{number(row.lower)} <= " if math.isfinite(row.lower) else ""

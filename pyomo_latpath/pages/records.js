@@ -98,9 +98,14 @@
   };
 
   const show = (from, to) => {
+    // Before rows go: the browser lays out the page when one with the focus is taken away, and a
+    // table that is too short at that moment moves the view.
+    const focused = Number(document.activeElement.dataset.place ?? from);
+    if (focused < from || focused >= to) region.focus({ preventScroll: true });
+    above.firstChild.style.height = `${from * rowHeight}px`;
+    below.firstChild.style.height = `${Math.max(0, order.length - to) * rowHeight}px`;
     for (const [place, tr] of drawn) {
       if (place >= from && place < to) continue;
-      if (tr.contains(document.activeElement)) region.focus({ preventScroll: true });
       tr.remove();
       drawn.delete(place);
     }
@@ -114,8 +119,6 @@
     }
     if (current < from || current >= to) current = from;
     for (const [place, tr] of drawn) tr.querySelector("button").tabIndex = place === current ? 0 : -1;
-    above.firstChild.style.height = `${from * rowHeight}px`;
-    below.firstChild.style.height = `${Math.max(0, order.length - to) * rowHeight}px`;
   };
 
   const draw = () => {
