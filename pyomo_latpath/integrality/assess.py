@@ -255,12 +255,12 @@ def _recalled(
     """A proof from the store, if it holds for the block's sides as well."""
     proof = store.recall(matrix)
     if proof is not None and isinstance(proof[1], Unimodular):
-        limits = zip(normal.row_lower[block.rows], normal.row_upper[block.rows], strict=True)
-        sides = [
-            tuple(Fraction(side) if np.isfinite(side) else None for side in pair) for pair in limits
-        ]
+        lower, upper = (
+            [Fraction(side) if np.isfinite(side) else None for side in sides[block.rows].tolist()]
+            for sides in (normal.row_lower, normal.row_upper)
+        )
         try:
-            proof[1].check_sides(sides)
+            proof[1].check_sides(list(zip(lower, upper, strict=True)))
         except CertificateError:
             return None
     return proof
