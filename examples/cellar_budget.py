@@ -7,7 +7,7 @@ relaxation's optimum turns fractional: half a lot here, half a lot there, to the
 import numpy as np
 import pyomo.environ as pyo
 
-import pyomo_latpath  # noqa: F401  (makes the solver known to Pyomo)
+import pyomo_latpath as latpath
 
 
 def build(lots: int = 60, caves: int = 12, seed: int = 5) -> pyo.ConcreteModel:
@@ -36,8 +36,11 @@ def build(lots: int = 60, caves: int = 12, seed: int = 5) -> pyo.ConcreteModel:
 
 
 def main() -> None:
-    """Solve it with and without the budget."""
+    """Ask why it is fractional, and solve it with and without the budget."""
     model = build()
+    explanation = latpath.explain(model)
+    for culprit in explanation.culprits:
+        print(f"to blame: {', '.join(culprit.groups)}, at a price of {culprit.price:,.0f}")
     solver = pyo.SolverFactory("latpath")
     for said in ("with the budget", "without it"):
         results = solver.solve(model)
