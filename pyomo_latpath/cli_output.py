@@ -17,11 +17,14 @@ from typing import IO, Any
 from .certificates import Certificate, fingerprint
 from .forms.linear_form import LinearForm
 from .integrality.finding import Finding, Verdict
+from .integrality.sentences import FEW, describe_part
 from .solution import RouteReport, Solution
 
 WIDTH = 80
 #: Names shown of a conflict before the rest is only counted.
 BLAME_SHOWN = 5
+#: Summands shown of a matrix that is a sum.
+SUMMANDS_SHOWN = 6
 
 #: Fields of a record, see `record`.
 FIELDS = (
@@ -126,6 +129,7 @@ def describe(outcome: Outcome) -> Iterator[str]:
         f"{form.matrix.nnz} nonzeros",
     )
     yield from _entry("verdict", verdict_words(report.finding))
+    yield from sum_words(report.finding)
     yield from _entry("route", f"{report.route}: {report.why}")
     exact = "checked in exact arithmetic" if report.proof == "exact" else "within tolerances"
     settled = solution.status in ("optimal", "infeasible", "unbounded")
@@ -172,6 +176,23 @@ def verdict_words(finding: Finding) -> str:
     if finding.verdict is Verdict.REFUTED:
         return "refuted: a fractional vertex is known"
     return "undecided: neither a proof nor a fractional vertex was found"
+
+
+def sum_words(finding: Finding) -> Iterator[str]:
+    """What the largest block that is a sum is put together from."""
+    sums = [block for block in finding.blocks if block.structure == "sum"]
+    largest = max(sums, key=lambda block: block.columns.size, default=None)
+    if largest is None or largest.certificate is None:
+        return
+    part = largest.certificate.blocks[0].part
+    whole, *summands = describe_part(part, largest.rows.size, largest.columns.size)
+    yield from _entry("sum", whole)
+    if len(summands) > FEW:  # else they are told already
+        rest = len(summands) - SUMMANDS_SHOWN
+        for sentence in summands[:SUMMANDS_SHOWN] if rest > 1 else summands:
+            yield from _entry("", sentence)
+        if rest > 1:
+            yield from _entry("", f"and {rest} further summands")
 
 
 def samples_looked_at(finding: Finding) -> int:

@@ -40,7 +40,9 @@ from pyomo_latpath.certificates import (
     fingerprint,
 )
 from pyomo_latpath.cli import main
+from pyomo_latpath.cli_output import sum_words
 from pyomo_latpath.forms.from_file import read
+from pyomo_latpath.integrality.assess import assess
 
 # What each kind means, on dense tables, by the formulas of the literature.
 
@@ -549,6 +551,15 @@ def test_the_command_line_checks_every_kind(tmp_path, kind):
     assert checked(certificate, model) == (2, f"{certificate}: its JSON is nested too deeply")
 
 
+@pytest.mark.parametrize(("count", "shown"), [(2, 0), (8, 7)])
+def test_the_command_line_tells_what_a_sum_is_made_of(tmp_path, count, shown):
+    model = tmp_path / "cellar.lp"
+    write_lp(model, chain(count)[0].toarray(), 1)
+    lines = [line.strip() for line in sum_words(assess(read(model)))]
+    assert lines[0].startswith("sum ")
+    assert sum(line.startswith("summand ") or "further summands" in line for line in lines) == shown
+
+
 def checked(certificate, model):
     """Exit status of `latpath check`, and what it says after the first colon."""
     result = CliRunner().invoke(main, ["check", str(certificate), str(model)])
@@ -556,7 +567,7 @@ def checked(certificate, model):
 
 
 def write_lp(path, matrix, side):
-    """A model with whole-number columns: all rows at most `side`."""
+    """A model with whole-number columns from 0 to 3: all rows at most `side`."""
     names = [f"x{j}" for j in range(matrix.shape[1])]
     rows = [
         " ".join(f"{value:+d} {names[j]}" for j, value in enumerate(row) if value)
@@ -564,4 +575,5 @@ def write_lp(path, matrix, side):
     ]
     lines = ["maximize", " obj: " + " + ".join(names), "subject to"]
     lines += [f" r{i}: {row} <= {side}" for i, row in enumerate(rows)]
+    lines += ["bounds", *(f" 0 <= {name} <= 3" for name in names)]
     path.write_text("\n".join([*lines, "general", " " + " ".join(names), "end", ""]))

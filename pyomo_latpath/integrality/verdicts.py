@@ -14,6 +14,7 @@ from .regular.clock import OutOfTime
 from .regular.conflict import determinant
 from .regular.signs import odd_hole
 from .sampling import Sample, sample_vertices
+from .sentences import describe_part
 
 #: Seconds that the search for what speaks against total unimodularity may take.
 REASON_SECONDS = 0.1
@@ -44,6 +45,10 @@ def proven_finding(
         The form's fingerprint, where it is known already.
     """
     structure, certificate = found
+    reason = BECAUSE[structure]
+    if structure == "sum":
+        reason = describe_part(certificate.part, block.rows.size, block.columns.size)[0]
+        reason += " (Seymour 1980)"
     mark = fingerprint(normal.form) if mark is None else mark
     return BlockFinding(
         rows=normal.rows[block.rows],
@@ -53,7 +58,7 @@ def proven_finding(
         certificate=Certificate(mark, (certificate,), complete=False),
         witness=None,
         samples=0,
-        reason=BECAUSE[structure],
+        reason=reason,
     )
 
 
