@@ -15,6 +15,24 @@ def is_tu(matrix) -> bool:
     return all(abs(value) <= 1 for value in minors(table))
 
 
+def are_tu(matrices: np.ndarray) -> np.ndarray:
+    """The same for many matrices of one shape at once, in an array (count, m, n)."""
+    count, m, n = matrices.shape
+    holds = np.ones(count, np.bool_)
+    known = {((), ()): np.ones(count, np.int64)}
+    for size in range(1, min(m, n) + 1):
+        smaller, known = known, {}
+        for rows in itertools.combinations(range(m), size):
+            for columns in itertools.combinations(range(n), size):
+                value = np.zeros(count, np.int64)
+                for k, column in enumerate(columns):
+                    rest = smaller[rows[:-1], columns[:k] + columns[k + 1 :]]
+                    value += (-1) ** (size - 1 + k) * matrices[:, rows[-1], column] * rest
+                holds &= np.abs(value) <= 1
+                known[rows, columns] = value
+    return holds
+
+
 def minors(table: list[list[int]]) -> Iterator[int]:
     """All square subdeterminants, by expansion along the last row, small ones first."""
     m, n = len(table), len(table[0]) if table else 0
