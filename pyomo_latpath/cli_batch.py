@@ -40,6 +40,9 @@ from .deadline import Deadline
 
 SOLVED, UNSOLVED, FAILED, STOPPED, INTERRUPTED = 0, 1, 2, 3, 130
 
+#: Records on a page; browsers take no more.
+MOST_ON_PAGE = 100_000
+
 _FOLDER = click.Path(path_type=Path, file_okay=False)
 _NUMBER = click.FloatRange(min=0)
 _COUNT = click.IntRange(min=1)
@@ -218,8 +221,11 @@ def _leave(out: Path, tasks: Tasks, journal: Journal, ending: _Ending, parquet: 
     if parquet:
         write_parquet(out / "table.parquet", journal.records(wanted))
     write_summary(out / "summary.json", summary)
-    with whole_file(out / "report.html") as file:
-        file.write(batch_page(list(journal.records(wanted)), summary))
+    page = out / "report.html"
+    page.unlink(missing_ok=True)
+    if summary.records <= MOST_ON_PAGE:
+        with whole_file(page) as file:
+            file.write(batch_page(list(journal.records(wanted)), summary))
     return summary
 
 

@@ -30,14 +30,14 @@ class InExecutor:
     """
 
     def __init__(self, executor: Executor, workers: int) -> None:
-        self.executor, self.most = executor, 2 * workers
+        self.executor, self.workers = executor, workers
         self.group: list[Task] = []
         self.out: dict[Future[list[Answer]], list[Task]] = {}
         self.size = 1
 
     @property
     def full(self) -> bool:
-        return len(self.out) >= self.most
+        return len(self.out) >= 2 * self.workers
 
     @property
     def busy(self) -> bool:
@@ -52,7 +52,8 @@ class InExecutor:
             self._send_group()
 
     def collect(self, timeout: float | None = None) -> list[Answer]:
-        self._send_group()
+        if self.group and len(self.out) < self.workers:
+            self._send_group()
         done, _ = wait(self.out, timeout, FIRST_COMPLETED)
         answers: list[Answer] = []
         for future in done:
@@ -64,9 +65,8 @@ class InExecutor:
             future.cancel()
 
     def _send_group(self) -> None:
-        if self.group:
-            group, self.group = self.group, []
-            self._send(group)
+        group, self.group = self.group, []
+        self._send(group)
 
     def _send(self, group: list[Task]) -> None:
         try:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import operator
 import os
 from collections.abc import Iterable, Iterator
@@ -164,7 +165,8 @@ class Tasks:
     instances : iterable of Instance
     settings : Settings
     compare : int
-        On so many of them, evenly spread, branch and bound is measured; needs `total`.
+        On so many of them branch and bound is measured: evenly spread ones where `total` is
+        known, else the first.
 
     Attributes
     ----------
@@ -180,11 +182,10 @@ class Tasks:
         self.names: set[str] = set()
 
     def __iter__(self) -> Iterator[Task]:
-        share = self.compare / self.total if self.total else 0.0
+        apart = max(1.0, self.total / self.compare) if self.total and self.compare else 1.0
+        chosen = {int(k * apart) for k in range(self.compare)}
         for k, instance in enumerate(self.instances):
-            name = self._unique(instance.name)
-            chosen = int((k + 1) * share) > int(k * share)
-            yield Task(name, instance, self.settings, chosen)
+            yield Task(self._unique(instance.name), instance, self.settings, k in chosen)
 
     def _unique(self, name: str) -> str:
         unique, number = name, 1
@@ -228,6 +229,7 @@ def run(
                 yield Done(record, kept=True)
                 continue
             crew.submit(task)
+            yield from _finished(crew, journal, deadline, wait=False)
             while crew.full:
                 yield from _finished(crew, journal, deadline)
         while crew.busy:
@@ -248,10 +250,13 @@ def _kept(task: Task, journal: Journal | None) -> BatchRecord | None:
     return record if same else None
 
 
-def _finished(crew: Crew, journal: Journal | None, deadline: Deadline) -> Iterator[Done]:
-    answers = crew.collect(None if deadline.left == float("inf") else deadline.left)
+def _finished(
+    crew: Crew, journal: Journal | None, deadline: Deadline, wait: bool = True
+) -> Iterator[Done]:
+    """Take what is finished, safe in the journal, and have what was lost tried once more."""
+    left = deadline.left if wait else 0.0
     records = []
-    for answer in answers:
+    for answer in crew.collect(None if left == math.inf else left):
         if isinstance(answer, BatchRecord):
             records.append(answer)
         elif answer.task.attempt == 1:

@@ -59,11 +59,11 @@ class Processes:
 
     @property
     def full(self) -> bool:
-        return self._held() >= AHEAD * self.count
+        return len(self.waiting) >= self.count
 
     @property
     def busy(self) -> bool:
-        return self._held() > 0
+        return bool(self.waiting) or any(worker.tasks for worker in self.workers)
 
     def submit(self, task: Task) -> None:
         if task.attempt > 1:
@@ -89,13 +89,8 @@ class Processes:
     def close(self) -> None:
         self.waiting.clear()
         for worker in self.workers:
-            worker.pipe.close()
-        for worker in self.workers:
-            worker.end(patiently=not worker.tasks)
+            worker.end()
         self.workers.clear()
-
-    def _held(self) -> int:
-        return len(self.waiting) + sum(len(worker.tasks) for worker in self.workers)
 
     def _hand_out(self) -> list[Answer]:
         """Give waiting tasks to processes; return answers for those that cannot travel."""
@@ -104,14 +99,14 @@ class Processes:
             task = self.waiting.popleft()
             try:
                 worker.send(task)
-            except (pickle.PicklingError, TypeError, AttributeError, ValueError) as error:
+            except Exception as error:  # whatever an instance does when it is pickled
                 answers.append(task.failed(f"it cannot be sent to a worker: {error}"))
         return answers
 
     def _next_free(self) -> _Worker | None:
         idle = [worker for worker in self.workers if not worker.tasks]
         if idle:
-            return idle[0]
+            return max(idle, key=lambda worker: worker.ready)
         if len(self.workers) < self.count:
             self.workers.append(_Worker())
             return self.workers[-1]
@@ -142,7 +137,8 @@ class Processes:
 
     def _bury(self, worker: _Worker) -> list[Answer]:
         """Replace a process that ended by itself; only its first task is to blame."""
-        worker.end(patiently=True)
+        worker.process.join(timeout=5)
+        worker.end()
         code = worker.process.exitcode
         how = f"exit status {code}"
         if code is not None and code < 0:
@@ -218,9 +214,7 @@ class _Worker:
             self.pipe.send_bytes(file.getbuffer())
         self.forms |= pickler.sent
 
-    def end(self, patiently: bool = False) -> None:
-        if patiently:
-            self.process.join(timeout=5)
+    def end(self) -> None:
         self.process.kill()
         self.process.join()
         self.pipe.close()

@@ -98,7 +98,7 @@ def many(folder: Path, count: int) -> Path:
 
 
 def test_a_folder_with_bad_files_in_it(folder, in_a_thread):
-    result = run("days", "--out", "out", "--plans", "--compare", "1")
+    result = run("days", "--out", "out", "--plans", "--compare", "4")
     assert result.exit_code == 2
     assert "4 instances: 1 error, 1 optimal, 1 infeasible, 1 unbounded" in result.output
     told = " ".join(result.output.split())
@@ -125,7 +125,7 @@ def test_a_folder_with_bad_files_in_it(folder, in_a_thread):
     assert os.listdir(folder / "out" / "plans") == [caves["plan"]]
     summary = Summary.from_dict(json.loads((folder / "out" / "summary.json").read_text()))
     assert (summary.records, summary.errors, summary.unsolved_count) == (4, 1, 3)
-    assert summary.comparison.instances == 1
+    assert summary.comparison.instances == 3
     page = (folder / "out" / "report.html").read_text()
     assert "days/broken.min" in page
     assert "days/caves.min" in page
@@ -182,6 +182,17 @@ def test_a_table_of_changes_makes_a_family(folder, in_a_thread):
     form = read("good/caves.min")
     found = [float(row["objective"]) for row in table(folder / "out").values()]
     assert found == [latpath.solve(form.replace(cost=cost)).objective for cost in costs]
+
+
+def test_branch_and_bound_is_measured_on_as_many_as_asked_for(folder, in_a_thread):
+    run(many(folder, 12), "--out", "out", "--compare", "5")
+    rows = table(folder / "out").values()
+    measured = [row for row in rows if row["highs_seconds"]]
+    assert len(measured) == 5
+    assert {row["highs_status"] for row in measured} == {"optimal"}
+    np.savez("changes.npz", cost=np.ones((9, 5)))
+    run("good/caves.min", "--changes", "changes.npz", "--out", "family", "--compare", "2")
+    assert sum(bool(row["highs_seconds"]) for row in table(folder / "family").values()) == 2
 
 
 def test_quiet_says_nothing(folder, in_a_thread):

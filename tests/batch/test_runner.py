@@ -177,6 +177,20 @@ def test_instances_are_taken_as_they_are_needed():
     assert not multiprocessing.active_children()
 
 
+def test_work_begins_while_instances_are_still_being_made(tmp_path):
+    log = tmp_path / "log"
+
+    def slowly():
+        yield odd.Quick("early", str(log))
+        for _ in range(6000):
+            if log.exists():
+                break
+            time.sleep(0.01)
+        yield odd.Quick("late" if log.exists() else "alone")
+
+    assert sorted(solve(slowly(), workers=1)) == ["early", "late"]
+
+
 def test_pyomo_models_pairs_and_forms(tmp_path, thread):
     def model(cost, name=None):
         made = pyo.ConcreteModel(name=name)
