@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import multiprocessing
 import os
 import signal
@@ -255,8 +256,6 @@ def test_a_family_sends_its_form_once_to_each_worker(monkeypatch):
     send = workers._Worker.send
 
     def measured(worker, task):
-        import io
-
         file = io.BytesIO()
         workers._Pickler(file, worker.forms).dump(task)
         sizes.append(file.tell())
