@@ -329,7 +329,11 @@ class _Draft:
         return next((witness for witness in met if witness is not None), None)
 
     def _places(self) -> list[Place]:
-        """Where the known fractional vertices are fractional."""
+        """Where known fractional vertices are fractional; without any, what is not certified."""
+        pairs = zip(self.blocks, self.finding.blocks, strict=False)
+        open_ones = [block for block, told in pairs if told.verdict is not Verdict.PROVEN]
+        if self._witness() is None:
+            return [Place(block.rows, block.columns) for block in open_ones]
         rows, columns = [np.empty(0, np.int64)], [np.empty(0, np.int64)]
         for block in self.finding.blocks:
             if block.witness is not None:

@@ -76,8 +76,8 @@ def find_reasons(
     >>> odd = oddities_of(normal, blocks_of(normal))
     >>> (reason,) = find_reasons(normal, odd, row_stems(form), column_stems(form))
     >>> reason.sentence
-    "budget: 2 coefficients are not 0 or +-1 after scaling, the largest 3
-    (row 'budget', column 'x1')"
+    "budget: 2 coefficients are not 0 or +-1 after scaling, 3 for one (row
+    'budget', column 'x1')"
     """
     found = [
         *_parity(normal, rows),
@@ -127,6 +127,7 @@ def _coefficients(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Re
     bad = np.flatnonzero(odd.beyond)
     form_rows = normal.rows[odd.row[bad]]
     size = np.abs(normal.matrix.data[bad])
+    size = np.maximum(size, 1 / size)
     for where, members in _split(rows, form_rows, places=np.arange(bad.size)):
         worst = members[np.argsort(-size[members], kind="stable")]
         names = [normal.form.row_names[int(form_rows[k])] for k in worst[: 10 * EXAMPLES].tolist()]
@@ -134,7 +135,7 @@ def _coefficients(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Re
         column = normal.form.col_names[int(normal.columns[odd.column[bad[at]]])]
         text = (
             f"{where}: {_number(members.size, 'coefficient is', 'coefficients are')} not 0 or +-1 "
-            f"after scaling, the largest {normal.matrix.data[bad[at]]:g} (row {names[0]!r}, "
+            f"after scaling, {normal.matrix.data[bad[at]]:g} for one (row {names[0]!r}, "
             f"column {column!r})"
         )
         examples = tuple(dict.fromkeys(names))[:EXAMPLES]

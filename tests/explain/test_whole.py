@@ -1,0 +1,92 @@
+"""Whole models: what is said of them holds, and what could break them does."""
+
+import math
+
+import numpy as np
+import pytest
+
+from pyomo_latpath.deadline import Deadline
+from pyomo_latpath.explain.explain import explain
+from pyomo_latpath.explain.remains import Certified
+from pyomo_latpath.explain.whole import breakers, keepers, sentences, time_branch_and_bound
+from pyomo_latpath.forms.blocks import blocks_of
+from pyomo_latpath.forms.linear_form import LinearForm
+from pyomo_latpath.forms.normalise import normalise
+from pyomo_latpath.integrality.assess import certify
+from pyomo_latpath.integrality.finding import Verdict
+
+
+def certified(form):
+    normal = normalise(form)
+    blocks = blocks_of(normal)
+    proofs = certify(normal, blocks, Deadline(None))
+    assert all(proofs)
+    return Certified(normal, tuple(blocks), tuple(proofs))
+
+
+def transport(**changes):
+    """Two caves, three towns."""
+    matrix = np.vstack((np.kron(np.eye(2), np.ones(3)), np.kron(np.ones(2), np.eye(3))))
+    sides = {"row_lower": [0, 0, 2, 2, 2], "row_upper": [4, 4, 9, 9, 9]} | changes
+    return LinearForm.from_arrays(
+        matrix, col_lower=0, col_upper=9, cost=[3, 1, 4, 1, 5, 9], **sides
+    )
+
+
+def test_a_whole_model_is_told_as_such_with_both_times():
+    told = explain(transport())
+    assert told.verdict is Verdict.PROVEN and told.complete
+    assert told.whole is not None and told.culprits == () and told.violators == ()
+    assert len(told.whole.sentences) == 1
+    assert told.whole.path_seconds > 0 and told.whole.highs_seconds > 0 and told.whole.highs_ended
+    assert told.gap.absolute == 0 and told.gap.exact and told.fractional.count == 0
+
+
+def test_equal_blocks_are_said_once():
+    two = LinearForm.from_arrays(
+        np.kron(np.eye(3), [[1, 1]]), row_lower=0, row_upper=1, col_lower=0, col_upper=1, cost=-1
+    )
+    (sentence,) = explain(two).whole.sentences
+    assert sentence.endswith("(3 blocks)")
+    assert sentences(["b", "a", "b"]) == ("b (2 blocks)", "a")
+
+
+def test_sides_that_are_not_whole_are_rounded_and_do_not_break_it():
+    assert any("rounded inwards" in text for text in keepers(certified(transport())))
+    shifted = explain(transport(row_upper=[4.5, 3.5, 9, 9, 9]))
+    assert shifted.verdict is Verdict.PROVEN
+
+
+def test_with_continuous_columns_sides_must_be_whole_and_the_row_is_named():
+    form = transport(integer=[True] * 5 + [False])
+    told = [text for text in breakers(certified(form)) if "continuous" in text]
+    assert len(told) == 1 and ("'r2'" in told[0] or "'r5'" in told[0])
+    assert not any("rounded inwards" in text for text in keepers(certified(form)))
+    broken = form.replace(row_upper=[4, 3.5, 9, 9, 9])
+    assert explain(broken).whole is None
+
+
+def test_a_system_that_is_whole_for_its_sides_alone_says_so():
+    form = LinearForm.from_arrays(
+        [[2, 3], [1, 1]], row_lower=[5, 2], row_upper=[5, 2], col_lower=0, col_upper=4, cost=1
+    )
+    needs_sides = LinearForm.from_arrays(
+        [[1, 1], [1, -1]], row_lower=[4, 2], row_upper=[4, 2], col_lower=0, col_upper=4, cost=1
+    )
+    assert not any("the proof holds" in text for text in breakers(certified(form)))
+    assert any("the proof holds for the sides" in text for text in breakers(certified(needs_sides)))
+    assert keepers(certified(needs_sides)) == ("costs",)
+
+
+def test_nothing_can_break_what_has_no_rows_over_several_columns():
+    form = LinearForm.from_arrays(
+        np.eye(2), row_lower=0, row_upper=1, col_lower=0, col_upper=1, cost=1
+    )
+    assert breakers(certified(form)) == () == keepers(certified(form))
+
+
+@pytest.mark.parametrize("limit", [0.0, None])
+def test_branch_and_bound_is_cut_off_at_its_limit(limit):
+    seconds, ended = time_branch_and_bound(transport(), Deadline(limit))
+    assert ended == (limit is None)
+    assert seconds >= 0 and not math.isnan(seconds)
