@@ -40,7 +40,8 @@ class BatchRecord:
     seconds : mapping of str to float
         By stage: 'compile' (reading included), 'assess', 'solve', 'proof'.
     recognition : str or None
-        'stored' where the certificate came from the store, 'found' where it was looked for.
+        'found' where the matrix was looked at, 'stored' where the store had proofs of it,
+        'remembered' where the last member of its family had left them.
     plan : str or None
         Name of the file with the plan, where plans are written.
     attempts : int

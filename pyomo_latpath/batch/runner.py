@@ -20,6 +20,7 @@ from .journal import Journal
 from .output import make_folder
 from .progress import Progress
 from .record import BatchRecord
+from .store import CertificateStore
 from .task import Settings, Task
 from .workers import Processes
 
@@ -113,6 +114,8 @@ def solve_many(
             raise ValueError(f"{name} is {value}; it must be {least} or more")
     if plans is not None:
         make_folder(Path(plans), ["*.csv"])
+    if store is not None:
+        CertificateStore(store)  # refuses what is no folder
     settings = Settings(
         time_limit=time_limit,
         rel_gap=rel_gap,

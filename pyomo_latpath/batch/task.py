@@ -7,6 +7,7 @@ import time
 import traceback
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from hashlib import sha256
 from pathlib import Path
 from typing import Any
@@ -21,6 +22,7 @@ from ..routing import solve
 from ..solution import Solution
 from .instance import Instance
 from .record import BatchRecord
+from .store import CertificateStore
 
 
 @dataclass(frozen=True)
@@ -51,8 +53,10 @@ class Settings:
     store: str | None = None
 
     def plain(self) -> dict[str, Any]:
-        """What records depend on, as plain data; where plans and store lie does not matter."""
-        return vars(self) | {"plans": self.plans is not None, "store": self.store is not None}
+        """What records depend on, as plain data."""
+        plain = vars(self) | {"plans": self.plans is not None}
+        del plain["store"]
+        return plain
 
 
 @dataclass(frozen=True, eq=False)
@@ -160,6 +164,7 @@ def _run(task: Task) -> BatchRecord:
     compiled = getattr(task.instance, "compile_seconds", 0.0) + time.perf_counter() - begun
     solution = solve(
         form,
+        store=None if settings.store is None else _store(settings.store),
         samples=settings.samples,
         time_limit=None if settings.time_limit is None else deadline.left,
         rel_gap=settings.rel_gap,
@@ -171,6 +176,12 @@ def _run(task: Task) -> BatchRecord:
     if settings.plans is not None and solution.x is not None:
         record = _with_plan(record, Path(settings.plans), form, solution)
     return _compared(record, form, settings) if task.compare else record
+
+
+@lru_cache(maxsize=4)
+def _store(folder: str) -> CertificateStore:
+    """A process has one view of a store, and remembers what it has checked."""
+    return CertificateStore(folder)
 
 
 def record_of(task: Task, fingerprint: str, form: LinearForm, solution: Solution) -> BatchRecord:
@@ -197,6 +208,7 @@ def record_of(task: Task, fingerprint: str, form: LinearForm, solution: Solution
         steps=None if walk is None else walk.steps,
         pivots=None if walk is None else walk.pivots,
         seconds=dict(report.seconds),
+        recognition=report.recognition,
         attempts=task.attempt,
         error=report.why if solution.status == "error" else None,
     )

@@ -23,6 +23,7 @@ from pyomo_latpath import cli, cli_batch
 from pyomo_latpath.batch.executors import InExecutor
 from pyomo_latpath.batch.output import COLUMNS
 from pyomo_latpath.batch.record import BatchRecord, Summary
+from pyomo_latpath.batch.task import _store
 from pyomo_latpath.forms.from_file import read
 
 SCRIPT = """
@@ -182,6 +183,23 @@ def test_a_table_of_changes_makes_a_family(folder, in_a_thread):
     form = read("good/caves.min")
     found = [float(row["objective"]) for row in table(folder / "out").values()]
     assert found == [latpath.solve(form.replace(cost=cost)).objective for cost in costs]
+    told = [row["recognition"] for row in table(folder / "out").values()]
+    assert told == ["found", "remembered"]
+
+
+def test_certificates_of_one_batch_serve_the_next(folder, in_a_thread, monkeypatch):
+    monkeypatch.setattr("pyomo_latpath.batch.store.WORTH_KEEPING", 0.0)
+    text = "min\n {0} a + b + c\nst\n r: a + b >= 1\n s: b + c >= 1\n t: a + b + c >= 2\n"
+    text += "General\n a b c\nEnd\n"
+    (folder / "mon.lp").write_text(text.format(1))
+    (folder / "tue.lp").write_text(text.format(3))
+    assert run("mon.lp", "--out", "out", "--store", "proofs").exit_code == 0
+    _store.cache_clear()
+    assert run("tue.lp", "--out", "other", "--store", "proofs").exit_code == 0
+    assert table(folder / "out")["mon.lp"]["recognition"] == "found"
+    assert table(folder / "other")["tue.lp"]["recognition"] == "stored"
+    assert table(folder / "other")["tue.lp"]["verdict"] == "proven"
+    assert run("mon.lp", "--out", "third", "--store", "build.py").exit_code == 2
 
 
 def test_branch_and_bound_is_measured_on_as_many_as_asked_for(folder, in_a_thread):
