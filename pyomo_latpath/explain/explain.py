@@ -158,6 +158,9 @@ class _Draft:
             self._assess(samples=0)
             self._without_optimum()
             return
+        if self.form.semicontinuous.any():  # without their gaps such columns are no relaxation
+            self._assess(samples=0)
+            return
         relaxation = Relaxation(self.normal)
         with self._question("relaxation", "solving the relaxation"):
             optimum = relaxation.optimum(self.deadline)
@@ -285,18 +288,23 @@ class _Draft:
     def _find_culprits(self, relaxation: Relaxation, places: list[Place]) -> None:
         with self._question("culprits", "looking for groups to blame") as deadline:
             search = Search(self.remains, self.groups, places, relaxation, deadline, self.tell)
-            for found in search.run():
-                objective = culprits.objective_without(search, found.places, deadline)
-                self.culprits.append((found, self._culprit(found, objective)))
-                named = ", ".join(self.groups[k].name for k in found.places)
-                self.tell(f"without {named} it is whole")
-            blamed = {k for found, _ in self.culprits for k in found.places}
-            self.groups = tuple(
-                replace(group, to_blame=k in blamed, certified_alone=search.alone.get(k))
-                for k, group in enumerate(self.groups)
-            )
+            try:
+                for found in search.run():
+                    objective = culprits.objective_without(search, found.places, deadline)
+                    self.culprits.append((found, self._culprit(found, objective)))
+                    named = ", ".join(self.groups[k].name for k in found.places)
+                    self.tell(f"without {named} it is whole")
+            finally:
+                self._mark_groups(search)
             if not search.exhausted:
                 self.cut_off.append("further sets of groups to blame may exist")
+
+    def _mark_groups(self, search: Search) -> None:
+        blamed = {k for found, _ in self.culprits for k in found.places}
+        self.groups = tuple(
+            replace(group, to_blame=k in blamed, certified_alone=search.alone.get(k))
+            for k, group in enumerate(self.groups)
+        )
 
     def _culprit(self, found: CulpritSet, objective: float) -> Culprit:
         rows = np.concatenate([self.groups[k].rows for k in found.places])

@@ -114,6 +114,8 @@ def _stems(names: Sequence[str]) -> Stems:
     if isinstance(names, ComponentNames):
         parents = [component.parent_component() for component in names.components]
         once = {id(parent): parent for parent in parents}
+        if None in once.values():  # the model is gone, and its components' names with it
+            return _numbered([stem_of(name) for name in names], "name")
         stem = {key: INDEX.sub("[*]", parent.name) for key, parent in once.items()}
         return _numbered([stem[id(parent)] for parent in parents], "component")
     return _numbered([stem_of(name) for name in names], "name")
