@@ -93,6 +93,10 @@ class Sum:
             raise CertificateError(f"{what}: {error}") from None
 
 
+#: Entries that one pivot may change; beyond, memory could run out.
+MOST_CHANGED = 10**7
+
+
 def pivoted(matrix: sp.csc_array, row: int, column: int) -> sp.csc_array:
     """Exchange a row and a column at an entry e, 1 or -1: [e c; b D] becomes [e ec; -eb D-ebc].
 
@@ -141,6 +145,8 @@ class Pivot:
         require(inside, f"there is no row {self.row} or no column {self.column}")
         unit = abs(matrix[self.row, self.column]) == 1
         require(unit, f"the entry ({self.row}, {self.column}) of the pivot is not 1 or -1")
+        changed = matrix[[self.row], :].nnz * matrix[:, [self.column]].nnz
+        require(changed <= MOST_CHANGED, f"the pivot changes {changed} entries: too many")
         self.rest.check(pivoted(matrix, self.row, self.column))
 
 

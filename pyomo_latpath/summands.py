@@ -20,6 +20,7 @@ from .certificate_parts import Axis, Step
 from .certificate_reading import read_indices, read_pairs, read_value, require
 from .forms.numbers import Integers
 
+CROSS: dict[Axis, Axis] = {"row": "column", "column": "row"}
 #: Entries of a row by their columns, or of a column by their rows.
 Entries = dict[int, int]
 #: Entries by row and column.
@@ -68,7 +69,7 @@ class Split:
         What goes to the second summand, a new one; the others stay in the first. Smaller is
         cheaper.
     entries : ndarray, shape (order - 1, 2), int64
-        Row and column of each entry of a corner.
+        Row and column of each place in a corner; the entry there may be 0.
     sign : int
         1 or -1; it matters for order 3 alone.
     """
@@ -103,7 +104,8 @@ class Summands:
     get the next numbers: a row and a column for each of a split's entries, then, if its order is
     3, a column of the first and one of the second summand. The whole is summand 0; each
     split makes one new summand, numbered in turn. A step costs time in proportion to the entries
-    of the lines it names, and of the connecting ones.
+    of the lines it names, and of the connecting ones. One that raises CertificateError leaves
+    things half done.
 
     Parameters
     ----------
@@ -170,7 +172,7 @@ class Summands:
             same = entries == {k: sign * v for k, v in self._lines[axis][of].items()}
             require(same and abs(sign) == 1, f"{axis} {line} is no copy of {axis} {of}")
         for cross in entries:
-            del self._lines["column" if axis == "row" else "row"][cross][line]
+            del self._lines[CROSS[axis]][cross][line]
         entries.clear()
         self._members[home][axis].remove(line)
         self._home[axis][line] = -1
@@ -179,7 +181,7 @@ class Summands:
         """Move lines to a new summand, and connect; raises CertificateError if it is no sum."""
         require(split.order <= 3, "the order of a sum is above 3")
         require(split.order < 3 or split.sign in (1, -1), "the sign of a sum is not 1 or -1")
-        first, second = self._part(split)
+        first, second = self._move(split)
         corners = self._cut_corners(split)
         places = [(i, j) for i, j in split.entries.tolist()]
         sides = {(first, second): 0, (second, first): 1}
@@ -207,7 +209,7 @@ class Summands:
         require(there, f"there is no {axis} {line}")
         return homes[line]
 
-    def _part(self, split: Split) -> tuple[int, int]:
+    def _move(self, split: Split) -> tuple[int, int]:
         """Give the lines of a split a new home."""
         named: list[tuple[Axis, int]] = [("row", i) for i in split.rows.tolist()]
         named += [("column", j) for j in split.columns.tolist()]
@@ -248,7 +250,7 @@ class Summands:
         self._home[axis].append(home)
         self._members[home][axis].add(new)
         for cross, value in entries.items():
-            self._lines["column" if axis == "row" else "row"][cross][new] = value
+            self._lines[CROSS[axis]][cross][new] = value
         return new
 
 
