@@ -64,7 +64,7 @@ class _Ending:
 @click.option("--changes", metavar="TABLE", help="Solve PATH once for each member of TABLE.")
 @click.option("--plans", is_flag=True, help="Write each plan as CSV to DIR/plans.")
 @click.option("--parquet", is_flag=True, help="Write the table as Parquet, too.")
-@click.option("--store", type=_FOLDER, help="Keep certificates there, for later batches, too.")
+@click.option("--store", type=_FOLDER, metavar="FOLDER", help="Keep certificates for later there.")
 @click.option("--workers", type=_COUNT, help="Processes; one for each core if not given.")
 @click.option("--cluster", metavar="ADDRESS", help="Work on the Dask cluster at ADDRESS.")
 @click.option("--compare", type=_COUNT, help="Measure branch and bound on so many of them, too.")

@@ -60,8 +60,8 @@ def solve_many(
         a name and one of these, or objects with `name`, `fingerprint()` and `load()`. An iterable
         is consumed as the work goes on; Pyomo models are compiled here, files read by the workers.
     workers : int, optional
-        Local processes, as many as there are cores when not given; or, with an executor, how
-        many workers it has. One worker is a process as well.
+        Local processes, as many as there are cores when not given (one is a process, too); a
+        script starts them below `if __name__ == "__main__":`. With an executor: how many it has.
     executor : concurrent.futures.Executor, optional
         Does the work instead; it is left running. Threads take turns, since HiGHS has one
         set of threads for a whole process.

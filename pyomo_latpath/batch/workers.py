@@ -35,7 +35,7 @@ GRACE = 10.0
 #: Tasks that a process may hold while they take less than so many seconds each.
 AHEAD, QUICK = 8, 0.05
 #: Processes in a row that may end before they are ready.
-MOST_STILLBORN = 5
+MOST_STILLBORN = 3
 
 
 class Processes:

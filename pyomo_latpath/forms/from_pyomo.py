@@ -124,8 +124,8 @@ def compile_model(model: Any) -> LinearForm:
             offset=system.offset,
             sense="min" if objective is None or objective.sense == minimize else "max",
             integer=integer,
-            row_names=ComponentNames(rows),
-            col_names=ComponentNames(variables),
+            row_names=ComponentNames(rows, model.model()),
+            col_names=ComponentNames(variables, model.model()),
         )
 
 

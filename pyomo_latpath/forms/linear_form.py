@@ -48,10 +48,12 @@ class ComponentNames(Sequence[str]):
     ----------
     components : list
         The `VarData` or `ConstraintData` behind each column or row.
+    model : object
+        The model that they belong to; they know it weakly only, and without it have no names.
     """
 
-    def __init__(self, components: list[Any]) -> None:
-        self.components = components
+    def __init__(self, components: list[Any], model: Any = None) -> None:
+        self.components, self.model = components, model
 
     def __len__(self) -> int:
         return len(self.components)

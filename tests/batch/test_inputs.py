@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import os
 from pathlib import Path
 
@@ -151,3 +152,16 @@ def test_a_script_may_import_what_lies_beside_it(folder):
         "model.o = pyo.Objective(expr=model.x, sense=pyo.maximize)"
     )
     assert ScriptInstance("days/build.py").load().col_upper.tolist() == [7]
+
+
+def test_names_outlive_the_model_that_they_come_from(folder):
+    (folder / "build.py").write_text(
+        "import pyomo.environ as pyo\n\ndef create_model():\n    model = pyo.ConcreteModel()\n"
+        "    model.wheels = pyo.Var([1, 2], bounds=(0, 9))\n"
+        "    model.shelf = pyo.Constraint(expr=pyo.quicksum(model.wheels.values()) <= 4)\n"
+        "    model.o = pyo.Objective(expr=-model.wheels[1])\n    return model\n"
+    )
+    form = ScriptInstance("build.py").load()
+    gc.collect()
+    assert list(form.col_names) == ["wheels[1]", "wheels[2]"]
+    assert list(form.row_names) == ["shelf"]
