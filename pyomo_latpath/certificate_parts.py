@@ -370,7 +370,7 @@ class Trivial:
         require((np.abs(matrix.data) == 1).all(), "an entry of a trivial block is not 1 or -1")
 
 
-#: What `kind` may say.
+#: What `kind` may say; `certificate_sums` adds its kinds.
 KINDS: dict[str, type[Part]] = {
     part.kind: part for part in (Network, Conetwork, Reduced, Unimodular, Trivial)
 }

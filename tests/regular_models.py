@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
 
+import networkx as nx
 import numpy as np
 from brute_force import network_matrix
 from known_matrices import R10
@@ -282,6 +283,17 @@ def two_sum(rng: np.random.Generator, first: Piece, second: Piece) -> Piece:
         good = [k for k in range(len(table)) if weights[k] > 1 and k not in busy]
         ends.append((end, int(rng.choice(good or np.flatnonzero(weights)))))
     return joined(first, second, [(*ends, int(rng.choice([1, -1])))])
+
+
+def graph_matrix(graph: nx.Graph) -> np.ndarray:
+    """The network matrix of a graph and one of its spanning trees."""
+    tree = list(nx.minimum_spanning_edges(nx.Graph(graph), data=False))
+    return network_matrix(tree, [edge for edge in graph.edges if edge not in tree])
+
+
+def plain(matrix: np.ndarray) -> Piece:
+    """A matrix as a piece of its own."""
+    return Piece(matrix, *(np.zeros(size, np.int64) for size in matrix.shape))
 
 
 def pivoted(piece: Piece, i: int, j: int) -> Piece:

@@ -8,12 +8,12 @@ import networkx as nx
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu, network_matrix
+from brute_force import is_tu
 from click.testing import CliRunner
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from known_matrices import R12
-from regular_models import Piece, disguised, regular
+from regular_models import disguised, graph_matrix, plain, regular
 from sum_meanings import part_holds
 from sum_proofs import leaf_part, split_off, sum_proofs
 from test_certificates import ONE_ROW, accepts, accepts_part, change, leaves, whole
@@ -162,18 +162,12 @@ def sides_of(matrix, side):
     return lines[lines < m], lines[lines >= m] - m
 
 
-def network_of(graph):
-    """The network matrix of a graph and some spanning tree."""
-    tree = list(nx.minimum_spanning_edges(nx.Graph(graph), data=False))
-    return network_matrix(tree, [edge for edge in graph.edges if edge not in tree])
-
-
 @pytest.mark.parametrize(
     "matrix",
     [
-        network_of(nx.wheel_graph(5)),
-        network_of(nx.wheel_graph(6)).T,
-        network_of(nx.circular_ladder_graph(3)),
+        graph_matrix(nx.wheel_graph(5)),
+        graph_matrix(nx.wheel_graph(6)).T,
+        graph_matrix(nx.circular_ladder_graph(3)),
         R12,
     ],
     ids=["wheel of 4 spokes", "dual wheel of 5 spokes", "prism", "R12"],
@@ -182,7 +176,7 @@ def test_every_separation_of_order_3_is_a_sum(matrix):
     """In whatever basis, if there is none of a lower order and each side has four lines (Seymour
     1980). The form of the sum changes with the basis."""
     rng, seen = np.random.default_rng(1), set()
-    piece = Piece(matrix, *(np.zeros(size, np.int64) for size in matrix.shape))
+    piece = plain(matrix)
     for _ in range(8):
         matrix = disguised(rng, piece, 5).matrix
         lines = sum(matrix.shape)

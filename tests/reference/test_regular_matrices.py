@@ -9,9 +9,9 @@ import networkx as nx
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import determinant, is_tu, network_matrix
+from brute_force import determinant, is_tu
 from known_matrices import FANO, R10, R12
-from regular_models import Piece, disguised
+from regular_models import disguised, graph_matrix, plain
 from sum_proofs import r10_part, split_off
 
 from pyomo_latpath import check_certificate, totally_unimodular
@@ -37,8 +37,7 @@ def decided(matrix):
 def bases(matrix):
     """Matrices of the same matroid for many of its bases, by pivots, in any order and signs."""
     rng = np.random.default_rng(1)
-    piece = Piece(matrix, *(np.zeros(size, np.int64) for size in matrix.shape))
-    return [disguised(rng, piece, k).matrix for k in range(12)]
+    return [disguised(rng, plain(matrix), k).matrix for k in range(12)]
 
 
 def signings(support):
@@ -58,12 +57,6 @@ def signings(support):
         for place, sign in zip(free, signs, strict=True):
             matrix[place] = sign
         yield matrix
-
-
-def graph_matrix(graph):
-    """The network matrix of a graph and one of its spanning trees."""
-    tree = list(nx.minimum_spanning_edges(nx.Graph(graph), data=False))
-    return network_matrix(tree, [edge for edge in graph.edges if edge not in tree])
 
 
 @pytest.mark.parametrize("matrix", R10, ids=["circulant", "bordered"])
