@@ -13,18 +13,22 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
+import scipy.sparse as sp
 from numpy.typing import NDArray
 
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
+from ..integrality.regular.clock import OutOfTime
 from ..integrality.regular.conflict import determinant
 from ..integrality.regular.decision import totally_unimodular
+from ..integrality.regular.minors import rows_and_columns
+from ..integrality.regular.signs import odd_hole
 from .relaxation import Place
 
 #: Conflicts are told from so many places, at most.
 MOST_PLACES = 3
-#: Places with more lines than this are not searched.
+#: Places with more lines than this are searched for cycles alone.
 MOST_LINES = 2000
 
 
@@ -100,8 +104,6 @@ def violators(
     for place in places:
         if count == MOST_PLACES or deadline.passed:
             return
-        if place.rows.size + place.columns.size > MOST_LINES:
-            continue
         found = _violator_at(normal, place, group_names, deadline)
         if found is not None:
             count += 1
@@ -114,19 +116,34 @@ def _violator_at(
     """A conflict of entries +-1 where there is one, else the entry furthest from that."""
     columns = place.columns
     rows = place.rows[normal.whole_rows[place.rows]]
-    matrix = normal.matrix[:, columns].tocsr()[rows, :]
+    matrix = normal.matrix[:, columns].tocsr()[rows, :].astype(np.int64)
     size = np.abs(matrix).tocoo()
     large = np.zeros(rows.size, np.bool_)
     large[size.row[size.data > 1]] = True
-    limit = None if deadline.left == math.inf else deadline.left
-    decision = totally_unimodular(matrix[~large, :], time_limit=limit)
-    if decision.violator is not None:
-        found = decision.violator
-        return _told(normal, rows[~large][found.rows], columns[found.columns], group_names)
-    if decision.holds is None or not large.any():
+    lines = _conflicting_lines(matrix[~large, :].tocsc(), deadline)
+    if lines is not None:
+        return _told(normal, rows[~large][lines[0]], columns[lines[1]], group_names)
+    if deadline.passed or not large.any():
         return None
     k = int(np.argmax(size.data))
     return _told(normal, rows[size.row[k : k + 1]], columns[size.col[k : k + 1]], group_names)
+
+
+def _conflicting_lines(
+    matrix: sp.csc_array, deadline: Deadline
+) -> tuple[Integers, Integers] | None:
+    """Rows and columns of a smallest conflict of entries +-1: a cycle where one is soon found."""
+    try:
+        hole = odd_hole(matrix, deadline)
+    except OutOfTime:
+        return None
+    if hole is not None:
+        return rows_and_columns(frozenset(hole), matrix.shape[0])
+    if sum(matrix.shape) > MOST_LINES:
+        return None
+    limit = None if deadline.left == math.inf else deadline.left
+    found = totally_unimodular(matrix, time_limit=limit).violator
+    return None if found is None else (found.rows, found.columns)
 
 
 def cycle_order(entries: NDArray[np.int64]) -> tuple[list[int], list[int]] | None:

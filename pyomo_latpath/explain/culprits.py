@@ -89,8 +89,8 @@ class Search:
     ----------
     remains : Remains
     groups : sequence of Group
-    suspects : sequence of Place
-        Where a known vertex is fractional: its rows' groups are tried first as a conflict.
+    conflicts : sequence of collections of str
+        Names of groups that violators run through.
     relaxation : Relaxation
     deadline : Deadline
     tell : callable
@@ -108,7 +108,7 @@ class Search:
         self,
         remains: Remains,
         groups: Sequence[Group],
-        suspects: Sequence[Place],
+        conflicts: Sequence[Collection[str]],
         relaxation: Relaxation,
         deadline: Deadline,
         tell: Callable[[str], None],
@@ -121,14 +121,15 @@ class Search:
         self._group_of = np.zeros(form.shape[0], np.int64)
         for k, group in enumerate(groups):
             self._group_of[group.rows] = k
-        self._suspects = [self._groups_at(place) for place in suspects]
-        self._conflicts: list[frozenset[int]] = []
+        place = {group.name: k for k, group in enumerate(groups)}
+        self._conflicts = [frozenset(place[name] for name in names) for names in conflicts]
+        self._suspects = frozenset[int]().union(*self._conflicts)
         self._found: list[frozenset[int]] = []
 
     def run(self) -> Iterator[CulpritSet]:
         """Yield the sets; where all are large, one of which no group can stay."""
-        self._try_alone()
         yield from self._singles()
+        self._try_alone()
         for size in range(1, len(self.groups) + 1):
             forced = sum(len(those) == 1 for those in self._conflicts)
             if self._found or self.deadline.passed or size > forced + MOST_CHOSEN:
@@ -197,13 +198,12 @@ class Search:
 
     def _conflict_among(self, kept: list[int]) -> frozenset[int] | None:
         """Groups among these that cannot be certified together, none of them needlessly."""
-        seeds = [those for those in self._suspects if those <= set(kept)]
-        if not seeds:
-            flags = self.flags(kept)[self.relaxation.normal.rows]
-            result = self.relaxation.optimum(self.deadline, flags)
-            if result.status == "optimal":
-                places = self.relaxation.places(result.x)
-                seeds = [self._groups_at(place) for place in places]
+        seeds: list[frozenset[int]] = []
+        flags = self.flags(kept)[self.relaxation.normal.rows]
+        result = self.relaxation.optimum(self.deadline, flags)
+        if result.status == "optimal":
+            places = self.relaxation.places(result.x)
+            seeds = [self._groups_at(place) for place in places]
         for seed in [*seeds, frozenset(kept)]:
             if self._in_conflict(sorted(seed)):
                 thin, _ = thin_out(sorted(seed), self._in_conflict, self.deadline)
@@ -214,10 +214,10 @@ class Search:
         rows = self.relaxation.normal.rows[place.rows]
         return frozenset(np.unique(self._group_of[rows]).tolist())
 
-    def _suspicion(self, k: int) -> tuple[bool, int]:
-        """Groups with odd numbers, then small ones, are looked at first: side constraints are."""
+    def _suspicion(self, k: int) -> tuple[bool, bool, int]:
+        """What has odd numbers, is in a conflict, or is small as side constraints are: first."""
         group = self.groups[k]
-        return not (group.beyond or group.broken_sides), group.size
+        return not (group.beyond or group.broken_sides), k not in self._suspects, group.size
 
     def _others(self, chosen: Collection[int]) -> list[int]:
         return [k for k in range(len(self.groups)) if k not in chosen]

@@ -48,7 +48,7 @@ Progress = Callable[[str], None]
 SAMPLES = 32
 #: Share of the time that is left, and seconds where the time is not limited, for each question.
 BUDGETS: dict[str, tuple[float, float]] = {
-    "verdict": (0.3, 5.0),
+    "verdict": (0.3, 3.0),
     "sampling": (0.1, 1.0),
     "violators": (0.2, 5.0),
     "culprits": (0.4, 20.0),
@@ -269,25 +269,31 @@ class _Draft:
                 self.violators.append(replace(violator, block=self._block_of(violator)))
             if deadline.passed:
                 self.cut_off.append("further conflicts were not looked for")
-        self._find_culprits(relaxation, places)
+        self._find_culprits(relaxation)
+        self._find_plan()
+        if self.no_optimum is None:
+            self._thin_out_rows()
+
+    def _find_plan(self) -> None:
+        if self.deadline.passed:
+            self.cut_off.append("the best whole plan was not looked for")
+            return
         with self._question("plan", "looking for the best whole plan") as deadline:
             self.solution = gap.best_plan(self.normal, deadline.left, self.seed)
-        solution = self.solution[0]
-        if solution.status == "infeasible":
-            with self._question("infeasible", "finding out what conflicts") as deadline:
-                self._tell_infeasible(solution, deadline)
-            return
-        if solution.status == "interrupted":
+        status = self.solution[0].status
+        if status == "interrupted":
             raise KeyboardInterrupt
-        if solution.status != "optimal":
-            self.cut_off.append(
-                "the best whole plan was not found in time; the gap is an upper one"
-            )
-        self._thin_out_rows()
+        if status == "infeasible":
+            with self._question("infeasible", "finding out what conflicts") as deadline:
+                self._tell_infeasible(self.solution[0], deadline)
+        elif status != "optimal":
+            told = "the best whole plan was not found in time; the gap is an upper one"
+            self.cut_off.append(told)
 
-    def _find_culprits(self, relaxation: Relaxation, places: list[Place]) -> None:
+    def _find_culprits(self, relaxation: Relaxation) -> None:
         with self._question("culprits", "looking for groups to blame") as deadline:
-            search = Search(self.remains, self.groups, places, relaxation, deadline, self.tell)
+            conflicts = [violator.groups for violator in self.violators]
+            search = Search(self.remains, self.groups, conflicts, relaxation, deadline, self.tell)
             try:
                 for found in search.run():
                     objective = culprits.objective_without(search, found.places, deadline)

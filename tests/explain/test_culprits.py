@@ -9,6 +9,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from pyomo_latpath.deadline import Deadline
+from pyomo_latpath.explain.conflict import violators
 from pyomo_latpath.explain.culprits import MOST_SETS, Search, objective_without, smallest_rows
 from pyomo_latpath.explain.groups import groups_of, oddities_of
 from pyomo_latpath.explain.relaxation import Relaxation
@@ -24,11 +25,18 @@ def search_in(form, deadline=None, tell=None):
     odd = oddities_of(normal, blocks_of(normal))
     groups = groups_of(normal, row_stems(form), odd, None)
     relaxation = Relaxation(normal)
+    deadline, tell = deadline or Deadline(None), tell or (lambda line: None)
+    return Search(
+        Remains(form), groups, conflicts_of(normal, relaxation), relaxation, deadline, tell
+    )
+
+
+def conflicts_of(normal, relaxation):
+    """Groups of the violators at the optimum."""
     optimum = relaxation.optimum(Deadline(None))
     places = relaxation.places(optimum.x) if optimum.status == "optimal" else []
-    deadline = deadline or Deadline(None)
-    tell = tell or (lambda line: None)
-    return Search(Remains(form), groups, places, relaxation, deadline, tell)
+    names = [name.split("[")[0] for name in normal.form.row_names]
+    return [found.groups for found in violators(normal, places, names, Deadline(None))]
 
 
 def smallest_by_brute_force(form, groups):
