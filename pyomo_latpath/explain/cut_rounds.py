@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from fractions import Fraction
 
 import numpy as np
@@ -13,9 +12,10 @@ import scipy.sparse as sp
 from ..deadline import Deadline
 from ..forms.linear_form import Floats
 from ..forms.normalise import NormalForm
-from ..highs import LinearProgram
+from ..highs import Basis, LinearProgram
 from ..integrality.sampling import FRACTIONAL
 from ..pages.markup import counted
+from .bases import with_rows
 from .cuts import Cut, excess, follows, rows_of, system_of
 from .drafts import Namer, numbered
 from .half_cuts import NEAR, half_cuts
@@ -23,24 +23,27 @@ from .remedy import Derivation, Inequality, Remedy
 from .words import inequality, listed
 
 #: Rounds, cuts of one round, and cuts after which no further round begins.
-MOST_ROUNDS, CUTS_A_ROUND, MANY_CUTS = 10, 30, 100
+MOST_ROUNDS, CUTS_A_ROUND, MANY_CUTS = 10, 100, 300
 #: Rounds without a better bound after which cutting ends, and the relative change that counts.
 PATIENCE, BETTER = 3, 1e-7
 
 
-def cut_rounds(normal: NormalForm, deadline: Deadline) -> list[Cut]:
+def cut_rounds(normal: NormalForm, deadline: Deadline, near: Basis | None = None) -> list[Cut]:
     """Cut fractional optima off until one is whole, or cuts no longer help.
 
     Parameters
     ----------
     normal : NormalForm
     deadline : Deadline
+    near : Basis, optional
+        Of its relaxation, to start from.
 
     Returns
     -------
     list of Cut
-        Those that are tight at the last optimum, and those that they rest on. Each was checked
-        by its multipliers; its rows are those of the normalised form, then the cuts before it.
+        Those that are tight at the last optimum, and those that they rest on; all, where the
+        time ran out before it was known. Each was checked by its multipliers; its rows are
+        those of the normalised form, then the cuts before it.
 
     Examples
     --------
@@ -53,22 +56,23 @@ def cut_rounds(normal: NormalForm, deadline: Deadline) -> list[Cut]:
     """
     first = system_of(normal)
     cuts: list[Cut] = []
-    x, bound = _optimum(normal, cuts, deadline)
+    at = _optimum(normal, cuts, deadline, near)
     idle = 0
     for _ in range(MOST_ROUNDS):
-        if x is None or deadline.passed or len(cuts) > MANY_CUTS or idle == PATIENCE:
+        if at is None or deadline.passed or len(cuts) > MANY_CUTS or idle == PATIENCE:
             break
-        if not (np.abs(x - np.rint(x))[normal.integer] > FRACTIONAL).any():
+        if not (np.abs(at.x - np.rint(at.x))[normal.integer] > FRACTIONAL).any():
             break
         system = first.with_cuts(cuts)
-        found = half_cuts(system, x, most=CUTS_A_ROUND, deadline=deadline)
+        found = half_cuts(system, at.x, most=CUTS_A_ROUND, deadline=deadline)
         found = [cut for cut in found if follows(system, cut)]
-        better, reached = _optimum(normal, [*cuts, *found], deadline) if found else (None, bound)
-        if better is None:
+        if not found:
             break
-        idle = 0 if reached > bound + BETTER * max(1.0, abs(bound)) else idle + 1
-        x, bound, cuts = better, reached, [*cuts, *found]
-    return [] if x is None else _needed(cuts, x, normal.rows.size)
+        cuts, before = [*cuts, *found], at.bound
+        at = _optimum(normal, cuts, deadline, at.basis)
+        if at is not None:
+            idle = 0 if at.bound > before + BETTER * max(1.0, abs(before)) else idle + 1
+    return cuts if at is None else _needed(cuts, at.x, normal.rows.size)
 
 
 def cut_remedy(normal: NormalForm, cuts: Sequence[Cut], namer: Namer) -> Remedy:
@@ -103,10 +107,19 @@ def cut_remedy(normal: NormalForm, cuts: Sequence[Cut], namer: Namer) -> Remedy:
     )
 
 
+@dataclass(frozen=True, eq=False)
+class _Optimum:
+    """The optimum of a normalised relaxation with cuts, in scaled units and minimised."""
+
+    x: Floats
+    bound: float
+    basis: Basis
+
+
 def _optimum(
-    normal: NormalForm, cuts: Sequence[Cut], deadline: Deadline
-) -> tuple[Floats | None, float]:
-    """Optimum of a normalised relaxation with cuts; None where there is none in time."""
+    normal: NormalForm, cuts: Sequence[Cut], deadline: Deadline, near: Basis | None
+) -> _Optimum | None:
+    """Optimise with cuts, from a basis with fewer of them; None where there is no optimum."""
     matrix = normal.matrix
     if cuts:
         matrix = sp.vstack([matrix, rows_of(cuts, normal.columns.size)], format="csc")
@@ -118,8 +131,12 @@ def _optimum(
         normal.col_upper,
         normal.cost,
     )
+    if near is not None:
+        program.set_basis(with_rows(near, matrix.shape[0]))
     result = program.solve(deadline=deadline)
-    return (result.x, result.objective) if result.status == "optimal" else (None, math.nan)
+    if result.status != "optimal":
+        return None
+    return _Optimum(result.x, result.objective, program.basis())
 
 
 def _needed(cuts: Sequence[Cut], x: Floats, count: int) -> list[Cut]:

@@ -27,8 +27,10 @@ from .cuts import Cut, System, excess, halved
 NEAR = 1e-6
 #: Orders of elimination, each a breadth-first search from another column.
 MOST_ORDERS = 8
-#: Even circuits that may shorten an odd one.
-MOST_EVEN = 100
+#: Share of the time for the search; the rest is for the cuts.
+SEARCH_SHARE = 0.6
+#: Odd circuits of one order that are looked at, and even ones that may shorten them.
+MOST_ODD, MOST_EVEN = 200, 50
 
 
 @dataclass(frozen=True, eq=False)
@@ -80,10 +82,11 @@ def half_cuts(
     deadline = deadline or Deadline(None)
     generators = _generators(system, x)
     candidates: dict[int, tuple[float, int, int]] = {}
+    search = deadline.within(SEARCH_SHARE * deadline.left)
     for order in _orders(generators):
-        if deadline.passed:
+        if search.passed:
             break
-        for members in _odd_circuits(generators, order, deadline):
+        for members in _odd_circuits(generators, order, search):
             candidates[members] = _weight(generators, members)
     found: list[Cut] = []
     used: set[int] = set()
@@ -190,9 +193,10 @@ def _odd_circuits(generators: _Generators, order: list[int], deadline: Deadline)
             members ^= held[1]
         else:
             (odd if vector else even).append(members)
-    even = [members for members in even if members][:MOST_EVEN]
-    cheap = [members for members in odd if _weight(generators, members)[0] < 1 - NEAR]
-    return [_shortened(generators, members, even) for members in cheap]
+    weights = sorted((_weight(generators, members), members) for members in odd)
+    cheap = [members for weight, members in weights[:MOST_ODD] if weight[0] < 1 - NEAR]
+    even = sorted(even, key=int.bit_count)[:MOST_EVEN]
+    return [_shortened(generators, members, even) for members in cheap if not deadline.passed]
 
 
 def _shortened(generators: _Generators, members: int, even: list[int]) -> int:

@@ -103,7 +103,7 @@ class Outlook:
         """Rows in which bounds alone make a coefficient of a binary column smaller."""
         with np.errstate(invalid="ignore"):
             reach = self.side + self.switch
-            return np.asarray(self.one_sided & (self.most < reach + 1e-9 * np.abs(reach)))
+            return np.asarray(self.one_sided & (self.most < reach - 1e-9 * np.abs(reach)))
 
     @property
     def may_split(self) -> Flags:

@@ -8,13 +8,14 @@ from ..deadline import Deadline
 from ..forms.linear_form import Floats, LinearForm
 from ..forms.numbers import Integers
 from ..integrality.sampling import FRACTIONAL
+from .bases import declared_basis, normalised_basis
 from .context import Context
 from .cut_rounds import cut_remedy, cut_rounds
 from .declarations import declaration_remedy
 from .remedy import Remedy
 from .row_drafts import rounding_drafts, splitting_drafts, tightening_drafts
 from .stems import row_stems
-from .trial import Trial, declared_basis, optimum_of
+from .trial import Trial, optimum_of
 
 #: Shares of the time left: for linear programs behind smaller coefficients, for cuts, and for
 #: the search for declarations that can go.
@@ -56,7 +57,8 @@ def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:
     trial.keep_useful(list(tightening_drafts(trial.normal, rows, early)))
     trial.keep_useful(list(splitting_drafts(trial.form, deadline)))
     if trial.now.fractional:
-        cuts = cut_rounds(trial.normal, deadline.within(CUTTING_SHARE * deadline.left))
+        early = deadline.within(CUTTING_SHARE * deadline.left)
+        cuts = cut_rounds(trial.normal, early, normalised_basis(trial.normal, trial.now.basis))
         tried = trial.tried(cut_remedy(trial.normal, cuts, trial.namer)) if cuts else None
         if tried is not None and trial.helps(tried):
             trial.keep(tried)

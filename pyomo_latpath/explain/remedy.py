@@ -180,6 +180,11 @@ class Remedy:
     dropped_declarations: Indices = field(default_factory=lambda: np.empty(0, np.int64), repr=False)
     dropped_declaration_names: tuple[str, ...] = ()
 
+    @property
+    def gain(self) -> float:
+        """By how much it alone makes the bound better; NaN where not computed."""
+        return abs(self.bound_after - self.bound_before)
+
     def apply_to(self, form: LinearForm) -> LinearForm:
         """Return the form with the change made.
 

@@ -13,6 +13,7 @@ from ..forms.linear_form import Floats, LinearForm
 from ..forms.normalise import NormalForm, normalise
 from ..highs import Basis, LinearProgram
 from ..integrality.sampling import FRACTIONAL
+from .bases import with_rows
 from .drafts import Draft, Namer, by_group, combined
 from .remedy import Remedy
 
@@ -69,8 +70,7 @@ def optimum_of(form: LinearForm, deadline: Deadline, near: Basis | None = None) 
     limits = form.row_lower, form.row_upper, form.col_lower, form.col_upper
     program = LinearProgram(form.matrix, *limits, sign * form.cost)
     if near is not None:
-        basic = np.ones(form.shape[0] - near.row_status.size, np.int8)
-        program.set_basis(Basis(near.col_status, np.append(near.row_status, basic)))
+        program.set_basis(with_rows(near, form.shape[0]))
     result = program.solve(deadline=deadline)
     if result.status == "infeasible":
         return Optimum(sign * math.inf, 0, result.x, program.basis())
@@ -79,17 +79,6 @@ def optimum_of(form: LinearForm, deadline: Deadline, near: Basis | None = None) 
     off = form.integer & (np.abs(result.x - np.rint(result.x)) > FRACTIONAL)
     bound = form.offset + float(form.cost @ result.x)
     return Optimum(bound, int(off.sum()), result.x, program.basis())
-
-
-def declared_basis(normal: NormalForm, basis: Basis) -> Basis:
-    """A basis of the normalised relaxation as one of the relaxation as declared.
-
-    Columns that normalisation fixed rest at a bound, rows that it left out are basic.
-    """
-    form = normal.form
-    col_status, row_status = np.zeros(form.shape[1], np.int8), np.ones(form.shape[0], np.int8)
-    col_status[normal.columns], row_status[normal.rows] = basis.col_status, basis.row_status
-    return Basis(col_status, row_status)
 
 
 @dataclass(frozen=True, eq=False)

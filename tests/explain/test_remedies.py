@@ -246,3 +246,52 @@ def test_plain_data_holds_the_derivation():
     first = told[0]["inequalities"][0]
     assert set(first["derivation"]["row_multipliers"]) == {"1/2"}
     assert first["column_names"] and "columns" not in first
+
+
+def larger_form(kind, seed):
+    """Caves and lots with a big M, as whole or as any amounts; a stable set among 30 caves."""
+    rng = np.random.default_rng(seed)
+    if kind == "stable":
+        rows = np.zeros((60, 30))
+        for row in rows:
+            row[rng.choice(30, 2, replace=False)] = 1
+        cost, low, high, integer = -rng.integers(1, 9, 30), -np.inf, 1, True
+        upper = 1.0
+    else:
+        caves, lots = 6, 15
+        rows = np.zeros((caves + lots, caves * lots + caves))
+        for c in range(caves):
+            rows[c, c * lots : (c + 1) * lots] = rng.integers(1, 4, lots)
+            rows[c, caves * lots + c] = -50 if kind == "limited" else -1000
+        for k in range(lots):
+            rows[caves + k, k : caves * lots : lots] = 1
+        low = np.append(np.full(caves, -np.inf), np.ones(lots))
+        high = np.append(np.zeros(caves), np.full(lots, np.inf))
+        cost = np.append(rng.integers(1, 30, caves * lots), rng.integers(20, 60, caves))
+        upper = np.append(np.full(caves * lots, 2.5), np.ones(caves))
+        integer = np.arange(cost.size) >= (caves * lots if kind == "amounts" else 0)
+    return LinearForm.from_arrays(
+        rows,
+        row_lower=low,
+        row_upper=high,
+        col_lower=0,
+        col_upper=upper,
+        cost=cost,
+        integer=integer,
+    )
+
+
+@pytest.mark.parametrize("kind", ["stable", "whole", "amounts", "limited"])
+@pytest.mark.parametrize("seed", range(3))
+def test_larger_models_keep_their_optimum_and_get_better_bounds(kind, seed):
+    form = larger_form(kind, seed)
+    remedies = remedies_of(form)
+    best, together = latpath.solve(form, rel_gap=0), form
+    for remedy in remedies:
+        alone = latpath.solve(remedy.apply_to(form), rel_gap=0)
+        assert alone.objective == pytest.approx(best.objective, abs=1e-6)
+        together = remedy.apply_to(together)
+    after = latpath.solve(together, rel_gap=0)
+    assert after.objective == pytest.approx(best.objective, abs=1e-6)
+    closed = remedies[-1].bound_together - remedies[0].bound_before
+    assert closed > 0.3 * (best.objective - remedies[0].bound_before)
