@@ -6,46 +6,95 @@ import math
 from bisect import bisect_right
 from collections import Counter
 from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
-from ..pages.drawing import box, label, picture
+from ..pages.drawing import bars
 from ..pages.frame import page
-from ..pages.markup import counted, figures, name, number, section, table, text, visible
+from ..pages.markup import (
+    cards,
+    counted,
+    figures,
+    name,
+    names,
+    number,
+    paragraphs,
+    section,
+    table,
+    text,
+    visible,
+)
 from .record import BatchRecord, Summary
 
-#: Title, value and whether it is a number, of each column of the table of all records.
-SHOWN: tuple[tuple[str, Callable[[BatchRecord], Any], bool], ...] = (
-    ("instance", lambda record: record.instance, False),
-    ("status", lambda record: record.status, False),
-    ("verdict", lambda record: record.verdict, False),
-    ("structure", lambda record: record.structure, False),
-    ("route", lambda record: record.route, False),
-    ("objective", lambda record: record.objective, True),
-    ("seconds", lambda record: round(record.total_seconds, 4), True),
-    ("steps", lambda record: record.steps, True),
-    ("rows", lambda record: record.rows, True),
-    ("columns", lambda record: record.columns, True),
-    ("integers", lambda record: record.integers, True),
+
+@dataclass(frozen=True)
+class Column:
+    """What a record shows under a title: the field of that name, or what `value` makes of it.
+
+    Attributes
+    ----------
+    title : str
+    number : bool
+    shown : bool
+        Whether it stands in the table; an opened record shows all.
+    value : callable, optional
+    """
+
+    title: str
+    number: bool = False
+    shown: bool = True
+    value: Callable[[BatchRecord], Any] | None = None
+
+    def of(self, record: BatchRecord) -> str | float | None:
+        """The value as plain data for the page: None where it is not known."""
+        value = getattr(record, self.title) if self.value is None else self.value(record)
+        if self.number:
+            return value if value is not None and math.isfinite(value) else None
+        if value is None:
+            return None
+        # An error may be a traceback, whose line ends are meant to be seen as such.
+        lines = value.split("\n") if self.title == "error" else [value]
+        return "\n".join(map(visible, lines))
+
+
+COLUMNS = (
+    Column("instance"),
+    Column("status"),
+    Column("verdict"),
+    Column("structure"),
+    Column("route"),
+    Column("objective", number=True),
+    Column("seconds", number=True, value=lambda record: round(record.total_seconds, 4)),
+    Column("steps", number=True),
+    Column("rows", number=True),
+    Column("columns", number=True),
+    Column("integers", number=True),
+    Column("nonzeros", number=True, shown=False),
+    Column("bound", number=True, shown=False),
+    Column("pivots", number=True, shown=False),
+    Column("proof", shown=False),
+    Column("why", shown=False),
+    Column("sampled vertices", True, False, lambda record: record.samples or None),
+    Column("seconds by stage", shown=False, value=lambda record: _stages(record)),
+    Column("recognition", shown=False),
+    Column("seconds of branch and bound", True, False, lambda record: record.highs_seconds),
+    Column("plan", shown=False),
+    Column("attempts", number=True, shown=False),
+    Column("fingerprint", shown=False),
+    Column("error", shown=False),
 )
-#: What only an opened record shows beside these.
-HIDDEN: tuple[tuple[str, Callable[[BatchRecord], Any], bool], ...] = (
-    ("nonzeros", lambda record: record.nonzeros, True),
-    ("bound", lambda record: record.bound, True),
-    ("pivots", lambda record: record.pivots, True),
-    ("proof", lambda record: record.proof, False),
-    ("why", lambda record: record.why, False),
-    ("sampled vertices", lambda record: record.samples or None, True),
-    ("seconds by stage", lambda record: _stages(record), False),
-    ("recognition", lambda record: record.recognition, False),
-    ("branch and bound, seconds", lambda record: record.highs_seconds, True),
-    ("plan", lambda record: record.plan, False),
-    ("attempts", lambda record: record.attempts, True),
-    ("fingerprint", lambda record: record.fingerprint, False),
-    ("error", lambda record: record.error, False),
-)
-#: Columns with a choice of their own above the table.
-FILTERS = ("status", "verdict", "route")
+#: Places of the columns with a choice of their own above the table.
+FILTERS = (1, 2, 4)
 ROUTES = ("path", "split", "highs", "-")
+
+MEANING = {
+    "proven": "every vertex is whole, by a certificate",
+    "sampled": "no fractional vertex was met among those looked at; this is no proof",
+    "refuted": "a fractional vertex is known exactly",
+    "undecided": "neither a proof nor a fractional vertex",
+    "-": "not read, or not assessed",
+}
 
 
 def batch_page(records: Sequence[BatchRecord], summary: Summary) -> str:
@@ -115,31 +164,25 @@ def _unsolved(summary: Summary) -> str:
     together: dict[tuple[str, str], list[str]] = {}
     for each in summary.unsolved:
         together.setdefault((each.status, each.reason), []).append(each.instance)
-    items = "".join(
-        f"<li><p><strong>{text(status)}</strong> {text(reason)}</p>"
-        f"<p>{', '.join(map(name, instances))}</p></li>"
+    told = cards(
+        f"<p><strong>{text(status)}</strong> {text(reason)}</p><p>{names(instances)}</p>"
         for (status, reason), instances in together.items()
     )
     rest = summary.unsolved_count - len(summary.unsolved)
     lead = f"The first {len(summary.unsolved):,}; {rest:,} more stand below." if rest else ""
-    return section("not-solved", "Not solved", f'<ul class="cards">{items}</ul>', lead)
+    return section("not-solved", "Not solved", told, lead)
 
 
 def _all(records: Sequence[BatchRecord]) -> str:
     """The frame of the table that the page's script fills."""
-    titles = [title for title, _, _ in SHOWN]
-    choices = "".join(
-        f'<label>{title}<select id="filter-{titles.index(title)}"><option value="">all</option>'
-        + "".join(f"<option>{text(value)}</option>" for value in _values(records, title))
-        + "</select></label>"
-        for title in FILTERS
-    )
+    shown = [column for column in COLUMNS if column.shown]
+    choices = "".join(_choice(k, records) for k in FILTERS)
     head = "".join(
-        f'<th scope="col"{" class=number" if is_number else ""}>'
-        f'<button type="button">{title}</button></th>'
-        for title, _, is_number in SHOWN
+        f'<th scope="col"{" class=number" if column.number else ""}>'
+        f'<button type="button">{column.title}</button></th>'
+        for column in shown
     )
-    space = f'<tr class="space" aria-hidden="true"><td colspan="{len(SHOWN)}"><div></div></td></tr>'
+    space = f'<tr class="space" aria-hidden="true"><td colspan="{len(shown)}"><div></div></td></tr>'
     body = f"""<noscript><p>This table needs the page's own script. The same records stand in the
 files beside this page.</p></noscript>
 <div id="all" hidden>
@@ -148,45 +191,37 @@ files beside this page.</p></noscript>
 {choices}<button type="reset" class="plain">Show all</button></form>
 <output id="count" for="search"></output>
 <div id="records-region" class="scroll" role="region" tabindex="0" aria-labelledby="records-title">
-<table aria-rowcount="{len(records) + 1}"><caption id="records-title">All instances; a heading
-sorts, a name opens the whole record</caption>
+<table aria-rowcount="{len(records) + 1}"><caption id="records-title">
+<span>All instances; a heading sorts, a name opens the whole record</span></caption>
 <thead><tr aria-rowindex="1">{head}</tr></thead><tbody>{space}{space}</tbody></table></div>
 </div>
-<dialog id="record" aria-labelledby="record-name"><h2 id="record-name"></h2>
-<dl id="record-fields"></dl><form method="dialog"><button class="plain">Close</button></form>
-</dialog>"""
+<dialog id="record" aria-labelledby="record-name"><form method="dialog"><h2 id="record-name"></h2>
+<button class="plain">Close</button></form><dl id="record-fields"></dl></dialog>"""
     return section("instances", "All instances", body, wide=True)
 
 
-def _values(records: Sequence[BatchRecord], title: str) -> list[str]:
-    get = next(get for each, get, _ in SHOWN if each == title)
-    return sorted({visible(get(record)) if get(record) else "–" for record in records})
+def _choice(k: int, records: Sequence[BatchRecord]) -> str:
+    """A choice among the values of a column."""
+    values = sorted({str(COLUMNS[k].of(record) or "–") for record in records})
+    options = "".join(f"<option>{text(value)}</option>" for value in values)
+    return (
+        f'<label>{COLUMNS[k].title}<select id="filter-{k}"><option value="">all</option>'
+        f"{options}</select></label>"
+    )
 
 
 def _data(records: Sequence[BatchRecord]) -> dict[str, Any]:
     """The records by columns, as the script reads them."""
     columns = [
         {
-            "title": title,
-            "number": is_number,
-            "shown": shown,
-            "values": [_cell(get(record), is_number, title) for record in records],
+            "title": column.title,
+            "number": column.number,
+            "shown": column.shown,
+            "values": [column.of(record) for record in records],
         }
-        for shown, part in ((True, SHOWN), (False, HIDDEN))
-        for title, get, is_number in part
+        for column in COLUMNS
     ]
-    titles = [column["title"] for column in columns]
-    return {"columns": columns, "filters": [titles.index(title) for title in FILTERS]}
-
-
-def _cell(value: Any, is_number: bool, title: str) -> Any:
-    if value is None or (is_number and not math.isfinite(value)):
-        return None
-    if is_number:
-        return value
-    # An error may be a traceback, whose line ends are meant to be seen as such.
-    lines = value.split("\n") if title == "error" else [value]
-    return "\n".join(visible(line) for line in lines)
+    return {"columns": columns, "filters": list(FILTERS)}
 
 
 def _stages(record: BatchRecord) -> str | None:
@@ -197,8 +232,8 @@ def _stages(record: BatchRecord) -> str | None:
 def _lengths(records: Sequence[BatchRecord], summary: Summary) -> str:
     seconds = [record.total_seconds for record in records if record.seconds]
     steps = [record.steps for record in records if record.steps is not None]
-    charts = _histogram("seconds", "Seconds of an instance", seconds)
-    charts += _histogram("steps", "Steps of a walk", steps)
+    charts = _histogram("seconds-bars", "Seconds of an instance", seconds)
+    charts += _histogram("steps-bars", "Steps of a walk", steps)
     rows = [[text(stage), f"{seconds:,.2f}"] for stage, seconds in summary.stages.items()]
     stages = table("stages", "Seconds by stage, all instances", ["stage", "seconds"], rows, [1])
     slowest = [
@@ -211,34 +246,18 @@ def _lengths(records: Sequence[BatchRecord], summary: Summary) -> str:
 
 
 def _histogram(key: str, title: str, values: Sequence[float]) -> str:
-    """Counts between 1, 3, 10, 30, ...: bars from left to right, so that a phone shows them."""
+    """How many values lie between 1, 3, 10, 30, ...; zeros stand apart."""
     if not values:
         return ""
     positive = [value for value in values if value > 0]
     edges = _edges(positive) if positive else []
-    bins = Counter(bisect_right(edges, value) for value in positive)
-    lines = [
-        (
-            f"below {number(edges[0])}"
-            if k == 0
-            else f"{number(edges[k - 1])} to {number(edges[k])}",
-            bins[k],
-        )
-        for k in range(1, len(edges))
+    counts = Counter(bisect_right(edges, value) for value in positive)
+    told = [
+        (f"{number(low)} to {number(high)}", counts[k])
+        for k, (low, high) in enumerate(pairwise(edges), 1)
     ]
     zeros = len(values) - len(positive)
-    if zeros:
-        lines.insert(0, ("0", zeros))
-    most, step = max(count for _, count in lines), 24
-    bars = "".join(
-        label(126, step * k + 16, words, "soft", "end")
-        + box(134, step * k + 4, 150 * count / most, 16, "bar")
-        + label(140 + 150 * count / most, step * k + 16, f"{count:,}")
-        for k, (words, count) in enumerate(lines)
-    )
-    told = "; ".join(f"{words}: {count:,}" for words, count in lines if count)
-    drawing = picture(f"{key}-bars", 340, step * len(lines) + 6, title, told, bars)
-    return f"<figure><figcaption>{text(title)}</figcaption>{drawing}</figure>"
+    return bars(key, title, [("0", zeros), *told] if zeros else told)
 
 
 def _edges(values: Sequence[float]) -> list[float]:
@@ -272,7 +291,7 @@ def _comparison(summary: Summary) -> str:
     words = (
         f"On {counted(beside.instances, 'instance')} branch and bound was run as well: "
         f"{beside.highs_seconds:,.2f} s against {beside.seconds:,.2f} s here,{least} "
-        f"{beside.ratio:,.1f} times as long."
+        f"{number(round(beside.ratio, 1))} times as long."
     )
     if beside.unfinished:
         words += f" {beside.unfinished:,} of its runs were cut off by the time limit."
@@ -280,23 +299,15 @@ def _comparison(summary: Summary) -> str:
 
 
 def _verdicts(records: Sequence[BatchRecord], summary: Summary) -> str:
-    meaning = {
-        "proven": "every vertex is whole, by a certificate",
-        "sampled": "no fractional vertex was met among those looked at; this is no proof",
-        "refuted": "a fractional vertex is known exactly",
-        "undecided": "neither a proof nor a fractional vertex",
-        "-": "no verdict: not read, or not assessed",
-    }
     rows = [
-        [text(verdict), f"{count:,}", text(meaning.get(verdict, ""))]
+        [text(verdict), f"{count:,}", text(MEANING.get(verdict, ""))]
         for verdict, count in summary.verdicts.items()
     ]
     if not rows:
         return ""
-    shown = table("verdicts", "Verdicts", ["verdict", "instances", "what is known"], rows, [1])
+    head = ["verdict", "instances", "what is known"]
+    shown = table("verdicts", "Verdicts", head, rows, numbers=[1], prose=[2])
     samples = sum(record.samples for record in records if record.verdict == "sampled")
-    note = ""
-    if samples:
-        looked = counted(samples, "vertex", "vertices")
-        note = f"<p>Verdicts 'sampled' rest on {looked} looked at in all, not on a proof.</p>"
-    return section("rests", "What the verdicts rest on", shown + note)
+    looked = counted(samples, "vertex", "vertices")
+    note = f"Verdicts 'sampled' rest on {looked} looked at in all, not on a proof."
+    return section("rests", "What the verdicts rest on", shown + paragraphs([note] * (samples > 0)))

@@ -9,7 +9,7 @@ import numpy as np
 
 from ..integrality.finding import WORST_FIRST, Verdict
 from ..pages.drawing import box, label, picture
-from ..pages.markup import counted, number, shortened, text, visible
+from ..pages.markup import counted, shortened, visible
 from .explanation import BlockSummary, Sketch, Violator
 
 Point = tuple[float, float]
@@ -76,9 +76,8 @@ def _edge(a: Point, b: Point, sign: int) -> str:
     edge = f'<path d="M{a[0]:.5g} {a[1]:.5g}L{b[0]:.5g} {b[1]:.5g}" class="{css}"/>'
     if math.dist(a, b) < 32:
         return edge
-    return (
-        f'{edge}<circle cx="{x:.5g}" cy="{y:.5g}" r="7" class="paper"/>'
-        + label(x, y + 4.5, "−" if sign < 0 else "+", anchor="middle")
+    return f'{edge}<circle cx="{x:.5g}" cy="{y:.5g}" r="7" class="paper"/>' + label(
+        x, y + 4.5, "−" if sign < 0 else "+", anchor="middle"
     )
 
 
@@ -177,17 +176,3 @@ def _worst_verdicts(sketch: Sketch, blocks: Sequence[BlockSummary]) -> list[list
         met = rows[:, mine].astype(np.int64) @ columns[:, mine].T.astype(np.int64) > 0
         worst[met] = rank
     return [[WORST_FIRST[rank].value for rank in row] for row in worst.tolist()]
-
-
-def bars(key: str, title: str, pairs: Sequence[tuple[str, float]]) -> str:
-    """Named amounts as bars from left to right, so that a phone shows them, too."""
-    most = max(amount for _, amount in pairs) or 1.0
-    body = "".join(
-        label(126, 24 * k + 17, words, "soft", "end")
-        + box(134, 24 * k + 5, max(1.0, 120 * amount / most), 16, "bar")
-        + label(140 + 120 * amount / most, 24 * k + 17, number(float(f"{amount:.4g}")))
-        for k, (words, amount) in enumerate(pairs)
-    )
-    told = "; ".join(f"{words}: {number(amount)}" for words, amount in pairs)
-    drawing = picture(key, 340, 24 * len(pairs) + 6, title, told, body)
-    return f"<figure><figcaption>{text(title)}</figcaption>{drawing}</figure>"

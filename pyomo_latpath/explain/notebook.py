@@ -18,7 +18,17 @@ STYLE = """<style>
 
 
 def to_notebook(told: Explanation) -> str:
-    """Return the answer in short as a piece of HTML with styles of its own."""
+    """Return the answer in short as a piece of HTML with styles of its own.
+
+    Examples
+    --------
+    >>> from pyomo_latpath.explain.explain import explain
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> caves = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                                col_upper=1, cost=[5, 3])
+    >>> "<dt>rests on</dt>" in to_notebook(explain(caves))
+    True
+    """
     entries = "".join(
         f"<dt>{title}</dt><dd>{text(sentence)}</dd>" for title, sentence in words.in_short(told)
     )

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from ..pages.drawing import PATTERNS
+from ..pages.drawing import PATTERNS, bars
 from ..pages.frame import page
 from ..pages.markup import (
     NAMES,
@@ -21,7 +21,6 @@ from ..pages.markup import (
     text,
 )
 from . import words
-from .drawings import bars
 from .explanation import Explanation, Whole
 from .page_matrix import blocks
 from .page_remedies import remedies
@@ -39,6 +38,15 @@ def to_html(told: Explanation, subject: str | None = None) -> str:
     told : Explanation
     subject : str, optional
         What was explained; the name of the Pyomo model where not given.
+
+    Examples
+    --------
+    >>> from pyomo_latpath.explain.explain import explain
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> caves = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                                col_upper=1, cost=[5, 3])
+    >>> "<h1>Every vertex is whole" in to_html(explain(caves), "two caves")
+    True
     """
     if subject is None:
         subject = getattr(told.model, "name", None) or "a model"

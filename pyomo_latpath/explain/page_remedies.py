@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import math
 
+from ..pages.drawing import bars
 from ..pages.markup import cards, counted, folded, names, paragraphs, section, text
 from . import words
-from .drawings import bars
 from .explanation import Explanation
 from .remedy import Remedy
 

@@ -63,7 +63,7 @@ def _groups(told: Explanation) -> str:
         [
             name(group.name),
             number(group.size),
-            "to blame" if group.to_blame else "–",
+            "yes" if group.to_blame else "–",
             _without(told, group),
             text(_peculiar(group)),
         ]
@@ -72,7 +72,7 @@ def _groups(told: Explanation) -> str:
     rest = len(told.groups) - len(rows)
     caption = f"All rows, grouped {GROUPED_BY[told.grouped_by]}"
     caption += f"; {rest:,} more groups are not shown" if rest else ""
-    head = ["group", "rows", "blame", "without it", "what its rows are like"]
+    head = ["group", "rows", "to blame", "without it", "what its rows are like"]
     return table("groups", caption, head, rows, numbers=[1], prose=[3, 4])
 
 

@@ -18,7 +18,17 @@ GRID = 12
 
 
 def to_text(told: Explanation) -> str:
-    """Return the answer on lines of at most 80 columns; the first 24 of them say it all."""
+    """Return the answer on lines of at most 80 columns; the first 24 of them say it all.
+
+    Examples
+    --------
+    >>> from pyomo_latpath.explain.explain import explain
+    >>> from pyomo_latpath.forms.linear_form import LinearForm
+    >>> caves = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                                col_upper=1, cost=[5, 3])
+    >>> to_text(explain(caves)).splitlines()[0]
+    'Every vertex is whole: the integer declarations cost nothing'
+    """
     lines = textwrap.wrap(words.headline(told), WIDTH, max_lines=2, placeholder=" …")
     for title, sentence in words.in_short(told):
         lines += _entry(title, sentence, ENTRY_LINES)

@@ -60,7 +60,7 @@ def in_short(told: Explanation) -> list[tuple[str, str]]:
         breaks = " ".join(map(as_sentence, told.whole.breakers[:1]))
     entries = [
         ("why", why),
-        ("how bad", how_bad(told)),
+        (_bad_title(told), how_bad(told)),
         ("to blame", blame(told)),
         ("conflict", conflict(told)),
         ("remedy", best_remedy(told)),
@@ -69,6 +69,12 @@ def in_short(told: Explanation) -> list[tuple[str, str]]:
         ("left open", " ".join(map(as_sentence, told.cut_off[:2]))),
     ]
     return [(title, sentence) for title, sentence in entries if sentence]
+
+
+def _bad_title(told: Explanation) -> str:
+    if told.no_optimum is not None:
+        return "why"
+    return "how bad" if told.fractional is not None and told.fractional.count else "optimum"
 
 
 def how_bad(told: Explanation) -> str:

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from .markup import text
+from collections.abc import Sequence
+
+from .markup import number, text
 
 #: Each verdict has a pattern of its own, so that no one needs to tell its colour.
 PATTERNS = """<defs>
@@ -31,6 +33,12 @@ def picture(key: str, width: float, height: float, title: str, description: str,
         Plain text: what the picture is, and what there is to see.
     body : str
         SVG elements.
+
+    Examples
+    --------
+    >>> drawing = picture("plan", 20, 10, "Caves", "One cave.", box(0, 0, 20, 10, "bar"))
+    >>> 'role="img"' in drawing and "<desc id=\\"plan-d\\">One cave.</desc>" in drawing
+    True
     """
     return (
         f'<svg role="img" aria-labelledby="{key}-t {key}-d" viewBox="0 0 {width:g} {height:g}" '
@@ -51,3 +59,26 @@ def label(x: float, y: float, words: str, css: str = "", anchor: str = "start") 
     """A line of text that starts, ends or is centred at a point."""
     look = f' class="{css}"' if css else ""
     return f'<text x="{x:.5g}" y="{y:.5g}" text-anchor="{anchor}"{look}>{text(words)}</text>'
+
+
+def bars(key: str, title: str, pairs: Sequence[tuple[str, float]]) -> str:
+    """Named amounts as bars from left to right, narrow enough for a phone.
+
+    Parameters
+    ----------
+    key : str
+        Unique on the page.
+    title : str
+    pairs : sequence of (str, float)
+        What is measured, and its amount from 0 on.
+    """
+    most = max(amount for _, amount in pairs) or 1.0
+    body = "".join(
+        label(126, 24 * k + 17, words, "soft", "end")
+        + box(134, 24 * k + 5, max(1.0, 140 * amount / most), 16, "bar")
+        + label(140 + 140 * amount / most, 24 * k + 17, number(float(f"{amount:.6g}")))
+        for k, (words, amount) in enumerate(pairs)
+    )
+    told = "; ".join(f"{words}: {number(amount)}" for words, amount in pairs)
+    drawing = picture(key, 340, 24 * len(pairs) + 6, title, told, body)
+    return f"<figure><figcaption>{text(title)}</figcaption>{drawing}</figure>"

@@ -26,7 +26,7 @@ def visible(text: str) -> str:
     >>> print(visible("van[1]\n"), visible("a\u202eb"), visible("Käse"))
     van[1]\n a\u202eb Käse
     """
-    return _SUSPECT.sub(_spelled, text)
+    return text if text.isascii() and text.isprintable() else _SUSPECT.sub(_spelled, text)
 
 
 def _spelled(match: re.Match[str]) -> str:

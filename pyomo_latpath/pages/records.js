@@ -148,6 +148,7 @@
     const list = find("record-fields");
     list.replaceChildren();
     for (const column of columns) {
+      if (column.values[i] === null) continue;
       const title = document.createElement("dt");
       title.textContent = column.title;
       const value = document.createElement("dd");
