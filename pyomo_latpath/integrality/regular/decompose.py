@@ -21,6 +21,7 @@ from .. import network
 from ..reductions import reduce_matrix
 from . import r10
 from .clock import check_time
+from .minors import neither
 from .separate import separation
 from .separation import Bits
 from .signs import odd_hole
@@ -91,10 +92,13 @@ class _Work:
             raise Contradiction(behind, minimal) from None
 
     def _take_apart(self, k: int, summand: Summand) -> list[int]:
-        hole = odd_hole(summand.matrix, self.deadline)
-        if hole is not None:
-            raise Contradiction(hole, minimal=True)
         matrix = summand.matrix
+        # At the start, wrong signs are the quickest way to a no; later they are looked for where
+        # the nonzeros are those of a TU matrix, as nothing else can be wrong there.
+        if len(self.summands) == 1 or self._has_known_nonzeros(matrix):
+            hole = odd_hole(matrix, self.deadline)
+            if hole is not None:
+                raise Contradiction(hole, minimal=True)
         links = sp.block_array([[None, matrix], [matrix.T, None]], format="csr")
         count, block = connected_components(links, directed=False)
         if count > 1:
@@ -107,6 +111,9 @@ class _Work:
         self.summands[k] = first
         self.summands.append(second)
         return [k, len(self.summands) - 1]
+
+    def _has_known_nonzeros(self, matrix: sp.csc_array) -> bool:
+        return not neither(matrix, self.deadline) or r10.find(matrix) is not None
 
     def _take_blocks_apart(self, k: int, summand: Summand, blocks: list[Bits]) -> list[int]:
         m, changed = summand.rows.size, [k]

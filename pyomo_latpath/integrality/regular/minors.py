@@ -187,7 +187,7 @@ def _rigid_part(minor: Minor, deadline: Deadline) -> Minor | None:
         minor = minor.restricted(lines.tolist())
     if not neither(matrix, deadline):
         return None
-    side = smallest_separation(matrix)
+    side = smallest_separation(matrix, deadline)
     if side is None:
         return minor
     for inside in (set(lines[side].tolist()), set(lines[~side].tolist())):

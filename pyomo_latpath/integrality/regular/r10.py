@@ -12,7 +12,6 @@ import scipy.sparse as sp
 
 from ...certificate_sums import R10, R10_MATRICES
 from ...forms.numbers import Integers
-from .separation import Bits
 
 
 def recognise(matrix: sp.csc_array) -> R10 | None:
@@ -29,19 +28,19 @@ def recognise(matrix: sp.csc_array) -> R10 | None:
     >>> recognise(abs(disguised)) is None
     True
     """
-    table = matrix.toarray()
-    found = find(table != 0)
+    found = find(matrix)
     if found is None:
         return None
     known, rows, columns = found
-    signs = _signs(table[rows][:, columns] * known)
+    signs = _signs(matrix.toarray()[rows][:, columns] * known)
     return R10(rows, columns, *signs) if signs else None
 
 
-def find(support: Bits) -> tuple[Integers, Integers, Integers] | None:
+def find(matrix: sp.csc_array) -> tuple[Integers, Integers, Integers] | None:
     """Find the order in which nonzeros are those of a matrix of R10; returns that matrix first."""
-    if support.shape != (5, 5):
+    if matrix.shape != (5, 5):
         return None
+    support = matrix.toarray() != 0
     for known in R10_MATRICES:
         if sorted(support.sum(axis=1)) != sorted(np.abs(known).sum(axis=1)):
             continue

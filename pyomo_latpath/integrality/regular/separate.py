@@ -56,7 +56,7 @@ def separation(matrix: sp.csc_array, deadline: Deadline) -> Bits:
         check_time(deadline)
         part = whole.restricted(core)
         small, lines = part.matrix()
-        side = smallest_separation(small)
+        side = smallest_separation(small, deadline)
         if side is None:
             break
         found = spread(links, lines[side], lines[~side])
@@ -70,7 +70,7 @@ def separation(matrix: sp.csc_array, deadline: Deadline) -> Bits:
     small, lines = minor.matrix()
     if lines.size == 12:
         return _through_r12(links, small, lines, needed)
-    if r10.find(small.toarray() != 0) is None:
+    if r10.find(small) is None:
         raise Contradiction(needed)
     return _beside_r10(links, lines, needed)
 

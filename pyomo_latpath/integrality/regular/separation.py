@@ -22,7 +22,9 @@ import scipy.sparse as sp
 from numpy.typing import NDArray
 from scipy.sparse.csgraph import breadth_first_order, connected_components
 
+from ...deadline import Deadline
 from ...forms.numbers import Integers
+from .clock import check_time
 
 Bits = NDArray[np.bool_]
 #: The neighbours of each line.
@@ -148,7 +150,7 @@ def spread(links: Links, inside: Integers, outside: Integers) -> Spread:
     return Spread(~free, parent, -1)
 
 
-def smallest_separation(matrix: sp.csc_array) -> Bits | None:
+def smallest_separation(matrix: sp.csc_array, deadline: Deadline) -> Bits | None:
     """Find a 1-separation, else a 2-separation with two lines or more on each side.
 
     A 2-separation of a connected matrix cuts some edge (a, b) of each spanning tree. With this
@@ -158,6 +160,7 @@ def smallest_separation(matrix: sp.csc_array) -> Bits | None:
     Parameters
     ----------
     matrix : scipy.sparse.csc_array, shape (m, n)
+    deadline : Deadline
 
     Returns
     -------
@@ -166,10 +169,11 @@ def smallest_separation(matrix: sp.csc_array) -> Bits | None:
 
     Examples
     --------
-    >>> smallest_separation(sp.csc_array([[1, 1, 1], [1, 1, 0], [0, 0, 1]])).astype(int)
+    >>> matrix = sp.csc_array([[1, 1, 1], [1, 1, 0], [0, 0, 1]])
+    >>> smallest_separation(matrix, Deadline(None)).astype(int)
     array([0, 0, 0, 1, 1, 0])
     >>> wheel = sp.csc_array([[1, 0, 1], [1, 1, 0], [0, 1, 1]])
-    >>> smallest_separation(wheel) is None
+    >>> smallest_separation(wheel, Deadline(None)) is None
     True
     """
     m, size = matrix.shape[0], sum(matrix.shape)
@@ -182,6 +186,7 @@ def smallest_separation(matrix: sp.csc_array) -> Bits | None:
         return np.asarray(label == 0)
     order, above = breadth_first_order(graph, 0, directed=False)
     for a, b in zip(order[1:].tolist(), above[order[1:]].tolist(), strict=True):
+        check_time(deadline)
         others = np.delete(np.arange(size), [a, b])
         rest = links ^ np.outer(links[:, b], links[a])
         within = rest[np.ix_(others, others)]

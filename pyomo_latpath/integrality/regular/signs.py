@@ -60,7 +60,7 @@ def odd_hole(matrix: sp.csc_array, deadline: Deadline) -> list[int] | None:
     return None
 
 
-def _root(above: list[int] | dict[int, int], node: int) -> int:
+def _root(above: list[int], node: int) -> int:
     """The name of a set in a forest of sets."""
     while above[node] != node:
         above[node] = above[above[node]]
@@ -73,27 +73,28 @@ def _grow(beside: list[dict[int, int]], own: dict[int, int], ways: int) -> list[
     source = {row: row for row in own}
     parent = dict.fromkeys(own, -1)
     product = dict(own)  # of the entries from the column to each line
-    tied = {row: row for row in own}
+    group = {row: [row] for row in own}
     front = list(own)
     while ways:
         following = []
         for line in front:
+            mine = source[line]
             for other, entry in beside[line].items():
-                if other not in source:
-                    source[other], parent[other] = source[line], line
+                theirs = source.get(other)
+                if theirs is None:
+                    source[other], parent[other] = mine, line
                     product[other] = entry * product[line]
                     following.append(other)
-                    continue
-                one, two = (_root(tied, source[x]) for x in (line, other))
-                if one == two:
-                    continue
-                way = _way(parent, line)[::-1] + _way(parent, other)
-                # 2l entries sum to 0 modulo 4 if and only if their product is (-1)^l.
-                half = (len(way) + 1) // 2
-                if entry * product[line] * product[other] != (-1) ** half:
-                    return way
-                tied[one] = two
-                ways -= 1
+                elif theirs != mine and group[theirs] is not group[mine]:
+                    way = _way(parent, line)[::-1] + _way(parent, other)
+                    # 2l entries sum to 0 modulo 4 if and only if their product is (-1)^l.
+                    half = (len(way) + 1) // 2
+                    if entry * product[line] * product[other] != (-1) ** half:
+                        return way
+                    few, many = sorted((group[theirs], group[mine]), key=len)
+                    many += few
+                    group |= dict.fromkeys(few, many)
+                    ways -= 1
         front = following
     return None
 
