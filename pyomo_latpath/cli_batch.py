@@ -107,8 +107,9 @@ def batch(
       report.html     the same as a page
       plans/          the plans, with --plans
 
-    An instance whose source has changed since its record was written is solved again. One that
-    kills its worker is tried once more. Ten seconds past --time-limit a local worker is ended.
+    An instance whose source has changed since its record was written, or whose plan is missing,
+    is solved again. One that kills its worker is tried once more. Ten seconds past
+    --time-limit a local worker is ended.
 
     \b
     Exit status:
@@ -142,13 +143,16 @@ def batch(
             crew = _crew(stack, cluster, workers, settings)
             shown = stack.enter_context(Progress(tasks.total, not quiet))
             ending = _work(tasks, crew, journal, Deadline(stop_after), shown, as_json)
+            if plans:
+                make_folder(out / "plans", ["*.csv"])
             summary = _leave(out, tasks, journal, ending, parquet)
     except (InputError, JournalError, BatchError, OSError) as error:
         click.echo(f"latpath: {sentence(error)}", err=True)
         sys.exit(STOPPED if isinstance(error, OSError) else FAILED)
     if not (quiet or as_json):
         click.echo(summary_text(summary))
-        click.echo(f"written    {out / 'report.html'}, table.csv, summary.json")
+        names = [name for name in (*RESULTS, "plans") if (out / name).exists()]
+        click.echo(f"written    {out}: {', '.join(names)}")
     sys.exit(_status(summary) if ending.early is None else ending.early)
 
 
@@ -198,7 +202,8 @@ def _work(
         early = STOPPED
         shown.say(f"{error}; run the same command again to go on")
     if journal.replaced:
-        shown.say(f"{journal.replaced} instances have changed, and were solved again")
+        why = "their source has changed or their plan is missing"
+        shown.say(f"{journal.replaced} solved again: {why}")
     return _Ending(early, shown.kept, time.monotonic() - begun)
 
 
@@ -207,8 +212,8 @@ def _leave(out: Path, tasks: Tasks, journal: Journal, ending: _Ending, parquet: 
     wanted = tasks.names if ending.early is None else None
     if wanted is not None and (gone := len(journal) - len(wanted)):
         click.echo(
-            f"latpath: {gone} records in {journal.path} are of instances that are not given now; "
-            "the results leave them out",
+            f"latpath: left out of the results: {gone} in {journal.path} that are not among the "
+            "instances given now",
             err=True,
         )
     waiting = 0 if ending.early is None else None

@@ -15,6 +15,8 @@ from .executors import InExecutor
 
 #: Seconds to wait for the scheduler.
 PATIENCE = 30
+#: Workers to have work ready for, also where a cluster starts its workers when there is work.
+LEAST = 8
 
 
 class Cluster:
@@ -28,7 +30,7 @@ class Cluster:
     Raises
     ------
     BatchError
-        Without the packages `dask` and `distributed`, or when no scheduler with workers answers.
+        Without the packages `dask` and `distributed`, or when no scheduler answers.
     """
 
     def __init__(self, address: str) -> None:
@@ -56,14 +58,6 @@ class Cluster:
         self.client.close()
 
     def crew(self) -> InExecutor:
-        """The cluster's workers.
-
-        Raises
-        ------
-        BatchError
-            When there are none.
-        """
+        """The cluster's workers, as many as it has now; some more may be on their way."""
         threads = sum(self.client.nthreads().values())
-        if not threads:
-            raise BatchError("the cluster has no workers")
-        return InExecutor(self.client.get_executor(), threads)
+        return InExecutor(self.client.get_executor(), max(threads, LEAST))

@@ -97,15 +97,18 @@ class Journal:
     def __contains__(self, name: str) -> bool:
         return name in self._places
 
+    def get(self, name: str) -> BatchRecord | None:
+        """Read the record of an instance, if there is one."""
+        return self._at(self._places[name]) if name in self._places else None
+
     def records(self, names: Container[str] | None = None) -> Iterator[BatchRecord]:
         """Read all records anew, or those of some instances, one at a time, as written."""
-        for name in list(self._places):
+        for name, place in list(self._places.items()):
             if names is None or name in names:
-                yield self[name]
+                yield self._at(place)
 
-    def __getitem__(self, name: str) -> BatchRecord:
-        """Read the record of an instance; KeyError where there is none."""
-        self._reader.seek(self._places[name])
+    def _at(self, place: int) -> BatchRecord:
+        self._reader.seek(place)
         return BatchRecord.from_json(self._reader.readline())
 
     def append(self, records: Sequence[BatchRecord]) -> None:

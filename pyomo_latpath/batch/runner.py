@@ -227,8 +227,8 @@ def run(
     deadline = deadline or Deadline(None)
     try:
         for task in tasks:
-            record = _kept(task, journal)
-            if record is not None:
+            record = journal.get(task.name) if journal is not None else None
+            if record is not None and task.finished_by(record):
                 yield Done(record, kept=True)
                 continue
             crew.submit(task)
@@ -241,33 +241,23 @@ def run(
         crew.close()
 
 
-def _kept(task: Task, journal: Journal | None) -> BatchRecord | None:
-    """The record that an earlier run left, unless the instance's source has changed."""
-    if journal is None or task.name not in journal:
-        return None
-    record = journal[task.name]
-    try:
-        same = record.fingerprint == task.instance.fingerprint()
-    except (OSError, ValueError):
-        same = record.fingerprint == ""
-    return record if same else None
-
-
 def _finished(
     crew: Crew, journal: Journal | None, deadline: Deadline, wait: bool = True
 ) -> Iterator[Done]:
     """Take what is finished, safe in the journal, and have what was lost tried once more."""
     left = deadline.left if wait else 0.0
-    records = []
+    records, again = [], []
     for answer in crew.collect(None if left == math.inf else left):
         if isinstance(answer, BatchRecord):
             records.append(answer)
         elif answer.task.attempt == 1:
-            crew.submit(answer.task.again())
+            again.append(answer.task.again())
         else:
             records.append(answer.task.failed(f"{answer.reason}, and so it was a second time"))
     if journal is not None and records:
         journal.append(records)
+    for task in again:
+        crew.submit(task)
     for record in records:
         yield Done(record, kept=False)
     if deadline.passed:

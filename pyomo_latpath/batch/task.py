@@ -87,11 +87,24 @@ class Task:
 
     def failed(self, error: str, status: str = "error") -> BatchRecord:
         """The record of an instance that gave no solution."""
+        mark = self.fingerprint()
+        return BatchRecord(self.name, mark, status, error=error, attempts=self.attempt)
+
+    def fingerprint(self) -> str:
+        """That of the instance; empty where there is none, which its `load` will explain."""
         try:
-            fingerprint = self.instance.fingerprint()
-        except (OSError, ValueError):
-            fingerprint = ""
-        return BatchRecord(self.name, fingerprint, status, error=error, attempts=self.attempt)
+            return self.instance.fingerprint()
+        except Exception:
+            return ""
+
+    def finished_by(self, record: BatchRecord) -> bool:
+        """Whether a record, left by an earlier run, is of the same source, and its plan there."""
+        plans = self.settings.plans
+        if plans is None or record.objective is None:
+            there = True
+        else:
+            there = record.plan is not None and Path(plans, record.plan).exists()
+        return there and record.fingerprint == self.fingerprint()
 
 
 @dataclass(frozen=True, eq=False)

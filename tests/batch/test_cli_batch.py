@@ -265,8 +265,8 @@ def test_a_mended_file_is_solved_again_and_a_removed_one_left_out(folder, in_a_t
     (folder / "days" / "broken.min").write_text(odd.FLOW)
     (folder / "days" / "crowded.min").unlink()
     result = run("days", "--out", "out")
-    assert "1 instances have changed, and were solved again" in result.output
-    assert "1 records in out/journal.jsonl are of instances that are not given now" in result.output
+    assert "1 solved again: their source has changed or" in result.output
+    assert "left out of the results: 1 in out/journal.jsonl that are not among" in result.output
     statuses = {name: row["status"] for name, row in table(folder / "out").items()}
     assert statuses == {
         "days/broken.min": "optimal",
@@ -316,6 +316,11 @@ def test_a_plan_that_cannot_be_written_is_told_beside_its_solution(
     (row,) = table(folder / "out").values()
     assert (row["status"], row["objective"], row["plan"]) == ("optimal", "14.0", "")
     assert row["error"] == "its plan is not written: plan.csv: no space left on device"
+    monkeypatch.undo()
+    monkeypatch.chdir(folder)
+    assert run("good", "--out", "out", "--plans", "--workers", "1").exit_code == 0
+    (row,) = table(folder / "out").values()
+    assert (row["error"], os.listdir(folder / "out" / "plans")) == ("", [row["plan"]])
 
 
 def grown(journal: Path, lines: int, job: subprocess.Popen[str]) -> None:

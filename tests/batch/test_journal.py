@@ -40,8 +40,9 @@ def test_records_come_back_in_the_order_in_which_they_were_written(path):
     with Journal(path, OPTIONS) as journal:
         assert list(journal.records()) == RECORDS
         assert list(journal.records({"day 3"})) == [RECORDS[3]]
-        assert journal["day 4"] == RECORDS[4]
-        assert "day 6" not in journal
+        assert journal.get("day 4") == RECORDS[4]
+        assert journal.get("day 6") is None
+        assert ("day 5" in journal, "day 6" in journal) == (True, False)
         assert (len(journal), journal.notes, journal.replaced) == (6, [], 0)
 
 
@@ -50,7 +51,7 @@ def test_a_later_record_of_an_instance_replaces_the_earlier_one(path):
     written(path)
     with Journal(path, OPTIONS) as journal:
         journal.append([again])
-        assert (len(journal), journal.replaced, journal["day 1"]) == (6, 1, again)
+        assert (len(journal), journal.replaced, journal.get("day 1")) == (6, 1, again)
     with Journal(path, OPTIONS) as journal:
         assert list(journal.records()) == [*RECORDS[:1], *RECORDS[2:], again]
 
