@@ -6,6 +6,7 @@ import math
 
 import numpy as np
 import pytest
+from mixed_models import FAMILIES
 
 from pyomo_latpath import branching, routing
 from pyomo_latpath.deadline import Deadline
@@ -14,7 +15,6 @@ from pyomo_latpath.forms.normalise import normalise
 from pyomo_latpath.highs_mip import MipSettings, branch_and_bound
 from pyomo_latpath.integrality.implied import mostly_implied
 from pyomo_latpath.routing import solve
-from tests.mixed_models import FAMILIES
 
 INF = math.inf
 

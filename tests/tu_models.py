@@ -6,28 +6,17 @@ import itertools
 
 import numpy as np
 from brute_force import network_matrix
+from known_matrices import R10
 
 from pyomo_latpath.forms.linear_form import LinearForm
 
 KINDS = ("incidence", "intervals", "network", "transposed", "R10")
 
-#: Totally unimodular, neither network nor transposed network (Seymour 1980; Schrijver 1986,
-#: section 19.4, matrix (52) as remembered; `test_moves` checks all its minors).
-R10 = np.array(
-    [
-        [1, -1, 0, 0, -1],
-        [-1, 1, -1, 0, 0],
-        [0, -1, 1, -1, 0],
-        [0, 0, -1, 1, -1],
-        [-1, 0, 0, -1, 1],
-    ]
-)
-
 
 def tu_matrix(rng: np.random.Generator, kind: str, m: int, n: int) -> np.ndarray:
     """A random matrix of the kind; R10 has its own size."""
     if kind == "R10":
-        return R10
+        return R10[0]
     if kind == "transposed":
         return tu_matrix(rng, "network", n, m).T
     if kind == "incidence":

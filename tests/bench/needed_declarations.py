@@ -16,14 +16,15 @@ from pathlib import Path
 
 import numpy as np
 
-sys.path.insert(0, str(Path(__file__).parents[2]))
+sys.path.insert(0, str(Path(__file__).parents[1]))
+
+from mixed_models import FAMILIES
+from timing import medians, print_row
 
 from pyomo_latpath import LinearForm, read
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.highs_mip import MipSettings, branch_and_bound
 from pyomo_latpath.routing import solve
-from tests.bench.timing import medians, print_row
-from tests.mixed_models import FAMILIES
 
 SETTINGS = MipSettings(rel_gap=0.0, threads=1)
 #: Seconds for one solve.

@@ -7,16 +7,16 @@ import math
 
 import numpy as np
 import pytest
+from brute_force import vertices
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from mixed_models import FAMILIES
+from random_models import random_form
 
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
 from pyomo_latpath.integrality.implied import implied_columns, mostly_implied
-from tests.brute_force import vertices
-from tests.mixed_models import FAMILIES
-from tests.random_models import random_form
 
 
 def fibers_are_whole(normal, implied) -> bool:
