@@ -171,7 +171,7 @@ class _Draft:
             self._without_optimum()
         elif optimum.status == "optimal":
             self._measure(relaxation, optimum)
-            if self.finding.verdict is Verdict.PROVEN:
+            if all(block.certificate is not None for block in self.finding.blocks):
                 self._tell_whole()
             else:
                 self._tell_fractional(relaxation, places or self._places())
@@ -238,10 +238,9 @@ class _Draft:
     def _tell_whole(self) -> None:
         with self._question("plan", "solving it along whole vertices") as deadline:
             self.solution = gap.best_plan(self.normal, deadline.left, self.seed)
-        told = [block.reason for block in self.finding.blocks if block.structure != "trivial"]
         certified = self._certified()
         self.whole = Whole(
-            sentences=whole.sentences(told or [block.reason for block in self.finding.blocks]),
+            sentences=whole.sentences(certified),
             breakers=whole.breakers(certified),
             path_seconds=self.solution[1],
             highs_seconds=math.nan,
@@ -321,7 +320,7 @@ class _Draft:
             row_indices=rows,
             rows_minimal=rows.size == 1,
             structures=found.certified.structures,
-            remains=whole.remains(found.certified),
+            remains="; ".join(whole.sentences(found.certified, most=2)),
             objective_without=objective,
             price=math.nan,
         )

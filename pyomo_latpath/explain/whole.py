@@ -4,19 +4,22 @@ from __future__ import annotations
 
 import time
 from collections import Counter
-from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+import scipy.sparse as sp
 
 from ..certificates import Unimodular
 from ..deadline import Deadline
 from ..forms.linear_form import LinearForm
 from ..highs_mip import MipSettings, branch_and_bound
+from ..integrality.sentences import describe
 from ..integrality.verdicts import BECAUSE
 from .groups import oddities_of
 from .remains import Certified
 
+#: So many blocks are told of, at most.
+MOST_TOLD = 5
 #: What could break a structure, beside what could break any.
 BREAKS = {
     "incidence": "a further row over columns that stand in two rows already, unless the structure "
@@ -58,25 +61,30 @@ class Whole:
     keepers: tuple[str, ...] = ()
 
 
-def sentences(told: Sequence[str]) -> tuple[str, ...]:
-    """Say what is said of several blocks once, with their number.
+def sentences(certified: Certified, most: int = MOST_TOLD) -> tuple[str, ...]:
+    """Say what the blocks are, largest first; equal ones once, and not more than a few.
 
-    Examples
-    --------
-    >>> sentences(["a network", "an interval matrix", "a network"])
-    ('a network (2 blocks)', 'an interval matrix')
+    Parameters
+    ----------
+    certified : Certified
+    most : int
+
+    Returns
+    -------
+    tuple of str
     """
-    counted = Counter(told)
-    return tuple(text if k == 1 else f"{text} ({k:,} blocks)" for text, k in counted.items())
-
-
-def remains(certified: Certified) -> str:
-    """Say in one sentence what is left of a model, and why it is whole."""
-    by_size = sorted(
+    pairs = sorted(
         zip(certified.proofs, certified.blocks, strict=True), key=lambda pair: -pair[1].columns.size
     )
-    told = [BECAUSE[name] for (name, _), _ in by_size if name != "trivial"]
-    return "; ".join(sentences(told or [BECAUSE["trivial"]]))
+    told = [
+        describe(name, proof.part, sp.csc_array((block.rows.size, block.columns.size)))
+        for (name, proof), block in pairs
+        if name != "trivial"
+    ]
+    counted = Counter(told or [BECAUSE["trivial"]])
+    lines = [text if k == 1 else f"{text} ({k:,} blocks)" for text, k in counted.items()]
+    rest = sum(list(counted.values())[most:])
+    return (*lines[:most], f"{rest:,} smaller blocks") if rest > 1 else tuple(lines)
 
 
 def breakers(certified: Certified) -> tuple[str, ...]:

@@ -4,6 +4,7 @@ import math
 
 import numpy as np
 import pytest
+import scipy.sparse as sp
 
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.explain import explain
@@ -42,13 +43,21 @@ def test_a_whole_model_is_told_as_such_with_both_times():
     assert told.gap.absolute == 0 and told.gap.exact and told.fractional.count == 0
 
 
-def test_equal_blocks_are_said_once():
-    two = LinearForm.from_arrays(
-        np.kron(np.eye(3), [[1, 1]]), row_lower=0, row_upper=1, col_lower=0, col_upper=1, cost=-1
+def test_equal_blocks_are_said_once_and_not_too_many():
+    sizes = [2, 3, 3, 4, 5, 6, 7, 8]
+    matrix = sp.block_diag([np.ones((1, size)) for size in sizes])
+    form = LinearForm.from_arrays(
+        matrix, row_lower=0, row_upper=1, col_lower=0, col_upper=1, cost=-1
     )
-    (sentence,) = explain(two).whole.sentences
-    assert sentence.endswith("(3 blocks)")
-    assert sentences(["b", "a", "b"]) == ("b (2 blocks)", "a")
+    told = explain(form).whole.sentences
+    assert len(told) == 6 and "8 columns" in told[0] and told[-1] == "3 smaller blocks"
+    twice = sentences(certified(form), most=7)
+    assert len(twice) == 7 and sum(text.endswith("(2 blocks)") for text in twice) == 1
+
+
+def test_the_structure_is_told_in_a_sentence():
+    (sentence,) = explain(transport()).whole.sentences
+    assert sentence.startswith("a transport network: 2 rows on one side, 3 on the other")
 
 
 def test_sides_that_are_not_whole_are_rounded_and_do_not_break_it():
