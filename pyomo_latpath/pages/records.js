@@ -24,6 +24,10 @@
     return column.number ? digits.format(value) : value;
   };
 
+  // Long names differ at their ends: the middle is left out.
+  const shortened = (name) =>
+    (name.length <= 40 ? name : `${name.slice(0, 14)}…${name.slice(-25)}`);
+
   // A column as numbers to sort by: a number itself, a text's place among all texts of the column.
   const keysOf = (column) => {
     if (!column.keys) {
@@ -89,7 +93,8 @@
         button.type = "button";
         button.className = "open name";
         button.dataset.place = place;
-        button.textContent = words(column, i);
+        button.textContent = shortened(words(column, i));
+        button.ariaLabel = button.title = words(column, i);
         cell.append(button);
       }
       tr.append(cell);
