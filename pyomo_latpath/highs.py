@@ -175,6 +175,14 @@ class LinearProgram:
         held.valid = True
         ok(self._highs.setBasis(held), "set a basis")
 
+    def standing(self) -> Any:
+        """Return the current basis as HiGHS holds it, for `stand_at`."""
+        return self._highs.getBasis()
+
+    def stand_at(self, basis: Any) -> None:
+        """Start the next solve from what `standing` returned."""
+        ok(self._highs.setBasis(basis), "set a basis")
+
     def forget_basis(self) -> None:
         """Start the next solve from nothing."""
         ok(self._highs.clearSolver(), "start afresh")

@@ -27,10 +27,10 @@ from .forms.linear_form import LinearForm, Memory
 from .forms.normalise import NormalForm, normalise
 from .forms.numbers import Integers
 from .grouping import Group, groups_of
-from .highs import LinearProgram
 from .integrality.assess import KnownProofs, certifiable, certify
 from .integrality.finding import BlockFinding
 from .integrality.verdicts import proven_finding
+from .relaxation import Relaxation
 
 #: A structure's name and its proof.
 Found = tuple[str, BlockCertificate]
@@ -44,21 +44,21 @@ class Rest:
     ----------
     block : Block
     piece : NormalForm
-    programs : deque, at most one LinearProgram
-        Its relaxation, standing at the last optimum; taken out while it is in use.
+    last : deque, at most one Relaxation
+        The last one solved; taken out while it is in use.
     searched : list, at most one (str, BlockCertificate) or None
         What a longer search for a certificate came to.
     """
 
     block: Block
     piece: NormalForm
-    programs: deque[LinearProgram] = field(default_factory=lambda: deque(maxlen=1))
+    last: deque[Relaxation] = field(default_factory=lambda: deque(maxlen=1))
     searched: list[Found | None] = field(default_factory=list)
 
     def within(self, normal: NormalForm) -> Rest:
         """Return the same block of another normal form with the same scaled matrix."""
         piece = normal.restrict(self.block.rows, self.block.columns, self.piece.matrix)
-        return Rest(self.block, piece, self.programs)
+        return Rest(self.block, piece, self.last)
 
 
 @dataclass(frozen=True, eq=False)

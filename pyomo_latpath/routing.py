@@ -42,6 +42,7 @@ from .paths.optimal_face import attainable, is_whole, whole_optimum
 from .paths.path_solver import PathResult, walk_to_optimum
 from .prepared import Prepared, Rest, prepare
 from .proof import Proof, prove_optimal, prove_unbounded, shortfall, whole_costs
+from .relaxation import Relaxation, relax
 from .solution import RouteReport, Solution
 from .why import telling, why
 
@@ -253,12 +254,16 @@ def _planned(
 def _by_relaxation(request: _Request, rest: Rest) -> PartAnswer:
     """Solve what is not certified: by its relaxation's optimum where that is whole."""
     since = time.perf_counter()
-    part = rest.piece
-    lp = LinearProgram(
-        part.matrix, part.row_lower, part.row_upper, part.col_lower, part.col_upper, part.cost
-    )
-    optimum = lp.solve(deadline=request.deadline)
+    relaxation = relax(rest.piece, rest.last, request.deadline)
     request.clock.spend("solve", since)
+    try:
+        return _by_optimum(request, rest, relaxation)
+    finally:
+        rest.last.append(relaxation)
+
+
+def _by_optimum(request: _Request, rest: Rest, relaxation: Relaxation) -> PartAnswer:
+    part, lp, optimum = rest.piece, relaxation.program, relaxation.optimum
     if optimum.status == "infeasible":
         finding = sampled_finding(part, 0, (lp, optimum), request.seed, Deadline(0))
         exact = finding.verdict is Verdict.PROVEN
@@ -274,7 +279,7 @@ def _by_relaxation(request: _Request, rest: Rest) -> PartAnswer:
         since = time.perf_counter()
         reach = attainable(part, optimum.objective)
         if reach is not False:
-            most = (FACE_SHARE if reach else 1) * (optimum.pivots + FACE_PIVOTS)
+            most = (FACE_SHARE if reach else 1) * (relaxation.pivots + FACE_PIVOTS)
             x = whole_optimum(part, lp, optimum, request.seed, most, request.deadline)
         request.clock.spend("solve", since)
     if x is not None:
