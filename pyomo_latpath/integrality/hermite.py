@@ -11,6 +11,7 @@ zero on the way. Then, last pivot first, each row loses the pivots of the later 
 from __future__ import annotations
 
 from collections import deque
+from collections.abc import Iterable
 
 from .sparse_system import SparseSystem
 
@@ -58,7 +59,11 @@ def triangulate(system: SparseSystem) -> list[tuple[int, int]]:
 
 
 class _Queue:
-    """Items in the order of small whole numbers; of equal ones, the first comes first."""
+    """Items in the order of small whole numbers; of equal ones, the first comes first.
+
+    So the leaves of a tree go before those that they leave behind: the trees found are shallow,
+    and what comes out has few entries.
+    """
 
     def __init__(self) -> None:
         self.least = 0
@@ -83,8 +88,9 @@ class _Queue:
 class _Lines:
     """Open rows (0 to m - 1) and columns (m to m + n - 1), those with the fewest entries first.
 
-    A line waits under each count that it has had since it was last looked at. Rows without an
-    entry +-1 are set aside; as each comes back when it changes, none is missed.
+    A line waits under each count that it has come to since it was last looked at, and is passed
+    over where it has another by then. Rows without an entry +-1 are set aside; as each comes back
+    when it changes, none is missed. Columns come back when they become shorter.
     """
 
     def __init__(self, system: SparseSystem) -> None:
@@ -94,9 +100,10 @@ class _Lines:
         for row in system.rows:
             for column in row:
                 self.beyond[column] += 1
-        lines = [*system.open, *range(self.m, self.m + len(self.beyond))]
         self.waiting, self.aside = _Queue(), _Queue()
-        self._push(lines)
+        for row in system.open:
+            self.waiting.push(self.count(row), row)
+        self._look_at(range(len(self.beyond)))
 
     def count(self, line: int) -> int:
         """Entries of a line; 0 for rows that are closed and columns without an open row."""
@@ -135,19 +142,20 @@ class _Lines:
 
     def add(self, row: int, source: int, factor: int) -> None:
         """Add a multiple of a row to an open one."""
-        columns = self.system.add(row, source, factor)
-        self._push([row, *(self.m + column for column in columns)])
+        self._look_at(self.system.add(row, source, factor))
+        self.waiting.push(self.count(row), row)
 
     def close(self, row: int) -> None:
         """Search a row for pivots no longer."""
         self.system.close(row)
-        self._push([self.m + column for column in self.system.rows[row]])
+        self._look_at(self.system.rows[row])
 
-    def _push(self, lines: list[int]) -> None:
-        for line in lines:
-            count = self.count(line)
-            if line < self.m or 0 < count <= SHORT:
-                self.waiting.push(count, line)
+    def _look_at(self, columns: Iterable[int]) -> None:
+        """Have columns that became shorter looked at again."""
+        for column in columns:
+            count = self.count(self.m + column)
+            if 0 < count <= SHORT:
+                self.waiting.push(count, self.m + column)
 
 
 def _euclid(system: SparseSystem, lines: _Lines) -> tuple[int, int] | None:

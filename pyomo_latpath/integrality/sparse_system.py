@@ -66,28 +66,29 @@ class SparseSystem:
                 self.holders[j].add(i)
 
     def add(self, row: int, source: int, factor: int) -> list[int]:
-        """Add a multiple of a row to another; return the columns that it gained or lost."""
+        """Add a multiple of a row to another; return the columns in which it lost its entry."""
         self.work -= len(self.rows[source])
         if self.work < 0 or abs(factor) >= LARGEST or self.deadline.passed:
             raise GivenUp
         self.operations.append((row, source, factor))
         self.sides[row] += factor * self.sides[source]
-        entries, moved = self.rows[row], []
+        entries, is_open, lost = self.rows[row], row in self.open, []
         for column, value in self.rows[source].items():
-            old = entries.get(column, 0)
+            old = entries.get(column)
+            if old is None:
+                entries[column] = factor * value
+                if is_open:
+                    self.holders[column].add(row)
+                continue
             new = old + factor * value
             if new:
                 entries[column] = new
-            else:
-                del entries[column]
-            if not (old and new):
-                moved.append(column)
-        for column in moved if row in self.open else ():
-            if column in entries:
-                self.holders[column].add(row)
-            else:
+                continue
+            del entries[column]
+            lost.append(column)
+            if is_open:
                 self.holders[column].remove(row)
-        return moved
+        return lost
 
     def divide(self, row: int, divisor: int) -> bool:
         """Divide a row and its side, if all of that is whole."""
