@@ -242,3 +242,43 @@ def _findings(
         for block, proof in zip(blocks, found, strict=True)
         if proof is not None
     )
+
+
+class RecentMatrices:
+    """Memories of matrices met lately, for forms that come one by one and share no `replace`.
+
+    Parameters
+    ----------
+    most : int
+        Entries of all matrices together, those not met for longest being given up.
+
+    Examples
+    --------
+    >>> def read():
+    ...     return LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
+    ...                                   col_upper=1, cost=[2, 3])
+    >>> recent = RecentMatrices()
+    >>> first = prepare(recent.lend(read()), Deadline(None))
+    >>> first.recognition, prepare(recent.lend(read()), Deadline(None)).recognition
+    ('found', 'remembered')
+    """
+
+    def __init__(self, most: int = 5_000_000) -> None:
+        self.most = most
+        self._memories: list[Memory] = []
+
+    def lend(self, form: LinearForm) -> LinearForm:
+        """Return the form with the memory of its matrix, if that was met before."""
+        for memory in self._memories:
+            known = memory.content
+            if known is not None and _same_matrix(known.normal.form, form):
+                self._memories.remove(memory)
+                self._memories.append(memory)
+                return replace(form, memory=memory)
+        self._memories = [kept for kept in self._memories if kept.content is not None]
+        entries = [kept.content.normal.form.matrix.nnz for kept in self._memories]
+        while entries and sum(entries) + form.matrix.nnz > self.most:
+            entries.pop(0)
+            self._memories.pop(0)
+        self._memories.append(form.memory)
+        return form

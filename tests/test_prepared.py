@@ -238,3 +238,17 @@ def test_a_time_limit_that_cuts_recognition_short_leaves_nothing_behind():
     prepared.prepare(form, Deadline(0))
     assert form.memory.content is None
     assert solve(form).report.finding.verdict == "proven"
+
+
+def test_equal_matrices_share_a_memory_as_long_as_there_is_room():
+    def drawn(seed: int) -> LinearForm:
+        return tu_form(np.random.default_rng(seed), "network")[0]
+
+    def met(seed: int) -> str:
+        return solve(recent.lend(drawn(seed))).report.recognition
+
+    forms = [drawn(seed) for seed in range(3)]
+    recent = prepared.RecentMatrices(most=sum(form.matrix.nnz for form in forms) - 1)
+    assert [met(0), met(1), met(0), met(1)] == ["found"] * 2 + ["remembered"] * 2
+    # The third takes the place of the first, which was not met for longest.
+    assert [met(2), met(1), met(0)] == ["found", "remembered", "found"]
