@@ -21,7 +21,7 @@ from ..deadline import Deadline
 from ..forms.linear_form import Floats
 from ..forms.normalise import NormalForm
 from ..forms.numbers import nearby_fraction, simplest_fraction
-from ..highs import LinearProgram
+from ..highs import Basis, LinearProgram
 from .lines import Columns, Exact, Line, size
 
 #: Relative size of what is no change but noise.
@@ -105,9 +105,11 @@ class Prober:
     ----------
     normal : NormalForm
     deadline : Deadline
+    near : Basis, optional
+        Of the relaxation, to start from.
     """
 
-    def __init__(self, normal: NormalForm, deadline: Deadline) -> None:
+    def __init__(self, normal: NormalForm, deadline: Deadline, near: Basis | None = None) -> None:
         self.normal, self.deadline = normal, deadline
         self._by_row = sp.csr_array(normal.matrix)
         self._place = {j: k for k, j in enumerate(normal.columns.tolist())}
@@ -119,6 +121,8 @@ class Prober:
             normal.col_upper,
             np.zeros(normal.columns.size),
         )
+        if near is not None:
+            self._program.set_basis(near)
 
     def most(self, line: Line, switch: int) -> Fraction | None:
         """Return a proven limit on the other terms of a line while it is switched loose.

@@ -54,9 +54,16 @@ def apply_to_form(remedy: Remedy, form: LinearForm) -> LinearForm:
 
     Raises
     ------
+    TypeError
+        For anything but a form.
     ValueError
         If a row or column of the remedy is not at its place in the form.
     """
+    if not isinstance(form, LinearForm):
+        raise TypeError(
+            f"apply_to() takes a LinearForm, not {type(form).__name__}; a Pyomo model is changed "
+            "by apply()"
+        )
     _refuse_another_form(remedy, form)
     row_lower, row_upper = form.row_lower.copy(), form.row_upper.copy()
     for change in remedy.row_changes:

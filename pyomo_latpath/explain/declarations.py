@@ -6,8 +6,8 @@ from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from ..integrality.implied import implied_columns
 from ..pages.markup import counted
-from .drafts import Namer
-from .remedy import BoundChange, Remedy, RowChange
+from .drafts import Namer, numbered
+from .remedy import BoundChange, Inequality, Remedy, RowChange
 from .row_drafts import rounding_drafts
 from .words import listed
 
@@ -36,11 +36,19 @@ def declaration_remedy(normal: NormalForm, namer: Namer, deadline: Deadline) -> 
     touched = set(form.matrix[:, columns].indices.tolist())
     dropped = set(columns.tolist())
     changes = [draft.change for draft in rounding_drafts(normal)]
+    # Further rows, not changed ones: other remedies may have put better rows in their places.
+    rows = [
+        Inequality("", c.columns, c.column_names, c.coefficients, c.lower, c.upper)
+        for c in changes
+        if isinstance(c, RowChange) and c.row in touched
+    ]
+    bounds = [c for c in changes if isinstance(c, BoundChange) and c.column in dropped]
     names = tuple(form.col_names[j] for j in columns.tolist())
     left = int(form.integer.sum()) - columns.size
+    name = namer.free("", "rounded")
     return Remedy(
         kind="drop",
-        name=namer.free("", "rounded"),
+        name=name,
         title=f"Drop {counted(columns.size, 'integer declaration')}: {left:,} are enough",
         sentence=(
             f"Whatever whole numbers the other integer columns are, what is left has whole "
@@ -52,10 +60,8 @@ def declaration_remedy(normal: NormalForm, namer: Namer, deadline: Deadline) -> 
             "What is left when the other integer columns are fixed has a certificate of total "
             "unimodularity, and whole sides and bounds."
         ),
-        row_changes=tuple(c for c in changes if isinstance(c, RowChange) and c.row in touched),
-        bound_changes=tuple(
-            c for c in changes if isinstance(c, BoundChange) and c.column in dropped
-        ),
+        inequalities=numbered(name, rows),
+        bound_changes=tuple(bounds),
         dropped_declarations=columns,
         dropped_declaration_names=names,
     )

@@ -34,6 +34,8 @@ def apply_to_model(remedy: Remedy, model: Any) -> Any:
 
     Raises
     ------
+    TypeError
+        For anything but a Pyomo model or block.
     ValueError
         If the model lacks a row or a variable of the remedy; it is not changed then.
 
@@ -47,6 +49,11 @@ def apply_to_model(remedy: Remedy, model: Any) -> Any:
     >>> print(remedy.apply(model)[1].expr)
     x[1] + x[2]  <=  1.0
     """
+    if not hasattr(model, "component_data_objects"):
+        raise TypeError(
+            f"apply() takes a Pyomo model, not {type(model).__name__}; a LinearForm is changed by "
+            "apply_to()"
+        )
     lines: list[RowChange | Inequality] = [*remedy.row_changes, *remedy.inequalities]
     replaced = [change.name for change in remedy.row_changes] + [*remedy.dropped_row_names]
     bounded = [change.name for change in remedy.bound_changes]

@@ -8,7 +8,7 @@ from ..deadline import Deadline
 from ..forms.linear_form import Floats, LinearForm
 from ..forms.numbers import Integers
 from ..integrality.sampling import FRACTIONAL
-from .bases import declared_basis, normalised_basis
+from .bases import declared_basis
 from .context import Context
 from .cut_rounds import cut_remedy, cut_rounds
 from .declarations import declaration_remedy
@@ -26,8 +26,8 @@ def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:
     """Find out what can be done about a fractional relaxation.
 
     Each remedy is proven to lose no whole plan when it is found, then tried on the model. One
-    that alone makes neither the bound better nor fewer columns fractional is not told; only
-    dropping declarations needs no such effect.
+    that makes neither the bound better nor fewer columns fractional, alone or after those before
+    it, is not told; only dropping declarations needs no such effect.
 
     Parameters
     ----------
@@ -54,11 +54,11 @@ def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:
     trial.keep_useful(list(rounding_drafts(normal)))
     rows = _rows_to_probe(form, first.x)
     early = deadline.within(PROBING_SHARE * deadline.left)
-    trial.keep_useful(list(tightening_drafts(trial.normal, rows, early)))
+    trial.keep_useful(list(tightening_drafts(trial.normal, rows, trial.near, early)))
     trial.keep_useful(list(splitting_drafts(trial.form, deadline)))
     if trial.now.fractional:
         early = deadline.within(CUTTING_SHARE * deadline.left)
-        cuts = cut_rounds(trial.normal, early, normalised_basis(trial.normal, trial.now.basis))
+        cuts = cut_rounds(trial.normal, early, trial.near)
         tried = trial.tried(cut_remedy(trial.normal, cuts, trial.namer)) if cuts else None
         if tried is not None and trial.helps(tried):
             trial.keep(tried)

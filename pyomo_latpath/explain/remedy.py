@@ -31,7 +31,8 @@ class Derivation:
     Attributes
     ----------
     rows : ndarray, shape (p,), int64
-        Indices into the form; m + i stands for the remedy's inequality i, one before this.
+        Indices into the form that the remedies before this one make of the model; those after
+        its last row are this remedy's own inequalities, in their order.
     row_names : tuple of str, length p
     row_multipliers : tuple of Fraction, length p
     columns : ndarray, shape (q,), int64
@@ -180,11 +181,6 @@ class Remedy:
     dropped_declarations: Indices = field(default_factory=lambda: np.empty(0, np.int64), repr=False)
     dropped_declaration_names: tuple[str, ...] = ()
 
-    @property
-    def gain(self) -> float:
-        """By how much it alone makes the bound better; NaN where not computed."""
-        return abs(self.bound_after - self.bound_before)
-
     def apply_to(self, form: LinearForm) -> LinearForm:
         """Return the form with the change made.
 
@@ -195,6 +191,8 @@ class Remedy:
 
         Raises
         ------
+        TypeError
+            For anything but a form.
         ValueError
             If a row or column of the remedy is not at its place in the form.
         """
@@ -217,6 +215,8 @@ class Remedy:
 
         Raises
         ------
+        TypeError
+            For anything but a Pyomo model or block.
         ValueError
             If the model has no row or variable of a name; nothing is changed then.
         """

@@ -63,9 +63,12 @@ def rounded_inwards(normal: NormalForm) -> Rounded:
     ([0.5], [1], [2.0])
     """
     form = normal.form
-    unit = normal.row_den / normal.row_num
     shift = (form.matrix @ normal.fixed_value)[normal.rows]
-    low, high = normal.row_lower * unit + shift, normal.row_upper * unit + shift
+    low, high = (
+        side * normal.row_den / normal.row_num + shift
+        for side in (normal.row_lower, normal.row_upper)
+    )
+    low = np.where(_inside(low, high), low, np.minimum(low, high))  # noise does not cross them
     declared = form.row_lower[normal.rows], form.row_upper[normal.rows]
     moved = _inside(declared[0], low) | _inside(high, declared[1])
     rows = normal.rows[moved]
@@ -81,7 +84,7 @@ def rounded_inwards(normal: NormalForm) -> Rounded:
         rows=rows,
         row_lower=np.where(_inside(declared[0], low), low, declared[0])[moved],
         row_upper=np.where(_inside(high, declared[1]), high, declared[1])[moved],
-        units=unit[moved],
+        units=(normal.row_den / normal.row_num)[moved],
         columns=columns,
         col_lower=col_lower[columns],
         col_upper=col_upper[columns],

@@ -10,12 +10,13 @@ from ..deadline import Deadline
 from ..forms.linear_form import LinearForm
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
+from ..highs import Basis
 from ..pages.markup import number
 from .big_m import Prober, loose_state, shrunk, tightened
 from .drafts import Draft
 from .lines import Line, columns_of, float_above, float_below, lines_of, outlook_of, size
 from .remedy import BoundChange, Inequality, RowChange
-from .rounding import rounded_inwards
+from .rounding import Rounded, rounded_inwards
 from .splitting import Split, split
 from .stems import column_stems, row_stems
 from .words import inequality, short
@@ -26,56 +27,16 @@ MOST_ROWS = 20_000
 
 def rounding_drafts(normal: NormalForm) -> Iterator[Draft]:
     """Round sides and bounds inwards."""
-    form, found = normal.form, rounded_inwards(normal)
-    stems = row_stems(form) if found.rows.size else None
-    for k, i in enumerate(found.rows.tolist()):
-        assert stems is not None
-        row = form.matrix[[i], :].tocoo()
-        limits = float(found.row_lower[k]), float(found.row_upper[k])
-        change = _row_change(form, i, np.asarray(row.coords[1], np.int64), row.data, limits)
-        before = _between(float(form.row_lower[i]), float(form.row_upper[i]))
-        yield Draft(
-            kind="round",
-            action="Round the sides of {} inwards",
-            suffix="rounded",
-            noun="row",
-            name=change.name,
-            group=stems.names[stems.label[i]],
-            sentence=(
-                f"At whole plans the left side of row {short(change.name)} moves in steps of "
-                f"{number(found.units[k])}: its sides {before} say no more than "
-                f"{_between(*limits)}"
-            ),
-            verified=(
-                "All columns of the row are whole, and so is every value that it can have after "
-                "scaling to coprime whole coefficients"
-            ),
-            change=change,
-        )
-    stems = column_stems(form) if found.columns.size else None
-    for k, j in enumerate(found.columns.tolist()):
-        assert stems is not None
-        bound = BoundChange(
-            j, form.col_names[j], float(found.col_lower[k]), float(found.col_upper[k])
-        )
-        before = _between(float(form.col_lower[j]), float(form.col_upper[j]))
-        yield Draft(
-            kind="round",
-            action="Round the bounds of {} inwards",
-            suffix="rounded",
-            noun="column",
-            name=bound.name,
-            group=stems.names[stems.label[j]],
-            sentence=(
-                f"Column {short(bound.name)} is whole: its bounds {before} say no more than "
-                f"{_between(bound.lower, bound.upper)}"
-            ),
-            verified="No whole number lies between the old and the new bounds",
-            change=bound,
-        )
+    found = rounded_inwards(normal)
+    if found.rows.size:
+        yield from _rounded_rows(normal.form, found)
+    if found.columns.size:
+        yield from _rounded_bounds(normal.form, found)
 
 
-def tightening_drafts(normal: NormalForm, first: Integers, deadline: Deadline) -> Iterator[Draft]:
+def tightening_drafts(
+    normal: NormalForm, first: Integers, near: Basis | None, deadline: Deadline
+) -> Iterator[Draft]:
     """Shrink the coefficients of binary columns as far as is proven.
 
     Parameters
@@ -83,6 +44,8 @@ def tightening_drafts(normal: NormalForm, first: Integers, deadline: Deadline) -
     normal : NormalForm
     first : ndarray, int64
         Rows (of the form) for which linear programs may be solved, in this order.
+    near : Basis or None
+        Of the normalised relaxation, for these programs to start from.
     deadline : Deadline
     """
     form = normal.form
@@ -95,7 +58,7 @@ def tightening_drafts(normal: NormalForm, first: Integers, deadline: Deadline) -
             break
         before[line.row], after[line.row] = line, tightened(line, columns)
     wanted = [row for row in first[probable[first]].tolist() if row in after]
-    prober = Prober(normal, deadline) if wanted and not deadline.passed else None
+    prober = Prober(normal, deadline, near) if wanted and not deadline.passed else None
     probed = set()
     for row in wanted:
         if prober is None or deadline.passed:
@@ -155,6 +118,52 @@ def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
             ),
             inequalities=rows,
             dropped=line.row if part.replaces else -1,
+        )
+
+
+def _rounded_rows(form: LinearForm, found: Rounded) -> Iterator[Draft]:
+    stems = row_stems(form)
+    for k, i in enumerate(found.rows.tolist()):
+        row = form.matrix[[i], :].tocoo()
+        limits = float(found.row_lower[k]), float(found.row_upper[k])
+        change = _row_change(form, i, np.asarray(row.coords[1], np.int64), row.data, limits)
+        before = _between(float(form.row_lower[i]), float(form.row_upper[i]))
+        yield Draft(
+            kind="round",
+            action="Round the sides of {} inwards",
+            suffix="rounded",
+            noun="row",
+            name=change.name,
+            group=stems.names[stems.label[i]],
+            sentence=(
+                f"At whole plans the left side of row {short(change.name)} moves in steps of "
+                f"{number(found.units[k])}: {before} says no more than {_between(*limits)}"
+            ),
+            verified=(
+                "All columns of the row are whole, and so is every value that it can have after "
+                "scaling to coprime whole coefficients"
+            ),
+            change=change,
+        )
+
+
+def _rounded_bounds(form: LinearForm, found: Rounded) -> Iterator[Draft]:
+    stems = column_stems(form)
+    for k, j in enumerate(found.columns.tolist()):
+        name, limits = form.col_names[j], (float(found.col_lower[k]), float(found.col_upper[k]))
+        before = _between(float(form.col_lower[j]), float(form.col_upper[j]))
+        yield Draft(
+            kind="round",
+            action="Round the bounds of {} inwards",
+            suffix="rounded",
+            noun="column",
+            name=name,
+            group=stems.names[stems.label[j]],
+            sentence=(
+                f"Column {short(name)} is whole: {before} says no more than {_between(*limits)}"
+            ),
+            verified="No whole number lies between the old and the new bounds",
+            change=BoundChange(j, name, *limits),
         )
 
 

@@ -13,7 +13,7 @@ from ..forms.linear_form import Floats, LinearForm
 from ..forms.normalise import NormalForm, normalise
 from ..highs import Basis, LinearProgram
 from ..integrality.sampling import FRACTIONAL
-from .bases import with_rows
+from .bases import normalised_basis, with_rows
 from .drafts import Draft, Namer, by_group, combined
 from .remedy import Remedy
 
@@ -134,6 +134,11 @@ class Trial:
         if self._normal.form is not self.form:
             self._normal = normalise(self.form)
         return self._normal
+
+    @property
+    def near(self) -> Basis | None:
+        """The optimal basis of `form`, as one of `normal` where it is one."""
+        return normalised_basis(self.normal, self.now.basis)
 
     def keep_useful(self, drafts: Sequence[Draft]) -> None:
         """Keep what helps of drafts of one kind: group by group, or else all in one."""

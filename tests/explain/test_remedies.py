@@ -179,7 +179,7 @@ def test_what_rounding_alone_made_whole_stays_whole_without_declarations():
     dropped = remedies_of(form)[-1]
     assert dropped.kind == "drop" and dropped.dropped_declarations.tolist() == [0, 1]
     changed = dropped.apply_to(form)
-    assert not changed.integer.any() and changed.row_upper.tolist() == [1.0]
+    assert not changed.integer.any() and changed.row_upper.tolist() == [1.5, 1.0]
     assert optimum_of(changed, Deadline(None)).bound == -1
 
 
