@@ -81,7 +81,7 @@ def _without(told: Explanation, group: Group) -> str:
     for culprit in told.culprits:
         if culprit.groups == (group.name,):
             optimum = number(culprit.objective_without)
-            known = not math.isnan(culprit.objective_without)
+            known = math.isfinite(culprit.objective_without)
             return "the rest is proven whole" + (f", optimum {optimum}" if known else "")
         if group.name in culprit.groups:
             others = [each for each in culprit.groups if each != group.name]
@@ -105,8 +105,10 @@ def _peculiar(group: Group) -> str:
 def conflict(told: Explanation) -> str:
     """The section on rows and columns that conflict; empty where none are known."""
     if told.no_optimum is not None and told.no_optimum.names:
-        least = "None of them" if told.no_optimum.minimal else "Perhaps some of them"
         body = paragraphs([words.conflict(told)]) + numbered(told.no_optimum.names)
+        if told.no_optimum.kind == "unbounded":
+            return section("conflict", "What grows", body)
+        least = "None of them" if told.no_optimum.minimal else "Perhaps some of them"
         body += paragraphs([f"{least} could be left out."], "note")
         return section("conflict", "The conflict", body)
     if not told.violators or told.no_optimum is not None:

@@ -51,7 +51,8 @@ def _details(told: Explanation) -> Iterator[str]:
         yield from _part("What may change", map(words.as_sentence, told.whole.keepers))
     elif told.no_optimum is not None:
         names = [words.short(name) for name in told.no_optimum.names]
-        yield from _part("What conflicts", [", ".join(names)])
+        title = "Conflicting" if told.no_optimum.kind == "infeasible" else "Growing without end"
+        yield from _part(title, [", ".join(names)])
     else:
         yield from _fractional(told)
     for k, remedy in enumerate(told.remedies, 1):

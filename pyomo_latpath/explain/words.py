@@ -25,6 +25,11 @@ def headline(told: Explanation) -> str:
     if told.no_optimum is not None:
         kind = told.no_optimum.kind
         return "No plan meets all rows" if kind == "infeasible" else "There is no best plan"
+    if told.integers == 0 and told.verdict is Verdict.PROVEN:
+        return "A linear program: no column is declared integer"
+    rounding = _rounded(told.gap) or any(remedy.kind == "round" for remedy in told.remedies)
+    if told.verdict is Verdict.PROVEN and rounding:
+        return "Every vertex is whole once sides and bounds are rounded inwards"
     if told.verdict is Verdict.PROVEN:
         return "Every vertex is whole: the integer declarations cost nothing"
     if told.fractional is None:
@@ -34,6 +39,13 @@ def headline(told: Explanation) -> str:
     if told.verdict is Verdict.REFUTED:
         return "Whole at this objective, but not at every other one"
     return "Whole at this objective; about other objectives there is no proof"
+
+
+def _rounded(gap: Gap | None) -> bool:
+    """Whether rounding sides and bounds inwards alone moves the relaxation's optimum."""
+    if gap is None or math.isnan(gap.rounded_bound):
+        return False
+    return number(gap.declared_bound) != number(gap.rounded_bound)
 
 
 def _blamed(told: Explanation) -> str:
@@ -82,7 +94,7 @@ def how_bad(told: Explanation) -> str:
     if told.no_optimum is not None:
         return as_sentence(told.no_optimum.sentence)
     parts = []
-    if told.fractional is not None:
+    if told.fractional is not None and told.fractional.integers:
         integers = counted(told.fractional.integers, "integer column")
         count = told.fractional.count
         parts.append(f"{count:,} of {integers} {'is' if count == 1 else 'are'} fractional.")
@@ -99,7 +111,7 @@ def how_bad(told: Explanation) -> str:
 def gap_words(gap: Gap) -> str:
     """What wholeness costs, and how far that is known."""
     bound = f"The relaxation's optimum is {number(gap.declared_bound)}"
-    if number(gap.rounded_bound) not in (number(gap.declared_bound), number(math.nan)):
+    if _rounded(gap):
         bound += f" ({number(gap.rounded_bound)} with sides and bounds rounded inwards)"
     if math.isnan(gap.declared_bound):
         return ""
@@ -126,8 +138,8 @@ def blame(told: Explanation) -> str:
         groups = told.no_optimum.groups
         if not groups:
             return ""
-        alone = "" if told.no_optimum.groups_minimal else " (perhaps fewer do)"
-        return f"{listed(groups, 6)} conflict by themselves{alone}."
+        fewer = "" if told.no_optimum.groups_minimal else " (perhaps fewer do)"
+        return f"{_conflicting(groups)}{fewer}."
     if told.whole is not None or not told.groups:
         return ""
     if not told.culprits:
@@ -144,10 +156,13 @@ def culprit_words(culprit: Culprit) -> str:
     sentence = f"Without {groups} what is left is proven whole"
     if culprit.structures:
         sentence += f" ({', '.join(culprit.structures)})"
+    if math.isinf(culprit.objective_without):
+        return f"{sentence}; then there is no best plan, only better ones without end."
     if not math.isnan(culprit.objective_without):
         sentence += f"; its optimum is {number(culprit.objective_without)}"
         if not math.isnan(culprit.price):
-            sentence += f", so these rows cost {number(culprit.price)}"
+            cost = number(culprit.price) if culprit.price else "nothing"
+            sentence += f", so these rows cost {cost}"
     return f"{sentence}."
 
 
@@ -177,11 +192,18 @@ def conflict(told: Explanation) -> str:
         names = told.no_optimum.names
         if not names:
             return ""
-        verb = "conflict" if told.no_optimum.kind == "infeasible" else "grow without end"
-        return f"{listed(names, 8)} {verb}."
+        if told.no_optimum.kind == "infeasible":
+            return f"{_conflicting(names)}."
+        return f"{listed(names, 8)} {'grows' if len(names) == 1 else 'grow'} without end."
     if not told.violators:
         return ""
     return violator_words(told.violators[0])
+
+
+def _conflicting(names: Sequence[str]) -> str:
+    if len(names) == 1:
+        return f"{short(names[0])} cannot be met, even by itself"
+    return f"{listed(names, 8)} conflict"
 
 
 def violator_words(violator: Violator) -> str:
@@ -224,8 +246,8 @@ def effect(remedy: Remedy) -> str:
         parts.append(f"the bound stays at {after}" if before == after else moved)
     was, now = remedy.fractional_before, remedy.fractional_after
     if was is not None and now is not None and (was or now):
-        columns = counted(was, "fractional column")
-        parts.append(f"{columns} stay" if was == now else f"{columns} become {now:,}")
+        columns, s = counted(was, "fractional column"), "s" if was == 1 else ""
+        parts.append(f"{columns} stay{s}" if was == now else f"{columns} become{s} {now:,}")
     return as_sentence("; ".join(parts))
 
 
@@ -244,7 +266,7 @@ def standing(told: Explanation) -> str:
 
 def sampled_shares(told: Explanation) -> str:
     """What was seen at sampled vertices, said as what it is."""
-    if told.fractional is None or not told.fractional.samples:
+    if told.verdict is Verdict.PROVEN or told.fractional is None or not told.fractional.samples:
         return ""
     k, bad = told.fractional.samples, told.fractional.samples_fractional
     return (

@@ -134,3 +134,41 @@ def test_the_notebook_form_is_short_and_scoped():
         style = html[html.index("<style>") + 7 : html.index("</style>")]
         rules = [rule.split("{")[0].strip() for rule in style.split("}") if rule.strip()]
         assert all(rule.startswith(".latpath-told") for rule in rules)
+
+
+def test_a_model_that_rounding_makes_whole_is_not_called_whole_as_it_stands():
+    gap = replace(made_up.whole().gap, declared_bound=13.5)
+    assert "once sides and bounds are rounded" in words.headline(replace(made_up.whole(), gap=gap))
+
+
+def test_a_model_without_integer_columns_is_called_a_linear_program():
+    assert words.headline(replace(made_up.whole(), integers=0)).startswith("A linear program")
+
+
+@pytest.mark.parametrize(
+    ("kind", "names", "sentence"),
+    [
+        ("infeasible", ("supply", "demand"), "supply and demand conflict."),
+        ("infeasible", ("supply",), "supply cannot be met, even by itself."),
+        ("unbounded", ("van",), "van grows without end."),
+        ("unbounded", ("van", "cart"), "van and cart grow without end."),
+        ("infeasible", (), ""),
+    ],
+)
+def test_models_without_a_best_plan_name_what_is_to_blame(kind, names, sentence):
+    told = made_up.infeasible()
+    told = replace(told, no_optimum=replace(told.no_optimum, kind=kind, names=names))
+    assert words.conflict(told) == sentence
+
+
+def test_a_culprit_that_keeps_the_model_bounded_says_so():
+    culprit = replace(made_up.fractional().culprits[0], objective_without=float("-inf"))
+    assert "better ones without end" in words.culprit_words(culprit)
+    free = replace(culprit, objective_without=5.0, price=0.0)
+    assert words.culprit_words(free).endswith("so these rows cost nothing.")
+
+
+def test_samples_are_not_held_against_a_proof():
+    assert words.sampled_shares(made_up.sampled())
+    proven = replace(made_up.sampled(), finding=made_up.whole().finding)
+    assert words.sampled_shares(proven) == ""
