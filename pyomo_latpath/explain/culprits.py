@@ -19,7 +19,8 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from ..deadline import Deadline
-from ..forms.linear_form import Flags, LinearForm
+from ..forms.linear_form import Flags, Floats, LinearForm
+from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
 from .groups import Group
 from .minimal import hitting_sets, thin_out
@@ -121,6 +122,7 @@ class Search:
         self._group_of = np.zeros(form.shape[0], np.int64)
         for k, group in enumerate(groups):
             self._group_of[group.rows] = k
+        self._crowded = _crowded(relaxation.normal, self._group_of, len(groups))
         place = {group.name: k for k, group in enumerate(groups)}
         self._conflicts = [frozenset(place[name] for name in names) for names in conflicts]
         self._suspects = frozenset[int]().union(*self._conflicts)
@@ -214,10 +216,11 @@ class Search:
         rows = self.relaxation.normal.rows[place.rows]
         return frozenset(np.unique(self._group_of[rows]).tolist())
 
-    def _suspicion(self, k: int) -> tuple[bool, bool, int]:
-        """What has odd numbers, is in a conflict, or is small as side constraints are: first."""
+    def _suspicion(self, k: int) -> tuple[bool, bool, float, int]:
+        """First what has odd numbers, is in a conflict, stands in crowded columns, or is small."""
         group = self.groups[k]
-        return not (group.beyond or group.broken_sides), k not in self._suspects, group.size
+        odd = group.beyond or group.broken_sides
+        return not odd, k not in self._suspects, -round(self._crowded[k], 1), group.size
 
     def _others(self, chosen: Collection[int]) -> list[int]:
         return [k for k in range(len(self.groups)) if k not in chosen]
@@ -235,6 +238,17 @@ class Search:
 
     def _certified(self, kept: Sequence[int]) -> Certified | None:
         return self.remains.certified(self.flags(kept), self.deadline)
+
+
+def _crowded(normal: NormalForm, group_of: Integers, size: int) -> Floats:
+    """Of each group's entries, the share in columns with more than two.
+
+    Incidence structures have no such columns; rows that are laid over one stand in nothing else.
+    """
+    count = np.diff(normal.matrix.indptr)
+    of_entry = group_of[normal.rows[normal.matrix.indices]]
+    crowded = np.bincount(of_entry, np.repeat(count > 2, count), minlength=size)
+    return np.asarray(crowded / np.maximum(1, np.bincount(of_entry, minlength=size)))
 
 
 def smallest_rows(remains: Remains, rows: Integers, deadline: Deadline) -> tuple[Integers, bool]:

@@ -49,9 +49,10 @@ SAMPLES = 32
 #: Share of the time that is left, and seconds where the time is not limited, for each question.
 BUDGETS: dict[str, tuple[float, float]] = {
     "verdict": (0.3, 3.0),
+    "refutation": (0.15, 1.5),
     "sampling": (0.1, 1.0),
     "violators": (0.2, 5.0),
-    "culprits": (0.4, 20.0),
+    "culprits": (0.6, 20.0),
     "plan": (0.4, 10.0),
     "rows": (0.3, 5.0),
     "infeasible": (0.8, 20.0),
@@ -155,18 +156,17 @@ class _Draft:
     def answer(self) -> None:
         """Ask all questions in turn."""
         if self.normal.conflict is not None:
-            self._assess(samples=0)
+            self._assess(0)
             self._without_optimum()
             return
         if self.form.semicontinuous.any():  # without their gaps such columns are no relaxation
-            self._assess(samples=0)
+            self._assess(0)
             return
         relaxation = Relaxation(self.normal)
         with self._question("relaxation", "solving the relaxation"):
             optimum = relaxation.optimum(self.deadline)
             places = relaxation.places(optimum.x) if optimum.status == "optimal" else []
-        # A fractional optimum settles the verdict; a whole one asks for further vertices.
-        self._assess(samples=1 if places else SAMPLES)
+        self._assess(SAMPLES, fractional=bool(places))
         if optimum.status in ("infeasible", "unbounded"):
             self._without_optimum()
         elif optimum.status == "optimal":
@@ -180,10 +180,13 @@ class _Draft:
         else:
             self.cut_off.append("the relaxation was not solved in time")
 
-    def _assess(self, samples: int) -> None:
-        with self._question("verdict", "assessing the model") as deadline:
+    def _assess(self, samples: int, *, fractional: bool = False) -> None:
+        """The verdict: a fractional optimum nearly settles it, a whole one asks for more."""
+        name = "refutation" if fractional else "verdict"
+        with self._question(name, "assessing the model") as deadline:
             limit = None if deadline.left == math.inf else deadline.left
-            self.finding = assess(self.form, samples=samples, time_limit=limit, seed=self.seed)
+            count = 1 if fractional else samples
+            self.finding = assess(self.form, samples=count, time_limit=limit, seed=self.seed)
 
     def _measure(self, relaxation: Relaxation, optimum: LpResult) -> None:
         """What the relaxation's optimum is like."""
@@ -384,13 +387,14 @@ class _Draft:
 
     def finished(self, model: Any) -> Explanation:
         """What was found so far."""
-        self.doing, found = "writing it down", self._gap()
+        found = self._gap()
         told = [
             culprit
             if found is None
             else replace(culprit, price=culprits.price(found.worse_than(culprit.objective_without)))
             for _, culprit in self.culprits
         ]
+        has_plan = self.solution is not None and self.solution[0].x is not None
         m, n = self.form.shape
         return Explanation(
             finding=self.finding,
@@ -405,7 +409,9 @@ class _Draft:
             grouped_by=self.row_stems.by,
             culprits=tuple(told),
             violators=tuple(self.violators),
-            reasons=find_reasons(self.normal, self.odd, self.row_stems, self.column_stems),
+            reasons=find_reasons(
+                self.normal, self.odd, self.row_stems, self.column_stems, has_plan=has_plan
+            ),
             whole=self.whole,
             no_optimum=self.no_optimum,
             remedies=self.remedies,

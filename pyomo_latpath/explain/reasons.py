@@ -46,7 +46,7 @@ class Reason:
 
 
 def find_reasons(
-    normal: NormalForm, odd: Oddities, rows: Stems, columns: Stems
+    normal: NormalForm, odd: Oddities, rows: Stems, columns: Stems, *, has_plan: bool = False
 ) -> tuple[Reason, ...]:
     """Collect side reasons, worst first.
 
@@ -58,6 +58,8 @@ def find_reasons(
     odd : Oddities
     rows, columns : Stems
         Of the form's rows and columns.
+    has_plan : bool
+        Whether a whole plan is known: then no equations contradict each other.
 
     Returns
     -------
@@ -80,7 +82,7 @@ def find_reasons(
     'budget', column 'x1')"
     """
     found = [
-        *_parity(normal, rows),
+        *(() if has_plan else _parity(normal, rows)),
         *_semicontinuous(normal, columns),
         *sorted(
             [

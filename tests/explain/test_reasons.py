@@ -33,12 +33,12 @@ def form_of(matrix, names, **changes):
     return LinearForm.from_arrays(matrix, row_names=names, **(sides | changes))
 
 
-def test_coefficients_are_counted_by_group_and_the_largest_is_named():
+def test_coefficients_are_counted_by_group_and_the_worst_is_named():
     form = form_of([[2, 3, 0], [1, 1, 1], [0, 5, 7]], ["rent[1]", "lots", "rent[2]"])
     (told,) = reasons_of(form)
     assert (told.kind, told.where, told.count) == ("coefficient", "rent", 4)
     assert told.examples == ("rent[2]", "rent[1]")
-    assert "7 (row 'rent[2]', column 'x3')" in told.sentence
+    assert "7 for one (row 'rent[2]', column 'x3')" in told.sentence
     assert groups_in(form)["rent"].beyond == 4 and groups_in(form)["lots"].beyond == 0
 
 
