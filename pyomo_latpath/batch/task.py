@@ -18,6 +18,7 @@ from ..cli_output import samples_looked_at, write_plan
 from ..deadline import Deadline
 from ..forms.linear_form import LinearForm
 from ..highs_mip import MipSettings, branch_and_bound
+from ..prepared import RecentMatrices
 from ..routing import solve
 from ..solution import Solution
 from .instance import Instance
@@ -117,6 +118,8 @@ class Lost:
 
 #: HiGHS has one set of threads for a whole process: two instances in it must take turns.
 _TURN = threading.Lock()
+#: What this process found out about the matrices it met lately.
+_RECENT = RecentMatrices()
 
 #: What comes back of a task.
 Answer = BatchRecord | Lost
@@ -171,7 +174,7 @@ def _run(task: Task) -> BatchRecord:
     deadline = Deadline(settings.time_limit)
     try:
         fingerprint = task.instance.fingerprint()
-        form = task.instance.load()
+        form = _RECENT.lend(task.instance.load())
     except (OSError, ValueError) as error:
         return task.failed(sentence(error))
     compiled = getattr(task.instance, "compile_seconds", 0.0) + time.perf_counter() - begun
