@@ -38,12 +38,12 @@ def plot(curves: list[Curve], path: str) -> None:
     """Draw all curves, with a line of exponent 1 beside them."""
     from matplotlib import pyplot
 
+    figure, axes = pyplot.subplots()
     for curve in curves:
         label = f"{curve.name}, exponent {curve.exponent:.2f}"
-        pyplot.loglog(curve.nonzeros, curve.seconds, marker="o", label=label)
+        axes.loglog(curve.nonzeros, curve.seconds, marker="o", label=label)
     ends = [f(size for curve in curves for size in curve.nonzeros) for f in (min, max)]
-    pyplot.loglog(ends, [size * 5e-6 for size in ends], "k:", label="5 µs a nonzero")
-    pyplot.xlabel("nonzeros")
-    pyplot.ylabel("seconds")
-    pyplot.legend(fontsize="small")
-    pyplot.savefig(path, dpi=150)
+    axes.loglog(ends, [size * 5e-6 for size in ends], "k:", label="5 µs a nonzero")
+    axes.set(xlabel="nonzeros", ylabel="seconds")
+    axes.legend(fontsize="small")
+    figure.savefig(path, dpi=150)
