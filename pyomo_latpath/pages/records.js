@@ -73,9 +73,13 @@
     current = 0;
     region.scrollTop = 0;
     region.querySelector("table").setAttribute("aria-rowcount", order.length + 1);
-    find("count").textContent =
-      `${order.length.toLocaleString("en")} of ${size.toLocaleString("en")} instances`;
+    tell("");
     draw();
+  };
+
+  const tell = (rest) => {
+    const count = (k) => k.toLocaleString("en");
+    find("count").textContent = `${count(order.length)} of ${count(size)} instances${rest}`;
   };
 
   const row = (place) => {
@@ -195,8 +199,14 @@
   find("controls").addEventListener("reset", () => setTimeout(arrange));
   region.addEventListener("scroll", draw, { passive: true });
   new ResizeObserver(draw).observe(region);
-  window.addEventListener("beforeprint", () => show(0, Math.min(PRINTED, order.length)));
-  window.addEventListener("afterprint", draw);
+  window.addEventListener("beforeprint", () => {
+    if (order.length > PRINTED) tell(`; on paper the first ${PRINTED.toLocaleString("en")}`);
+    show(0, Math.min(PRINTED, order.length));
+  });
+  window.addEventListener("afterprint", () => {
+    tell("");
+    draw();
+  });
   find("all").hidden = false;
   arrange();
 })();

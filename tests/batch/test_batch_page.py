@@ -231,6 +231,20 @@ def test_paper_shows_the_rows_that_are_out_of_view(browser: Browser, tmp_path):
     assert len(instances(browser)) < 300
 
 
+def test_paper_is_white_and_holds_no_empty_pages(browser: Browser, large):
+    browser.open(large, scheme="dark")
+    features = [{"name": "prefers-color-scheme", "value": "dark"}]
+    browser.driver.execute_cdp_cmd(
+        "Emulation.setEmulatedMedia", {"media": "print", "features": features}
+    )
+    browser.run("dispatchEvent(new Event('beforeprint'))")
+    assert browser.background() == "rgb(255, 255, 255)"
+    assert browser.faint_text() == []
+    assert count(browser) == "10,003 of 10,003 instances; on paper the first 2,000"
+    rows = browser.run("return document.querySelector('#records-region tbody').offsetHeight")
+    assert rows < 2_100 * 40
+
+
 def test_a_batch_without_records_is_a_page_too(browser: Browser, tmp_path):
     browser.open(written(tmp_path, []))
     assert browser.complaints() == []
