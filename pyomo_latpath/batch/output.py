@@ -123,7 +123,9 @@ def _lines(summary: Summary) -> Iterator[str]:
     parts = ", ".join(f"{word} {summary.stages.get(s, 0.0):.3f}" for word, s in stages.items())
     yield from _entry("seconds", f"{summary.seconds:.3f} ({parts})")
     if summary.comparison is not None:
-        yield from _entry("compared", comparison_words(summary.comparison))
+        saved = summary.saved_seconds
+        more = f"; for all, about {abs(saved):.3g} s {'more' if saved > 0 else 'less'}"
+        yield from _entry("compared", comparison_words(summary.comparison) + more)
     slow = [f"{s.instance} {s.seconds:.3f} s ({s.route})" for s in summary.slowest if s.route]
     if slow:
         yield from _entry("slowest", ", ".join(slow[:3]))

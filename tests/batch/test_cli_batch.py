@@ -203,7 +203,9 @@ def test_certificates_of_one_batch_serve_the_next(folder, in_a_thread, monkeypat
 
 
 def test_branch_and_bound_is_measured_on_as_many_as_asked_for(folder, in_a_thread):
-    run(many(folder, 12), "--out", "out", "--compare", "5")
+    told = " ".join(run(many(folder, 12), "--out", "out", "--compare", "5").output.split())
+    assert "compared on 5 of them HiGHS took " in told
+    assert "; for all, about " in told
     rows = table(folder / "out").values()
     measured = [row for row in rows if row["highs_seconds"]]
     assert len(measured) == 5

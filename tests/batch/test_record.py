@@ -77,6 +77,14 @@ def test_a_summary_counts_each_record_once_and_comes_back(records):
     assert set(asdict(summary)) == {item.name for item in fields(Summary)}
 
 
+def test_what_the_sample_says_about_all():
+    seconds = {"compile": 100.0, "solve": 2.0}
+    plain = BatchRecord("a", "", "optimal", seconds=seconds)
+    beside = BatchRecord("b", "", "optimal", seconds=seconds, highs_seconds=6.0)
+    assert math.isnan(summarise([plain]).saved_seconds)
+    assert summarise([plain, beside, plain]).saved_seconds == pytest.approx(12)
+
+
 def test_errors_are_told_before_other_failures_and_not_without_end():
     records = [BatchRecord(f"c{k}", "", "infeasible", why="too much") for k in range(5)]
     records += [BatchRecord(f"e{k}", "", "error", error="unreadable") for k in range(3000)]
