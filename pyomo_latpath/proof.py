@@ -221,7 +221,8 @@ def exact_product(matrix: sp.sparray, vector: Whole) -> Whole:
     array([1208925819614629174706174], dtype=object)
     """
     size = float(np.abs(vector).max(initial=0))
-    reach = np.abs(matrix.data).max(initial=0.0) * size * max(matrix.shape[1], 1)
+    entry = max(matrix.data.max(initial=0.0), -matrix.data.min(initial=0.0))
+    reach = entry * size * max(matrix.shape[1], 1)
     if vector.dtype != object or size < EXACT:
         if reach < EXACT:
             return (matrix @ vector.astype(np.float64)).astype(np.int64)

@@ -24,14 +24,12 @@ def largest_violation(form: LinearForm, x: Floats) -> float:
     0.25
     """
     activity = form.matrix @ x
-    off = form.semicontinuous & (x == 0.0)
-    missed = [
-        form.row_lower - activity,
-        activity - form.row_upper,
-        np.where(off, 0.0, form.col_lower - x),
-        np.where(off, 0.0, x - form.col_upper),
-        np.abs(x - np.rint(x))[form.integer],
-    ]
+    below, above = form.col_lower - x, x - form.col_upper
+    if form.semicontinuous.any():
+        off = form.semicontinuous & (x == 0.0)
+        below, above = np.where(off, 0.0, below), np.where(off, 0.0, above)
+    fraction = np.where(form.integer, np.abs(x - np.rint(x)), 0.0)
+    missed = [form.row_lower - activity, activity - form.row_upper, below, above, fraction]
     return max(0.0, *(float(values.max(initial=0.0)) for values in missed))
 
 

@@ -95,8 +95,11 @@ class State:
         return flow
 
     def unmet(self) -> int:
-        """Flow that still goes over artificial arcs."""
-        return int(self.flow()[self.order.size :].sum())
+        """Flow that still goes over artificial arcs, all of which are in the tree or empty."""
+        arcs, tree = self.arcs, self.tree
+        below = np.flatnonzero(tree.arc[:-1] >= self.order.size)
+        leaves = arcs.tail[tree.arc[below]] == below
+        return int(np.where(leaves, tree.down[below], tree.up[below]).sum())
 
     def prefer(self, movable: Flags) -> None:
         """Price these places only, by their tails."""
