@@ -20,11 +20,12 @@ from click.testing import CliRunner, Result
 
 import pyomo_latpath as latpath
 from pyomo_latpath import cli, cli_batch
+from pyomo_latpath.batch import task
 from pyomo_latpath.batch.executors import InExecutor
 from pyomo_latpath.batch.output import COLUMNS
 from pyomo_latpath.batch.record import BatchRecord, Summary
-from pyomo_latpath.batch.task import _store
 from pyomo_latpath.forms.from_file import read
+from pyomo_latpath.prepared import RecentMatrices
 
 SCRIPT = """
 import pyomo.environ as pyo
@@ -62,6 +63,7 @@ def folder(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
 @pytest.fixture
 def in_a_thread(monkeypatch):
     """Work here, where a test is not about processes: these take long to start."""
+    monkeypatch.setattr(task, "_RECENT", RecentMatrices())
     with ThreadPoolExecutor(1) as executor:
         monkeypatch.setattr(cli_batch, "Processes", lambda *_: InExecutor(executor, 1))
         yield
@@ -194,7 +196,8 @@ def test_certificates_of_one_batch_serve_the_next(folder, in_a_thread, monkeypat
     (folder / "mon.lp").write_text(text.format(1))
     (folder / "tue.lp").write_text(text.format(3))
     assert run("mon.lp", "--out", "out", "--store", "proofs").exit_code == 0
-    _store.cache_clear()
+    task._store.cache_clear()
+    monkeypatch.setattr(task, "_RECENT", RecentMatrices())
     assert run("tue.lp", "--out", "other", "--store", "proofs").exit_code == 0
     assert table(folder / "out")["mon.lp"]["recognition"] == "found"
     assert table(folder / "other")["tue.lp"]["recognition"] == "stored"
