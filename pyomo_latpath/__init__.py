@@ -17,6 +17,7 @@ from typing import Any
 
 from . import plugin
 from .batch.record import BatchRecord
+from .batch.family import Family
 from .batch.runner import solve_many
 from .certificates import CertificateError, check_certificate
 from .explain.explain import explain as _explain_form
@@ -39,6 +40,7 @@ __all__ = [
     "BatchRecord",
     "BlockFinding",
     "CertificateError",
+    "Family",
     "Explanation",
     "Finding",
     "LinearForm",
