@@ -16,8 +16,8 @@ from collections.abc import Callable
 from typing import Any
 
 from . import plugin
-from .batch.record import BatchRecord
 from .batch.family import Family
+from .batch.record import BatchRecord
 from .batch.runner import solve_many
 from .certificates import CertificateError, check_certificate
 from .explain.explain import explain as _explain_form
@@ -40,8 +40,8 @@ __all__ = [
     "BatchRecord",
     "BlockFinding",
     "CertificateError",
-    "Family",
     "Explanation",
+    "Family",
     "Finding",
     "LinearForm",
     "Move",
