@@ -21,7 +21,7 @@ from .output import make_folder
 from .progress import Progress
 from .record import BatchRecord
 from .store import CertificateStore
-from .task import Settings, Task
+from .task import Settings, Task, printable
 from .workers import Processes
 
 
@@ -188,7 +188,8 @@ class Tasks:
         apart = max(1.0, self.total / self.compare) if self.total and self.compare else 1.0
         chosen = {int(k * apart) for k in range(self.compare)}
         for k, instance in enumerate(self.instances):
-            yield Task(self._unique(instance.name), instance, self.settings, k in chosen)
+            name = self._unique(printable(instance.name))
+            yield Task(name, instance, self.settings, k in chosen)
 
     def _unique(self, name: str) -> str:
         unique, number = name, 1

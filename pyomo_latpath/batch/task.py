@@ -88,8 +88,13 @@ class Task:
 
     def failed(self, error: str, status: str = "error") -> BatchRecord:
         """The record of an instance that gave no solution."""
-        mark = self.fingerprint()
-        return BatchRecord(self.name, mark, status, error=error, attempts=self.attempt)
+        return BatchRecord(
+            instance=self.name,
+            fingerprint=self.fingerprint(),
+            status=status,
+            attempts=self.attempt,
+            error=printable(error),
+        )
 
     def fingerprint(self) -> str:
         """That of the instance; empty where there is none, which its `load` will explain."""
@@ -277,6 +282,17 @@ def sentence(error: Exception) -> str:
     if isinstance(error, OSError) and error.filename is not None:
         return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
     return str(error) or type(error).__name__
+
+
+def printable(text: str) -> str:
+    """Text that can be written as UTF-8: names of files may hold any bytes.
+
+    Examples
+    --------
+    >>> print(printable("day\\udcff.mps"))
+    day\\udcff.mps
+    """
+    return text.encode("utf-8", "backslashreplace").decode("utf-8")
 
 
 def _known(value: float) -> float | None:

@@ -218,6 +218,17 @@ def test_branch_and_bound_is_measured_on_as_many_as_asked_for(folder, in_a_threa
     assert sum(bool(row["highs_seconds"]) for row in table(folder / "family").values()) == 2
 
 
+def test_file_names_may_hold_any_bytes(folder, in_a_thread):
+    for name, text in ((b"day\xff.min", odd.FLOW), (b"day\xfe,\n.min", odd.BROKEN)):
+        Path(os.fsdecode(os.fsencode(folder / "good") + b"/" + name)).write_text(text)
+    result = run("good", "--out", "out", "--plans")
+    assert result.exit_code == 2
+    rows = table(folder / "out")
+    assert rows["good/day\\udcff.min"]["objective"] == "14.0"
+    assert "line 5: the head 9" in rows["good/day\\udcfe,\n.min"]["error"]
+    assert len(os.listdir(folder / "out" / "plans")) == 2
+
+
 def test_quiet_says_nothing(folder, in_a_thread):
     assert run("good", "--out", "out", "--quiet").output == ""
 
@@ -228,6 +239,17 @@ def test_parquet_holds_the_same_table(folder, in_a_thread):
     rows = parquet.read_table(folder / "out" / "table.parquet").to_pylist()
     texts = [{key: "" if v is None else str(v) for key, v in row.items()} for row in rows]
     assert texts == list(table(folder / "out").values())
+
+
+def test_what_is_not_installed_is_named(folder, monkeypatch):
+    monkeypatch.setattr(cli_batch.importlib.util, "find_spec", lambda _: None)
+    result = run("good", "--out", "out", "--parquet")
+    assert (result.exit_code, "pip install 'pyomo_latpath[tables]'" in result.output) == (2, True)
+    monkeypatch.undo()
+    monkeypatch.chdir(folder)
+    monkeypatch.setitem(sys.modules, "distributed", None)
+    result = run("good", "--out", "out", "--cluster", "tcp://127.0.0.1:9")
+    assert (result.exit_code, "pip install 'pyomo_latpath[cluster]'" in result.output) == (2, True)
 
 
 @pytest.mark.parametrize(
