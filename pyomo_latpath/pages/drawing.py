@@ -76,9 +76,14 @@ def bars(key: str, title: str, pairs: Sequence[tuple[str, float]]) -> str:
     body = "".join(
         label(126, 24 * k + 17, words, "soft", "end")
         + box(134, 24 * k + 5, max(1.0, 140 * amount / most), 16, "bar")
-        + label(140 + 140 * amount / most, 24 * k + 17, number(float(f"{amount:.6g}")))
+        + label(140 + 140 * amount / most, 24 * k + 17, _amount(amount))
         for k, (words, amount) in enumerate(pairs)
     )
-    told = "; ".join(f"{words}: {number(amount)}" for words, amount in pairs)
+    told = "; ".join(f"{words}: {_amount(amount)}" for words, amount in pairs)
     drawing = picture(key, 340, 24 * len(pairs) + 6, title, told, body)
     return f"<figure><figcaption>{text(title)}</figcaption>{drawing}</figure>"
+
+
+def _amount(amount: float) -> str:
+    """Counts in full, measured amounts to three digits."""
+    return number(amount if float(amount).is_integer() else float(f"{amount:.3g}"))
