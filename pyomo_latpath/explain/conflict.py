@@ -11,6 +11,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 import scipy.sparse as sp
@@ -43,9 +44,9 @@ class Violator:
         and i (cyclically), column i at rows i and i + 1.
     row_names, column_names : tuple of str, length k
     entries : ndarray, shape (k, k), int64
-        After scaling, in this order.
-    determinant : int
-        Of these entries; even (Camion) unless it is a single odd entry.
+        After scaling, in this order; float64 where a single entry is not whole.
+    determinant : int or float
+        Of these entries: 2 or -2, or the single entry.
     cycle : bool
         Whether each row and each column has exactly two entries, all on one cycle.
     minimal : bool
@@ -60,8 +61,8 @@ class Violator:
     columns: Integers = field(repr=False)
     row_names: tuple[str, ...]
     column_names: tuple[str, ...]
-    entries: NDArray[np.int64]
-    determinant: int
+    entries: NDArray[np.int64] | NDArray[np.float64]
+    determinant: int | float
     cycle: bool
     minimal: bool
     groups: tuple[str, ...]
@@ -115,18 +116,20 @@ def _violator_at(
 ) -> Violator | None:
     """A conflict of entries +-1 where there is one, else the entry furthest from that."""
     columns = place.columns
-    rows = place.rows[normal.whole_rows[place.rows]]
-    matrix = normal.matrix[:, columns].tocsr()[rows, :].astype(np.int64)
-    size = np.abs(matrix).tocoo()
-    large = np.zeros(rows.size, np.bool_)
-    large[size.row[size.data > 1]] = True
-    lines = _conflicting_lines(matrix[~large, :].tocsc(), deadline)
+    rows = place.rows
+    matrix = normal.matrix[:, columns].tocsr()[rows, :]
+    entries = matrix.tocoo()
+    odd = np.zeros(rows.size, np.bool_)
+    odd[entries.row[np.abs(entries.data) != 1]] = True
+    lines = _conflicting_lines(matrix[~odd, :].astype(np.int64).tocsc(), deadline)
     if lines is not None:
-        return _told(normal, rows[~large][lines[0]], columns[lines[1]], group_names)
-    if deadline.passed or not large.any():
+        return _told(normal, rows[~odd][lines[0]], columns[lines[1]], group_names)
+    if deadline.passed or not odd.any():
         return None
-    k = int(np.argmax(size.data))
-    return _told(normal, rows[size.row[k : k + 1]], columns[size.col[k : k + 1]], group_names)
+    size = np.abs(entries.data)
+    k = int(np.argmax(np.maximum(size, 1 / size)))
+    here = slice(k, k + 1)
+    return _told(normal, rows[entries.row[here]], columns[entries.col[here]], group_names)
 
 
 def _conflicting_lines(
@@ -146,7 +149,7 @@ def _conflicting_lines(
     return None if found is None else (found.rows, found.columns)
 
 
-def cycle_order(entries: NDArray[np.int64]) -> tuple[list[int], list[int]] | None:
+def cycle_order(entries: NDArray[Any]) -> tuple[list[int], list[int]] | None:
     """Order the lines of a square matrix along its cycle, if it is one.
 
     Returns
@@ -180,7 +183,7 @@ def _told(
     normal: NormalForm, rows: Integers, columns: Integers, group_names: Sequence[str]
 ) -> Violator:
     """A violator in names, its lines along the cycle where it is one."""
-    entries = normal.matrix[:, columns].tocsr()[rows, :].toarray().astype(np.int64)
+    entries = normal.matrix[:, columns].tocsr()[rows, :].toarray()
     order = cycle_order(entries)
     if order is not None:
         entries = entries[np.ix_(*order)]
@@ -192,10 +195,17 @@ def _told(
         columns=columns,
         row_names=tuple(form.row_names[i] for i in rows.tolist()),
         column_names=tuple(form.col_names[j] for j in columns.tolist()),
-        entries=entries,
-        determinant=int(entries[0, 0]) if rows.size == 1 else determinant(entries),
+        entries=entries.astype(np.int64) if (entries == np.rint(entries)).all() else entries,
+        determinant=_determinant(entries),
         cycle=order is not None,
         minimal=True,
         groups=tuple(dict.fromkeys(group_names[i] for i in rows.tolist())),
         block=-1,
     )
+
+
+def _determinant(entries: NDArray[np.float64]) -> int | float:
+    if entries.size > 1:
+        return determinant(entries.astype(np.int64))
+    value = float(entries[0, 0])
+    return int(value) if value == int(value) else value

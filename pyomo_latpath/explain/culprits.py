@@ -6,8 +6,9 @@ must meet all conflicts. The search goes through the smallest sets that meet all
 (Reiter 1987, A theory of diagnosis from first principles): either what is left without such a set
 is certified, or it holds a further conflict, thinned out until no group of it can be spared.
 
-Equations may make whole what is fractional without them. So where there are equations, a set of
-two groups may be overlooked that leaves no totally unimodular matrix and yet whole vertices.
+Equations may make whole what is fractional without them, and continuous columns may be scaled
+otherwise beside other rows. Where there are such, a small set of groups may be overlooked, and what
+is found is not called smallest.
 """
 
 from __future__ import annotations
@@ -118,7 +119,10 @@ class Search:
         self.deadline, self.tell = deadline, tell
         self.exhausted, self.alone = False, dict[int, bool]()
         form = remains.form
-        self._has_equations = bool(_equations(form).any())
+        # What is left without one group was tried by every certificate there is.
+        tried = 2 if len(groups) <= MOST_ALONE else 1
+        monotone = form.integer.all() and not _equations(form).any()
+        self._surely_smallest = len(groups) if monotone else tried
         self._group_of = np.zeros(form.shape[0], np.int64)
         for k, group in enumerate(groups):
             self._group_of[group.rows] = k
@@ -133,7 +137,7 @@ class Search:
         yield from self._singles()
         self._try_alone()
         for size in range(1, len(self.groups) + 1):
-            forced = sum(len(those) == 1 for those in self._conflicts)
+            forced = len({those for those in self._conflicts if len(those) == 1})
             if self._found or self.deadline.passed or size > forced + MOST_CHOSEN:
                 break
             if size >= forced:
@@ -191,7 +195,7 @@ class Search:
             if chosen is None:
                 return
             before = len(self._found)
-            yield from self._tried(chosen, smallest=size <= 2 or not self._has_equations)
+            yield from self._tried(chosen, smallest=size <= self._surely_smallest)
             if len(self._found) == before and not self.deadline.passed:
                 conflict = self._conflict_among(self._others(chosen))
                 if conflict is None:

@@ -154,6 +154,24 @@ def test_a_group_to_blame_on_its_own_is_in_every_set():
     assert [k for k, certified in search.alone.items() if not certified] == [place]
 
 
+def test_several_conflicts_in_one_group_count_as_one():
+    rents = np.hstack((np.kron(np.eye(3), [[2.0, 3.0]]), np.zeros((3, 3))))
+    cycle = np.hstack((np.zeros((3, 6)), np.eye(3) + np.roll(np.eye(3), 1, axis=1)))
+    form = LinearForm.from_arrays(
+        np.vstack((rents, cycle)),
+        row_lower=-np.inf,
+        row_upper=[4, 4, 4, 1, 1, 1],
+        col_lower=0,
+        col_upper=1,
+        cost=-1,
+        row_names=["rent[1]", "rent[2]", "rent[3]", "cave", "town", "van"],
+    )
+    search = search_in(form)
+    sets = list(search.run())
+    assert {len(each.places) for each in sets} == {2} and all(each.smallest for each in sets)
+    assert len(sets) == 3 and all(0 in each.places for each in sets)
+
+
 def test_no_more_sets_are_told_than_a_person_reads():
     cycle = np.eye(9) + np.roll(np.eye(9), 1, axis=1)
     form = LinearForm.from_arrays(
