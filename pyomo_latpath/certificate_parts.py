@@ -2,8 +2,8 @@
 
 A part knows its JSON and checks one whole-number matrix; `certificates` puts parts together to
 the certificate of a model. Nothing here knows how a part was found. Checks use whole-number
-arithmetic alone, in time near-linear in the sizes of matrix and part. A new kind is one new
-class, with one line in `KINDS`.
+arithmetic alone, in time near-linear in the sizes of matrix and part (row operations: in the time
+that it takes to do them). A new kind is one new class, with one line in `KINDS`.
 
 Network matrices: Tutte (1965); Schrijver (1986), section 19.3.
 """
