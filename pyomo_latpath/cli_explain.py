@@ -17,6 +17,7 @@ from .explain.explanation import Explanation
 from .explain.page import to_html
 from .explain.text import to_text
 from .forms.from_file import read
+from .pages.markup import visible
 
 EXPLAINED, NOT_TO_THE_END = 0, 1
 
@@ -100,7 +101,7 @@ def _show(told: Explanation, name: str, as_json: bool) -> None:
         fields: dict[str, Any] = {"instance": name, "error": None} | told.to_dict()
         click.echo(json.dumps(fields, allow_nan=False))
     else:
-        click.echo(f"{name}\n{to_text(told)}")
+        click.echo(f"{visible(name)}\n{to_text(told)}")
 
 
 def _write(page: Path | None, told: Explanation, name: str) -> int:

@@ -86,6 +86,15 @@ def test_a_page_is_written_whole(folder):
     assert not [each for each in folder.iterdir() if each.name.startswith(".")]
 
 
+def test_a_file_name_may_hold_any_bytes(folder):
+    path = folder / os.fsdecode(b"caf\xe9\n.lp")
+    path.write_text(TRIANGLE)
+    command = [sys.executable, "-m", "pyomo_latpath", "explain", str(path), "--html", "why.html"]
+    done = subprocess.run(command, cwd=folder, capture_output=True, timeout=120, check=True)
+    assert done.stdout.splitlines()[0] == rb"caf\udce9\n.lp"
+    assert "caf\\udce9\\n.lp" in (folder / "why.html").read_text(encoding="utf-8")
+
+
 def test_a_page_that_fails_leaves_the_old_one(folder, monkeypatch):
     page = folder / "why.html"
     page.write_text("old")
