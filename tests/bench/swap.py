@@ -9,7 +9,7 @@ import sys
 
 import models
 import pyomo.environ as pyo
-from timing import medians, print_row
+from timing import anew, medians, print_row
 
 import pyomo_latpath as latpath
 
@@ -30,7 +30,7 @@ def main() -> None:
         form = latpath.compile_model(model)
         ways = {
             "latpath": lambda m=model: pyo.SolverFactory("latpath").solve(m),
-            "from arrays": lambda f=form: latpath.solve(f),
+            "from arrays": lambda f=form: latpath.solve(anew(f)),
             "highs": lambda m=model: pyo.SolverFactory("highs").solve(m),
             "highs, relaxed by hand": lambda m=loose: pyo.SolverFactory("highs").solve(m),
         }

@@ -6,6 +6,9 @@ import gc
 import statistics
 import time
 from collections.abc import Callable
+from dataclasses import replace
+
+from pyomo_latpath.forms.linear_form import LinearForm, Memory
 
 
 def medians(ways: dict[str, Callable[[], object]], repeats: int) -> dict[str, float]:
@@ -28,3 +31,8 @@ def print_row(what: str, seconds: dict[str, float], ours: str = "latpath") -> No
         if name != ours
     )
     print(f"{what:34} {ours} {seconds[ours]:.3f} s  {others}", flush=True)
+
+
+def anew(form: LinearForm) -> LinearForm:
+    """The same form without what an earlier solve found out about it."""
+    return replace(form, memory=Memory())
