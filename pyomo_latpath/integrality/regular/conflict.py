@@ -46,6 +46,8 @@ def smallest_conflict(
     >>> determinant(matrix[rows, :][:, columns].toarray()) in (2, -2)
     True
     """
+    if not found.minimal:
+        found = _contradiction(matrix, found.lines, deadline) or found
     needed: set[int] = set()
     while not found.minimal:
         line = next((line for line in sorted(found.lines) if line not in needed), None)

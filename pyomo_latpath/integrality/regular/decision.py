@@ -148,7 +148,8 @@ def _matrix_of(A: Any) -> sp.csc_array:
             "of rows of equal length or a sparse array"
         ) from error
     if matrix.ndim != 2:
-        raise ValueError(f"A has {matrix.ndim} dimensions; a matrix has two")
+        shape = f"a {type(A).__name__} of shape {matrix.shape}"
+        raise ValueError(f"A is {shape}; a matrix has rows and columns")
     matrix = sp.csc_array(matrix)
     matrix.sum_duplicates()
     matrix.eliminate_zeros()

@@ -28,6 +28,9 @@ from .signs import odd_hole
 from .splitting import split_at
 from .summand import Contradiction, Summand
 
+#: So many nonzeros are sooner looked at for wrong signs than for a network.
+FEW = 1000
+
 
 def take_apart(matrix: sp.csc_array, deadline: Deadline) -> Part:
     """Prove a matrix TU.
@@ -68,6 +71,7 @@ class _Work:
         self.steps: list[Split | Step] = []
         self.parts: dict[int, Part] = {}
         self.deadline = deadline
+        self.signs_checked = False
 
     def look_at(self, k: int) -> list[int]:
         """Recognise a summand, or take it apart; returns the summands to look at next."""
@@ -76,6 +80,8 @@ class _Work:
             column = int(np.searchsorted(summand.matrix.indptr, place, side="right")) - 1
             lines = summand.matrix.indices[place], summand.rows.size + column
             raise Contradiction(summand.all_behind(lines))
+        if not self.signs_checked and summand.matrix.nnz <= FEW:
+            self._check_signs(summand)
         reduction = reduce_matrix(summand.matrix, self.deadline)
         check_time(self.deadline)
         part = _recognise(reduction.matrix, self.deadline)
@@ -84,21 +90,31 @@ class _Work:
             return []
         self.steps += [_numbered(step, summand) for step in reduction.steps]
         rest = self.summands[k] = summand.restricted(reduction.rows, reduction.columns)
+        if not self.signs_checked or self._has_known_nonzeros(rest.matrix):
+            self._check_signs(rest)
         try:
             return self._take_apart(k, rest)
         except Contradiction as found:
-            behind = rest.all_behind(found.lines)
-            minimal = found.minimal and len(behind) == len(found.lines)
-            raise Contradiction(behind, minimal) from None
+            raise Contradiction(rest.all_behind(found.lines)) from None
+
+    def _has_known_nonzeros(self, matrix: sp.csc_array) -> bool:
+        """Whether they are those of a network matrix, its transpose or R10."""
+        return not neither(matrix, self.deadline) or r10.find(matrix) is not None
+
+    def _check_signs(self, summand: Summand) -> None:
+        """Look for signs that contradict each other, the quickest way to a no.
+
+        At the start there often are some; later, only where the nonzeros leave no other way.
+        """
+        self.signs_checked = True
+        hole = odd_hole(summand.matrix, self.deadline)
+        if hole is not None:
+            single = all(len(summand.behind[line]) == 1 for line in hole)
+            behind = summand.all_behind(hole)
+            raise Contradiction(behind, minimal=single and len(behind) == len(hole))
 
     def _take_apart(self, k: int, summand: Summand) -> list[int]:
         matrix = summand.matrix
-        # At the start, wrong signs are the quickest way to a no; later they are looked for where
-        # the nonzeros are those of a TU matrix, as nothing else can be wrong there.
-        if len(self.summands) == 1 or self._has_known_nonzeros(matrix):
-            hole = odd_hole(matrix, self.deadline)
-            if hole is not None:
-                raise Contradiction(hole, minimal=True)
         links = sp.block_array([[None, matrix], [matrix.T, None]], format="csr")
         count, block = connected_components(links, directed=False)
         if count > 1:
@@ -111,9 +127,6 @@ class _Work:
         self.summands[k] = first
         self.summands.append(second)
         return [k, len(self.summands) - 1]
-
-    def _has_known_nonzeros(self, matrix: sp.csc_array) -> bool:
-        return not neither(matrix, self.deadline) or r10.find(matrix) is not None
 
     def _take_blocks_apart(self, k: int, summand: Summand, blocks: list[Bits]) -> list[int]:
         m, changed = summand.rows.size, [k]

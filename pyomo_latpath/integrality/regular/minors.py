@@ -76,15 +76,15 @@ def smallest(
 def near(links: Links, starts: list[int]) -> list[int]:
     """List all lines, those near to given ones first."""
     seen, queue = dict.fromkeys(starts), deque(starts)
-    for other in range(len(links)):
-        if other not in seen:
-            seen[other] = None
-            queue.append(other)
+    for other in links:
         while queue:
             for line in links[queue.popleft()]:
                 if line not in seen:
                     seen[line] = None
                     queue.append(line)
+        if other not in seen:
+            seen[other] = None
+            queue.append(other)
     return list(seen)
 
 

@@ -168,6 +168,7 @@ class _Half:
         """
         start, end = self.links
         found = spread(links_of(self.table), np.array([start]), np.array([end]))
+        assert found.hit == end
         way = [start, *found.way_to(end)]
         m, entry = self.table.shape[0], (-1) ** ((len(way) - 3) // 2)
         for x, y in pairwise(way):
