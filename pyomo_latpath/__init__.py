@@ -188,7 +188,7 @@ def explain(
     form_or_model : LinearForm or Pyomo model
         It is only read; the remedies found can be applied to it.
     time_limit : float, optional
-        Seconds. Without one, questions whose cost cannot be foreseen get 5 to 20 seconds each.
+        Seconds. Without one, questions whose cost cannot be foreseen get 1 to 20 seconds each.
     seed : int
         Of the vertex sampler.
     progress : callable, optional

@@ -24,13 +24,13 @@ from ..highs import LpResult
 from ..integrality.assess import assess
 from ..integrality.finding import Finding, Verdict, Witness
 from ..solution import Solution
-from . import culprits, gap, no_optimum, whole
+from . import culprits, no_optimum, whole
 from .conflict import Violator, violators
 from .context import Context
 from .culprits import Culprit, CulpritSet, Search
 from .explanation import Explanation
 from .fractional import Fractional, measure
-from .gap import Gap
+from .gap import Declared, Gap, best_plan, declared_optimum
 from .groups import groups_of, oddities_of
 from .no_optimum import NoOptimum
 from .reasons import find_reasons
@@ -75,7 +75,7 @@ def explain(
     ----------
     form : LinearForm
     time_limit : float, optional
-        Seconds. Without one, questions whose cost cannot be foreseen get 5 to 20 seconds each.
+        Seconds. Without one, questions whose cost cannot be foreseen get 1 to 20 seconds each.
     seed : int
         Of the vertex sampler.
     progress : callable, optional
@@ -191,11 +191,8 @@ class _Draft:
     def _measure(self, relaxation: Relaxation, optimum: LpResult) -> None:
         """What the relaxation's optimum is like."""
         self.groups = groups_of(self.normal, self.row_stems, self.odd, optimum.x)
-        with self._question("relaxation", "solving the relaxation as declared") as deadline:
-            rounded = relaxation.objective(optimum)
-            self.bounds = gap.declared_bound(self.normal, rounded, deadline), rounded
         with self._question("sampling", "looking at vertices") as deadline:
-            self.fractional = measure(
+            told = measure(
                 relaxation,
                 optimum,
                 self.column_stems,
@@ -203,6 +200,11 @@ class _Draft:
                 seed=self.seed,
                 deadline=deadline,
             )
+        with self._question("relaxation", "solving the relaxation as declared") as deadline:
+            rounded = Declared(relaxation.objective(optimum), told.count)
+            declared = declared_optimum(self.normal, rounded, deadline)
+        self.bounds = declared.bound, rounded.bound
+        self.fractional = replace(told, declared=declared.fractional)
 
     def _find_remedies(self, relaxation: Relaxation, optimum: LpResult) -> None:
         context = Context(
@@ -224,7 +226,7 @@ class _Draft:
     def _without_optimum(self) -> None:
         """Infeasible or unbounded: which of the two, and why."""
         with self._question("infeasible", "finding out what conflicts") as deadline:
-            self.solution = gap.best_plan(self.normal, deadline.left, self.seed)
+            self.solution = best_plan(self.normal, deadline.left, self.seed)
             solution = self.solution[0]
             if solution.status == "unbounded":
                 self.no_optimum = no_optimum.unbounded(self.normal, solution.ray)
@@ -240,7 +242,7 @@ class _Draft:
 
     def _tell_whole(self) -> None:
         with self._question("plan", "solving it along whole vertices") as deadline:
-            self.solution = gap.best_plan(self.normal, deadline.left, self.seed)
+            self.solution = best_plan(self.normal, deadline.left, self.seed)
         certified = self._certified()
         self.whole = Whole(
             sentences=whole.sentences(certified),
@@ -281,13 +283,15 @@ class _Draft:
             self.cut_off.append("the best whole plan was not looked for")
             return
         with self._question("plan", "looking for the best whole plan") as deadline:
-            self.solution = gap.best_plan(self.normal, deadline.left, self.seed)
+            self.solution = best_plan(self.normal, deadline.left, self.seed)
         status = self.solution[0].status
         if status == "interrupted":
             raise KeyboardInterrupt
         if status == "infeasible":
             with self._question("infeasible", "finding out what conflicts") as deadline:
                 self._tell_infeasible(self.solution[0], deadline)
+        elif self.solution[0].x is None:
+            self.cut_off.append("no whole plan was found in time")
         elif status != "optimal":
             told = "the best whole plan was not found in time; the gap is an upper one"
             self.cut_off.append(told)

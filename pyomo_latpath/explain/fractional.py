@@ -64,6 +64,9 @@ class Fractional:
         K, the vertices on which `ComponentShare.sampled` rests: a sample, no proof.
     samples_fractional : int
         Those with any fractional column.
+    declared : int or None
+        Fractional columns at the optimum of the relaxation as declared, before sides and bounds
+        were rounded inwards; None where it has none, or not in time.
     """
 
     count: int
@@ -73,6 +76,7 @@ class Fractional:
     components: tuple[ComponentShare, ...]
     samples: int
     samples_fractional: int
+    declared: int | None = None
 
 
 def measure(

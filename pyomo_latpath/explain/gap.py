@@ -11,6 +11,7 @@ import numpy as np
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
 from ..highs import LinearProgram
+from ..integrality.sampling import FRACTIONAL
 from ..routing import solve
 from ..solution import Solution
 
@@ -65,20 +66,31 @@ class Gap:
         return self.plan - objective if self.sense == "min" else objective - self.plan
 
 
-def declared_bound(normal: NormalForm, rounded_bound: float, deadline: Deadline) -> float:
-    """Optimum of the relaxation as declared, before sides and bounds were rounded inwards.
+@dataclass(frozen=True)
+class Declared:
+    """The optimum of the relaxation as declared, before sides and bounds were rounded inwards.
+
+    Attributes
+    ----------
+    bound : float
+        NaN where there is none, or not in time.
+    fractional : int or None
+        Columns declared integer that are fractional there.
+    """
+
+    bound: float
+    fractional: int | None
+
+
+def declared_optimum(normal: NormalForm, rounded: Declared, deadline: Deadline) -> Declared:
+    """Optimise the relaxation as declared.
 
     Parameters
     ----------
     normal : NormalForm
-    rounded_bound : float
-        Optimum after that; where nothing was rounded, it is the answer.
+    rounded : Declared
+        The optimum after rounding; where nothing was rounded, it is the answer.
     deadline : Deadline
-
-    Returns
-    -------
-    float
-        NaN where there is none, or not in time.
 
     Examples
     --------
@@ -86,18 +98,21 @@ def declared_bound(normal: NormalForm, rounded_bound: float, deadline: Deadline)
     >>> from pyomo_latpath.forms.normalise import normalise
     >>> form = LinearForm.from_arrays([[1, 1]], row_lower=0, row_upper=1.5, col_lower=0,
     ...                               col_upper=9, cost=1, sense="max")
-    >>> declared_bound(normalise(form), 1.0, Deadline(None))
-    1.5
+    >>> declared_optimum(normalise(form), Declared(1.0, 0), Deadline(None))
+    Declared(bound=1.5, fractional=1)
     """
     form = normal.form
     if not _rounded(normal):
-        return rounded_bound
+        return rounded
     sign = 1.0 if form.sense == "min" else -1.0
     limits = form.row_lower, form.row_upper, form.col_lower, form.col_upper
     result = LinearProgram(form.matrix, *limits, sign * form.cost).solve(deadline=deadline)
     if result.status == "unbounded":
-        return -sign * float("inf")
-    return form.offset + float(form.cost @ result.x) if result.status == "optimal" else float("nan")
+        return Declared(-sign * float("inf"), None)
+    if result.status != "optimal":
+        return Declared(float("nan"), None)
+    broken = form.integer & (np.abs(result.x - np.rint(result.x)) > FRACTIONAL)
+    return Declared(form.offset + float(form.cost @ result.x), int(broken.sum()))
 
 
 def _rounded(normal: NormalForm) -> bool:
@@ -119,7 +134,7 @@ def _rounded(normal: NormalForm) -> bool:
     return not all(np.allclose(was, now, rtol=1e-9, atol=1e-9) for was, now in pairs)
 
 
-def best_plan(normal: NormalForm, seconds: float | None, seed: int) -> tuple[Solution, float]:
+def best_plan(normal: NormalForm, seconds: float, seed: int) -> tuple[Solution, float]:
     """Look for the best whole plan by whichever route leads there.
 
     Returns

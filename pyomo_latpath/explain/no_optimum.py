@@ -37,7 +37,8 @@ class NoOptimum:
     minimal : bool
         Whether none of those rows and bounds could be left out.
     groups : tuple of str
-        A set of groups that conflict by themselves; empty where none was found in time.
+        A set of groups that conflict by themselves; empty where none is needed for that, or none
+        was found in time.
     groups_minimal : bool
         Whether none of the groups could be left out.
     """
@@ -128,7 +129,7 @@ def infeasible(
         names,
         minimal and bool(names),
         tuple(groups[k].name for k in chosen),
-        chosen_minimal and bool(chosen),
+        chosen_minimal,
     )
 
 

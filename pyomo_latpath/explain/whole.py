@@ -28,8 +28,10 @@ BREAKS = {
     "column passes over, unless the structure stays that of a network",
     "network": "a further row or column that is no path in the same network",
     "conetwork": "a further row or column that is no path in the same network",
+    "unimodular": "another coefficient, or a further row: the equations make something else of it",
     "sum": "a further row or column across the parts that it is put together from",
 }
+COEFFICIENT = "a coefficient other than 0 and +-1 that scaling the row does not turn into one"
 FOR_THESE_SIDES = "another side of an equation: the proof holds for the sides as they are"
 
 
@@ -103,7 +105,7 @@ def breakers(certified: Certified) -> tuple[str, ...]:
     structures = [name for name in certified.structures if name != "trivial"]
     if not structures:
         return ()
-    told = ["a coefficient other than 0 and +-1 that scaling the row does not turn into one"]
+    told = [COEFFICIENT] if set(structures) != {"unimodular"} else []
     told += [BREAKS[name] for name in structures if name in BREAKS]
     if _needs_sides(certified):
         told.append(FOR_THESE_SIDES)

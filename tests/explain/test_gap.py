@@ -13,7 +13,7 @@ from random_models import random_form
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.explain import explain
 from pyomo_latpath.explain.fractional import measure
-from pyomo_latpath.explain.gap import Gap, declared_bound
+from pyomo_latpath.explain.gap import Declared, Gap, declared_optimum
 from pyomo_latpath.explain.relaxation import Relaxation
 from pyomo_latpath.explain.stems import column_stems
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -52,25 +52,35 @@ def test_a_gap_is_relative_to_the_plan_but_not_to_less_than_one():
 
 
 @pytest.mark.parametrize(
-    ("changes", "bound"),
+    ("changes", "bound", "fractional"),
     [
-        ({"row_upper": 3.5}, 3.5),
-        ({"col_upper": [1.5, 2.0]}, 3.5),
-        ({"col_lower": [0.5, 0.5], "row_upper": 0.9}, math.nan),
-        ({"col_lower": [0.5, 0.0], "col_upper": [1.5, 0.5]}, 2.0),
-        ({"row_upper": 3.0}, 3.0),
+        ({"row_upper": 3.5}, 3.5, 1),
+        ({"col_upper": [1.5, 2.0]}, 3.5, 1),
+        ({"col_lower": [0.5, 0.5], "row_upper": 0.9}, math.nan, None),
+        ({"col_lower": [0.5, 0.0], "col_upper": [1.5, 0.5]}, 2.0, 2),
+        ({"row_upper": 3.0}, 3.0, 0),
     ],
 )
-def test_the_bound_as_declared_is_that_of_sides_and_bounds_before_rounding(changes, bound):
+def test_the_relaxation_as_declared_is_that_before_rounding(changes, bound, fractional):
     form = LinearForm.from_arrays(
         [[1, 1]], row_lower=0, row_upper=9, col_lower=0, col_upper=3, cost=1, sense="max"
     ).replace(**changes)
     normal = normalise(form)
-    rounded = Relaxation(normal)
-    told = declared_bound(
-        normal, rounded.objective(rounded.optimum(Deadline(None))), Deadline(None)
+    relaxation = Relaxation(normal)
+    rounded = Declared(relaxation.objective(relaxation.optimum(Deadline(None))), 0)
+    told = declared_optimum(normal, rounded, Deadline(None))
+    assert told.bound == pytest.approx(bound, nan_ok=True)
+    assert told.fractional == fractional
+
+
+def test_where_rounding_makes_it_whole_both_relaxations_are_told():
+    form = LinearForm.from_arrays(
+        [[1, 1]], row_lower=0, row_upper=3.5, col_lower=0, col_upper=9, cost=1, sense="max"
     )
-    assert told == pytest.approx(bound, nan_ok=True)
+    told = explain(form)
+    assert told.whole is not None
+    assert (told.fractional.count, told.fractional.declared) == (0, 1)
+    assert (told.gap.declared_bound, told.gap.rounded_bound, told.gap.plan) == (3.5, 3, 3)
 
 
 def measured(form, **options):

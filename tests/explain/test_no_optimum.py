@@ -96,8 +96,9 @@ def test_bounds_that_cross_need_no_group():
     form = LinearForm.from_arrays(
         [[1, 1]], row_lower=0, row_upper=3, col_lower=[0.2, 0], col_upper=[0.8, 1], cost=1
     )
-    told = explain(form).no_optimum
-    assert told.kind == "infeasible" and told.names == ("bounds of x1",)
+    told = explain(form)
+    assert told.no_optimum.kind == "infeasible" and told.no_optimum.names == ("bounds of x1",)
+    assert told.no_optimum.groups == () and told.no_optimum.groups_minimal and told.complete
 
 
 def test_unbounded_models_name_what_grows():

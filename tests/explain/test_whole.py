@@ -99,3 +99,17 @@ def test_branch_and_bound_is_cut_off_at_its_limit(limit):
     seconds, ended = time_branch_and_bound(transport(), Deadline(limit))
     assert ended == (limit is None)
     assert seconds >= 0 and not math.isnan(seconds)
+
+
+def test_a_further_row_over_columns_in_two_rows_can_break_a_transport():
+    form = transport()
+    assert any("in two rows already" in text for text in breakers(certified(form)))
+    broken = LinearForm.from_arrays(
+        np.vstack((form.matrix.toarray(), [1, 0, 0, 0, 1, 0], [0, 1, 0, 1, 0, 0])),
+        row_lower=[*form.row_lower, 0, 0],
+        row_upper=[*form.row_upper, 3, 3],
+        col_lower=0,
+        col_upper=9,
+        cost=form.cost,
+    )
+    assert explain(broken).whole is None
