@@ -109,8 +109,9 @@ def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
             name=name,
             group=stems.names[stems.label[line.row]],
             sentence=(
-                f"{switch} switches all columns of row {short(name)}. {instead}, one row for each "
-                f"({inequality(rows[0]).removeprefix(': ')}) says more where {switch} is fractional"
+                f"{switch} switches the other columns of row {short(name)} on and off. {instead}, "
+                f"one row for each ({inequality(rows[0]).removeprefix(': ')}) says more where "
+                f"{switch} is fractional"
             ),
             verified=(
                 "Each part is what the row and the bounds of its columns allow at either value of "

@@ -13,7 +13,7 @@ from random_models import random_form
 from small_models import packing_form, whole_plans
 
 from pyomo_latpath.deadline import Deadline
-from pyomo_latpath.explain.cut_rounds import cut_remedy, cut_rounds
+from pyomo_latpath.explain.cut_rounds import _needed, cut_remedy, cut_rounds
 from pyomo_latpath.explain.cuts import Cut, excess, follows, halved, system_of
 from pyomo_latpath.explain.drafts import Namer
 from pyomo_latpath.explain.half_cuts import half_cuts
@@ -153,6 +153,17 @@ def test_with_them_the_bound_of_a_matching_is_its_weight(seed):
     if cuts:
         form = cut_remedy(normalise(form), cuts, Namer(form)).apply_to(form)
     assert -program_of(normalise(form)).solve().objective == pytest.approx(best)
+
+
+def test_of_many_cuts_those_stay_that_are_tight_or_that_these_rest_on():
+    def cut(columns, side, rows):
+        halves = (Fraction(1, 2),) * len(rows)
+        return Cut(columns, (1,) * len(columns), side, rows, halves, (), ())
+
+    loose, used = cut((0,), 2, (0, 1)), cut((1,), 2, (0, 2))
+    tight = cut((0, 1), 2, (1, 4))  # three rows of the model, then `loose` as 3, `used` as 4
+    kept = _needed([loose, used, tight], np.ones(2), 3)
+    assert kept == [used, cut((0, 1), 2, (1, 3))]
 
 
 def system_of_triangle():
