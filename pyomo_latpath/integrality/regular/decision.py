@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from ...certificates import BlockCertificate, Certificate, Part
 from ...deadline import Deadline
 from ...forms.numbers import Integers, read_fractions, simplest_fraction
+from ..assess import prove_tu
 from .clock import OutOfTime
 from .conflict import determinant, smallest_conflict
 from .decompose import take_apart
@@ -107,7 +108,8 @@ def totally_unimodular(A: Any, *, time_limit: float | None = None) -> TuDecision
 
 def _decide(matrix: sp.csc_array, deadline: Deadline) -> TuDecision:
     try:
-        part = take_apart(matrix, deadline)
+        quick = prove_tu(matrix, deadline, quick=True)
+        part = take_apart(matrix, deadline) if quick is None else quick[1]
     except Contradiction as found:
         rows, columns = smallest_conflict(matrix, found, deadline)
         entries = matrix[rows, :][:, columns].toarray()
