@@ -107,9 +107,9 @@ def batch(
       report.html     the same as a page
       plans/          the plans, with --plans
 
-    An instance whose source has changed since its record was written, or whose plan is missing,
-    is solved again. One that kills its worker is tried once more. Ten seconds past
-    --time-limit a local worker is ended.
+    Solved again is an instance whose source has changed since its record was written, whose plan
+    is missing, or whose time ran out and is longer now. One that kills its worker is tried once
+    more. Ten seconds past --time-limit a local worker is ended.
 
     \b
     Exit status:
@@ -202,8 +202,8 @@ def _work(
         early = STOPPED
         shown.say(f"{error}; run the same command again to go on")
     if journal.replaced:
-        why = "their source has changed or their plan is missing"
-        shown.say(f"{journal.replaced} solved again: {why}")
+        why = "another source, more time, or no plan there"
+        shown.say(f"{journal.replaced} with a record were solved again: {why}")
     return _Ending(early, shown.kept, time.monotonic() - begun)
 
 

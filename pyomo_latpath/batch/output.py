@@ -21,7 +21,13 @@ _PLAIN = tuple(item.name for item in fields(BatchRecord) if item.name != "second
 #: Columns of the table: all fields of a record, its seconds by stage.
 COLUMNS = (*_PLAIN, *(f"{stage}_seconds" for stage in STAGES))
 WHOLE = ("rows", "columns", "integers", "nonzeros", "samples", "steps", "pivots", "attempts")
-NUMBERS = ("objective", "bound", "highs_seconds", *(f"{stage}_seconds" for stage in STAGES))
+NUMBERS = (
+    "objective",
+    "bound",
+    "time_limit",
+    "highs_seconds",
+    *(f"{stage}_seconds" for stage in STAGES),
+)
 #: Rows that a Parquet table takes at a time.
 CHUNK = 10_000
 #: Unsolved instances, and lines of one reason, that the text at the end shows.

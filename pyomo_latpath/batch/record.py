@@ -46,6 +46,8 @@ class BatchRecord:
         Name of the file with the plan, where plans are written.
     attempts : int
         2 where a first worker died under the instance.
+    time_limit : float or None
+        Seconds that it was given.
     highs_seconds, highs_status : float, str, or None
         Seconds and outcome of branch and bound on the whole instance, where that was measured.
     error : str or None
@@ -74,6 +76,7 @@ class BatchRecord:
     recognition: str | None = None
     plan: str | None = None
     attempts: int = 1
+    time_limit: float | None = None
     highs_seconds: float | None = None
     highs_status: str | None = None
     error: str | None = None

@@ -71,7 +71,7 @@ def solve_many(
         Show a bar (or, where stderr is no terminal, now and then a line).
     journal : path-like, optional
         File for the records. Where it holds some already, these instances are not solved
-        again unless their source has changed.
+        again, unless their source has changed or they ran out of time and have more now.
     time_limit : float, optional
         Seconds for each instance. A process that overruns it by more than ten is ended.
     rel_gap, samples, seed

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import threading
 import time
 import traceback
@@ -54,10 +55,13 @@ class Settings:
     store: str | None = None
 
     def plain(self) -> dict[str, Any]:
-        """What records depend on, as plain data."""
-        plain = vars(self) | {"plans": self.plans is not None}
-        del plain["store"]
-        return plain
+        """What a finished record depends on, as plain data."""
+        return {
+            "rel_gap": self.rel_gap,
+            "samples": self.samples,
+            "seed": self.seed,
+            "plans": self.plans is not None,
+        }
 
 
 @dataclass(frozen=True, eq=False)
@@ -93,6 +97,7 @@ class Task:
             fingerprint=self.fingerprint(),
             status=status,
             attempts=self.attempt,
+            time_limit=self.settings.time_limit,
             error=printable(error),
         )
 
@@ -104,13 +109,18 @@ class Task:
             return ""
 
     def finished_by(self, record: BatchRecord) -> bool:
-        """Whether a record, left by an earlier run, is of the same source, and its plan there."""
+        """Whether a record of an earlier run will do.
+
+        It will not where the source has changed, its plan is missing, or its time ran out and
+        there is more now.
+        """
+        will_do = record.fingerprint == self.fingerprint()
+        if record.status == "time_limit":
+            will_do &= _or_endless(self.settings.time_limit) <= _or_endless(record.time_limit)
         plans = self.settings.plans
-        if plans is None or record.objective is None:
-            there = True
-        else:
-            there = record.plan is not None and Path(plans, record.plan).exists()
-        return there and record.fingerprint == self.fingerprint()
+        if plans is not None and record.objective is not None:
+            will_do &= record.plan is not None and Path(plans, record.plan).exists()
+        return will_do
 
 
 @dataclass(frozen=True, eq=False)
@@ -231,6 +241,7 @@ def record_of(task: Task, fingerprint: str, form: LinearForm, solution: Solution
         seconds=dict(report.seconds),
         recognition=report.recognition,
         attempts=task.attempt,
+        time_limit=task.settings.time_limit,
         error=report.why if solution.status == "error" else None,
     )
 
@@ -293,6 +304,10 @@ def printable(text: str) -> str:
     day\\udcff.mps
     """
     return text.encode("utf-8", "backslashreplace").decode("utf-8")
+
+
+def _or_endless(limit: float | None) -> float:
+    return math.inf if limit is None else limit
 
 
 def _known(value: float) -> float | None:

@@ -292,7 +292,7 @@ def test_a_mended_file_is_solved_again_and_a_removed_one_left_out(folder, in_a_t
     (folder / "days" / "broken.min").write_text(odd.FLOW)
     (folder / "days" / "crowded.min").unlink()
     result = run("days", "--out", "out")
-    assert "1 solved again: their source has changed or" in result.output
+    assert "1 with a record were solved again: another source" in result.output
     assert "left out of the results: 1 in out/journal.jsonl that are not among" in result.output
     statuses = {name: row["status"] for name, row in table(folder / "out").items()}
     assert statuses == {
@@ -300,6 +300,20 @@ def test_a_mended_file_is_solved_again_and_a_removed_one_left_out(folder, in_a_t
         "days/caves.min": "optimal",
         "days/more/endless.lp": "unbounded",
     }
+
+
+def test_what_ran_out_of_time_is_solved_again_when_there_is_more(folder, in_a_thread):
+    statuses = []
+    for limit in (["--time-limit", "0"], ["--time-limit", "0"], ["--time-limit", "60"], []):
+        result = run("good", "--out", "out", *limit)
+        (row,) = table(folder / "out").values()
+        statuses.append((result.exit_code, row["status"], "solved again" in result.output))
+    assert statuses == [
+        (1, "time_limit", False),
+        (1, "time_limit", False),
+        (0, "optimal", True),
+        (0, "optimal", False),
+    ]
 
 
 def test_a_half_line_is_told_and_mended(folder, in_a_thread):

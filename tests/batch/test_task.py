@@ -48,7 +48,7 @@ def test_options_reach_the_solve():
         [[3, 5, 7, 9]], row_lower=13, row_upper=13, col_lower=0, col_upper=3, cost=[4, 5, 9, 8]
     )
     assert record_of(wide, samples=0).samples == 0
-    late = record_of(odd.turning(), time_limit=0)
+    late = record_of(odd.turning(8), time_limit=0)  # a matrix that nothing remembers
     assert (late.status, late.objective) == ("time_limit", None)
     assert not late.solved
 
