@@ -34,6 +34,8 @@ from .relaxation import Relaxation
 
 #: A structure's name and its proof.
 Found = tuple[str, BlockCertificate]
+#: So many linear programs are kept from one solve to the next.
+MOST_PROGRAMS = 200
 
 
 @dataclass(frozen=True, eq=False)
@@ -45,14 +47,15 @@ class Rest:
     block : Block
     piece : NormalForm
     last : deque, at most one Relaxation
-        The last one solved; taken out while it is in use.
+        The last one solved; taken out while it is in use. Where there are very many blocks, it
+        holds none: each linear program takes a tenth of a megabyte.
     searched : list, at most one (str, BlockCertificate) or None
         What a longer search for a certificate came to.
     """
 
     block: Block
     piece: NormalForm
-    last: deque[Relaxation] = field(default_factory=lambda: deque(maxlen=1))
+    last: deque[Relaxation]
     searched: list[Found | None] = field(default_factory=list)
 
     def within(self, normal: NormalForm) -> Rest:
@@ -218,6 +221,8 @@ def _grouped(
     normal: NormalForm, blocks: list[Block], found: list[Found | None], recognition: str
 ) -> Prepared:
     pairs = list(zip(blocks, found, strict=True))
+    uncertified = [block for block, proof in pairs if proof is None]
+    room = 1 if len(uncertified) <= MOST_PROGRAMS else 0
     return Prepared(
         normal=normal,
         blocks=blocks,
@@ -225,9 +230,8 @@ def _grouped(
         findings=_findings(normal, blocks, found),
         groups=groups_of(normal, [(block, proof) for block, proof in pairs if proof]),
         rest=[
-            Rest(block, normal.restrict(block.rows, block.columns))
-            for block, proof in pairs
-            if proof is None
+            Rest(block, normal.restrict(block.rows, block.columns), deque(maxlen=room))
+            for block in uncertified
         ],
         recognition=recognition,
     )

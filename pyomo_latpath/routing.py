@@ -307,10 +307,12 @@ def _finding(request: _Request, rest: Rest, lp: LinearProgram, optimum: LpResult
     part, finding = rest.piece, None
     if is_whole(optimum.x, part.integer):
         block = Block(np.arange(part.rows.size), np.arange(part.columns.size), trivial=False)
+        found = rest.searched[0] if rest.searched else None
         if not rest.searched:
             budget = request.deadline.within(max(request.clock.total, LONG_SECONDS))
-            rest.searched.append(certify(part, [block], budget, "systems", request.store)[0])
-        found = rest.searched[0]
+            found = certify(part, [block], budget, "systems", request.store)[0]
+            if found is not None or not request.deadline.passed:
+                rest.searched.append(found)
         finding = None if found is None else proven_finding(part, block, found)
     if finding is None:
         count, budget = request.samples, request.deadline
