@@ -206,7 +206,7 @@ class Prober:
 
 def _readings(prices: Floats) -> Iterator[list[Fraction]]:
     """Prices as simple fractions nearby."""
-    size = max(1.0, float(np.abs(prices).max(initial=0.0)))
-    for tolerance in (1e-6, 1e-10):
-        known = {v: nearby_fraction(v, tolerance * size) for v in np.unique(prices).tolist()}
+    largest = max(1.0, float(np.abs(prices).max(initial=0.0)))
+    for tolerance in (1e-6 * largest, 1e-10 * largest):
+        known = {v: nearby_fraction(v, tolerance) for v in np.unique(prices).tolist()}
         yield [known[v] for v in prices.tolist()]

@@ -19,7 +19,7 @@ from .trial import Trial, optimum_of
 
 #: Shares of the time left: for linear programs behind smaller coefficients, for cuts, and for
 #: the search for declarations that can go.
-PROBING_SHARE, CUTTING_SHARE, DROPPING_SHARE = 0.3, 0.5, 0.5
+PROBING_SHARE, CUTTING_SHARE, DROPPING_SHARE = 0.2, 0.5, 0.5
 
 
 def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:

@@ -23,6 +23,8 @@ from .words import inequality, short
 
 #: Rows that splits may bring, at most; a longer list helps nobody.
 MOST_ROWS = 20_000
+#: Linear programs in a row that shrink nothing, after which no further ones are solved.
+PATIENCE = 5
 
 
 def rounding_drafts(normal: NormalForm) -> Iterator[Draft]:
@@ -57,16 +59,11 @@ def tightening_drafts(
         if deadline.passed:
             break
         before[line.row], after[line.row] = line, tightened(line, columns)
-    wanted = [row for row in first[probable[first]].tolist() if row in after]
-    prober = Prober(normal, deadline, near) if wanted and not deadline.passed else None
-    probed = set()
-    for row in wanted:
-        if prober is None or deadline.passed:
-            break
-        line = _probed(prober, after[row], before[row].largest)
-        if line is not after[row]:
-            after[row] = line
-            probed.add(row)
+    wanted = [
+        (after[row], before[row].largest) for row in first[probable[first]].tolist() if row in after
+    ]
+    shorter = _probed(normal, wanted, near, deadline)
+    after |= shorter
     stems = row_stems(form)
     for row, line in after.items():
         if line is not before[row]:
@@ -81,7 +78,7 @@ def tightening_drafts(
                 verified=(
                     "The new limit is proven by a linear program over all rows, computed again "
                     "exactly from its prices"
-                    if row in probed
+                    if row in shorter
                     else "The new limit is proven by the bounds of the columns, exactly"
                 ),
                 change=_written_back(form, line),
@@ -168,10 +165,23 @@ def _rounded_bounds(form: LinearForm, found: Rounded) -> Iterator[Draft]:
         )
 
 
-def _probed(prober: Prober, line: Line, switch: int) -> Line:
-    """Shrink the coefficient of a switch by a linear program."""
-    most = prober.most(line, switch)
-    return line if most is None else shrunk(line, switch, most)
+def _probed(
+    normal: NormalForm, lines: list[tuple[Line, int]], near: Basis | None, deadline: Deadline
+) -> dict[int, Line]:
+    """Shrink the switches of lines by linear programs; return those lines that change, by row."""
+    changed: dict[int, Line] = {}
+    if not lines or deadline.passed:
+        return changed
+    prober, idle = Prober(normal, deadline, near), 0
+    for line, switch in lines:
+        if deadline.passed or idle == PATIENCE:
+            break
+        most = prober.most(line, switch)
+        shorter = line if most is None else shrunk(line, switch, most)
+        idle = idle + 1 if shorter is line else 0
+        if shorter is not line:
+            changed[line.row] = shorter
+    return changed
 
 
 def _shrinking(form: LinearForm, before: Line, after: Line) -> str:
