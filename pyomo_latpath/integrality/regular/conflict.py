@@ -67,7 +67,7 @@ def _contradiction(
     """What speaks against these lines being TU, if anything does."""
     rows, columns = rows_and_columns(lines, matrix.shape[0])
     try:
-        take_apart(matrix[rows, :][:, columns].tocsc(), deadline)
+        take_apart(matrix[:, columns][rows, :], deadline)
     except Contradiction as found:
         places = np.concatenate((rows, matrix.shape[0] + columns))
         return Contradiction(places[list(found.lines)], found.minimal)
@@ -84,7 +84,7 @@ def determinant(table: Integers) -> int:
     >>> determinant(np.array([[0, 1, 1], [1, 0, 1], [1, 1, 0]]))
     2
     """
-    table, value = table.astype(np.int64), 1
+    table, value = table.astype(np.int8), 1
     size = len(table)
     for k in range(size - 1):
         rows = k + np.flatnonzero(table[k:, k])

@@ -8,7 +8,6 @@ from typing import Any
 
 import numpy as np
 import scipy.sparse as sp
-from numpy.typing import NDArray
 
 from ...certificates import BlockCertificate, Certificate, Part
 from ...deadline import Deadline
@@ -30,15 +29,12 @@ class Violator:
     ----------
     rows, columns : ndarray, shape (k,), int64
         Ascending.
-    entries : ndarray, shape (k, k), float64
-        The submatrix.
     determinant : Fraction
         Its determinant; of a single entry, the entry as it is read (0.5 as 1/2).
     """
 
     rows: Integers
     columns: Integers
-    entries: NDArray[np.float64]
     determinant: Fraction
 
 
@@ -112,12 +108,9 @@ def _decide(matrix: sp.csc_array, deadline: Deadline) -> TuDecision:
         part = take_apart(matrix, deadline) if quick is None else quick[1]
     except Contradiction as found:
         rows, columns = smallest_conflict(matrix, found, deadline)
-        entries = matrix[rows, :][:, columns].toarray()
-        value = determinant(entries)
+        value = determinant(matrix[:, columns][rows, :].toarray())
         assert abs(value) == 2
-        return TuDecision(
-            False, violator=Violator(rows, columns, entries.astype(np.float64), Fraction(value))
-        )
+        return TuDecision(False, violator=Violator(rows, columns, Fraction(value)))
     return TuDecision(True, certificate=Certificate("", (_block(part, *matrix.shape),)))
 
 
@@ -128,12 +121,10 @@ def _block(part: Part, m: int, n: int) -> BlockCertificate:
 def _single(matrix: sp.csc_array, place: int) -> Violator:
     """The violator of one entry."""
     column = np.searchsorted(matrix.indptr, place, side="right") - 1
-    value = float(matrix.data[place])
     return Violator(
         rows=np.array([matrix.indices[place]], np.int64),
         columns=np.array([column], np.int64),
-        entries=np.array([[value]]),
-        determinant=simplest_fraction(value),
+        determinant=simplest_fraction(float(matrix.data[place])),
     )
 
 

@@ -16,6 +16,7 @@ from scipy.sparse.csgraph import connected_components
 from ...certificate_sums import Sum
 from ...certificates import Conetwork, Network, Part, Step
 from ...deadline import Deadline
+from ...forms.numbers import Integers
 from ...summands import Split
 from .. import network
 from ..reductions import reduce_matrix
@@ -23,7 +24,6 @@ from . import r10
 from .clock import check_time
 from .minors import neither
 from .separate import separation
-from .separation import Bits
 from .signs import odd_hole
 from .splitting import split_at
 from .summand import Contradiction, Summand
@@ -118,7 +118,7 @@ class _Work:
         links = sp.block_array([[None, matrix], [matrix.T, None]], format="csr")
         count, block = connected_components(links, directed=False)
         if count > 1:
-            return self._take_blocks_apart(k, summand, [block == c for c in range(count)])
+            return self._take_blocks_apart(k, summand, block)
         side = separation(matrix, self.deadline)
         split, first, second = split_at(summand, side, self.next_row, self.next_column)
         self.next_row += split.order - 1
@@ -128,14 +128,15 @@ class _Work:
         self.summands.append(second)
         return [k, len(self.summands) - 1]
 
-    def _take_blocks_apart(self, k: int, summand: Summand, blocks: list[Bits]) -> list[int]:
+    def _take_blocks_apart(self, k: int, summand: Summand, block: Integers) -> list[int]:
+        """Take apart connected blocks, given the block of each line."""
         m, changed = summand.rows.size, [k]
-        pieces = [
-            summand.restricted(np.flatnonzero(block[:m]), np.flatnonzero(block[m:]))
-            for block in blocks
-        ]
-        self.summands[k] = pieces[0]
-        for piece in pieces[1:]:
+        order = np.argsort(block, kind="stable")
+        for lines in np.split(order, np.flatnonzero(np.diff(block[order])) + 1):
+            piece = summand.restricted(lines[lines < m], lines[lines >= m] - m)
+            if self.summands[k] is summand:
+                self.summands[k] = piece
+                continue
             self.steps.append(Split(piece.rows, piece.columns, np.empty((0, 2), np.int64)))
             changed.append(len(self.summands))
             self.summands.append(piece)

@@ -71,8 +71,9 @@ def test_small_matrices_without_odd_holes_against_the_definition():
         if matrix is not None:
             decision = totally_unimodular(matrix)
             assert_right(matrix, decision)
-            violator = decision.violator
-            others += violator is not None and (np.count_nonzero(violator.entries, 0) > 2).any()
+            if not decision.holds:
+                part = matrix[np.ix_(decision.violator.rows, decision.violator.columns)]
+                others += (np.count_nonzero(part, axis=0) > 2).any()
     assert others > 2
 
 
@@ -173,7 +174,6 @@ def test_one_entry_can_be_the_violator(entry, value):
     found = latpath.totally_unimodular([[1, 0, 1], [0, entry, 1]]).violator
     assert (found.rows.tolist(), found.columns.tolist()) == ([1], [1])
     assert found.determinant == value
-    assert found.entries.tolist() == [[entry]]
 
 
 def test_every_form_of_a_matrix():
