@@ -290,11 +290,12 @@ class _Draft:
         if status == "infeasible":
             with self._question("infeasible", "finding out what conflicts") as deadline:
                 self._tell_infeasible(self.solution[0], deadline)
-        elif self.solution[0].x is None:
-            self.cut_off.append("no whole plan was found in time")
         elif status != "optimal":
-            told = "the best whole plan was not found in time; the gap is an upper one"
-            self.cut_off.append(told)
+            none = self.solution[0].x is None
+            when = "in time" if status == "time_limit" else f"(its search ended with: {status})"
+            told = f"no whole plan was found {when}"
+            rough = f"the best whole plan was not found {when}; the gap is an upper one"
+            self.cut_off.append(told if none else rough)
 
     def _find_culprits(self, relaxation: Relaxation) -> None:
         with self._question("culprits", "looking for groups to blame") as deadline:
@@ -335,6 +336,8 @@ class _Draft:
     def _thin_out_rows(self) -> None:
         with self._question("rows", "looking for the rows to blame") as deadline:
             for place, (found, culprit) in enumerate(self.culprits):
+                if culprit.rows_minimal:
+                    continue
                 share = deadline.within(deadline.left / (len(self.culprits) - place))
                 rows, minimal = culprits.smallest_rows(self.remains, culprit.row_indices, share)
                 names = tuple(self.form.row_names[i] for i in rows.tolist())
