@@ -209,6 +209,9 @@ def whole_numbers(values: Floats) -> tuple[NDArray[Any], int]:
     whole = np.rint(values)
     if np.array_equal(whole, values) and np.abs(values).max(initial=0.0) < EXACT:
         return whole.astype(np.int64), 1
+    decimals = _shared_decimals(values)
+    if decimals is not None:
+        return decimals
     num, den, read = read_fractions(values, most_odd=MOST_ODD_COSTS)
     if read.all():
         common = math.lcm(*np.unique(den).tolist())
@@ -223,3 +226,19 @@ def whole_numbers(values: Floats) -> tuple[NDArray[Any], int]:
     exponent = np.where(values == 0, 0, exponent.astype(np.int64) - 53)
     lowest = min(int(exponent.min(initial=0)), 0)
     return whole * 2 ** (exponent - lowest).astype(object), 2**-lowest
+
+
+def _shared_decimals(values: Floats) -> tuple[Integers, int] | None:
+    """Read values that all have a few decimal places, as `read_fractions` would, but at once."""
+    tolerance = reading_tolerance(values)
+    for places in range(1, 6):
+        scale = 10.0**places
+        candidate = np.rint(values * scale)
+        if (np.abs(values - candidate / scale) <= tolerance).all():
+            sure = 2 * tolerance.max(initial=0.0) * scale**2 < 1
+            if not sure or np.abs(candidate).max(initial=0.0) >= EXACT:
+                return None
+            top = candidate.astype(np.int64)
+            shared = int(np.gcd.reduce(top, initial=10**places))
+            return top // shared, 10**places // shared
+    return None

@@ -8,6 +8,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from pyomo_latpath.forms.numbers import (
+    common_scale,
     nearby_fraction,
     read_fractions,
     reading_tolerance,
@@ -87,3 +88,12 @@ def test_costs_without_a_common_denominator_are_taken_bit_by_bit():
 
 def test_nearby_fraction_reads_small_values_as_zero():
     assert nearby_fraction(1e-9, 1e-7) == 0
+
+
+@given(st.lists(st.integers(-(10**7), 10**7), min_size=1, max_size=9), st.integers(0, 6))
+def test_decimals_are_read_one_by_one_as_all_at_once(numerators, places):
+    values = np.array(numerators) / 10.0**places
+    whole, denominator = whole_numbers(values)
+    read = [simplest_fraction(value) for value in values.tolist()]
+    assert [Fraction(int(top), denominator) for top in whole.tolist()] == read
+    assert denominator == common_scale(read)
