@@ -15,7 +15,8 @@ and the walk starts from the last vertex. A remembered matrix is compared number
 
 from __future__ import annotations
 
-from collections import deque
+import hashlib
+from collections import OrderedDict, deque
 from dataclasses import dataclass, field, replace
 
 import numpy as np
@@ -36,6 +37,8 @@ from .relaxation import Relaxation
 Found = tuple[str, BlockCertificate]
 #: So many linear programs are kept from one solve to the next.
 MOST_PROGRAMS = 200
+#: So many matrices are remembered: even the smallest one takes 200 kB with all that is known of it.
+MOST_MATRICES = 64
 
 
 @dataclass(frozen=True, eq=False)
@@ -251,6 +254,8 @@ def _findings(
 class RecentMatrices:
     """Memories of matrices met lately, for forms that come one by one and share no `replace`.
 
+    They are found by a digest; whoever uses a memory compares the matrix itself.
+
     Parameters
     ----------
     most : int
@@ -269,20 +274,20 @@ class RecentMatrices:
 
     def __init__(self, most: int = 5_000_000) -> None:
         self.most = most
-        self._memories: list[Memory] = []
+        self._memories: OrderedDict[bytes, tuple[Memory, int]] = OrderedDict()
 
     def lend(self, form: LinearForm) -> LinearForm:
         """Return the form with the memory of its matrix, if that was met before."""
-        for memory in self._memories:
-            known = memory.content
-            if known is not None and _same_matrix(known.normal.form, form):
-                self._memories.remove(memory)
-                self._memories.append(memory)
-                return replace(form, memory=memory)
-        self._memories = [kept for kept in self._memories if kept.content is not None]
-        entries = [kept.content.normal.form.matrix.nnz for kept in self._memories]
-        while entries and sum(entries) + form.matrix.nnz > self.most:
-            entries.pop(0)
-            self._memories.pop(0)
-        self._memories.append(form.memory)
-        return form
+        matrix = form.matrix
+        digest = hashlib.blake2b(repr(matrix.shape).encode())
+        for numbers in (matrix.indptr, matrix.indices, matrix.data):
+            digest.update(numbers.tobytes())
+        memory, _ = self._memories.pop(digest.digest(), (form.memory, 0))
+        self._memories[digest.digest()] = memory, matrix.nnz
+        while len(self._memories) > 1 and self._too_many():
+            self._memories.popitem(last=False)
+        return form if memory is form.memory else replace(form, memory=memory)
+
+    def _too_many(self) -> bool:
+        entries = sum(nonzeros for _, nonzeros in self._memories.values())
+        return len(self._memories) > MOST_MATRICES or entries > self.most
