@@ -132,17 +132,12 @@ def _matrix_of(A: Any) -> sp.csc_array:
     """Read a matrix; canonical, float64."""
     try:
         matrix = A if sp.issparse(A) else np.asarray(A)
-        if np.iscomplexobj(matrix):
-            raise ValueError("complex numbers")
-        matrix = matrix.astype(np.float64)
+        real = not np.iscomplexobj(matrix)
+        matrix = matrix.astype(np.float64) if real else matrix
     except (TypeError, ValueError) as error:
-        raise ValueError(
-            f"A is no matrix of numbers but a {type(A).__name__} ({error}); pass an array, a list "
-            "of rows of equal length or a sparse array"
-        ) from error
-    if matrix.ndim != 2:
-        shape = f"a {type(A).__name__} of shape {matrix.shape}"
-        raise ValueError(f"A is {shape}; a matrix has rows and columns")
+        raise ValueError(_refusal(A)) from error
+    if not real or matrix.ndim != 2:
+        raise ValueError(_refusal(A))
     matrix = sp.csc_array(matrix)
     matrix.sum_duplicates()
     matrix.eliminate_zeros()
@@ -151,3 +146,10 @@ def _matrix_of(A: Any) -> sp.csc_array:
         row, value = int(matrix.indices[place]), matrix.data[place]
         raise ValueError(f"the entry of A at row {row}, column {column} is {value}; use a number")
     return matrix
+
+
+def _refusal(A: Any) -> str:
+    return (
+        f"A, a {type(A).__name__}, is no matrix of real numbers; pass a two-dimensional array, a "
+        "list of rows of equal length or a sparse array"
+    )

@@ -72,26 +72,20 @@ class Residual:
             places = np.flatnonzero(self[x][outside])
             if places.size:
                 y = int(outside[places[0]])  # x and y are a pair of Q
-                self._terms.append((self._column(y), self[x]))
+                column = self._eliminated(y, [(row, column) for column, row in self._terms])
+                self._terms.append((column, self[x]))
 
     def __getitem__(self, x: int) -> Bits:
         """The lines that must be inside where x is."""
-        row = self._flags(x)
-        for weight, vector in self._terms:
-            if weight[x]:
-                row ^= vector
-        return row
+        return self._eliminated(x, self._terms)
 
-    def _column(self, y: int) -> Bits:
-        column = self._flags(y)
-        for weight, vector in self._terms:
-            if vector[y]:
-                column ^= weight
-        return column
-
-    def _flags(self, line: int) -> Bits:
+    def _eliminated(self, line: int, terms: list[tuple[Bits, Bits]]) -> Bits:
+        """A row of the adjacency, which is symmetric, minus products of columns and rows."""
         flags = np.zeros(len(self._links), np.bool_)
         flags[list(self._links[line])] = True
+        for column, row in terms:
+            if column[line]:
+                flags ^= row
         return flags
 
 
