@@ -13,6 +13,7 @@ from pyomo_latpath.batch.instance import FormInstance, SharedForm
 from pyomo_latpath.batch.task import Settings, Task, plan_name, run_task
 from pyomo_latpath.batch.workers import _Pickler, _Unpickler
 from pyomo_latpath.forms.linear_form import LinearForm
+from pyomo_latpath.prepared import RecentMatrices
 
 # Three cellars of which any two exclude each other: half of each is a vertex.
 TRIANGLE = LinearForm.from_arrays(
@@ -51,6 +52,16 @@ def test_options_reach_the_solve():
     late = record_of(odd.turning(8), time_limit=0)  # a matrix that nothing remembers
     assert (late.status, late.objective) == ("time_limit", None)
     assert not late.solved
+
+
+def test_of_very_many_matrices_only_the_last_are_remembered(monkeypatch):
+    monkeypatch.setattr("pyomo_latpath.prepared.MOST_MATRICES", 5)
+    recent = RecentMatrices()
+    forms = [recent.lend(odd.turning(size)) for size in range(2, 22)]
+    for size in range(21, 16, -1):
+        assert recent.lend(odd.turning(size)).memory is forms[size - 2].memory
+    for size in range(2, 17):
+        assert recent.lend(odd.turning(size)).memory is not forms[size - 2].memory
 
 
 def test_a_defect_is_shown_in_full():
