@@ -22,6 +22,7 @@ from .batch.runner import solve_many
 from .certificates import CertificateError, check_certificate
 from .explain.explain import explain as _explain_form
 from .explain.explanation import Explanation
+from .explain.remedy import Remedy
 from .forms.from_file import read
 from .forms.from_pyomo import compile_model
 from .forms.linear_form import LinearForm
@@ -45,6 +46,7 @@ __all__ = [
     "Finding",
     "LinearForm",
     "Move",
+    "Remedy",
     "RouteReport",
     "Solution",
     "StartError",
