@@ -45,11 +45,12 @@ def declaration_remedy(normal: NormalForm, namer: Namer, deadline: Deadline) -> 
     bounds = [c for c in changes if isinstance(c, BoundChange) and c.column in dropped]
     names = tuple(form.col_names[j] for j in columns.tolist())
     left = int(form.integer.sum()) - columns.size
+    enough = f"{left:,} {'is' if left == 1 else 'are'} enough" if left else "none is needed"
     name = namer.free("", "rounded")
     return Remedy(
         kind="drop",
         name=name,
-        title=f"Drop {counted(columns.size, 'integer declaration')}: {left:,} are enough",
+        title=f"Drop {counted(columns.size, 'integer declaration')}: {enough}",
         sentence=(
             f"Whatever whole numbers the other integer columns are, what is left has whole "
             f"vertices in {listed(names, 4)}. So the best value stays the same, and a vertex with "
