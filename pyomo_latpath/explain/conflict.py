@@ -115,8 +115,7 @@ def _violator_at(
     normal: NormalForm, place: Place, group_names: Sequence[str], deadline: Deadline
 ) -> Violator | None:
     """A conflict of entries +-1 where there is one, else the entry furthest from that."""
-    columns = place.columns
-    rows = place.rows
+    rows, columns = place.rows, place.columns
     matrix = normal.matrix[:, columns].tocsr()[rows, :]
     entries = matrix.tocoo()
     odd = np.zeros(rows.size, np.bool_)

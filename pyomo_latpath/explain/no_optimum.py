@@ -11,7 +11,6 @@ import numpy as np
 from ..blame import SHARE, blame
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm, normalise
-from ..forms.numbers import Integers
 from ..highs_mip import MipSettings, branch_and_bound
 from ..solution import Solution
 from .groups import Group
@@ -120,12 +119,11 @@ def infeasible(
     chosen_minimal = False
     if conflict(suspects):
         chosen, chosen_minimal = thin_out(suspects, conflict, deadline)
-        chosen_minimal &= "time_limit" not in statuses
-    told = _listed(names) if names else ""
-    what = f"{told} cannot all hold" if told else solution.report.why
+        chosen_minimal &= set(statuses) <= {"infeasible", "optimal"}
+    told = f"no whole plan exists: {_listed(names)} cannot all hold" if names else ""
     return NoOptimum(
         "infeasible",
-        f"no whole plan exists: {what}" if told else what,
+        told or solution.report.why,
         names,
         minimal and bool(names),
         tuple(groups[k].name for k in chosen),
@@ -150,10 +148,10 @@ def _status(
     """Whether a whole plan satisfies the rows of some groups."""
     form = remains.form
     kept = np.zeros(form.shape[0], np.bool_)
-    rows: list[Integers] = [groups[k].rows for k in some]
-    kept[np.concatenate([*rows, np.empty(0, np.int64)]).astype(np.int64)] = True
+    for k in some:
+        kept[groups[k].rows] = True
     part = remains.without(kept)
-    return branch_and_bound(
+    status = branch_and_bound(
         part.matrix,
         part.row_lower,
         part.row_upper,
@@ -164,6 +162,9 @@ def _status(
         MipSettings(),
         deadline.within(SECONDS),
     ).status
+    if status == "interrupted":
+        raise KeyboardInterrupt
+    return status
 
 
 def _listed(names: Sequence[str]) -> str:
