@@ -1,9 +1,9 @@
 """Families: one form with changed costs, sides or bounds, member by member.
 
 What recognition finds out depends on the matrix alone, so the members of a family share it, and
-each walk starts from the vertex where the last one ended (see `memory`). A loop over
+each walk starts from the vertex where the last one ended (see `prepared`). A loop over
 `form.replace(...)` gains as much; a `Family` reads the changes from a table, and its members are
-instances of a batch that travel without the form.
+instances of a batch, to whose workers the form travels once.
 """
 
 from __future__ import annotations
