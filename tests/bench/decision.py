@@ -20,23 +20,25 @@ from regular_models import disguised, regular
 from pyomo_latpath.certificates import check_certificate
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.integrality.regular.decision import totally_unimodular
+from pyomo_latpath.integrality.regular.minors import neither
 from pyomo_latpath.integrality.regular.signs import odd_hole
 
 Generator = np.random.Generator
 
 
-def sums(lines: int, rng: Generator):
-    """Networks and transposed networks of some 25 rows, joined by sums of order 2 and 3."""
+def sums(lines: int, rng: Generator, pivots: int = 0):
+    """Four networks and transposed networks, joined by sums of order 2 and 3."""
     kinds = ("network", "conetwork")
-    piece = regular(rng, leaves=max(2, lines // 60), size=25, kinds=kinds, orders=(3, 3, 2))
-    return sp.csc_array(disguised(rng, piece).matrix)
+    while True:
+        piece = regular(rng, leaves=4, size=lines // 12, kinds=kinds, orders=(3, 3, 2))
+        matrix = sp.csc_array(disguised(rng, piece, pivots).matrix)
+        if neither(matrix, Deadline(None)):
+            return matrix
 
 
 def pivoted_sums(lines: int, rng: Generator):
-    """The same after as many pivots as there are rows: dense, and no summand in sight."""
-    kinds = ("network", "conetwork")
-    piece = regular(rng, leaves=max(2, lines // 60), size=25, kinds=kinds, orders=(3, 3, 2))
-    return sp.csc_array(disguised(rng, piece, pivots=lines // 2).matrix)
+    """The same after many pivots: dense, and no summand in sight."""
+    return sums(lines, rng, pivots=lines // 2)
 
 
 def many_r10(lines: int, rng: Generator):
@@ -77,8 +79,8 @@ def hidden_fano(lines: int, rng: Generator):
 
 #: Each with sizes in lines, rows and columns together, and whether the matrix is TU.
 KINDS: tuple[tuple[Callable[..., sp.csc_array], tuple[int, ...], bool], ...] = (
-    (sums, (60, 120, 240, 400, 800), True),
-    (pivoted_sums, (60, 120, 240, 400), True),
+    (sums, (60, 120, 240, 480, 960, 1920), True),
+    (pivoted_sums, (60, 120, 240, 480), True),
     (many_r10, (60, 120, 240, 400, 800), True),
     (planted, (400, 800, 1600, 3200, 6400), False),
     (planted_elsewhere, (400, 800, 1600, 3200, 6400), False),
