@@ -31,8 +31,8 @@ def instances_of(given: Any) -> Iterable[Instance]:
     Parameters
     ----------
     given : path-like, Family, or iterable
-        Of paths, Pyomo models, `LinearForm`s, pairs of a name and one of these, and objects with
-        `name`, `fingerprint()` and `load()`. It is consumed one by one.
+        Of paths, Pyomo models, `LinearForm`s, pairs of a name and a model or form, and objects
+        with `name`, `fingerprint()` and `load()`. It is consumed one by one.
 
     Returns
     -------
@@ -42,7 +42,7 @@ def instances_of(given: Any) -> Iterable[Instance]:
     Raises
     ------
     InputError
-        For a path that leads nowhere.
+        For a path that leads nowhere, if only paths are given.
     TypeError
         For anything else, also while it is consumed.
     """
@@ -52,7 +52,8 @@ def instances_of(given: Any) -> Iterable[Instance]:
         return from_paths([os.fspath(item) for item in given])
     if isinstance(given, Family):
         return given
-    if isinstance(given, LinearForm) or not isinstance(given, Iterable):
+    single = isinstance(given, LinearForm) or hasattr(given, "component_data_objects")
+    if single or not isinstance(given, Iterable):
         raise TypeError(f"a batch is made of many instances, not of one {type(given).__name__}")
     return _Each(given)
 
@@ -76,7 +77,7 @@ def _from_item(number: int, item: Any) -> Iterable[Instance]:
     if isinstance(item, tuple) and len(item) == 2 and isinstance(item[0], str):
         name, item = item
     if isinstance(item, str | os.PathLike):
-        return from_paths([os.fspath(item)])
+        return _from_path(os.fspath(item))
     if isinstance(item, LinearForm):
         return [FormInstance(name or f"instance {number}", item)]
     if hasattr(item, "fingerprint") and hasattr(item, "load"):
@@ -85,6 +86,13 @@ def _from_item(number: int, item: Any) -> Iterable[Instance]:
         raise TypeError(f"item {number} of the batch is a {type(item).__name__}, and no instance")
     own = "" if item.name in NAMELESS else item.name
     return [_from_model(name or own or f"instance {number}", item)]
+
+
+def _from_path(path: str) -> Iterable[Instance]:
+    try:
+        return from_paths([path])
+    except InputError as error:  # it must not cost the items that follow
+        return [BrokenInstance(path, str(error))]
 
 
 def _from_model(name: str, model: Any) -> Instance:

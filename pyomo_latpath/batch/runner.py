@@ -57,8 +57,9 @@ def solve_many(
     ----------
     instances : path, Family, or iterable
         Paths of model files (folders and patterns as well), Pyomo models, `LinearForm`s, pairs of
-        a name and one of these, or objects with `name`, `fingerprint()` and `load()`. An iterable
-        is consumed as the work goes on; Pyomo models are compiled here, files read by the workers.
+        a name and a model or form, or objects with `name`, `fingerprint()` and `load()`. An
+        iterable is consumed as the work goes on; models are compiled here, files read by the
+        workers.
     workers : int, optional
         Local processes, as many as there are cores when not given (one is a process, too); a
         script starts them below `if __name__ == "__main__":`. With an executor: how many it has.

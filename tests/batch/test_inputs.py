@@ -91,6 +91,13 @@ def test_solve_many_takes_one_path_many_paths_and_all_else_one_by_one():
     assert [item.name for item in found] == [LATE, "turns", "instance 3"]
 
 
+def test_a_path_that_leads_nowhere_among_other_items_costs_itself_only():
+    found = list(instances_of(iter(["nowhere", LATE])))
+    assert [item.name for item in found] == ["nowhere", LATE]
+    with pytest.raises(ValueError, match="nowhere: no such file"):
+        found[0].load()
+
+
 def test_fingerprints_tell_each_change_of_the_source(folder):
     file, script = FileInstance(LATE), ScriptInstance("days/build.py", "days/data.json")
     prints = [file.fingerprint(), script.fingerprint()]

@@ -232,7 +232,7 @@ def test_pyomo_models_pairs_and_forms(tmp_path, thread):
     assert "bend" in found["curved"].error
 
 
-@pytest.mark.parametrize("wrong", [odd.turning(), 5, None])
+@pytest.mark.parametrize("wrong", [odd.turning(), pyo.ConcreteModel(), 5, None])
 def test_what_is_no_batch_is_refused_at_once(wrong):
     with pytest.raises(TypeError, match="made of many instances"):
         latpath.solve_many(wrong)
