@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
@@ -19,6 +19,8 @@ import scipy.sparse as sp
 from ..forms.linear_form import ComponentNames, LinearForm, NumberedNames
 from ..forms.numbers import Integers
 
+#: What tells the parts apart.
+By = Literal["component", "name", "pattern"]
 #: Stems that say nothing.
 BLANK = frozenset({"#", "r", "c", "x", "e", "row", "rows", "con", "cons", "constr", "constraint"})
 #: So many names for each stem, at least, or the names are taken to say nothing.
@@ -46,7 +48,7 @@ class Stems:
 
     names: tuple[str, ...]
     label: Integers
-    by: Literal["component", "name", "pattern"]
+    by: By
 
     def members(self) -> list[Integers]:
         """Rows or columns of each part, ascending."""
@@ -92,15 +94,20 @@ def row_stems(form: LinearForm) -> Stems:
     (('town', 'budget'), [0, 0, 1])
     """
     stems = _stems(form.row_names)
-    blank = {stem.lower() for stem in stems.names} <= BLANK
-    scattered = len(form.row_names) > SMALL and len(stems.names) * FEW > len(form.row_names)
-    if stems.by == "name" and (blank or scattered):
+    if stems.by == "component":
+        return stems
+    if len(form.row_names) > SMALL and len(stems.names) * FEW > len(form.row_names):
         return _patterns(form)
-    names = list(stems.names)
-    if "#" in names:
-        k = names.index("#")
-        names[k] = f"rows like {form.row_names[int(np.argmax(stems.label == k))]}"
-    return replace(stems, names=tuple(names))
+    blank = np.array([name.lower() in BLANK for name in stems.names], np.bool_)[stems.label]
+    if not blank.any():
+        return stems
+    pattern = _patterns(form).label.tolist()
+    first: dict[int, str] = {}
+    for i in np.flatnonzero(blank).tolist():
+        first.setdefault(pattern[i], _like(form, i))
+    pairs = zip(blank.tolist(), pattern, stems.label.tolist(), strict=True)
+    names = [first[k] if nothing else stems.names[j] for nothing, k, j in pairs]
+    return _numbered(names, "pattern" if blank.mean() > 0.5 else "name")
 
 
 def column_stems(form: LinearForm) -> Stems:
@@ -121,7 +128,7 @@ def _stems(names: Sequence[str]) -> Stems:
     return _numbered([stem_of(name) for name in names], "name")
 
 
-def _numbered(stems: list[str], by: Literal["component", "name"]) -> Stems:
+def _numbered(stems: list[str], by: By) -> Stems:
     place = {stem: k for k, stem in enumerate(dict.fromkeys(stems))}
     return Stems(tuple(place), np.array([place[stem] for stem in stems], np.int64), by)
 
@@ -150,6 +157,10 @@ def _by_entries(form: LinearForm, by_row: sp.csr_array) -> Stems:
         key = (int(kind[i]), whole, *np.unique(by_row.data[here]).tolist())
         if key not in place:
             place[key] = len(names)
-            names.append(f"rows like {form.row_names[i]}")
+            names.append(_like(form, i))
         label[i] = place[key]
     return Stems(tuple(names), label, "pattern")
+
+
+def _like(form: LinearForm, row: int) -> str:
+    return f"rows like {form.row_names[row]}"

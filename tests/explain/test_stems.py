@@ -65,6 +65,13 @@ def test_names_that_say_nothing_give_way_to_patterns():
     assert stems.label.tolist() == [0, 1, 0, 2, 3]
 
 
+def test_names_that_say_nothing_beside_others_are_told_apart_by_pattern():
+    matrix = np.array([[1, 1], [2, 1], [1, 1], [1, 1], [5, 1]])
+    stems = row_stems(form_with(["R1", "R2", "demand[1]", "demand[2]", "R3"], matrix))
+    assert stems.names == ("rows like R1", "rows like R2", "demand", "rows like R3")
+    assert stems.by == "pattern"
+
+
 def test_names_without_two_of_a_kind_say_nothing():
     names = [f"{chr(97 + k)}{chr(98 + k)}q" for k in range(25)]
     assert row_stems(form_with(names)).names == (f"rows like {names[0]}",)
