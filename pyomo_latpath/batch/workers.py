@@ -3,8 +3,8 @@
 The executors of the standard library cannot end one worker and keep the others; here a task that
 hangs, eats up the memory or kills its process costs itself only. Each process has a pipe. It works
 through what comes in on it, sends an answer for each task in order, and ends when the pipe does,
-so no process outlives its batch. While its tasks are quick, a process gets some ahead, so that it
-does not wait for the journal.
+so no process outlives its batch. While its tasks are quick and light, a process gets some ahead,
+so that it does not wait for the journal.
 """
 
 from __future__ import annotations
@@ -32,8 +32,9 @@ from .task import Answer, Lost, Task, run_task
 
 #: Seconds that a task may overrun its time limit before its process is ended.
 GRACE = 10.0
-#: Tasks that a process may hold while they take less than so many seconds each.
-AHEAD, QUICK = 8, 0.05
+#: Tasks that a process may hold while each takes less than so many seconds, and so many bytes:
+#: what does not fit into the pipe would have the batch wait until the process reads it.
+AHEAD, QUICK, LIGHT = 8, 0.05, 2**14
 #: Processes in a row that may end before they are ready.
 MOST_STILLBORN = 3
 
@@ -110,7 +111,7 @@ class Processes:
         if len(self.workers) < self.count:
             self.workers.append(_Worker())
             return self.workers[-1]
-        quick = [worker for worker in self.workers if worker.quick and len(worker.tasks) < AHEAD]
+        quick = [worker for worker in self.workers if worker.takes_ahead]
         return min(quick, key=lambda worker: len(worker.tasks), default=None)
 
     def _listen(self, worker: _Worker) -> list[Answer]:
@@ -196,8 +197,12 @@ class _Worker:
         theirs.close()
         self.tasks: deque[Task] = deque()
         self.forms: set[str] = set()
-        self.ready = self.quick = False
+        self.ready = self.quick = self.light = False
         self.since = time.monotonic()
+
+    @property
+    def takes_ahead(self) -> bool:
+        return self.quick and self.light and len(self.tasks) < AHEAD
 
     @property
     def runs(self) -> bool:
@@ -213,6 +218,7 @@ class _Worker:
         with suppress(BrokenPipeError, ConnectionError):  # its end shows when it is listened to
             self.pipe.send_bytes(file.getbuffer())
         self.forms |= pickler.sent
+        self.light = file.tell() <= LIGHT
 
     def end(self) -> None:
         self.process.kill()

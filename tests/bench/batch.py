@@ -37,7 +37,7 @@ def seconds_each(forms: Iterable[latpath.LinearForm], workers: int) -> tuple[flo
         records = latpath.solve_many(
             forms, workers=workers, progress=False, journal=Path(folder) / "journal.jsonl"
         )
-        for _ in itertools.islice(records, 50):  # workers start, and load what they need
+        for _ in itertools.islice(records, 20):  # workers start, and load what they need
             pass
         begun, count, solving = time.perf_counter(), 0, 0.0
         for record in records:
@@ -50,11 +50,11 @@ def seconds_each(forms: Iterable[latpath.LinearForm], workers: int) -> tuple[flo
 def main() -> None:
     """Print both."""
     count = int(sys.argv[1]) if len(sys.argv) > 1 else 500
-    small = [turns(5, seed) for seed in range(count)]
+    small = [turns(5 + seed % 20, seed) for seed in range(count)]
     each, solving = seconds_each(small, 1)
     print(f"small instances, one worker: {each * 1e3:.2f} ms each, {solving * 1e3:.2f} ms of it")
     print(f"in solves: {(each - solving) * 1e3:.2f} ms on top", flush=True)
-    larger = [turns(40, seed) for seed in range(count)]
+    larger = [turns(100 + seed, seed) for seed in range(count // 5)]
     one, two = (seconds_each(larger, workers)[0] for workers in (1, 2))
     print(f"larger instances: {one * 1e3:.1f} ms each with one worker, {two * 1e3:.1f} ms with two")
     print(f"a second worker: {one / two:.2f}x")
