@@ -22,7 +22,7 @@ from .batch.runner import solve_many
 from .certificates import CertificateError, check_certificate
 from .explain.explain import explain as _explain_form
 from .explain.explanation import Explanation
-from .explain.remedy import Remedy
+from .explain.remedies.remedy import Remedy
 from .forms.from_file import read
 from .forms.from_pyomo import compile_model
 from .forms.linear_form import LinearForm

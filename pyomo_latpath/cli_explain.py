@@ -14,8 +14,8 @@ from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_
 from .cli_output import whole_file
 from .explain.explain import explain as explain_form
 from .explain.explanation import Explanation
-from .explain.page import to_html
-from .explain.text import to_text
+from .explain.telling.page import to_html
+from .explain.telling.text import to_text
 from .forms.from_file import read
 from .pages.markup import visible
 

@@ -26,7 +26,6 @@ from ..integrality.finding import Finding, Verdict, Witness
 from ..solution import Solution
 from . import culprits, no_optimum, whole
 from .conflict import Violator, violators
-from .context import Context
 from .culprits import Culprit, CulpritSet, Search
 from .explanation import Explanation
 from .fractional import Fractional, measure
@@ -36,8 +35,9 @@ from .no_optimum import NoOptimum
 from .reasons import find_reasons
 from .relaxation import Place, Relaxation, places_of
 from .remains import Certified, Remains
-from .remedies import find_remedies
-from .remedy import Remedy
+from .remedies.context import Context
+from .remedies.find import find_remedies
+from .remedies.remedy import Remedy
 from .sketch import sketch_of, summaries
 from .stems import column_stems, row_stems
 from .whole import Whole

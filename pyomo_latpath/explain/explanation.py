@@ -19,7 +19,7 @@ from .groups import Group
 from .no_optimum import NoOptimum
 from .plain import plain
 from .reasons import Reason
-from .remedy import Remedy
+from .remedies.remedy import Remedy
 from .sketch import BlockSummary, Sketch
 from .whole import Whole
 
@@ -136,17 +136,17 @@ class Explanation:
 
     def to_text(self) -> str:
         """The answer as a page of text."""
-        from .text import to_text
+        from .telling.text import to_text
 
         return to_text(self)
 
     def to_html(self) -> str:
         """The answer as one self-contained HTML page."""
-        from .page import to_html
+        from .telling.page import to_html
 
         return to_html(self)
 
     def _repr_html_(self) -> str:
-        from .notebook import to_notebook
+        from .telling.notebook import to_notebook
 
         return to_notebook(self)

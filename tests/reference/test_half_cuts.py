@@ -7,10 +7,10 @@ import numpy as np
 import pytest
 
 from pyomo_latpath.deadline import Deadline
-from pyomo_latpath.explain.cut_rounds import cut_remedy, cut_rounds
-from pyomo_latpath.explain.cuts import system_of
-from pyomo_latpath.explain.drafts import Namer
-from pyomo_latpath.explain.half_cuts import half_cuts
+from pyomo_latpath.explain.remedies.cut_rounds import cut_remedy, cut_rounds
+from pyomo_latpath.explain.remedies.cuts import system_of
+from pyomo_latpath.explain.remedies.drafts import Namer
+from pyomo_latpath.explain.remedies.half_cuts import half_cuts
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
 from pyomo_latpath.integrality.sampling import program_of
