@@ -11,12 +11,9 @@ from dataclasses import dataclass
 
 import pyomo.environ as pyo
 import pytest
+from plugin_models import QUIET, route, termination
 from pyomo.contrib.solver.common.factory import SolverFactory as CurrentFactory
-from pyomo.contrib.solver.common.results import (
-    SolutionStatus,
-    TerminationCondition,
-    legacy_termination_condition_map,
-)
+from pyomo.contrib.solver.common.results import SolutionStatus, TerminationCondition
 
 import pyomo_latpath.plugin  # noqa: F401  (registers the solver)
 
@@ -26,7 +23,6 @@ UNBOUNDED = TerminationCondition.unbounded
 UNSURE = (TerminationCondition.infeasibleOrUnbounded, TerminationCondition.unknown)
 
 APIS = {"current": CurrentFactory, "legacy": pyo.SolverFactory}
-QUIET = {"load_solutions": False, "raise_exception_on_nonoptimal_result": False}
 
 
 @dataclass(frozen=True)
@@ -263,19 +259,12 @@ def build(name: str) -> pyo.ConcreteModel:
     return model
 
 
-def outcome(results) -> TerminationCondition:
-    if hasattr(results, "termination_condition"):
-        return results.termination_condition
-    word = results.solver.termination_condition
-    return next(key for key, old in legacy_termination_condition_map.items() if old == word)
-
-
 @pytest.mark.parametrize("api", APIS)
 @pytest.mark.parametrize("name", CASES)
 def test_outcome(name, api):
     expected, model = CASES[name], build(name)
     results = APIS[api]("latpath").solve(model, rel_gap=0, **QUIET)
-    assert outcome(results) is expected.outcome
+    assert termination(results) is expected.outcome
     if api == "current" and expected.outcome is not OPTIMAL:
         assert results.solution_status is SolutionStatus.noSolution
         assert results.incumbent_objective is None
@@ -287,9 +276,8 @@ def test_outcome(name, api):
 def test_plan(name, api):
     expected, model = CASES[name], build(name)
     results = APIS[api]("latpath").solve(model, rel_gap=0)
-    route = results.extra_info.route if api == "current" else results.solver.route
     if expected.route is not None:
-        assert route == expected.route
+        assert route(results) == expected.route
     if expected.objective is not None:
         goal = next(model.component_data_objects(pyo.Objective, active=True))
         assert pyo.value(goal) == pytest.approx(expected.objective, abs=1e-9)
