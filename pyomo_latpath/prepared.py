@@ -28,7 +28,7 @@ from .forms.linear_form import LinearForm, Memory
 from .forms.normalise import NormalForm, normalise
 from .forms.numbers import Integers
 from .grouping import Group, groups_of
-from .integrality.assess import KnownProofs, certifiable, certify
+from .integrality.certify import KnownProofs, certifiable, certify
 from .integrality.finding import BlockFinding
 from .integrality.verdicts import proven_finding
 from .relaxation import Relaxation

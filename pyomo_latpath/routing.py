@@ -34,7 +34,7 @@ from .forms.plan import feasible_start, largest_violation
 from .grouping import Group
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, check_settings
-from .integrality.assess import KnownProofs, certify
+from .integrality.certify import KnownProofs, certify
 from .integrality.finding import BlockFinding, Finding, Verdict
 from .integrality.implied import mostly_implied
 from .integrality.verdicts import conflict_finding, proven_finding, sampled_finding

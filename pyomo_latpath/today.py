@@ -26,7 +26,7 @@ from .forms.blocks import Block, blocks_of
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm, normalise
 from .forms.plan import feasible_start, largest_violation
-from .integrality.assess import certify
+from .integrality.certify import certify
 from .paths.moves import Change, elementary_changes
 from .paths.network_oracle import NetworkStructure
 from .solution import Move, Solution

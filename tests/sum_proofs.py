@@ -11,7 +11,7 @@ from regular_models import Piece
 
 from pyomo_latpath.certificate_sums import R10_MATRICES
 from pyomo_latpath.certificates import R10, CertificateError, Part, Split, Sum
-from pyomo_latpath.integrality.assess import prove_tu
+from pyomo_latpath.integrality.recognise import prove_tu
 from pyomo_latpath.summands import Summands
 
 

@@ -30,7 +30,8 @@ from pyomo_latpath.certificates import (
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.integrality import reductions, unimodular
-from pyomo_latpath.integrality.assess import assess, prove_tu
+from pyomo_latpath.integrality.assess import assess
+from pyomo_latpath.integrality.recognise import prove_tu
 
 #: The system x = b, and the matrix without rows and columns.
 ONE_ROW = Unimodular(np.empty((0, 3), np.int64), Network(np.array([[0, 1]]), np.array([[0, 1]])))

@@ -70,7 +70,7 @@ class CertificateStore:
     Examples
     --------
     >>> import tempfile
-    >>> from pyomo_latpath.integrality.assess import prove_tu
+    >>> from pyomo_latpath.integrality.recognise import prove_tu
     >>> matrix = sp.csc_array([[1, 1, 0], [0, 1, 1], [1, 1, 1]])
     >>> with tempfile.TemporaryDirectory() as folder:
     ...     CertificateStore(folder).keep(matrix, prove_tu(matrix), seconds=1.0)

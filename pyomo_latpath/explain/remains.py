@@ -16,7 +16,7 @@ from ..deadline import Deadline
 from ..forms.blocks import Block, blocks_of
 from ..forms.linear_form import Flags, LinearForm
 from ..forms.normalise import NormalForm, normalise
-from ..integrality.assess import certify
+from ..integrality.certify import certify
 from ..integrality.regular.clock import OutOfTime
 from ..integrality.regular.signs import odd_hole
 

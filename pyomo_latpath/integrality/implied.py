@@ -16,7 +16,7 @@ from ..forms.blocks import blocks_of
 from ..forms.linear_form import Flags
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
-from .assess import certify
+from .certify import certify
 
 
 def implied_columns(normal: NormalForm, deadline: Deadline | None = None) -> Flags:

@@ -21,7 +21,7 @@ from tu_models import tu_matrix
 from pyomo_latpath.batch import store as store_module
 from pyomo_latpath.batch.store import CertificateStore, key_of
 from pyomo_latpath.forms.linear_form import LinearForm
-from pyomo_latpath.integrality.assess import prove_tu
+from pyomo_latpath.integrality.recognise import prove_tu
 from pyomo_latpath.routing import solve
 
 
@@ -225,7 +225,7 @@ def test_a_solve_asks_the_store_before_it_searches(tmp_path, monkeypatch):
     first = solve(form, store=CertificateStore(tmp_path))
     assert first.report.recognition == "found"
     assert files(tmp_path)
-    monkeypatch.setattr("pyomo_latpath.integrality.assess.prove_tu", None)  # no search, now
+    monkeypatch.setattr("pyomo_latpath.integrality.certify.prove_tu", None)  # no search, now
     again = LinearForm.from_arrays(
         form.matrix, row_lower=-9, row_upper=7, col_lower=0, col_upper=2, cost=-2
     )

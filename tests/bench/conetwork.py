@@ -20,7 +20,7 @@ from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.blocks import blocks_of
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import NormalForm, normalise
-from pyomo_latpath.integrality.assess import certify
+from pyomo_latpath.integrality.certify import certify
 from pyomo_latpath.paths.conetwork_flow import ConetworkOracle, ConetworkStructure
 from pyomo_latpath.paths.network_oracle import NetworkStructure
 from pyomo_latpath.paths.vertex_oracle import HighsBasis, Vertex

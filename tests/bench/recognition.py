@@ -24,7 +24,7 @@ from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.blocks import blocks_of
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
-from pyomo_latpath.integrality.assess import certify
+from pyomo_latpath.integrality.certify import certify
 
 SIZES = (62_500, 125_000, 250_000, 500_000, 1_000_000)
 Generator = np.random.Generator

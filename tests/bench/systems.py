@@ -21,7 +21,7 @@ from system_models import FAMILIES, Family, System
 from pyomo_latpath.certificates import Part, Unimodular
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.integrality import unimodular
-from pyomo_latpath.integrality.assess import prove_tu
+from pyomo_latpath.integrality.recognise import prove_tu
 
 ROWS = (625, 1_250, 2_500, 5_000, 10_000)
 

@@ -13,7 +13,7 @@ from pyomo_latpath.explain.whole import breakers, keepers, sentences, time_branc
 from pyomo_latpath.forms.blocks import blocks_of
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
-from pyomo_latpath.integrality.assess import certify
+from pyomo_latpath.integrality.certify import certify
 from pyomo_latpath.integrality.finding import Verdict
 
 

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from model_files import write
 
 from pyomo_latpath.forms.dimacs import ASSIGNMENT, FLOW, ArcNames, read_assignment, read_flow
 from pyomo_latpath.forms.dimacs_text import parse_at_once, parse_line_by_line
@@ -36,12 +37,6 @@ a 1 3 7
 a 1 4 2
 a 2 4 3
 """
-
-
-def write(folder: Path, name: str, text: str) -> Path:
-    path = folder / name
-    path.write_bytes(text.encode())
-    return path
 
 
 def test_a_flow_becomes_its_node_arc_matrix(tmp_path):

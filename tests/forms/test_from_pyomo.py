@@ -1,4 +1,4 @@
-"""Compiling Pyomo models: every kind of row, column and domain, and every refusal."""
+"""Compiling Pyomo models: every kind of row, column and domain."""
 
 from __future__ import annotations
 
@@ -7,34 +7,17 @@ import pickle
 
 import numpy as np
 import pyomo.environ as pyo
-import pyomo.gdp as gdp
-import pyomo.mpec as mpec
 import pytest
+from dairy import SIZES, column, dairy, disjunction, snapshot
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from pyomo.common.errors import InfeasibleConstraintException
-from pyomo.contrib.solver.common.util import IncompatibleModelError
-from pyomo.network import Arc, Port
 from pyomo.repn.plugins.standard_form import LinearStandardFormCompiler
 
-from pyomo_latpath.forms.from_pyomo import UnsupportedModelError, compile_model
+from pyomo_latpath.forms.from_pyomo import compile_model
 from pyomo_latpath.forms.linear_form import ComponentNames
 
 INF = math.inf
-SIZES = ("small", "large")
-
-
-def dairy() -> pyo.ConcreteModel:
-    """Wheels of two sizes on the shelves of a cave, and the vans that fetch them."""
-    model = pyo.ConcreteModel(name="dairy")
-    model.wheels = pyo.Var(SIZES, domain=pyo.NonNegativeIntegers, bounds=(None, 9))
-    model.vans = pyo.Var(domain=pyo.Integers, bounds=(-1, 4))
-    model.price = pyo.Param(SIZES, initialize={"small": 2, "large": 5}, mutable=True)
-    model.profit = pyo.Objective(
-        expr=sum(model.price[size] * model.wheels[size] for size in SIZES) - model.vans,
-        sense=pyo.maximize,
-    )
-    return model
 
 
 def entries(form):
@@ -48,10 +31,6 @@ def entries(form):
 
 def sides(form):
     return {name: (form.row_lower[i], form.row_upper[i]) for i, name in enumerate(form.row_names)}
-
-
-def column(form, name):
-    return list(form.col_names).index(name)
 
 
 def test_costs_bounds_and_kinds_are_those_of_the_model():
@@ -144,16 +123,6 @@ def test_fixed_variables_are_numbers():
         ("share", "wheels[large]"): 0.25,
     }
     assert sides(form) == {"space": (-INF, 8), "trip": (4, INF), "share": (-INF, 2)}
-
-
-@pytest.mark.parametrize("name", ["vans", "wheels[small]"])
-def test_a_variable_fixed_at_none_is_named(name):
-    model = dairy()
-    model.space = pyo.Constraint(expr=model.vans + model.wheels["small"] <= 3)
-    model.find_component(name).fixed = True
-    with pytest.raises(ValueError, match=r"fixed without a value") as caught:
-        compile_model(model)
-    assert name in str(caught.value)
 
 
 @pytest.mark.parametrize("limit", [1, 3])
@@ -266,139 +235,6 @@ def test_domains_that_are_intervals(domain, expected):
     assert (form.col_lower[0], form.col_upper[0], bool(form.integer[0])) == expected
 
 
-@pytest.mark.parametrize(
-    "domain",
-    [
-        {1, 3, 5},
-        {1, 2, 4},
-        {1.5, 2.5},
-        {"brie"},
-        {"brie", 1},
-        pyo.RangeSet(0, 10, 2),
-        pyo.Any,
-        pyo.RangeSet(2, 5, 0) | {0},
-    ],
-)
-def test_other_domains_are_refused_with_the_variable(domain):
-    model = pyo.ConcreteModel()
-    model.wheels = pyo.Var(["brie"], domain=domain)
-    model.goal = pyo.Objective(expr=model.wheels["brie"])
-    with pytest.raises(UnsupportedModelError, match=r"wheels\[brie\]"):
-        compile_model(model)
-
-
-def disjunction(model):
-    model.early = gdp.Disjunct()
-    model.late = gdp.Disjunct()
-    model.early.rule = pyo.Constraint(expr=model.vans <= 1)
-    model.late.rule = pyo.Constraint(expr=model.vans >= 2)
-    model.either = gdp.Disjunction(expr=[model.early, model.late])
-    return "early|late|either"
-
-
-def indicated(model):
-    model.early = gdp.Disjunct()
-    model.early.rule = pyo.Constraint(expr=model.vans <= 1)
-    return "early"
-
-
-def sos(model):
-    model.one = pyo.SOSConstraint(var=model.wheels, sos=1)
-    return "one"
-
-
-def piecewise(model):
-    model.cost = pyo.Var()
-    model.curve = pyo.Piecewise(
-        model.cost,
-        model.vans,
-        pw_pts=[-1, 2, 4],
-        f_rule=[0, 1, 7],
-        pw_constr_type="EQ",
-        pw_repn="SOS2",
-    )
-    return r"curve\.SOS2"
-
-
-def logical(model):
-    model.open = pyo.BooleanVar()
-    model.rule = pyo.LogicalConstraint(expr=model.open)
-    return "rule"
-
-
-def complementary(model):
-    model.pair = mpec.Complementarity(
-        expr=mpec.complements(model.vans >= 0, model.wheels["small"] >= 0)
-    )
-    return "pair"
-
-
-def unexpanded(model):
-    model.out = pyo.Block()
-    model.out.port = Port(initialize={"wheels": model.wheels["small"]})
-    model.arrive = Port(initialize={"wheels": model.wheels["large"]})
-    model.road = Arc(source=model.out.port, destination=model.arrive)
-    return "road"
-
-
-def quadratic(model):
-    model.rule = pyo.Constraint(expr=model.vans * model.wheels["small"] <= 3)
-    return "rule"
-
-
-def nonlinear(model):
-    model.rule = pyo.Constraint(SIZES, rule=lambda m, size: pyo.log(m.wheels[size] + 1) <= 3)
-    return r"rule\[small\]"
-
-
-def quadratic_objective(model):
-    model.profit.set_value(model.vans**2)
-    return "profit"
-
-
-def two_objectives(model):
-    model.second = pyo.Objective(expr=model.vans)
-    return "'profit', 'second'"
-
-
-@pytest.mark.parametrize(
-    "spoil",
-    [
-        disjunction,
-        indicated,
-        sos,
-        piecewise,
-        logical,
-        complementary,
-        unexpanded,
-        quadratic,
-        nonlinear,
-        quadratic_objective,
-        two_objectives,
-    ],
-)
-def test_what_is_not_linear_is_refused_by_name(spoil):
-    model = dairy()
-    name = spoil(model)
-    before = snapshot(model)
-    with pytest.raises(UnsupportedModelError, match=name):
-        compile_model(model)
-    assert snapshot(model) == before
-    assert issubclass(UnsupportedModelError, IncompatibleModelError)
-
-
-def snapshot(model):
-    """Everything of a model that compiling could have changed."""
-    return (
-        [component.name for component in model.component_objects()],
-        [
-            (var.name, var.value, var.stale, var.fixed, var.bounds)
-            for var in model.component_data_objects(pyo.Var)
-        ],
-        [(con.name, con.active) for con in model.component_data_objects(pyo.Constraint)],
-    )
-
-
 @pytest.mark.parametrize("transformation", ["gdp.bigm", "gdp.hull"])
 def test_transformed_disjunctions_compile(transformation):
     model = dairy()
@@ -406,44 +242,6 @@ def test_transformed_disjunctions_compile(transformation):
     pyo.TransformationFactory(transformation).apply_to(model)
     form = compile_model(model)
     assert {"early.binary_indicator_var", "late.binary_indicator_var"} <= set(form.col_names)
-
-
-def test_an_abstract_model_is_refused():
-    with pytest.raises(UnsupportedModelError, match="not constructed"):
-        compile_model(pyo.AbstractModel())
-
-
-@pytest.mark.parametrize("number", [math.nan, INF, -INF])
-@pytest.mark.parametrize("place", ["coefficient", "cost", "offset", "side", "bound"])
-def test_numbers_that_are_not_finite_are_named(number, place):
-    model = dairy()
-    model.number = pyo.Param(initialize=number, mutable=True, domain=pyo.Any)
-    model.space = pyo.Constraint(
-        expr=model.vans + model.wheels["small"] * (model.number if place == "coefficient" else 1)
-        <= (model.number if place == "side" else 3)
-    )
-    if place == "cost":
-        model.profit.set_value(model.number * model.vans)
-    elif place == "offset":
-        model.profit.set_value(model.number + model.vans)
-    elif place == "bound":
-        model.vans.setub(model.number)
-    if number == INF and place in ("side", "bound"):
-        form = compile_model(model)
-        assert INF in (form.row_upper[0], form.col_upper[column(form, "vans")])
-        return
-    named = {"coefficient": "space", "cost": "vans", "offset": "constant", "side": "space"}
-    with pytest.raises(ValueError, match=named.get(place, "vans")):
-        compile_model(model)
-
-
-def test_a_param_without_a_value_is_named():
-    model = dairy()
-    model.lost = pyo.Param(mutable=True)
-    model.space = pyo.Constraint(expr=model.lost * model.vans <= 3)
-    with pytest.raises(ValueError, match="lost") as caught:
-        compile_model(model)
-    assert "space" in str(caught.value)
 
 
 def test_names_lead_back_to_the_components_and_travel_without_them():

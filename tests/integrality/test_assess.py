@@ -15,8 +15,10 @@ from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.blocks import blocks_of
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
-from pyomo_latpath.integrality.assess import assess, certify, prove_tu
+from pyomo_latpath.integrality.assess import assess
+from pyomo_latpath.integrality.certify import certify
 from pyomo_latpath.integrality.finding import Verdict
+from pyomo_latpath.integrality.recognise import prove_tu
 
 TRIANGLE = np.array([[1, 1, 0], [0, 1, 1], [1, 0, 1]])
 #: Difference rows: at most two nonzeros in a row, more in a column.

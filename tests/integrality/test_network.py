@@ -18,8 +18,8 @@ from scipy.sparse.csgraph import connected_components
 from pyomo_latpath.certificates import Conetwork, Network
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.integrality import network
-from pyomo_latpath.integrality.assess import prove_tu
 from pyomo_latpath.integrality.graph_realisation import realise
+from pyomo_latpath.integrality.recognise import prove_tu
 
 
 def random_network(m, n, rng, reach=1000, local=1000):

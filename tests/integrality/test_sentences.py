@@ -18,7 +18,8 @@ from pyomo_latpath.certificates import (
     Unimodular,
 )
 from pyomo_latpath.forms.linear_form import LinearForm
-from pyomo_latpath.integrality.assess import assess, prove_tu
+from pyomo_latpath.integrality.assess import assess
+from pyomo_latpath.integrality.recognise import prove_tu
 from pyomo_latpath.integrality.sentences import describe, describe_part, shape_of
 
 LINE = Network(np.array([[0, 1]]), np.array([[0, 1], [1, 0]]))

@@ -23,7 +23,8 @@ from pyomo_latpath.certificates import (
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.integrality import unimodular
-from pyomo_latpath.integrality.assess import assess, prove_tu
+from pyomo_latpath.integrality.assess import assess
+from pyomo_latpath.integrality.recognise import prove_tu
 
 
 @st.composite

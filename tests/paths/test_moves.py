@@ -10,7 +10,7 @@ from known_matrices import R10
 from tu_models import KINDS, plans, tu_form
 
 from pyomo_latpath.deadline import Deadline
-from pyomo_latpath.integrality.assess import prove_tu
+from pyomo_latpath.integrality.recognise import prove_tu
 from pyomo_latpath.paths import moves
 from pyomo_latpath.paths.moves import cycles, elementary_changes
 from pyomo_latpath.paths.network_oracle import NetworkStructure

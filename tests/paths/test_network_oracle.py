@@ -10,7 +10,7 @@ from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.blocks import blocks_of
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
-from pyomo_latpath.integrality.assess import certify
+from pyomo_latpath.integrality.certify import certify
 from pyomo_latpath.paths import network_oracle, path_solver
 from pyomo_latpath.paths.box import box_of
 from pyomo_latpath.paths.cost_scaling import phase_bound, phase_costs, scaling_walk

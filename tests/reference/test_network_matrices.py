@@ -11,8 +11,8 @@ from known_matrices import FANO, R10
 
 from pyomo_latpath.certificates import Conetwork, Network
 from pyomo_latpath.integrality import network
-from pyomo_latpath.integrality.assess import prove_tu
 from pyomo_latpath.integrality.graph_realisation import realise
+from pyomo_latpath.integrality.recognise import prove_tu
 
 UTILITIES = nx.complete_bipartite_graph(3, 3)
 

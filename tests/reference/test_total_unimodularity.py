@@ -11,7 +11,7 @@ from known_matrices import FANO, R10
 
 from pyomo_latpath.certificates import CertificateError, Conetwork, Network
 from pyomo_latpath.integrality import incidence, interval
-from pyomo_latpath.integrality.assess import prove_tu
+from pyomo_latpath.integrality.recognise import prove_tu
 
 
 def random_matrices(count, most_rows, most_columns, seed, entries=(0, 0, 1, 1, -1)):

@@ -12,7 +12,7 @@ import scipy.sparse as sp
 from ...certificates import BlockCertificate, Certificate, Part
 from ...deadline import Deadline
 from ...forms.numbers import Integers, read_fractions, simplest_fraction
-from ..assess import prove_tu
+from ..recognise import prove_tu
 from .clock import OutOfTime
 from .conflict import determinant, smallest_conflict
 from .decompose import take_apart
