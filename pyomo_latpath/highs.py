@@ -53,11 +53,35 @@ _CODE_OF = (
 
 
 class SilentHighs(highspy.Highs):  # type: ignore[misc]
-    """A HiGHS instance that prints no banner when it is made."""
+    """A HiGHS instance that prints nothing of itself.
+
+    Attributes
+    ----------
+    cancelled : bool
+        Whether Ctrl-C ended the last `solve`. HiGHS's own status does not always tell.
+    """
+
+    cancelled = False
 
     def enableCallbacks(self) -> None:
         set_option(self, "output_flag", False)
         super().enableCallbacks()
+
+    def joinSolve(self, solver_thread: Any = None, interrupt_limit: int = 1) -> Any:
+        """Wait for the end; Ctrl-C asks HiGHS to stop, a second one waits no longer."""
+        self.cancelled = False
+        try:
+            return self._joined()
+        except KeyboardInterrupt:
+            self.cancelled = True
+            self.cancelSolve()
+            return self._joined()
+
+    def _joined(self) -> Any:
+        ended, status = False, None
+        while not ended:
+            ended, status = self.wait(0.1)
+        return status
 
 
 class OptionError(ValueError):

@@ -129,14 +129,16 @@ def _run_mip(highs: Any, settings: MipSettings, deadline: Deadline) -> str:
     asked = (settings.options or {}).get("time_limit", math.inf)
     limit = min(float(asked), deadline.left)
     set_option(highs, "time_limit", highs.getRunTime() + limit)
-    highs.HandleKeyboardInterrupt = True
+    highs.HandleKeyboardInterrupt = True  # `solve` then runs in a thread of its own
     # HiGHS keeps one set of threads for all instances and refuses another number of them.
     fixed = settings.threads is not None or "threads" in (settings.options or {})
     if fixed:
         highs.resetGlobalScheduler(True)
-    highs.run()
+    highs.solve()
     if fixed:
         highs.resetGlobalScheduler(True)
+    if highs.cancelled:
+        return "interrupted"
     status = outcome(highs)
     return "limit" if status == "pivot_limit" else status
 

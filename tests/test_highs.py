@@ -1,5 +1,10 @@
 """The talk with HiGHS: outcomes mapped completely, options checked, clocks kept."""
 
+import signal
+import subprocess
+import sys
+import time
+
 import highspy
 import numpy as np
 import pytest
@@ -117,3 +122,35 @@ def test_the_number_of_threads_may_change_from_solve_to_solve():
             *knapsack, np.ones(3, np.int32), MipSettings(threads=threads), FOREVER
         )
         assert (result.status, result.bound) == ("optimal", -9.0)
+
+
+SEARCH = """
+import numpy as np
+import pyomo_latpath as latpath
+
+# Market shares: a plan is at hand, the proof that it is the best one takes days.
+rng = np.random.default_rng(0)
+share = rng.integers(0, 100, (6, 50))
+over = np.eye(6)
+form = latpath.LinearForm.from_arrays(
+    np.hstack((share, over, -over)), row_lower=share.sum(axis=1) // 2,
+    row_upper=share.sum(axis=1) // 2, col_lower=0, col_upper=[1] * 50 + [np.inf] * 12,
+    cost=[0] * 50 + [1] * 12, integer=[True] * 50 + [False] * 12,
+)
+found = latpath.solve(form, log=lambda line: print(line, flush=True))
+print("status", found.status, found.x is not None, found.objective >= found.bound)
+"""
+
+
+@pytest.mark.skipif(sys.platform == "win32", reason="no SIGINT can be sent to one process there")
+def test_an_interrupted_search_keeps_the_best_plan():
+    command = [sys.executable, "-c", SEARCH]
+    with subprocess.Popen(command, stdout=subprocess.PIPE, text=True) as search:
+        for line in search.stdout:
+            if line.startswith("Src:"):  # the search itself begins
+                break
+        time.sleep(2)
+        search.send_signal(signal.SIGINT)
+        told = search.communicate(timeout=60)[0].splitlines()
+    assert search.returncode == 0 and told[-1] == "status interrupted True True"
+    assert not any("Ctrl-C" in line for line in told)
