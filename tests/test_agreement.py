@@ -14,8 +14,10 @@ import numpy as np
 import pyomo.environ as pyo
 import pytest
 from exact_milp import solve_exactly
+from plugin_models import QUIET
 from pyomo.contrib.solver.common.results import TerminationCondition
 from random_models import KINDS, pyomo_model, random_form
+from small_forms import assignment, triangle
 
 from pyomo_latpath import routing
 from pyomo_latpath.forms.from_pyomo import compile_model
@@ -24,7 +26,6 @@ from pyomo_latpath.forms.normalise import normalise
 from pyomo_latpath.plugin import Latpath, LegacyLatpath
 
 PER_KIND = 125
-QUIET = {"load_solutions": False, "raise_exception_on_nonoptimal_result": False}
 STATUS = {
     TerminationCondition.convergenceCriteriaSatisfied: "optimal",
     TerminationCondition.provenInfeasible: "infeasible",
@@ -282,11 +283,7 @@ def crew_plan(rng, size: int, grain: float) -> tuple[LinearForm, list[tuple[int,
     """
     base = np.add.outer(rng.integers(10**8, 10**9, size), rng.integers(10**8, 10**9, size))
     cost = base * grain + rng.integers(0, 4, (size, size)) * grain
-    matrix = np.vstack([np.kron(np.eye(size), np.ones(size)), np.kron(np.ones(size), np.eye(size))])
-    form = LinearForm.from_arrays(
-        matrix, row_lower=1, row_upper=1, col_lower=0, col_upper=1, cost=cost.ravel()
-    )
-    return form, list(itertools.permutations(range(size)))
+    return assignment(cost), list(itertools.permutations(range(size)))
 
 
 @pytest.mark.parametrize("grain", [1.0, 2.0**-30])
@@ -309,15 +306,7 @@ def test_plans_that_differ_in_the_tenth_digit(grain, api):
 @pytest.mark.parametrize("api", [Latpath, LegacyLatpath])
 def test_close_calls_by_branch_and_bound(api):
     # A triangle of pairwise conflicts: the relaxation takes half of each.
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=-math.inf,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=[10**9, 10**9 + 1, 10**9 - 1],
-        sense="max",
-    )
+    form = triangle(cost=[10**9, 10**9 + 1, 10**9 - 1], sense="max")
     model = pyomo_model(form)
     results = api().solve(model, rel_gap=0, abs_gap=0)
     assert [model.x[j].value for j in range(3)] == [0, 1, 0]

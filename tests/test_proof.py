@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_forms import TRIANGLE
 
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
@@ -77,8 +78,7 @@ def test_only_optimal_plans_are_proven_optimal(seed):
 
 
 def test_a_gap_below_the_unit_of_the_costs_is_no_gap():
-    odd_cycle = [[1, 1, 0], [0, 1, 1], [1, 0, 1]]
-    normal = make(odd_cycle, 1, INF, 0, 1, 3)
+    normal = make(TRIANGLE, 1, INF, 0, 1, 3)
     result = relaxation(normal)
     assert result.objective == pytest.approx(4.5)
     costs = whole_costs(normal)

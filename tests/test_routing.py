@@ -7,13 +7,13 @@ import pytest
 import scipy.sparse as sp
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_forms import TRIANGLE
 
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.highs import OptionError
 from pyomo_latpath.routing import solve
 
 INF = np.inf
-TRIANGLE = [[1, 1, 0], [0, 1, 1], [1, 0, 1]]
 
 
 def form_of(A, row_lower, row_upper, cost, col_lower=0, col_upper=1, **more):

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_forms import assignment
 from tu_models import KINDS, feasible, plans, tu_form
 
 import pyomo_latpath as latpath
@@ -75,17 +76,7 @@ def test_given_bonuses_keep_their_order():
 def test_few_solves_still_know_when_to_stay():
     rng = np.random.default_rng(5)
     n = 20
-    rows, columns = np.divmod(np.arange(n * n), n)
-    matrix = np.zeros((2 * n, n * n))
-    matrix[rows, np.arange(n * n)] = matrix[n + columns, np.arange(n * n)] = 1
-    form = LinearForm.from_arrays(
-        matrix,
-        row_lower=1,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=rng.integers(1, 99, n * n),
-    )
+    form = assignment(rng.integers(1, 99, (n, n)))
     start = routing.solve(form.replace(cost=form.cost + rng.integers(-20, 21, n * n))).x
     every = stay_or_change(form, start, most=99).points
     few = stay_or_change(form, start, most=1).points

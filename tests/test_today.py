@@ -5,11 +5,11 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
-import scipy.sparse as sp
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import KINDS as GENERAL
 from random_models import random_form
+from small_forms import assignment
 from tu_models import KINDS, feasible, tu_form
 
 from pyomo_latpath import routing
@@ -366,20 +366,7 @@ def test_plans_that_hardly_differ_do_not_differ():
 
 def test_large_assignments_move_along_their_cycles():
     n = 60
-    rows, columns = np.divmod(np.arange(n * n), n)
-    index = np.arange(n * n)
-    matrix = sp.csc_array(
-        (np.ones(2 * n * n), (np.append(rows, n + columns), np.append(index, index)))
-    )
-    rng = np.random.default_rng(4)
-    form = LinearForm.from_arrays(
-        matrix,
-        row_lower=1,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=rng.integers(1, 1000, n * n),
-    )
+    form = assignment(np.random.default_rng(4).integers(1, 1000, (n, n)))
     start = np.eye(n).ravel()
     solution = solve(form, start=start)
     for move in solution.report.moves:

@@ -7,6 +7,7 @@ from exact_milp import solve_exactly
 from grouped_models import grouped_form
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_forms import triangle
 
 from pyomo_latpath.explain.explain import explain
 from pyomo_latpath.explain.remains import Remains
@@ -67,15 +68,7 @@ def test_rows_and_groups_are_named_where_the_relaxation_is_infeasible():
 
 
 def test_whole_plans_alone_may_conflict():
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=1,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=1,
-        row_names=["pair[1]", "pair[2]", "end"],
-    )
+    form = triangle(row_lower=1, cost=1, row_names=["pair[1]", "pair[2]", "end"])
     told = explain(form)
     assert told.no_optimum.kind == "infeasible"
     assert set(told.no_optimum.groups) == {"pair", "end"}

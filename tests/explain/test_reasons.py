@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from small_forms import triangle
 
 from pyomo_latpath.explain.groups import groups_of, oddities_of
 from pyomo_latpath.explain.parity import parity_conflict
@@ -129,10 +130,7 @@ def test_a_parity_conflict_is_found_exactly_where_there_is_one(seed, m, n):
 
 @pytest.mark.parametrize("changes", [{"integer": [True, True, False]}, {"row_upper": [1, 1, 2]}])
 def test_inequalities_and_continuous_columns_have_no_parity(changes):
-    sides = {"row_lower": 1, "row_upper": 1} | changes
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]], col_lower=0, col_upper=1, cost=0, **sides
-    )
+    form = triangle(row_lower=1, cost=0).replace(**changes)
     assert parity_conflict(normalise(form)) is None
 
 

@@ -5,6 +5,7 @@ import math
 import numpy as np
 import pytest
 import scipy.sparse as sp
+from small_forms import pairs
 
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.explain import explain
@@ -27,10 +28,9 @@ def certified(form):
 
 def transport(**changes):
     """Two caves, three towns."""
-    matrix = np.vstack((np.kron(np.eye(2), np.ones(3)), np.kron(np.ones(2), np.eye(3))))
     sides = {"row_lower": [0, 0, 2, 2, 2], "row_upper": [4, 4, 9, 9, 9]} | changes
     return LinearForm.from_arrays(
-        matrix, col_lower=0, col_upper=9, cost=[3, 1, 4, 1, 5, 9], **sides
+        pairs(2, 3), col_lower=0, col_upper=9, cost=[3, 1, 4, 1, 5, 9], **sides
     )
 
 

@@ -9,6 +9,7 @@ from brute_force import is_tu, vertices
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import KINDS, random_form
+from small_forms import TRIANGLE
 
 from pyomo_latpath.certificates import Certificate, Conetwork, Network, check_certificate
 from pyomo_latpath.deadline import Deadline
@@ -20,7 +21,6 @@ from pyomo_latpath.integrality.certify import certify
 from pyomo_latpath.integrality.finding import Verdict
 from pyomo_latpath.integrality.recognise import prove_tu
 
-TRIANGLE = np.array([[1, 1, 0], [0, 1, 1], [1, 0, 1]])
 #: Difference rows: at most two nonzeros in a row, more in a column.
 DIFFERENCES = np.array([[1, -1, 0, 0], [0, 1, -1, 0], [0, 1, 0, -1], [1, 0, 0, -1]])
 RUNS = np.array([[1, 0, 0, 1], [1, 1, 0, 1], [1, 1, 1, 1], [0, 1, 1, 0]])

@@ -7,6 +7,7 @@ import pytest
 from brute_force import solve
 from hypothesis import given
 from hypothesis import strategies as st
+from small_forms import triangle
 
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
@@ -68,15 +69,7 @@ def vertex_of(form):
 
 
 def test_the_vertex_of_an_odd_cycle_is_one_half_everywhere():
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=-np.inf,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=-1,
-    )
-    assert exact_vertex(*vertex_of(form)) == [Fraction(1, 2)] * 3
+    assert exact_vertex(*vertex_of(triangle())) == [Fraction(1, 2)] * 3
 
 
 @pytest.mark.parametrize("step", [0.1, 0.3, 1 / 3, 1e-3])

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_forms import triangle
 
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -77,14 +78,6 @@ def test_a_whole_optimum_beside_a_fractional_one_is_found():
     ("most_pivots", "deadline"), [(10_000, Deadline(0)), (0, FOREVER)], ids=["time", "pivots"]
 )
 def test_without_time_or_pivots_there_is_no_search(most_pivots, deadline):
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=1,
-        row_upper=2,
-        col_lower=0,
-        col_upper=1,
-        cost=[1, 1, 0],
-    )
-    normal = normalise(form)
+    normal = normalise(triangle(row_lower=1, row_upper=2, cost=[1, 1, 0]))
     lp = program_of(normal)
     assert whole_optimum(normal, lp, lp.solve(), 0, most_pivots, deadline) is None

@@ -4,9 +4,9 @@ import itertools
 
 import numpy as np
 import pytest
-import scipy.sparse as sp
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from small_forms import assignment, triangle
 
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -192,17 +192,6 @@ def test_a_start_becomes_a_vertex_that_is_no_dearer(seed):
     assert (basis.col_status == 1).sum() + (basis.row_status == 1).sum() == normal.rows.size
 
 
-def assignment(size, cost):
-    cell = np.arange(size * size)
-    A = sp.csc_array(
-        (np.ones(2 * cell.size), (np.r_[cell // size, size + cell % size], np.r_[cell, cell])),
-        shape=(2 * size, cell.size),
-    )
-    return normalise(
-        LinearForm.from_arrays(A, row_lower=1, row_upper=1, col_lower=0, col_upper=1, cost=cost)
-    )
-
-
 @pytest.mark.parametrize(
     "cost",
     [
@@ -216,7 +205,7 @@ def assignment(size, cost):
     ids=["whole", "decimal", "float", "large", "many sizes", "tenth digit"],
 )
 def test_optima_are_exact_whatever_the_costs_are_like(cost):
-    normal = assignment(25, cost(np.random.default_rng(3), 625))
+    normal = normalise(assignment(cost(np.random.default_rng(3), 625).reshape(25, 25)))
     result = walk_to_optimum(normal, whole_costs(normal), FOREVER)
     assert result.status == "optimal"
     assert result.proof.exact, result.proof.reason
@@ -225,7 +214,7 @@ def test_optima_are_exact_whatever_the_costs_are_like(cost):
 
 def test_large_blocks_walk_from_a_start_too():
     rng = np.random.default_rng(4)
-    normal = assignment(60, rng.integers(1, 100, 3600).astype(float))
+    normal = normalise(assignment(rng.integers(1, 100, (60, 60)).astype(float)))
     start = np.eye(60).ravel()
     assert not Tableau.fits(normal)
     result = walk_to_optimum(normal, whole_costs(normal), FOREVER, start)
@@ -247,20 +236,12 @@ def test_without_a_box_the_walk_goes_at_true_costs_and_has_no_bound():
 
 
 def test_the_time_limit_ends_a_walk():
-    normal = assignment(30, np.random.default_rng(0).random(900))
+    normal = normalise(assignment(np.random.default_rng(0).random((30, 30))))
     assert walk_to_optimum(normal, whole_costs(normal), Deadline(0)).status == "time_limit"
 
 
 def test_a_block_that_is_not_unimodular_gets_no_tableau():
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=0,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=-1,
-    )
-    normal = normalise(form)
+    normal = normalise(triangle())
     lp = LinearProgram(
         normal.matrix,
         normal.row_lower,

@@ -10,6 +10,7 @@ from collections.abc import Hashable, Sequence
 
 import numpy as np
 import pytest
+from small_forms import pairs
 
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.integrality.finding import Verdict
@@ -303,10 +304,8 @@ def transport_form(cost, most: Sequence[float], least: Sequence[float]) -> Linea
     """Ship from each row at most, into each column at least so much."""
     cost = np.asarray(cost, dtype=float)
     m, n = cost.shape
-    rows = np.kron(np.eye(m), np.ones(n))
-    columns = np.kron(np.ones(m), np.eye(n))
     return LinearForm.from_arrays(
-        np.vstack([rows, columns]),
+        pairs(m, n),
         row_lower=[-INF] * m + list(least),
         row_upper=list(most) + [INF] * n,
         col_lower=0,

@@ -8,6 +8,7 @@ import networkx as nx
 import numpy as np
 import pytest
 from scipy.optimize import linear_sum_assignment
+from small_forms import assignment
 
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.routing import solve
@@ -17,15 +18,7 @@ def assignment_form(cost: np.ndarray, sense: str) -> LinearForm:
     """Every row of the shorter side exactly once, of the longer one at most once."""
     m, n = cost.shape
     exact = np.concatenate([np.full(m, m <= n), np.full(n, n <= m)])
-    return LinearForm.from_arrays(
-        np.vstack([np.kron(np.eye(m), np.ones(n)), np.kron(np.ones(m), np.eye(n))]),
-        row_lower=np.where(exact, 1.0, -math.inf),
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=cost.ravel(),
-        sense=sense,
-    )
+    return assignment(cost, row_lower=np.where(exact, 1.0, -math.inf), sense=sense)
 
 
 @pytest.mark.parametrize("seed", range(16))

@@ -8,6 +8,7 @@ import pytest
 import scipy.sparse as sp
 from brute_force import determinant, is_tu, minors, network_matrix, vertices
 from known_matrices import FANO, R10
+from small_forms import TRIANGLE
 
 from pyomo_latpath.certificates import CertificateError, Conetwork, Network
 from pyomo_latpath.integrality import incidence, interval
@@ -79,8 +80,7 @@ def test_hoffman_and_kruskal():
     for matrix in random_matrices(60, 2, 3, seed=1, entries=(0, 1, 1, -1, 2)):
         seen.add(is_tu(matrix))
         assert all_whole_for_whole_sides(matrix, 3) == is_tu(matrix)
-    odd_cycle = np.array([[1, 1, 0], [0, 1, 1], [1, 0, 1]])
-    assert not all_whole_for_whole_sides(odd_cycle, 1)
+    assert not all_whole_for_whole_sides(TRIANGLE, 1)
     assert seen == {True, False}
 
 

@@ -9,6 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import random_form
+from small_forms import triangle
 from switched_models import packing_form, whole_plans
 
 from pyomo_latpath.deadline import Deadline
@@ -113,15 +114,7 @@ def test_of_many_cuts_those_stay_that_are_tight_or_that_these_rest_on():
 
 
 def system_of_triangle():
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=-np.inf,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=-1,
-    )
-    return system_of(normalise(form))
+    return system_of(normalise(triangle()))
 
 
 def test_the_check_refuses_every_cut_that_is_changed():
@@ -169,15 +162,7 @@ def test_columns_between_any_bounds_and_rows_of_any_kind(lower, upper):
 
 
 def test_rows_with_continuous_columns_are_left_alone():
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=-np.inf,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=-1,
-        integer=[True, True, False],
-    )
+    form = triangle(integer=[True, True, False])
     assert half_cuts(system_of(normalise(form)), np.full(3, 0.5)) == []
 
 

@@ -6,6 +6,7 @@ from exact_milp import solve_exactly
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import random_form
+from small_forms import triangle
 from switched_models import context_of, packing_form, switched_form, whole_plans
 
 import pyomo_latpath as latpath
@@ -223,14 +224,7 @@ def test_models_without_a_fractional_optimum_have_no_remedies(what):
 
 def test_equations_of_odd_parity_are_cut_to_nothing():
     """An odd cycle of equations x + y = 1 has no whole plan; one cut of it and none is left."""
-    form = LinearForm.from_arrays(
-        [[1, 1, 0], [0, 1, 1], [1, 0, 1]],
-        row_lower=1,
-        row_upper=1,
-        col_lower=0,
-        col_upper=1,
-        cost=[1, 2, 3],
-    )
+    form = triangle(row_lower=1, cost=[1, 2, 3])
     for remedy in remedies_of(form):
         assert len(whole_plans(remedy.apply_to(form))) == 0
 

@@ -8,14 +8,13 @@ import scipy.sparse as sp
 from decisions import without_odd_holes
 from known_matrices import FANO, R10
 from regular_models import disguised, regular
+from small_forms import TRIANGLE
 
 import pyomo_latpath as latpath
 from pyomo_latpath.certificates import Certificate, check_certificate
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.integrality.assess import assess
 from pyomo_latpath.integrality.finding import Verdict
-
-TRIANGLE = np.array([[1, 1, 0], [0, 1, 1], [1, 0, 1]])
 
 
 def form_of(matrix, **changes):
