@@ -14,7 +14,7 @@ import click
 
 from .certificates import Certificate, CertificateError, check_certificate
 from .cli_batch import batch
-from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_of, sentence
+from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_of
 from .cli_explain import explain
 from .cli_output import (
     Outcome,
@@ -24,10 +24,10 @@ from .cli_output import (
     table_head,
     table_rows,
     write_certificate,
-    write_plan,
 )
+from .files import sentence
 from .forms.from_file import ModelFileError, read
-from .plan_files import read_plan, write_moves
+from .plan_files import read_plan, write_moves, write_plan
 from .starts import StartError
 from .today import solve as solve_form
 

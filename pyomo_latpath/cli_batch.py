@@ -33,10 +33,10 @@ from .batch.progress import Progress
 from .batch.record import Summary
 from .batch.runner import Tasks, run
 from .batch.summary import summarise
-from .batch.task import Settings, sentence
+from .batch.task import Settings
 from .batch.workers import Processes
-from .cli_output import whole_file
 from .deadline import Deadline
+from .files import sentence, whole_file
 
 SOLVED, UNSOLVED, FAILED, STOPPED, INTERRUPTED = 0, 1, 2, 3, 130
 

@@ -1,4 +1,4 @@
-"""What all commands share: paths to read and write, and how an error is told."""
+"""What all commands share: paths to read and write, and how a complaint is written."""
 
 from __future__ import annotations
 
@@ -24,13 +24,6 @@ def names_of(files: Sequence[Path]) -> list[str]:
     """File names where they tell the files apart, else whole paths."""
     names = [path.name for path in files]
     return names if len(set(names)) == len(names) else [str(path) for path in files]
-
-
-def sentence(error: Exception) -> str:
-    """An error that a file can cause, as one sentence that names the file."""
-    if isinstance(error, OSError) and error.filename is not None:
-        return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
-    return str(error)
 
 
 def complain(words: str) -> None:

@@ -10,12 +10,12 @@ from typing import Any
 
 import click
 
-from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_of, sentence
-from .cli_output import whole_file
+from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_of
 from .explain.explain import explain as explain_form
 from .explain.explanation import Explanation
 from .explain.telling.page import to_html
 from .explain.telling.text import to_text
+from .files import sentence, whole_file
 from .forms.from_file import read
 from .pages.markup import visible
 

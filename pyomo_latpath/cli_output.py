@@ -2,25 +2,23 @@
 
 from __future__ import annotations
 
-import csv
 import json
 import math
-import os
 import textwrap
 from collections import Counter
 from collections.abc import Iterable, Iterator, Sequence
-from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
-from typing import IO, Any
+from typing import Any
 
 from .certificates import Certificate, fingerprint
+from .console import WIDTH, entry, number
+from .files import whole_file
 from .forms.linear_form import LinearForm
 from .integrality.finding import Finding, Verdict
 from .integrality.sentences import FEW, describe_part
 from .solution import RouteReport, Solution
 
-WIDTH = 80
 #: Names shown of a conflict before the rest is only counted.
 BLAME_SHOWN = 5
 #: Summands shown of a matrix that is a sum.
@@ -99,7 +97,7 @@ def record(outcome: Outcome) -> dict[str, Any]:
         report = solution.report
         fields["verdict"] = report.finding.verdict.value
         fields["structure"] = ", ".join(report.finding.structures) or None
-        fields["samples"] = samples_looked_at(report.finding)
+        fields["samples"] = report.finding.samples
         fields["route"], fields["why"] = report.route, report.why
         fields["objective"], fields["bound"] = _known(solution.objective), _known(solution.bound)
         fields["proof"] = report.proof
@@ -123,38 +121,36 @@ def describe(outcome: Outcome) -> Iterator[str]:
     report = solution.report
     yield outcome.name
     rows, columns = form.shape
-    yield from _entry(
+    yield from entry(
         "size",
         f"{rows} rows, {columns} columns ({int(form.integer.sum())} integer), "
         f"{form.matrix.nnz} nonzeros",
     )
-    yield from _entry("verdict", verdict_words(report.finding))
+    yield from entry("verdict", verdict_words(report.finding))
     yield from sum_words(report.finding)
-    yield from _entry("route", f"{report.route}: {report.why}")
+    yield from entry("route", f"{report.route}: {report.why}")
     exact = "checked in exact arithmetic" if report.proof == "exact" else "within tolerances"
     settled = solution.status in ("optimal", "infeasible", "unbounded")
-    yield from _entry("status", f"{solution.status}, {exact}" if settled else solution.status)
+    yield from entry("status", f"{solution.status}, {exact}" if settled else solution.status)
     if report.blame:
-        yield from _entry("conflict", _some(report.blame))
+        yield from entry("conflict", _some(report.blame))
     if solution.x is not None:
         gap = "" if solution.status == "optimal" else f" (bound {number(solution.bound)})"
-        yield from _entry("objective", number(solution.objective) + gap)
+        yield from entry("objective", number(solution.objective) + gap)
     if report.repair is not None:
-        yield from _entry("repair", f"values of the start changed: {len(report.repair.names)}")
+        yield from entry("repair", f"values of the start changed: {len(report.repair.names)}")
     if report.moves or report.further_moves:
-        yield from _entry("moves", _moves_words(report))
+        yield from entry("moves", _moves_words(report))
     if report.largest_violation > 0:
-        yield from _entry(
-            "violation", f"a row or bound is missed by {report.largest_violation:.3g}"
-        )
+        yield from entry("violation", f"a row or bound is missed by {report.largest_violation:.3g}")
     if report.walk is not None:
         walk = report.walk
         bound = "" if walk.step_bound is None else f", never more than {walk.step_bound} steps"
-        yield from _entry("walk", f"{_steps(solution)} steps, {walk.pivots} pivots{bound}")
+        yield from entry("walk", f"{_steps(solution)} steps, {walk.pivots} pivots{bound}")
         if walk.note:
-            yield from _entry("", walk.note)
+            yield from entry("", walk.note)
     parts = ", ".join(f"{name} {seconds:.3f}" for name, seconds in _stages(solution))
-    yield from _entry("seconds", f"{sum(report.seconds.values()):.3f} ({parts})")
+    yield from entry("seconds", f"{sum(report.seconds.values()):.3f} ({parts})")
 
 
 def verdict_words(finding: Finding) -> str:
@@ -170,8 +166,7 @@ def verdict_words(finding: Finding) -> str:
         return "proven: every vertex is whole" + (f" ({structures})" if structures else "")
     if finding.verdict is Verdict.SAMPLED:
         return (
-            f"sampled: no fractional vertex among the {samples_looked_at(finding)} looked at; "
-            "this is no proof"
+            f"sampled: no fractional vertex among the {finding.samples} looked at; this is no proof"
         )
     if finding.verdict is Verdict.REFUTED:
         return "refuted: a fractional vertex is known"
@@ -186,18 +181,13 @@ def sum_words(finding: Finding) -> Iterator[str]:
         return
     part = largest.certificate.blocks[0].part
     whole, *summands = describe_part(part, largest.rows.size, largest.columns.size)
-    yield from _entry("sum", whole)
+    yield from entry("sum", whole)
     if len(summands) > FEW:  # else they are told already
         rest = len(summands) - SUMMANDS_SHOWN
         for sentence in summands[:SUMMANDS_SHOWN] if rest > 1 else summands:
-            yield from _entry("", sentence)
+            yield from entry("", sentence)
         if rest > 1:
-            yield from _entry("", f"and {rest} further summands")
-
-
-def samples_looked_at(finding: Finding) -> int:
-    """Vertices looked at in the blocks whose verdict rests on them."""
-    return sum(block.samples for block in finding.blocks if block.verdict is Verdict.SAMPLED)
+            yield from entry("", f"and {rest} further summands")
 
 
 def _moves_words(report: RouteReport) -> str:
@@ -257,39 +247,6 @@ def summary(outcomes: Iterable[Outcome]) -> str:
     return f"{sum(counts.values())} files: {parts}"
 
 
-def number(value: float) -> str:
-    """A number as people write it.
-
-    Examples
-    --------
-    >>> number(6191726.0), number(0.1 + 0.2), number(float("nan"))
-    ('6191726', '0.3', '-')
-    """
-    if math.isnan(value):
-        return "-"
-    if float(value).is_integer() and abs(value) < 1e15:
-        return str(int(value))
-    return f"{value:.10g}"
-
-
-def write_plan(path: Path, form: LinearForm, solution: Solution) -> None:
-    """Write the plan as CSV with the header `column,value`, whole or not at all.
-
-    Raises
-    ------
-    ValueError
-        When there is no plan.
-    """
-    if solution.x is None:
-        raise ValueError(f"there is no plan (status {solution.status})")
-    with whole_file(path) as file:
-        rows = csv.writer(file, lineterminator="\n")
-        rows.writerow(["column", "value"])
-        for name, value in zip(form.col_names, solution.x.tolist(), strict=True):
-            whole = float(value).is_integer() and abs(value) < 2**53
-            rows.writerow([name, int(value) if whole else repr(value)])
-
-
 def write_certificate(path: Path, form: LinearForm, solution: Solution) -> None:
     """Write the proof of all blocks as JSON, whole or not at all.
 
@@ -310,27 +267,6 @@ def write_certificate(path: Path, form: LinearForm, solution: Solution) -> None:
     with whole_file(path) as file:
         json.dump(Certificate(fingerprint(form), blocks).to_dict(), file)
         file.write("\n")
-
-
-@contextmanager
-def whole_file(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
-    """Open a file that takes its place only once it is on disk to the end."""
-    draft = path.with_name(f".{path.name}.{os.getpid()}")
-    try:
-        with draft.open("wb") if binary else draft.open("w", encoding="utf-8", newline="") as file:
-            yield file
-            file.flush()
-            os.fsync(file.fileno())
-        os.replace(draft, path)
-    except BaseException:
-        draft.unlink(missing_ok=True)
-        raise
-
-
-def _entry(title: str, text: str) -> list[str]:
-    indent = " " * 13
-    lines = textwrap.wrap(text, WIDTH, initial_indent=indent, subsequent_indent=indent)
-    return [f"  {title:<11}{lines[0].lstrip()}", *lines[1:]]
 
 
 def _some(names: Sequence[str]) -> str:

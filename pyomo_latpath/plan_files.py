@@ -7,7 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
-from .cli_output import whole_file
+from .files import whole_file
 from .forms.file_text import ModelFileError
 from .forms.linear_form import Floats, LinearForm
 from .solution import Move, Solution
@@ -72,6 +72,23 @@ def _read_line(path: Path, number: int, line: list[str], place: dict[str, int], 
     if not np.isfinite(value):
         raise ModelFileError(path, number, f"{text!r} is no number")
     x[place[name]] = value
+
+
+def write_plan(path: Path, form: LinearForm, solution: Solution) -> None:
+    """Write the plan as CSV with the header `column,value`, whole or not at all.
+
+    Raises
+    ------
+    ValueError
+        When there is no plan.
+    """
+    if solution.x is None:
+        raise ValueError(f"there is no plan (status {solution.status})")
+    with whole_file(path) as file:
+        rows = csv.writer(file, lineterminator="\n")
+        rows.writerow(["column", "value"])
+        for name, value in zip(form.col_names, solution.x.tolist(), strict=True):
+            rows.writerow([name, _number(value)])
 
 
 def write_moves(path: Path, form: LinearForm, solution: Solution) -> None:

@@ -14,7 +14,7 @@ import numpy as np
 import pytest
 from click.testing import CliRunner, Result
 
-from pyomo_latpath import cli, cli_output
+from pyomo_latpath import cli, cli_output, plan_files
 from pyomo_latpath.forms.from_file import read
 from pyomo_latpath.integrality.finding import BlockFinding, Finding, Verdict
 from pyomo_latpath.solution import RouteReport, Solution
@@ -343,7 +343,7 @@ def test_a_long_conflict_is_cut_short_and_counted(sampled):
 
 
 def test_a_plan_keeps_values_that_are_not_whole(sampled, tmp_path):
-    cli_output.write_plan(tmp_path / "plan.csv", sampled.form, sampled.solution)
+    plan_files.write_plan(tmp_path / "plan.csv", sampled.form, sampled.solution)
     assert (tmp_path / "plan.csv").read_text().splitlines() == [
         "column,value",
         "a1 (1->2),2",

@@ -10,11 +10,10 @@ import pytest
 from click.testing import CliRunner
 
 from pyomo_latpath import cli
-from pyomo_latpath.cli_output import write_plan
 from pyomo_latpath.forms.file_text import ModelFileError
 from pyomo_latpath.forms.from_file import read
 from pyomo_latpath.forms.linear_form import LinearForm
-from pyomo_latpath.plan_files import read_plan, write_moves
+from pyomo_latpath.plan_files import read_plan, write_moves, write_plan
 from pyomo_latpath.today import solve
 
 # Two keepers for two caves each; the second cave is the better one for both.

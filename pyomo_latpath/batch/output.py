@@ -11,7 +11,8 @@ from itertools import islice
 from pathlib import Path
 from typing import Any
 
-from ..cli_output import WIDTH, number, whole_file
+from ..console import WIDTH, entry, number
+from ..files import whole_file
 from .record import BatchRecord, Comparison, Summary, Unsolved
 
 #: What a batch writes beside its journal.
@@ -120,21 +121,21 @@ def _lines(summary: Summary) -> Iterator[str]:
             yield from _unsolved(unsolved)
         if summary.unsolved_count > SHOWN:
             yield f"  and {summary.unsolved_count - SHOWN} more, see the table"
-    yield from _entry("verdict", _counts(summary.verdicts))
+    yield from entry("verdict", _counts(summary.verdicts), indent=0)
     if summary.verdicts.get("sampled"):
-        yield from _entry("", "'sampled' is no proof: it rests on the vertices looked at")
-    yield from _entry("structure", _counts(summary.structures))
-    yield from _entry("route", _counts(summary.routes))
+        yield from entry("", "'sampled' is no proof: it rests on the vertices looked at", indent=0)
+    yield from entry("structure", _counts(summary.structures), indent=0)
+    yield from entry("route", _counts(summary.routes), indent=0)
     stages = {"read" if stage == "compile" else stage: stage for stage in STAGES}
     parts = ", ".join(f"{word} {summary.stages.get(s, 0.0):.3f}" for word, s in stages.items())
-    yield from _entry("seconds", f"{summary.seconds:.3f} ({parts})")
+    yield from entry("seconds", f"{summary.seconds:.3f} ({parts})", indent=0)
     if summary.comparison is not None:
         saved = summary.saved_seconds
         more = f"; for all, about {abs(saved):.3g} s {'more' if saved > 0 else 'less'}"
-        yield from _entry("compared", comparison_words(summary.comparison) + more)
+        yield from entry("compared", comparison_words(summary.comparison) + more, indent=0)
     slow = [f"{s.instance} {s.seconds:.3f} s ({s.route})" for s in summary.slowest if s.route]
     if slow:
-        yield from _entry("slowest", ", ".join(slow[:3]))
+        yield from entry("slowest", ", ".join(slow[:3]), indent=0)
 
 
 def comparison_words(comparison: Comparison) -> str:
@@ -167,9 +168,3 @@ def _unsolved(unsolved: Unsolved) -> list[str]:
 
 def _counts(counts: Mapping[str, int]) -> str:
     return ", ".join(f"{name} {number(count)}" for name, count in counts.items()) or "-"
-
-
-def _entry(title: str, text: str) -> list[str]:
-    indent = " " * 11
-    lines = textwrap.wrap(text, WIDTH, initial_indent=indent, subsequent_indent=indent)
-    return [f"{title:<11}{lines[0].lstrip()}", *lines[1:]]

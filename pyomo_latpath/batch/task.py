@@ -15,10 +15,11 @@ from typing import Any
 
 import numpy as np
 
-from ..cli_output import samples_looked_at, write_plan
 from ..deadline import Deadline
+from ..files import sentence
 from ..forms.linear_form import LinearForm
 from ..highs_mip import MipSettings, branch_and_bound
+from ..plan_files import write_plan
 from ..prepared import RecentMatrices
 from ..routing import solve
 from ..solution import Solution
@@ -230,7 +231,7 @@ def record_of(task: Task, fingerprint: str, form: LinearForm, solution: Solution
         nonzeros=int(form.matrix.nnz),
         verdict=report.finding.verdict.value,
         structure=", ".join(report.finding.structures) or None,
-        samples=samples_looked_at(report.finding),
+        samples=report.finding.samples,
         route=report.route,
         why=report.why,
         proof=report.proof,
@@ -286,13 +287,6 @@ def _compared(record: BatchRecord, form: LinearForm, settings: Settings) -> Batc
     )
     seconds = time.perf_counter() - begun
     return replace(record, highs_seconds=seconds, highs_status=result.status)
-
-
-def sentence(error: Exception) -> str:
-    """What a person reads of an error that the operating system or a reader raised."""
-    if isinstance(error, OSError) and error.filename is not None:
-        return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
-    return str(error) or type(error).__name__
 
 
 def printable(text: str) -> str:

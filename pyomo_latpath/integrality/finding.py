@@ -135,6 +135,11 @@ class Finding:
         return next((verdict for verdict in WORST_FIRST if verdict in met), Verdict.PROVEN)
 
     @property
+    def samples(self) -> int:
+        """Vertices looked at in the blocks whose verdict rests on them."""
+        return sum(block.samples for block in self.blocks if block.verdict is Verdict.SAMPLED)
+
+    @property
     def structures(self) -> tuple[str, ...]:
         """The structures met, each once, largest block first."""
         by_size = sorted(self.blocks, key=lambda block: -block.columns.size)

@@ -1,0 +1,37 @@
+"""Files that are whole or not there at all, and how errors with them are told."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import IO, Any
+
+
+@contextmanager
+def whole_file(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
+    """Open a file that takes its place only once it is on disk to the end."""
+    draft = path.with_name(f".{path.name}.{os.getpid()}")
+    try:
+        with draft.open("wb") if binary else draft.open("w", encoding="utf-8", newline="") as file:
+            yield file
+            file.flush()
+            os.fsync(file.fileno())
+        os.replace(draft, path)
+    except BaseException:
+        draft.unlink(missing_ok=True)
+        raise
+
+
+def sentence(error: Exception) -> str:
+    """An error that a file can cause, as one sentence that names the file.
+
+    Examples
+    --------
+    >>> sentence(FileNotFoundError(2, "No such file or directory", "vans.mps"))
+    'vans.mps: no such file or directory'
+    """
+    if isinstance(error, OSError) and error.filename is not None:
+        return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
+    return str(error) or type(error).__name__
