@@ -1,274 +1,25 @@
-"""The checker: it accepts what is valid and nothing else, whatever is changed."""
+"""The checker on forms: rows, columns, sides and factors must be those of the model."""
 
 import copy
-import json
-from fractions import Fraction
 
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu, network_matrix
+from certificate_data import accepts
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import random_form
-from system_models import FAMILIES
 
 from pyomo_latpath.certificates import (
-    KINDS,
     BlockCertificate,
     Certificate,
     CertificateError,
-    Conetwork,
-    Network,
-    Reduced,
-    Step,
     Trivial,
-    Unimodular,
     check_certificate,
     fingerprint,
 )
-from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.forms.linear_form import LinearForm
-from pyomo_latpath.integrality import reductions, unimodular
 from pyomo_latpath.integrality.assess import assess
-from pyomo_latpath.integrality.recognise import prove_tu
-
-#: The system x = b, and the matrix without rows and columns.
-ONE_ROW = Unimodular(np.empty((0, 3), np.int64), Network(np.array([[0, 1]]), np.array([[0, 1]])))
-NOTHING = Network(np.empty((0, 2), np.int64), np.empty((0, 2), np.int64))
-
-
-def accepts(form_or_matrix, certificate) -> bool:
-    """Whether the checker accepts, by way of JSON."""
-    try:
-        data = certificate if isinstance(certificate, dict) else certificate.to_dict()
-        check_certificate(form_or_matrix, Certificate.from_dict(json.loads(json.dumps(data))))
-    except CertificateError:
-        return False
-    return True
-
-
-def accepts_part(matrix, data) -> bool:
-    """Whether a part, as data, proves a matrix."""
-    try:
-        KINDS[data["kind"]].from_dict(data).check(sp.csc_array(np.array(matrix)))
-    except CertificateError:
-        return False
-    return True
-
-
-def whole(part, matrix) -> Certificate:
-    """One block over all of a matrix, factors 1."""
-    m, n = np.asarray(matrix).shape
-    ones = ("1",) * m, ("1",) * n
-    return Certificate("", (BlockCertificate(np.arange(m), np.arange(n), *ones, part),))
-
-
-# What each kind means, spelled out step by step.
-
-
-def network_holds(matrix, data) -> bool:
-    """Rebuild the matrix by walking the tree."""
-    table = matrix if data["kind"] == "network" else matrix.T
-    if (len(data["tree"]), len(data["arcs"])) != table.shape:
-        return False
-    rebuilt = network_matrix(data["tree"], data["arcs"])
-    return rebuilt is not None and np.array_equal(rebuilt, table)
-
-
-def reduced_holds(matrix, data) -> bool:
-    """Take the steps one by one."""
-    table, left = matrix.copy(), {"row": set(range(len(matrix)))}
-    left["column"] = set(range(matrix.shape[1]))
-    for step in data["steps"]:
-        axis = "row" if "row" in step else "column"
-        lines = table if axis == "row" else table.T
-        line = step[axis]
-        if line not in left[axis]:
-            return False
-        size = np.abs(lines[line]).sum()
-        if step["reason"] == "zero" and size != 0:
-            return False
-        if step["reason"] == "unit" and not (size == 1 == np.count_nonzero(lines[line])):
-            return False
-        if step["reason"] == "copy":
-            of = step["of"]
-            if of == line or of not in left[axis] or abs(step["sign"]) != 1:
-                return False
-            if not np.array_equal(lines[line], step["sign"] * lines[of]):
-                return False
-        lines[line] = 0
-        left[axis].discard(line)
-    rest = table[np.ix_(sorted(left["row"]), sorted(left["column"]))]
-    return network_holds(rest, data["rest"])
-
-
-def unimodular_holds(matrix, data) -> bool:
-    """Do the operations in fractions, each on a whole row."""
-    m, wrong = len(matrix), False
-    table = matrix.astype(object)
-    for row, source, factor in data["operations"]:
-        if not (0 <= row < m and 0 <= source < m):
-            return False
-        if row != source:
-            table[row] = table[row] + factor * table[source]
-        elif factor < 1:
-            return False
-        else:
-            table[row] = table[row] * Fraction(1, factor)
-            wrong |= any(x.denominator != 1 for x in table[row])
-    if wrong or any(abs(x) > 1 for x in table.flat):
-        return False
-    return REST_HOLDS[data["rest"]["kind"]](table.astype(np.int64), data["rest"])
-
-
-REST_HOLDS = {"network": network_holds, "conetwork": network_holds, "reduced": reduced_holds}
-HOLDS = {**REST_HOLDS, "unimodular": unimodular_holds}
-
-
-def leaves(data, path=()):
-    """Paths to all numbers in JSON data."""
-    if isinstance(data, dict):
-        for key, value in data.items():
-            yield from leaves(value, (*path, key))
-    elif isinstance(data, list):
-        for k, value in enumerate(data):
-            yield from leaves(value, (*path, k))
-    elif type(data) is int:
-        yield path
-
-
-def change(data, path, value):
-    """The same data with another number at the path."""
-    data = copy.deepcopy(data)
-    place = data
-    for key in path[:-1]:
-        place = place[key]
-    place[path[-1]] = value
-    return data
-
-
-def random_tree(rng, m):
-    """A tree on nodes 0 to m, directions at random, its arcs in any order."""
-    arcs = [(int(rng.integers(0, node)), node) for node in range(1, m + 1)]
-    arcs = [pair[:: rng.choice([1, -1])] for pair in arcs]
-    label = rng.permutation(m + 1)
-    return label[np.array(arcs).reshape(-1, 2)][rng.permutation(m)]
-
-
-def random_proof(rng, kind):
-    """A matrix and a part of the given kind that proves it, as data."""
-    m, n = rng.integers(1, 5, 2)
-    tree, arcs = random_tree(rng, m), rng.integers(0, m + 1, (n, 2))
-    matrix = network_matrix(tree.tolist(), arcs.tolist())
-    part = Network(tree, arcs)
-    if kind == "conetwork":
-        matrix, part = matrix.T, Conetwork(tree, arcs)
-    elif kind == "reduced":
-        matrix = np.vstack([matrix, -matrix[:1], np.zeros((1, n), np.int64)])
-        steps = (Step("row", m, "copy", 0, -1), Step("row", m + 1, "zero"))
-        reduction = reductions.reduce_matrix(sp.csc_array(matrix))
-        part = Reduced(steps, part)
-        if not reduction.rows.size and not reduction.columns.size:
-            part = Reduced(reduction.steps, NOTHING)
-    elif kind == "unimodular":
-        mix = np.tril(rng.integers(-2, 3, (m, m)), -1) + np.diag(rng.choice([1, 1, 1, 2], m))
-        matrix = mix @ np.hstack([np.eye(m, dtype=np.int64), matrix])
-        part = unimodular.recognise(
-            sp.csc_array(matrix),
-            np.full(m, True),
-            np.zeros(m, np.int64),
-            lambda rest: (prove_tu(rest) or (None, None))[1],
-            Deadline(None),
-        )
-        assert part is None or isinstance(part, Unimodular)
-    return matrix, None if part is None else part.to_dict()
-
-
-@settings(max_examples=150)
-@given(st.integers(0, 10**6), st.sampled_from(sorted(HOLDS)))
-def test_any_change_is_refused_unless_it_is_valid_too(seed, kind):
-    rng = np.random.default_rng(seed)
-    matrix, data = random_proof(rng, kind)
-    if data is None:
-        return
-    assert accepts_part(matrix, data)
-    assert HOLDS[kind](matrix, data)
-    nested = data.get("rest", {}).get("kind", "network")
-    assert nested in ("network", "conetwork")
-    for path in leaves(data):
-        old = data
-        for key in path:
-            old = old[key]
-        changed = change(data, path, old + int(rng.choice([-2, -1, 1, 2])))
-        assert accepts_part(matrix, changed) == HOLDS[kind](matrix, changed), (path, changed)
-    for _ in range(6):
-        other = matrix.copy()
-        place = tuple(rng.integers(0, size) for size in other.shape)
-        other[place] += rng.choice([-2, -1, 1])
-        assert accepts_part(other, data) == HOLDS[kind](other, data), (place, data)
-
-
-@pytest.mark.parametrize("family", FAMILIES)
-def test_any_change_of_a_system_is_refused_unless_it_is_valid_too(family):
-    rng = np.random.default_rng(5)
-    system = family(15, rng)
-    part = unimodular.recognise(*system, lambda rest: prove_tu(rest)[1], Deadline(None))
-    matrix, data = system.matrix.toarray(), part.to_dict()
-    assert accepts_part(matrix, data) and unimodular_holds(matrix, data)
-    every = range(len(data["operations"]))
-    for k in rng.permutation(every)[:30].tolist():
-        for place in range(3):
-            value = data["operations"][k][place] + int(rng.choice([-1, 1]))
-            changed = change(data, ("operations", k, place), value)
-            assert accepts_part(matrix, changed) == unimodular_holds(matrix, changed), (k, place)
-    for k in rng.permutation(every)[:10].tolist():
-        without = {**data, "operations": [data["operations"][i] for i in every if i != k]}
-        assert accepts_part(matrix, without) == unimodular_holds(matrix, without), k
-
-
-def test_operations_may_make_numbers_of_any_size():
-    """Back and forth in three hundred steps, by way of numbers of hundreds of bits."""
-    there = [[k % 2, 1 - k % 2, 3] for k in range(300)]
-    back = [[row, source, -factor] for row, source, factor in reversed(there)]
-    swap = {"kind": "network", "tree": [[0, 1], [1, 2]], "arcs": [[0, 1], [1, 2]]}
-    data = {"kind": "unimodular", "operations": there + back, "rest": swap}
-    assert accepts_part(np.eye(2, dtype=np.int64), data)
-    data["operations"][299][2] = 2
-    assert not accepts_part(np.eye(2, dtype=np.int64), data)
-
-
-@settings(max_examples=60)
-@given(st.integers(0, 10**6))
-def test_what_a_bare_matrix_passes_with_is_totally_unimodular(seed):
-    rng = np.random.default_rng(seed)
-    matrix, data = random_proof(rng, str(rng.choice(["network", "conetwork", "reduced"])))
-    part = KINDS[data["kind"]].from_dict(data)
-    assert accepts(matrix, whole(part, matrix))
-    assert accepts(sp.csr_array(matrix), whole(part, matrix))
-    assert is_tu(matrix)
-
-
-def test_a_bare_matrix_is_checked_as_it_stands():
-    block = BlockCertificate(np.array([0]), np.array([0]), ("1/2",), ("1",), Trivial())
-    assert not accepts([[2.0]], Certificate("", (block,)))
-    with pytest.raises(CertificateError, match="sides"):
-        check_certificate([[1]], whole(ONE_ROW, [[1]]))
-
-
-@settings(max_examples=60)
-@given(st.integers(0, 10**6))
-def test_rows_and_columns_are_those_named(seed):
-    rng = np.random.default_rng(seed)
-    matrix, data = random_proof(rng, "network")
-    rows, columns = (rng.permutation(size) for size in matrix.shape)
-    ones = ("1",) * rows.size, ("1",) * columns.size
-    block = BlockCertificate(rows, columns, *ones, Network.from_dict(data))
-    picked = matrix[np.ix_(rows, columns)]
-    assert accepts(matrix, Certificate("", (block,))) == network_holds(picked, data)
-
-
-# Forms: what else must hold.
 
 
 def pair_of_rows(**changes):
@@ -490,10 +241,3 @@ def test_broken_json_is_refused_in_a_sentence(spoil):
 def test_what_is_no_object_is_refused(data):
     with pytest.raises(CertificateError):
         Certificate.from_dict(data)
-
-
-def test_nested_systems_are_refused():
-    ONE_ROW.check(sp.csc_array([[1]]))
-    for part in (Reduced((), ONE_ROW), Unimodular(ONE_ROW.operations, ONE_ROW)):
-        with pytest.raises(CertificateError, match="TU"):
-            part.check(sp.csc_array([[1]]))

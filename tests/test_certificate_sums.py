@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 import scipy.sparse as sp
 from brute_force import is_tu
+from certificate_data import ONE_ROW, accepts, accepts_part, change, leaves, whole
 from click.testing import CliRunner
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -16,7 +17,6 @@ from known_matrices import R12
 from regular_models import disguised, graph_matrix, plain, regular
 from sum_meanings import part_holds
 from sum_proofs import leaf_part, split_off, sum_proofs
-from test_certificates import ONE_ROW, accepts, accepts_part, change, leaves, whole
 
 from pyomo_latpath.certificate_sums import R10_MATRICES, Summands, pivoted
 from pyomo_latpath.certificates import (
