@@ -48,8 +48,11 @@ class Gap:
 
     @property
     def absolute(self) -> float:
-        """By how much the plan is worse than the optimum of the relaxation as declared."""
-        return max(0.0, self.worse_than(self.declared_bound))
+        """By how much the plan is worse than the optimum of the relaxation as declared.
+
+        NaN where no plan is known.
+        """
+        return float(np.maximum(0.0, self.worse_than(self.declared_bound)))
 
     @property
     def relative(self) -> float:

@@ -1,6 +1,7 @@
 """The gap between relaxation and best whole plan, and where the optimum is fractional."""
 
 import math
+import re
 from fractions import Fraction
 
 import numpy as np
@@ -49,6 +50,25 @@ def test_a_gap_is_relative_to_the_plan_but_not_to_less_than_one():
     assert (gap.absolute, gap.relative) == (2.0, 0.2)
     assert Gap("min", -0.5, 0.0, 0.0, 0.0, "optimal", 0.0).relative == 0.5
     assert not Gap("min", 1.0, 1.0, 3.0, 2.0, "time_limit", 0.0).exact
+
+
+def test_without_a_plan_the_gap_is_not_known():
+    gap = Gap("min", 1.0, 1.0, math.nan, 2.0, "time_limit", 0.0)
+    assert math.isnan(gap.absolute) and math.isnan(gap.relative)
+    cycle = np.eye(5) + np.roll(np.eye(5), 1, axis=1)
+    form = LinearForm.from_arrays(
+        cycle, row_lower=0, row_upper=1, col_lower=0, col_upper=1, cost=-1
+    )
+
+    def interrupt(line):
+        if line == "looking for the best whole plan":
+            raise KeyboardInterrupt
+
+    told = explain(form, progress=interrupt)
+    data = told.to_dict()["gap"]
+    assert data["declared_bound"] == pytest.approx(-2.5)
+    assert data["plan"] is data["absolute"] is data["relative"] is None
+    assert "apart" not in told.to_text() and not re.search(r"\bnan\b", told.to_html())
 
 
 @pytest.mark.parametrize(

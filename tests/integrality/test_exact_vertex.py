@@ -51,6 +51,19 @@ def test_a_core_with_a_large_determinant():
         assert sum(a * found[j] for j, a in row.items()) == side
 
 
+def test_a_large_core_is_solved_block_by_block():
+    size = 700
+    rng = np.random.default_rng(2)
+    rows = [
+        {int(j): Fraction(int(rng.choice([-1, 1]))) for j in {i, *rng.choice(size, 2)}}
+        for i in range(size)
+    ]
+    right = [Fraction(int(b)) for b in rng.integers(0, 9, size)]
+    found = solve_square(rows, right)
+    for row, side in zip(rows, right, strict=True):
+        assert sum(a * found[j] for j, a in row.items()) == side
+
+
 def test_a_system_singular_modulo_the_prime_is_given_up():
     # Two equations in a core that is regular, but whose determinant is the prime.
     rows = as_rows([[Fraction(PRIME + 1), Fraction(1)], [Fraction(1), Fraction(1)]])
