@@ -56,7 +56,7 @@ class InExecutor:
             self._send_group()
         done, _ = wait(self.out, timeout, FIRST_COMPLETED)
         answers: list[Answer] = []
-        for future in done:
+        for future in [future for future in self.out if future in done]:  # as they were sent
             answers += self._answers(future, self.out.pop(future))
         return answers
 
