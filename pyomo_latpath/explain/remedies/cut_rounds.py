@@ -65,7 +65,7 @@ def cut_rounds(normal: NormalForm, deadline: Deadline, near: Basis | None = None
             break
         system = first.with_cuts(cuts)
         found = half_cuts(system, at.x, most=CUTS_A_ROUND, deadline=deadline)
-        found = [cut for cut in found if follows(system, cut)]
+        found = [cut for cut in found if not deadline.passed and follows(system, cut)]
         if not found:
             break
         cuts, before = [*cuts, *found], at.bound

@@ -184,7 +184,7 @@ def halved(system: System, sides: Iterable[tuple[int, int]], x: Floats) -> Cut |
 
 
 def follows(system: System, cut: Cut) -> bool:
-    """Check a cut by its multipliers alone, in exact arithmetic.
+    """Check a cut by its multipliers alone, in whole numbers: all of them times a common one.
 
     Parameters
     ----------
@@ -197,27 +197,31 @@ def follows(system: System, cut: Cut) -> bool:
     bool
         Whether every whole plan of the system satisfies the cut, by its derivation.
     """
-    left: dict[int, Fraction] = {}
-    right = Fraction(0)
+    common = math.lcm(*(each.denominator for each in (*cut.row_multipliers, *cut.bound_multipliers)))
+    left: dict[int, int] = {}
+    right = 0
     for row, multiplier in zip(cut.rows, cut.row_multipliers, strict=True):
         side = float((system.row_upper if multiplier > 0 else system.row_lower)[row])
-        if not math.isfinite(side):
+        if not side.is_integer():
             return False
-        right += multiplier * Fraction(side)
+        factor = int(multiplier * common)
+        right += factor * int(side)
         for column, entry in system.terms(row):
-            left[column] = left.get(column, Fraction(0)) + multiplier * entry
+            left[column] = left.get(column, 0) + factor * entry
     for column, multiplier in zip(cut.bounds, cut.bound_multipliers, strict=True):
         bound = float((system.col_upper if multiplier > 0 else system.col_lower)[column])
-        if not math.isfinite(bound):
+        if not bound.is_integer():
             return False
-        right += multiplier * Fraction(bound)
-        left[column] = left.get(column, Fraction(0)) + multiplier
+        factor = int(multiplier * common)
+        right += factor * int(bound)
+        left[column] = left.get(column, 0) + factor
     claimed = dict(zip(cut.columns, cut.coefficients, strict=True))
     return (
-        {column: entry for column, entry in left.items() if entry} == claimed
+        {column: entry for column, entry in left.items() if entry}
+        == {column: entry * common for column, entry in claimed.items()}
         and all(isinstance(entry, int) for entry in claimed.values())
         and all(bool(system.integer[column]) for column in claimed)
-        and cut.side >= math.floor(right)
+        and cut.side >= right // common
     )
 
 
