@@ -1,4 +1,4 @@
-"""All square subdeterminants of a small matrix at once: the definition, order by order."""
+"""All square subdeterminants of small matrices at once: the definition, order by order."""
 
 from __future__ import annotations
 
@@ -13,18 +13,18 @@ def minors(matrix: np.ndarray) -> Iterator[np.ndarray]:
     """Subdeterminants of order 1, 2, ..., by expansion along the last row.
 
     Each time an array with a row for each set of rows and a column for each set of columns, in
-    the order of `combinations`.
+    the order of `combinations`; of a stack of matrices, a stack of such arrays.
     """
     matrix = np.asarray(matrix, dtype=np.int64)
-    m, n = matrix.shape
-    before = np.ones((1, 1), np.int64)
+    *stack, m, n = matrix.shape
+    before = np.ones((*stack, 1, 1), np.int64)
     for size in range(1, min(m, n) + 1):
         last, first = _last_and_others(m, size)
-        values = np.zeros((last.size, len(_each_left_out(n, size)[0])), np.int64)
+        values = np.zeros((*stack, last.size, len(_each_left_out(n, size)[0])), np.int64)
         for k in range(size):
             column, rest = (table[:, k] for table in _each_left_out(n, size))
             sign = (-1) ** (size - 1 + k)
-            values += sign * matrix[last][:, column] * before[first][:, rest]
+            values += sign * matrix[..., last, :][..., column] * before[..., first, :][..., rest]
         yield values
         before = values
 
@@ -32,6 +32,14 @@ def minors(matrix: np.ndarray) -> Iterator[np.ndarray]:
 def is_tu(matrix: np.ndarray) -> bool:
     """Whether all subdeterminants are 0, 1 or -1."""
     return all(np.abs(values).max() <= 1 for values in minors(matrix))
+
+
+def are_tu(matrices: np.ndarray) -> np.ndarray:
+    """The same for each of a stack of matrices."""
+    holds = np.ones(matrices.shape[:-2], np.bool_)
+    for values in minors(matrices):
+        holds &= (np.abs(values) <= 1).all(axis=(-2, -1))
+    return holds
 
 
 @cache

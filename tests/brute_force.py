@@ -9,46 +9,6 @@ from fractions import Fraction
 import numpy as np
 
 
-def is_tu(matrix) -> bool:
-    """Whether all square subdeterminants are 0, 1 or -1 (the definition)."""
-    table = [[int(entry) for entry in row] for row in np.asarray(matrix)]
-    return all(abs(value) <= 1 for value in minors(table))
-
-
-def are_tu(matrices: np.ndarray) -> np.ndarray:
-    """The same for many matrices of one shape at once, in an array (count, m, n)."""
-    count, m, n = matrices.shape
-    holds = np.ones(count, np.bool_)
-    known = {((), ()): np.ones(count, np.int64)}
-    for size in range(1, min(m, n) + 1):
-        smaller, known = known, {}
-        for rows in itertools.combinations(range(m), size):
-            for columns in itertools.combinations(range(n), size):
-                value = np.zeros(count, np.int64)
-                for k, column in enumerate(columns):
-                    rest = smaller[rows[:-1], columns[:k] + columns[k + 1 :]]
-                    value += (-1) ** (size - 1 + k) * matrices[:, rows[-1], column] * rest
-                holds &= np.abs(value) <= 1
-                known[rows, columns] = value
-    return holds
-
-
-def minors(table: list[list[int]]) -> Iterator[int]:
-    """All square subdeterminants, by expansion along the last row, small ones first."""
-    m, n = len(table), len(table[0]) if table else 0
-    known: dict[tuple[tuple[int, ...], tuple[int, ...]], int] = {((), ()): 1}
-    for size in range(1, min(m, n) + 1):
-        for rows in itertools.combinations(range(m), size):
-            for columns in itertools.combinations(range(n), size):
-                value = 0
-                for k, column in enumerate(columns):
-                    rest = columns[:k] + columns[k + 1 :]
-                    sign = (-1) ** (size - 1 + k)
-                    value += sign * table[rows[-1]][column] * known[rows[:-1], rest]
-                known[rows, columns] = value
-                yield value
-
-
 def maximal_minors(table: np.ndarray) -> Iterator[int]:
     """Determinants of all square submatrices that use every row."""
     m, n = table.shape

@@ -3,7 +3,8 @@
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu, network_matrix
+from all_minors import is_tu
+from brute_force import network_matrix
 from certificate_data import NOTHING, ONE_ROW, accepts, accepts_part, change, leaves, whole
 from hypothesis import given, settings
 from hypothesis import strategies as st

@@ -8,7 +8,7 @@ import networkx as nx
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu
+from all_minors import is_tu
 from certificate_data import ONE_ROW, accepts, accepts_part, change, leaves, whole
 from click.testing import CliRunner
 from hypothesis import given, settings

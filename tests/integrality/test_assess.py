@@ -5,7 +5,8 @@ import json
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu, vertices
+from all_minors import is_tu
+from brute_force import vertices
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import KINDS, random_form

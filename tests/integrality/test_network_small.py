@@ -10,7 +10,7 @@ as Tutte (1960) has it.
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import are_tu
+from all_minors import are_tu
 from graph_search import bits, is_realisable_by_bridges
 
 from pyomo_latpath.integrality import network

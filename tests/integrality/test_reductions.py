@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu
+from all_minors import is_tu
 from hypothesis import given
 from hypothesis import strategies as st
 

@@ -8,7 +8,8 @@ from fractions import Fraction
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu, maximal_minors, solve, vertices
+from all_minors import is_tu
+from brute_force import maximal_minors, solve, vertices
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 from system_models import FAMILIES, mixed_rows, sums_and_differences

@@ -6,7 +6,7 @@ import networkx as nx
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import is_tu
+from all_minors import is_tu
 from known_matrices import FANO, R10
 
 from pyomo_latpath.certificates import Conetwork, Network

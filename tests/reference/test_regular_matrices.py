@@ -9,7 +9,8 @@ import networkx as nx
 import numpy as np
 import pytest
 import scipy.sparse as sp
-from brute_force import determinant, is_tu
+from all_minors import is_tu
+from brute_force import determinant
 from known_matrices import FANO, R10, R12
 from regular_models import disguised, graph_matrix, plain
 from sum_proofs import r10_part, split_off
