@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 import scipy.sparse as sp
+from brute_force import network_matrix
 
 from pyomo_latpath.highs import LinearProgram
 from pyomo_latpath.paths.network_from_tree import network_from_tree
@@ -17,24 +18,6 @@ def random_network(rng, rows, columns):
     turned = rng.random(rows) < 0.5
     tree[turned] = tree[turned][:, ::-1]
     return tree, rng.integers(0, rows + 1, (columns, 2))
-
-
-def network_matrix(tree, arcs):
-    """Walk the tree from tail to head for every column."""
-    matrix = np.zeros((len(tree), len(arcs)), int)
-    for j, (tail, head) in enumerate(arcs):
-        paths = [(tail, np.zeros(len(tree), int))]
-        while paths:
-            node, path = paths.pop()
-            if node == head:
-                matrix[:, j] = path
-                break
-            for i, (u, v) in enumerate(tree):
-                if node in (u, v) and not path[i]:
-                    step = path.copy()
-                    step[i] = 1 if node == u else -1
-                    paths.append((v if node == u else u, step))
-    return matrix
 
 
 def limits(rng, count):
