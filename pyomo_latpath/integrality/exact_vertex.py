@@ -13,20 +13,21 @@ from collections.abc import Sequence
 from fractions import Fraction
 
 import numpy as np
+from numpy.typing import NDArray
 
 from ..forms.linear_form import Floats
 from ..forms.normalise import NormalForm
-from ..forms.numbers import Integers, simplest_fraction
+from ..forms.numbers import simplest_fraction
 from ..highs import Basis
 
-#: A prime so small that sums of `MOST_CORE` products of residues are exact in double precision.
-PRIME = 2**22 - 3
+#: A prime below 2**31, so that products of residues fit 64 bits.
+PRIME = 2**31 - 1
 #: Largest core and largest system that are looked at, and most digits of a solution.
-MOST_CORE, MOST_ROWS, MOST_DIGITS = 1000, 50_000, 400
-#: Columns that are eliminated at once.
-BLOCK = 32
+MOST_CORE, MOST_ROWS, MOST_DIGITS = 1000, 50_000, 256
+#: Numbers changed on the way, at most: dense cores are out of reach from a size of 400 on.
+MOST_WORK = 2 * 400**3
 #: A fraction p/q modulo a number counts if that is so many times as large as p q: of all residues
-#: one in about so many is such a fraction.
+#: few more than one in so many are such a fraction.
 CHANCE = 256
 
 Row = dict[int, Fraction]
@@ -167,88 +168,51 @@ def _triangles(rows: Sequence[Row]) -> tuple[Pivots, Pivots, list[int], list[int
 
 def _solve_core(core: Sequence[dict[int, int]], right: Sequence[int]) -> list[Fraction] | None:
     """Solve a whole-number system by its solution's digits in base p, lowest first."""
-    inverse = _inverse_modulo_prime(core) if len(core) <= MOST_CORE else None
+    size = len(core)
+    inverse = _inverse_modulo_prime(core) if size <= MOST_CORE else None
     if inverse is None:
         return None
-    value, power, residue = [0] * len(core), 1, list(right)
-    for count in range(1, MOST_DIGITS + 1):
-        modulo = np.array([float(rest % PRIME) for rest in residue])
-        digit = list(map(int, _reduced(inverse @ modulo).tolist()))
+    value, power, residue = [0] * size, 1, list(right)
+    most = min(MOST_DIGITS, MOST_WORK // max(1, size**2))
+    for count in range(1, most + 1):
+        modulo = np.array([rest % PRIME for rest in residue], dtype=np.int64)
+        digit = ((inverse * modulo % PRIME).sum(axis=1) % PRIME).tolist()
         value = [v + d * power for v, d in zip(value, digit, strict=True)]
         power *= PRIME
         residue = [
             (rest - sum(a * digit[j] for j, a in row.items())) // PRIME
             for rest, row in zip(residue, core, strict=True)
         ]
-        if count & (count - 1) == 0 or count == MOST_DIGITS:
+        if count & (count - 1) == 0 or count == most:
             found = _as_fractions(value, power)
             if found is not None and _solves(core, right, found):
                 return found
     return None
 
 
-def _solves(core: Sequence[dict[int, int]], right: Sequence[int], found: list[Fraction]) -> bool:
-    sums = (sum(a * found[j] for j, a in row.items()) for row in core)
-    return all(total == side for total, side in zip(sums, right, strict=True))
-
-
-def _inverse_modulo_prime(core: Sequence[dict[int, int]]) -> Floats | None:
-    """Inverse by Gauss-Jordan elimination in place, some columns at once; None if singular."""
-    size = len(core)
-    table = np.zeros((size, size))
+def _inverse_modulo_prime(core: Sequence[dict[int, int]]) -> NDArray[np.int64] | None:
+    """Inverse by Gauss-Jordan elimination; None if singular modulo the prime, or too much work."""
+    size, work = len(core), 0
+    table = np.hstack((np.zeros((size, size), np.int64), np.eye(size, dtype=np.int64)))
     for i, row in enumerate(core):
         for j, a in row.items():
             table[i, j] = a % PRIME
-    table, rows = _reduced(table), np.arange(size)
-    for k in range(0, size, BLOCK):
-        here = slice(k, min(k + BLOCK, size))
-        pivots = _independent_rows(table[k:, here])
-        if pivots is None:
-            return None
-        order = k + np.concatenate((pivots, np.setdiff1d(np.arange(size - k), pivots)))
-        table[k:], rows[k:] = table[order], rows[order]
-        inner = _inverse_of_block(table[here, here])
-        solved = _reduced(inner @ table[here])
-        solved[:, here] = inner
-        factors = table[:, here].copy()
-        factors[here] = table[:, here] = 0.0
-        table = _reduced(table - factors @ solved)
-        table[here] = solved
-    inverse = np.empty_like(table)
-    inverse[:, rows] = table
-    return inverse
-
-
-def _independent_rows(panel: Floats) -> Integers | None:
-    """As many rows as there are columns, linearly independent modulo the prime, if there are."""
-    left, chosen = panel.copy(), np.empty(panel.shape[1], np.int64)
-    for k in range(panel.shape[1]):
-        pivots = np.flatnonzero(left[:, k])
-        if not pivots.size:
-            return None
-        chosen[k] = pivots[0]
-        row = _reduced(left[pivots[0]] * pow(int(left[pivots[0], k]), -1, PRIME))
-        left[pivots] = _reduced(left[pivots] - np.outer(left[pivots, k], row))
-    return chosen
-
-
-def _inverse_of_block(block: Floats) -> Floats:
-    """Inverse of a small matrix that is regular modulo the prime."""
-    size = len(block)
-    table = np.hstack((block, np.eye(size)))
     for k in range(size):
-        pivot = k + int(np.flatnonzero(table[k:, k])[0])
-        table[[k, pivot]] = table[[pivot, k]]
-        table[k] = _reduced(table[k] * pow(int(table[k, k]), -1, PRIME))
-        factors = table[:, k].copy()
-        factors[k] = 0.0
-        table = _reduced(table - np.outer(factors, table[k]))
+        pivots = np.flatnonzero(table[k:, k])
+        if not pivots.size or work > MOST_WORK:
+            return None
+        table[[k, k + pivots[0]]] = table[[k + pivots[0], k]]
+        table[k] = table[k] * pow(int(table[k, k]), -1, PRIME) % PRIME
+        others = np.flatnonzero(table[:, k])
+        others = others[others != k]
+        work += others.size * 2 * size
+        table[others] = (table[others] - table[others, k][:, None] * table[k]) % PRIME
     return table[:, size:]
 
 
-def _reduced(whole: Floats) -> Floats:
-    """Residues modulo the prime, smallest in size, of whole numbers below 2**53; exact."""
-    return whole - np.rint(whole / PRIME) * PRIME
+def _solves(core: Sequence[dict[int, int]], right: Sequence[int], found: list[Fraction]) -> bool:
+    sums = (sum(a * found[j] for j, a in row.items()) for row in core)
+    return all(total == side for total, side in zip(sums, right, strict=True))
 
 
 def _as_fractions(values: list[int], modulus: int) -> list[Fraction] | None:
