@@ -6,6 +6,7 @@ import highspy
 import networkx as nx
 import numpy as np
 import scipy.sparse as sp
+from with_highs import highs, program
 
 from pyomo_latpath.paths.network_problem import NO_LIMIT, FlowProblem, FlowResult, shortfall
 
@@ -51,25 +52,24 @@ def feasible_problem(
     return problem, flow
 
 
-def by_highs(problem: FlowProblem) -> tuple[str, float]:
-    """Status and cost by HiGHS's dual simplex without presolve."""
+def program_of(problem: FlowProblem) -> highspy.HighsLp:
+    """The linear program of a flow."""
     n, m = problem.supply.size, problem.tail.size
     ends, arcs = np.append(problem.tail, problem.head), np.tile(np.arange(m), 2)
-    matrix = sp.csc_array((np.repeat([1.0, -1.0], m), (ends, arcs)), shape=(n, m))
-    matrix.sum_duplicates()
-    lp = highspy.HighsLp()
-    lp.num_col_, lp.num_row_ = m, n
-    lp.col_cost_ = problem.cost.astype(float)
-    lp.col_lower_ = np.where(problem.lower == -NO_LIMIT, -np.inf, problem.lower)
-    lp.col_upper_ = np.where(problem.capacity == NO_LIMIT, np.inf, problem.capacity)
-    lp.row_lower_ = lp.row_upper_ = problem.supply.astype(float)
-    lp.a_matrix_.format_ = highspy.MatrixFormat.kColwise
-    lp.a_matrix_.start_, lp.a_matrix_.index_ = matrix.indptr, matrix.indices
-    lp.a_matrix_.value_ = matrix.data
-    solver = highspy.Highs()
-    for name, value in (("output_flag", False), ("presolve", "off")):
-        assert solver.setOptionValue(name, value) == highspy.HighsStatus.kOk
-    solver.passModel(lp)
+    supply = problem.supply.astype(float)
+    return program(
+        sp.csc_array((np.repeat([1.0, -1.0], m), (ends, arcs)), shape=(n, m)),
+        problem.cost.astype(float),
+        supply,
+        supply,
+        np.where(problem.lower == -NO_LIMIT, -np.inf, problem.lower),
+        np.where(problem.capacity == NO_LIMIT, np.inf, problem.capacity),
+    )
+
+
+def by_highs(problem: FlowProblem) -> tuple[str, float]:
+    """Status and cost by HiGHS's dual simplex without presolve."""
+    solver = highs(program_of(problem), presolve="off")
     solver.run()
     status = solver.modelStatusToString(solver.getModelStatus()).lower()
     return status, solver.getInfo().objective_function_value

@@ -18,6 +18,7 @@ from plugin_models import QUIET
 from pyomo.contrib.solver.common.results import TerminationCondition
 from random_models import KINDS, pyomo_model, random_form
 from small_forms import assignment, triangle
+from with_highs import highs, program_of
 
 from pyomo_latpath import routing
 from pyomo_latpath.forms.from_pyomo import compile_model
@@ -61,35 +62,15 @@ def highs_at_gap_zero(form: LinearForm) -> tuple[str, float | None]:
 
 
 def run_highs(form: LinearForm, cost: np.ndarray) -> tuple[str, float]:
-    m, n = form.shape
-    lp = highspy.HighsLp()
-    lp.num_col_, lp.num_row_ = n, m
-    lp.col_cost_, lp.offset_ = cost, form.offset
-    lp.col_lower_, lp.col_upper_ = form.col_lower, form.col_upper
-    lp.row_lower_, lp.row_upper_ = form.row_lower, form.row_upper
-    lp.a_matrix_.format_ = highspy.MatrixFormat.kColwise
-    lp.a_matrix_.start_, lp.a_matrix_.index_ = form.matrix.indptr, form.matrix.indices
-    lp.a_matrix_.value_ = form.matrix.data
-    lp.sense_ = highspy.ObjSense.kMinimize if form.sense == "min" else highspy.ObjSense.kMaximize
-    kinds = (highspy.HighsVarType.kContinuous, highspy.HighsVarType.kInteger)
-    if form.integer.any():
-        lp.integrality_ = [kinds[int(flag)] for flag in form.integer]
-    highs = highspy.Highs()
-    for name, value in (
-        ("output_flag", False),
-        ("mip_rel_gap", 0.0),
-        ("mip_abs_gap", 0.0),
-    ):
-        assert highs.setOptionValue(name, value) == highspy.HighsStatus.kOk
-    assert highs.passModel(lp) == highspy.HighsStatus.kOk
-    highs.run()
+    solver = highs(program_of(form.replace(cost=cost)), mip_rel_gap=0.0, mip_abs_gap=0.0)
+    solver.run()
     word = {
         highspy.HighsModelStatus.kOptimal: "optimal",
         highspy.HighsModelStatus.kInfeasible: "infeasible",
         highspy.HighsModelStatus.kUnbounded: "unsettled",
         highspy.HighsModelStatus.kUnboundedOrInfeasible: "unsettled",
     }
-    return word[highs.getModelStatus()], highs.getInfo().objective_function_value
+    return word[solver.getModelStatus()], solver.getInfo().objective_function_value
 
 
 def agree(ours: tuple[str, float | None], other: tuple[str, float | Fraction | None]) -> bool:

@@ -11,11 +11,15 @@ import sys
 import time
 import tracemalloc
 from collections.abc import Callable
+from pathlib import Path
 
 import highspy
 import models
 import numpy as np
 import pyomo.environ as pyo
+
+sys.path.insert(0, str(Path(__file__).parents[1]))
+from with_highs import highs, program
 
 import pyomo_latpath as latpath
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -42,7 +46,7 @@ def main() -> None:
 
 def compare(form: LinearForm, costs: list[np.ndarray], size: int) -> None:
     """Solve all members by ourselves and by linear programs, some of them through Pyomo."""
-    warm = program(form, costs[0])
+    warm = held(form, costs[0])
     warm.run()
     few = set(range(0, len(costs), max(1, len(costs) // 5)))
     seconds: dict[str, list[float]] = {}
@@ -54,10 +58,10 @@ def compare(form: LinearForm, costs: list[np.ndarray], size: int) -> None:
         return value
 
     def anew(cost: np.ndarray, presolve: str) -> float:
-        highs = program(form, cost)
-        highs.setOptionValue("presolve", presolve)
-        highs.run()
-        return highs.getObjectiveValue()
+        solver = held(form, cost)
+        solver.setOptionValue("presolve", presolve)
+        solver.run()
+        return solver.getObjectiveValue()
 
     def again(cost: np.ndarray) -> float:
         warm.changeColsCost(cost.size, np.arange(cost.size, dtype=np.int32), cost)
@@ -85,20 +89,10 @@ def compare(form: LinearForm, costs: list[np.ndarray], size: int) -> None:
             print(f"  {way:26} {1e3 * median:8.2f} ms {median / our_time:8.1f}x")
 
 
-def program(form: LinearForm, cost: np.ndarray) -> highspy.Highs:
+def held(form: LinearForm, cost: np.ndarray) -> highspy.Highs:
     """The relaxation, passed to HiGHS as arrays."""
-    highs = highspy.Highs()
-    highs.setOptionValue("output_flag", False)
-    lp = highspy.HighsLp()
-    lp.num_row_, lp.num_col_ = form.shape
-    lp.col_cost_, lp.col_lower_, lp.col_upper_ = cost, form.col_lower, form.col_upper
-    lp.row_lower_, lp.row_upper_ = form.row_lower, form.row_upper
-    lp.a_matrix_.format_ = highspy.MatrixFormat.kColwise
-    lp.a_matrix_.start_ = form.matrix.indptr
-    lp.a_matrix_.index_ = form.matrix.indices
-    lp.a_matrix_.value_ = form.matrix.data
-    highs.passModel(lp)
-    return highs
+    limits = form.row_lower, form.row_upper, form.col_lower, form.col_upper
+    return highs(program(form.matrix, cost, *limits))
 
 
 def memory(form: LinearForm, draw: Callable[[], np.ndarray], members: int) -> None:

@@ -14,17 +14,21 @@ import statistics
 import sys
 import time
 from collections.abc import Callable
+from pathlib import Path
 
 import highspy
 import networkx as nx
 import numpy as np
-import scipy.sparse as sp
 from network_families import FAMILIES
 from ortools.graph.python import min_cost_flow
 from scipy.optimize import linear_sum_assignment
 from timing import medians
 
-from pyomo_latpath.paths.network_problem import NO_LIMIT, FlowProblem
+sys.path.insert(0, str(Path(__file__).parents[1]))
+from flow_problems import program_of
+from with_highs import highs
+
+from pyomo_latpath.paths.network_problem import FlowProblem
 from pyomo_latpath.paths.network_simplex import solve_flow
 from pyomo_latpath.paths.network_standard import StandardForm, standard_form
 
@@ -54,27 +58,7 @@ def by_ortools(form: StandardForm, cost: np.ndarray) -> int:
 
 def by_highs(problem: FlowProblem, presolve: str) -> float:
     """Cost by HiGHS's dual simplex."""
-    n, m = problem.supply.size, problem.tail.size
-    ends, arcs = np.append(problem.tail, problem.head), np.tile(np.arange(m), 2)
-    matrix = sp.csc_array((np.repeat([1.0, -1.0], m), (ends, arcs)), shape=(n, m))
-    lp = highspy.HighsLp()
-    lp.num_col_, lp.num_row_ = m, n
-    lp.col_cost_ = problem.cost.astype(float)
-    lp.col_lower_ = np.where(problem.lower == -NO_LIMIT, -np.inf, problem.lower)
-    lp.col_upper_ = np.where(problem.capacity == NO_LIMIT, np.inf, problem.capacity)
-    lp.row_lower_ = lp.row_upper_ = problem.supply.astype(float)
-    lp.a_matrix_.format_ = highspy.MatrixFormat.kColwise
-    lp.a_matrix_.start_, lp.a_matrix_.index_ = matrix.indptr, matrix.indices
-    lp.a_matrix_.value_ = matrix.data
-    solver = highspy.Highs()
-    for name, value in {
-        "output_flag": False,
-        "threads": 1,
-        "presolve": presolve,
-        "solver": "simplex",
-    }.items():
-        assert solver.setOptionValue(name, value) == highspy.HighsStatus.kOk
-    solver.passModel(lp)
+    solver = highs(program_of(problem), threads=1, presolve=presolve, solver="simplex")
     solver.run()
     assert solver.getModelStatus() == highspy.HighsModelStatus.kOptimal
     return solver.getInfo().objective_function_value

@@ -10,10 +10,10 @@ from pathlib import Path
 import highspy
 import numpy as np
 import pytest
-import scipy.sparse as sp
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from model_files import LP, MPS, assert_same_form, write
+from with_highs import highs, program_of
 
 from pyomo_latpath.forms.from_file import ModelFileError, read
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -113,20 +113,4 @@ def test_an_lp_file_written_by_highs_is_read_back(tmp_path_factory, form):
 
 
 def write_with_highs(form: LinearForm, path: Path) -> None:
-    lp = highspy.HighsLp()
-    lp.num_row_, lp.num_col_ = form.shape
-    lp.row_lower_, lp.row_upper_ = form.row_lower, form.row_upper
-    lp.col_lower_, lp.col_upper_ = form.col_lower, form.col_upper
-    lp.col_cost_, lp.offset_ = form.cost, form.offset
-    lp.sense_ = highspy.ObjSense.kMaximize if form.sense == "max" else highspy.ObjSense.kMinimize
-    kinds = highspy.HighsVarType
-    lp.integrality_ = [kinds.kInteger if whole else kinds.kContinuous for whole in form.integer]
-    lp.row_names_, lp.col_names_ = list(form.row_names), list(form.col_names)
-    matrix = sp.csc_array(form.matrix)
-    lp.a_matrix_.format_ = highspy.MatrixFormat.kColwise
-    lp.a_matrix_.start_, lp.a_matrix_.index_ = matrix.indptr, matrix.indices
-    lp.a_matrix_.value_ = matrix.data
-    highs = highspy.Highs()
-    highs.setOptionValue("output_flag", False)
-    assert highs.passModel(lp) == highspy.HighsStatus.kOk
-    assert highs.writeModel(str(path)) != highspy.HighsStatus.kError
+    assert highs(program_of(form)).writeModel(str(path)) != highspy.HighsStatus.kError
