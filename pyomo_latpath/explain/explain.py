@@ -136,7 +136,7 @@ class _Draft:
         self.culprits: list[tuple[CulpritSet, Culprit]] = []
         self.whole: Whole | None = None
         self.no_optimum: NoOptimum | None = None
-        self.remedies: tuple[Remedy, ...] = ()
+        self.remedies: list[Remedy] = []
         self.remains = Remains(form)
 
     @contextmanager
@@ -221,7 +221,9 @@ class _Draft:
             seed=self.seed,
         )
         with self._question("remedies", "looking for remedies") as deadline:
-            self.remedies = find_remedies(context, deadline)
+            for remedy in find_remedies(context, deadline):
+                self.remedies.append(remedy)
+                self.tell(remedy.title)
 
     def _without_optimum(self) -> None:
         """Infeasible or unbounded: which of the two, and why."""
@@ -421,7 +423,7 @@ class _Draft:
             ),
             whole=self.whole,
             no_optimum=self.no_optimum,
-            remedies=self.remedies,
+            remedies=tuple(self.remedies),
             blocks=summaries(self.normal, self.blocks, self.finding.blocks),
             sketch=sketch_of(self.normal, self.blocks),
             complete=not self.cut_off,

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+
 import numpy as np
 
 from ...deadline import Deadline
@@ -22,7 +24,7 @@ from .trial import Trial, optimum_of
 PROBING_SHARE, CUTTING_SHARE, DROPPING_SHARE = 0.2, 0.5, 0.5
 
 
-def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:
+def find_remedies(context: Context, deadline: Deadline) -> Iterator[Remedy]:
     """Find out what can be done about a fractional relaxation.
 
     Each remedy is proven to lose no whole plan when it is found, then tried on the model. One
@@ -33,41 +35,40 @@ def find_remedies(context: Context, deadline: Deadline) -> tuple[Remedy, ...]:
     ----------
     context : Context
     deadline : Deadline
-        What was found and tried by then is returned.
+        The search ends then.
 
-    Returns
-    -------
-    tuple of Remedy
+    Yields
+    ------
+    Remedy
         In the order in which `bound_together` counts them: sides and bounds rounded, smaller
         coefficients, rows split, cuts (derived from the model with all those before them), and
-        declarations that can be dropped. Empty for models that are infeasible, unbounded or
+        declarations that can be dropped. None for models that are infeasible, unbounded or
         semicontinuous.
     """
     form, normal = context.form, context.normal
     if normal.conflict is not None or form.semicontinuous.any():
-        return ()
+        return
     near = None if context.basis is None else declared_basis(normal, context.basis)
     first = optimum_of(form, deadline, near)
     if first is None:
-        return ()
+        return
     trial = Trial(normal, first, deadline)
-    trial.keep_useful(list(rounding_drafts(normal)))
+    yield from trial.kept_of(list(rounding_drafts(normal)))
     rows = _rows_to_probe(form, first.x)
     early = deadline.within(PROBING_SHARE * deadline.left)
-    trial.keep_useful(list(tightening_drafts(trial.normal, rows, trial.near, early)))
-    trial.keep_useful(list(splitting_drafts(trial.form, deadline)))
+    yield from trial.kept_of(list(tightening_drafts(trial.normal, rows, trial.near, early)))
+    yield from trial.kept_of(list(splitting_drafts(trial.form, deadline)))
     if trial.now.fractional:
         early = deadline.within(CUTTING_SHARE * deadline.left)
         cuts = cut_rounds(trial.normal, early, trial.near)
         tried = trial.tried(cut_remedy(trial.normal, cuts, trial.namer)) if cuts else None
         if tried is not None and trial.helps(tried):
-            trial.keep(tried)
+            yield from trial.kept(tried)
     early = deadline.within(DROPPING_SHARE * deadline.left)
     dropped = None if early.passed else declaration_remedy(normal, trial.namer, early)
     tried = None if dropped is None else trial.tried(dropped)
     if tried is not None:
-        trial.keep(tried)
-    return tuple(trial.kept)
+        yield from trial.kept(tried)
 
 
 def _rows_to_probe(form: LinearForm, x: Floats) -> Integers:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -117,7 +117,6 @@ class Trial:
         The model with all remedies kept so far.
     now : Optimum
         Of that.
-    kept : list of Remedy
     namer : Namer
     """
 
@@ -126,7 +125,6 @@ class Trial:
         self._sign = 1.0 if normal.form.sense == "min" else -1.0
         self._normal = normal
         self.form, self.now, self.namer = normal.form, first, Namer(normal.form)
-        self.kept: list[Remedy] = []
 
     @property
     def normal(self) -> NormalForm:
@@ -140,7 +138,7 @@ class Trial:
         """The optimal basis of `form`, as one of `normal` where it is one."""
         return normalised_basis(self.normal, self.now.basis)
 
-    def keep_useful(self, drafts: Sequence[Draft]) -> None:
+    def kept_of(self, drafts: Sequence[Draft]) -> Iterator[Remedy]:
         """Keep what helps of drafts of one kind: group by group, or else all in one."""
         joint = self.tried(combined(drafts, self.namer)) if drafts else None
         if joint is None or not self.helps(joint):
@@ -150,7 +148,7 @@ class Trial:
             tried = [self.tried(combined(group, self.namer)) for group in groups]
             single = [each for each in tried if each is not None and self.helps(each)]
         for each in sorted(single, key=self._gain, reverse=True) or [joint]:
-            self.keep(each)
+            yield from self.kept(each)
 
     def tried(self, remedy: Remedy) -> Tried | None:
         """Work out what a remedy does alone; None where the time ran out."""
@@ -174,17 +172,17 @@ class Trial:
         """
         if self._better(tried.optimum, self._first):
             return True
-        if not self.kept:
+        if self.form is self._declared:
             return False
         form = tried.remedy.apply_to(self.form)
         reached = optimum_of(form, self._deadline, self.now.basis)
         return reached is not None and self._better(reached, self.now)
 
-    def keep(self, tried: Tried) -> None:
+    def kept(self, tried: Tried) -> Iterator[Remedy]:
         """Keep a remedy, and work out what all that are kept do together."""
         told = self.namer.settled(tried.remedy)
         form, reached = tried.form, tried.optimum
-        if self.kept:
+        if self.form is not self._declared:
             form = told.apply_to(self.form)
             together = optimum_of(form, self._deadline, self.now.basis)
             if together is None:
@@ -192,7 +190,7 @@ class Trial:
             reached = together
         self.form, self.now = form, reached
         bound, fractional = reached.bound, reached.fractional
-        self.kept.append(replace(told, bound_together=bound, fractional_together=fractional))
+        yield replace(told, bound_together=bound, fractional_together=fractional)
 
     def _gain(self, tried: Tried) -> tuple[float, int]:
         return self._sign * tried.optimum.bound, -tried.optimum.fractional

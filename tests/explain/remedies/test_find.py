@@ -29,7 +29,7 @@ def small_form(seed, kind):
 
 
 def remedies_of(form, seconds=20):
-    return find_remedies(context_of(form), Deadline(seconds))
+    return tuple(find_remedies(context_of(form), Deadline(seconds)))
 
 
 @settings(max_examples=100)

@@ -18,7 +18,7 @@ KINDS = ["switched", "switched mixed", "stable", "general", "decimals"]
 
 def remedies_of(model):
     form = latpath.compile_model(model)
-    return form, find_remedies(context_of(form), Deadline(20))
+    return form, tuple(find_remedies(context_of(form), Deadline(20)))
 
 
 def small_form(seed, kind):
