@@ -34,8 +34,10 @@ MOST_LINES = 2000
 
 
 @dataclass(frozen=True, eq=False)
-class Violator:
-    """A smallest conflict: a square submatrix with determinant +-2, or an entry beyond 0, +-1.
+class NamedViolator:
+    """A smallest conflict in the names of the model.
+
+    It is a square submatrix with determinant +-2, or an entry beyond 0 and +-1.
 
     Attributes
     ----------
@@ -71,7 +73,7 @@ class Violator:
 
 def violators(
     normal: NormalForm, places: Sequence[Place], group_names: Sequence[str], deadline: Deadline
-) -> Iterator[Violator]:
+) -> Iterator[NamedViolator]:
     """Find one conflict at each of a few places where a vertex is fractional.
 
     Parameters
@@ -85,7 +87,7 @@ def violators(
 
     Yields
     ------
-    Violator
+    NamedViolator
         Its `block` is -1.
 
     Examples
@@ -113,7 +115,7 @@ def violators(
 
 def _violator_at(
     normal: NormalForm, place: Place, group_names: Sequence[str], deadline: Deadline
-) -> Violator | None:
+) -> NamedViolator | None:
     """A conflict of entries +-1 where there is one, else the entry furthest from that."""
     rows, columns = place.rows, place.columns
     matrix = normal.matrix[:, columns].tocsr()[rows, :]
@@ -180,7 +182,7 @@ def cycle_order(entries: NDArray[Any]) -> tuple[list[int], list[int]] | None:
 
 def _told(
     normal: NormalForm, rows: Integers, columns: Integers, group_names: Sequence[str]
-) -> Violator:
+) -> NamedViolator:
     """A violator in names, its lines along the cycle where it is one."""
     entries = normal.matrix[:, columns].tocsr()[rows, :].toarray()
     order = cycle_order(entries)
@@ -189,7 +191,7 @@ def _told(
         rows, columns = rows[order[0]], columns[order[1]]
     form = normal.form
     rows, columns = normal.rows[rows], normal.columns[columns]
-    return Violator(
+    return NamedViolator(
         rows=rows,
         columns=columns,
         row_names=tuple(form.row_names[i] for i in rows.tolist()),

@@ -25,7 +25,7 @@ from ..integrality.assess import assess
 from ..integrality.finding import Finding, Verdict, Witness
 from ..solution import Solution
 from . import culprits, no_optimum, whole
-from .conflict import Violator, violators
+from .conflict import NamedViolator, violators
 from .culprits import Culprit, CulpritSet, Search
 from .explanation import Explanation
 from .fractional import Fractional, measure
@@ -132,7 +132,7 @@ class _Draft:
         self.fractional: Fractional | None = None
         self.bounds = math.nan, math.nan
         self.solution: tuple[Solution, float] | None = None
-        self.violators: list[Violator] = []
+        self.violators: list[NamedViolator] = []
         self.culprits: list[tuple[CulpritSet, Culprit]] = []
         self.whole: Whole | None = None
         self.no_optimum: NoOptimum | None = None
@@ -371,7 +371,7 @@ class _Draft:
             np.searchsorted(self.normal.columns, np.unique(np.concatenate(columns))),
         )
 
-    def _block_of(self, violator: Violator) -> int:
+    def _block_of(self, violator: NamedViolator) -> int:
         row = int(violator.rows[0])
         held = (k for k, b in enumerate(self.blocks) if row in self.normal.rows[b.rows])
         return next(held, -1)

@@ -11,7 +11,7 @@ from typing import Any, Literal
 
 from ..forms.linear_form import LinearForm
 from ..integrality.finding import Finding, Verdict, Witness
-from .conflict import Violator
+from .conflict import NamedViolator
 from .culprits import Culprit
 from .fractional import ComponentShare, Fractional
 from .gap import Gap
@@ -31,11 +31,11 @@ __all__ = [
     "Fractional",
     "Gap",
     "Group",
+    "NamedViolator",
     "NoOptimum",
     "Reason",
     "Remedy",
     "Sketch",
-    "Violator",
     "Whole",
 ]
 
@@ -62,7 +62,7 @@ class Explanation:
         nothing; rows with the same coefficients stand together, named after the first).
     culprits : tuple of Culprit
         Smallest first.
-    violators : tuple of Violator
+    violators : tuple of NamedViolator
         From different places of the model.
     reasons : tuple of Reason
         Worst first.
@@ -71,7 +71,8 @@ class Explanation:
     no_optimum : NoOptimum or None
         Where the model is infeasible or unbounded.
     remedies : tuple of Remedy
-        Most useful first; each checked.
+        Each checked. In the order in which `bound_together` counts them: sides and bounds
+        rounded, smaller coefficients, rows split, cuts, declarations dropped.
     blocks : tuple of BlockSummary
         In the order of `finding.blocks`.
     sketch : Sketch
@@ -98,7 +99,7 @@ class Explanation:
     groups: tuple[Group, ...]
     grouped_by: Literal["component", "name", "pattern"]
     culprits: tuple[Culprit, ...]
-    violators: tuple[Violator, ...]
+    violators: tuple[NamedViolator, ...]
     reasons: tuple[Reason, ...]
     whole: Whole | None
     no_optimum: NoOptimum | None

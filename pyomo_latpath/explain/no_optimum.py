@@ -15,6 +15,7 @@ from ..highs_mip import MipSettings, branch_and_bound
 from ..solution import Solution
 from .groups import Group
 from .minimal import thin_out
+from .naming import listed
 from .remains import Remains
 
 #: So many names are told in a sentence.
@@ -63,7 +64,8 @@ def unbounded(normal: NormalForm, ray: np.ndarray | None) -> NoOptimum:
     if ray is not None:
         moving = np.flatnonzero(np.abs(ray) > 1e-9 * np.abs(ray).max(initial=0.0))
         names = tuple(normal.form.col_names[j] for j in moving.tolist())
-    told = f": {_listed(names)} can grow together for ever" if names else ""
+    together = " together" if len(names) > 1 else ""
+    told = f": {listed(names, TOLD)} can grow{together} for ever" if names else ""
     sentence = f"the objective gets better without end{told}; a bound or a row is missing"
     return NoOptimum("unbounded", sentence, names, False, (), False)
 
@@ -120,7 +122,8 @@ def infeasible(
     if conflict(suspects):
         chosen, chosen_minimal = thin_out(suspects, conflict, deadline)
         chosen_minimal &= set(statuses) <= {"infeasible", "optimal"}
-    told = f"no whole plan exists: {_listed(names)} cannot all hold" if names else ""
+    hold = "cannot hold, even by itself" if len(names) == 1 else "cannot all hold"
+    told = f"no whole plan exists: {listed(names, TOLD)} {hold}" if names else ""
     return NoOptimum(
         "infeasible",
         told or solution.report.why,
@@ -165,8 +168,3 @@ def _status(
     if status == "interrupted":
         raise KeyboardInterrupt
     return status
-
-
-def _listed(names: Sequence[str]) -> str:
-    shown = ", ".join(repr(name) for name in names[:TOLD])
-    return shown + (f" and {len(names) - TOLD} more" if len(names) > TOLD else "")

@@ -11,6 +11,7 @@ import numpy as np
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
 from .groups import Oddities
+from .naming import listed
 from .parity import parity_conflict
 from .stems import Stems
 
@@ -104,15 +105,13 @@ def _parity(normal: NormalForm, rows: Stems) -> Iterator[Reason]:
     places = normal.rows[conflict]
     names = tuple(normal.form.row_names[i] for i in places.tolist())
     groups = dict.fromkeys(rows.names[k] for k in rows.label[places].tolist())
-    told = ", ".join(repr(name) for name in names[:EXAMPLES])
-    told += f" and {len(names) - EXAMPLES} more" if len(names) > EXAMPLES else ""
     yield Reason(
         "parity",
         ", ".join(groups),
         len(names),
         names[:EXAMPLES],
-        f"no whole numbers satisfy {told} together: their sum has even coefficients "
-        "and an odd side",
+        f"no whole numbers satisfy {listed(names, EXAMPLES)} together: their sum has even "
+        "coefficients and an odd side",
     )
 
 

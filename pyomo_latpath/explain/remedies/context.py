@@ -9,7 +9,7 @@ from ...forms.linear_form import LinearForm
 from ...forms.normalise import NormalForm
 from ...highs import Basis, LpResult
 from ...integrality.finding import Finding
-from ..explanation import Fractional, Gap, Group, Violator
+from ..explanation import Fractional, Gap, Group, NamedViolator
 
 
 @dataclass(frozen=True, eq=False)
@@ -31,7 +31,7 @@ class Context:
         The optimal one.
     fractional : Fractional or None
     gap : Gap or None
-    violators : tuple of Violator
+    violators : tuple of NamedViolator
     seed : int
     """
 
@@ -44,5 +44,5 @@ class Context:
     basis: Basis | None
     fractional: Fractional | None
     gap: Gap | None
-    violators: tuple[Violator, ...]
+    violators: tuple[NamedViolator, ...]
     seed: int

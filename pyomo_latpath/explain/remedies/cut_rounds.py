@@ -15,7 +15,8 @@ from ...forms.normalise import NormalForm
 from ...highs import Basis, LinearProgram
 from ...integrality.sampling import FRACTIONAL
 from ...pages.markup import counted
-from ..telling.words import inequality, listed
+from ..naming import listed
+from ..telling.words import inequality
 from .bases import with_rows
 from .cuts import Cut, excess, follows, rows_of, system_of
 from .drafts import Namer, numbered

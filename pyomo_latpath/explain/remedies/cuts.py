@@ -197,7 +197,8 @@ def follows(system: System, cut: Cut) -> bool:
     bool
         Whether every whole plan of the system satisfies the cut, by its derivation.
     """
-    common = math.lcm(*(each.denominator for each in (*cut.row_multipliers, *cut.bound_multipliers)))
+    multipliers = (*cut.row_multipliers, *cut.bound_multipliers)
+    common = math.lcm(*(multiplier.denominator for multiplier in multipliers))
     left: dict[int, int] = {}
     right = 0
     for row, multiplier in zip(cut.rows, cut.row_multipliers, strict=True):

@@ -6,7 +6,7 @@ from ...deadline import Deadline
 from ...forms.normalise import NormalForm
 from ...integrality.implied import implied_columns
 from ...pages.markup import counted
-from ..telling.words import listed
+from ..naming import listed
 from .drafts import Namer, numbered
 from .remedy import BoundChange, Inequality, Remedy, RowChange
 from .row_drafts import rounding_drafts

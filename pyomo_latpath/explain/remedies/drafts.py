@@ -11,7 +11,7 @@ import numpy as np
 
 from ...forms.linear_form import LinearForm
 from ...pages.markup import counted
-from ..telling.words import listed
+from ..naming import listed
 from .remedy import BoundChange, Inequality, Kind, Remedy, RowChange
 
 

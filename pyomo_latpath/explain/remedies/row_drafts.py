@@ -12,8 +12,9 @@ from ...forms.normalise import NormalForm
 from ...forms.numbers import Integers
 from ...highs import Basis
 from ...pages.markup import number
+from ..naming import short
 from ..stems import column_stems, row_stems
-from ..telling.words import inequality, short
+from ..telling.words import inequality
 from .big_m import Prober, loose_state, shrunk, tightened
 from .drafts import Draft
 from .lines import Line, columns_of, float_above, float_below, lines_of, outlook_of, size

@@ -10,7 +10,7 @@ import numpy as np
 from ...integrality.finding import WORST_FIRST, Verdict
 from ...pages.drawing import box, label, picture
 from ...pages.markup import counted, shortened, visible
-from ..explanation import BlockSummary, Sketch, Violator
+from ..explanation import BlockSummary, NamedViolator, Sketch
 
 Point = tuple[float, float]
 
@@ -22,14 +22,14 @@ MARKED = 8
 MATRIX_SIDE, GUTTER = 340, 20
 
 
-def cycle(key: str, violator: Violator, named: bool) -> str:
+def cycle(key: str, violator: NamedViolator, named: bool) -> str:
     """Rows (squares) and columns (circles) by turns on a circle; a dashed edge is a -1.
 
     Parameters
     ----------
     key : str
         Unique on the page.
-    violator : Violator
+    violator : NamedViolator
         A cycle.
     named : bool
         Whether names stand beside the nodes; else their numbers stand in them.
@@ -63,7 +63,7 @@ def cycle(key: str, violator: Violator, named: bool) -> str:
     return picture(key, width, height, "The conflict as a cycle", told, body)
 
 
-def _sign(violator: Violator, node: int) -> int:
+def _sign(violator: NamedViolator, node: int) -> int:
     """Sign of the entry between a node and the next: row 0, column 0, row 1, column 1, ..."""
     k = len(violator.row_names)
     i, is_column = divmod(node, 2)
@@ -93,7 +93,7 @@ def _node(node: int, point: Point, k: int) -> str:
     return shape + (label(x, y + 4.5, str(i + 1), anchor="middle") if k <= NUMBERED else "")
 
 
-def _name(node: int, point: Point, violator: Violator) -> str:
+def _name(node: int, point: Point, violator: NamedViolator) -> str:
     """A node's name, running away from the circle."""
     (x, y), (i, is_column) = point, divmod(node, 2)
     words = visible((violator.column_names if is_column else violator.row_names)[i])

@@ -17,7 +17,8 @@ from ...pages.markup import (
     table,
     text,
 )
-from ..explanation import Culprit, Explanation, Group, Violator
+from ..explanation import Culprit, Explanation, Group, NamedViolator
+from ..naming import listed
 from . import words
 from .drawings import NAMED, cycle
 
@@ -118,9 +119,9 @@ def conflict(told: Explanation) -> str:
     return section("conflict", title, "".join(drawn))
 
 
-def _violator(key: str, violator: Violator) -> str:
+def _violator(key: str, violator: NamedViolator) -> str:
     k = len(violator.row_names)
-    title = words.listed(violator.groups, 4) if violator.groups else counted(k, "row")
+    title = listed(violator.groups, 4) if violator.groups else counted(k, "row")
     body = f"<h3>In {text(title)}</h3>"
     if k == 1:
         return body + paragraphs([words.violator_words(violator)])
@@ -137,7 +138,7 @@ def _violator(key: str, violator: Violator) -> str:
     return body + (names_ if k <= NAMED else folded("Names of the rows and columns", names_))
 
 
-def _cycle(key: str, violator: Violator) -> str:
+def _cycle(key: str, violator: NamedViolator) -> str:
     """The cycle twice: with its names, and with numbers only for views too narrow for those."""
     named = len(violator.row_names) <= NAMED
     return (
@@ -148,7 +149,7 @@ def _cycle(key: str, violator: Violator) -> str:
     )
 
 
-def _grid(key: str, violator: Violator) -> str:
+def _grid(key: str, violator: NamedViolator) -> str:
     k = min(GRID, len(violator.row_names))
     rows = [
         [name(row), *(f"{entry:+d}" if entry else "·" for entry in entries)]

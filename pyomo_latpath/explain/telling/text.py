@@ -6,7 +6,8 @@ import textwrap
 from collections.abc import Iterable, Iterator, Sequence
 
 from ...pages.markup import counted, number, shortened, visible
-from ..explanation import Culprit, Explanation, Violator
+from ..explanation import Culprit, Explanation, NamedViolator
+from ..naming import listed, short
 from ..remedies.remedy import Remedy
 from . import words
 
@@ -50,7 +51,7 @@ def _details(told: Explanation) -> Iterator[str]:
         yield from _part("What would break it", map(words.as_sentence, told.whole.breakers))
         yield from _part("What may change", map(words.as_sentence, told.whole.keepers))
     elif told.no_optimum is not None:
-        names = [words.short(name) for name in told.no_optimum.names]
+        names = [short(name) for name in told.no_optimum.names]
         title = "Conflicting" if told.no_optimum.kind == "infeasible" else "Growing without end"
         yield from _part(title, [", ".join(names)])
     else:
@@ -107,11 +108,11 @@ def _culprit(culprit: Culprit) -> list[str]:
     told = [words.culprit_words(culprit), words.remains(culprit)]
     told.append(words.culprit_least(culprit))
     if culprit.rows:
-        told.append(f"{words.culprit_rows(culprit)}: {words.listed(culprit.rows, 12)}.")
+        told.append(f"{words.culprit_rows(culprit)}: {listed(culprit.rows, 12)}.")
     return told
 
 
-def _violator(title: str, violator: Violator) -> Iterator[str]:
+def _violator(title: str, violator: NamedViolator) -> Iterator[str]:
     yield from _part(title, [words.violator_words(violator)])
     k = len(violator.row_names)
     if not 1 < k <= GRID:
@@ -122,7 +123,7 @@ def _violator(title: str, violator: Violator) -> Iterator[str]:
         for name, entries in zip(violator.row_names, violator.entries.tolist(), strict=True)
     ]
     yield from _lines_of_table(head, rows)
-    columns = [f"{j} {words.short(name)}" for j, name in enumerate(violator.column_names, 1)]
+    columns = [f"{j} {short(name)}" for j, name in enumerate(violator.column_names, 1)]
     yield from _wrapped(f"columns: {', '.join(columns)}")
 
 
@@ -174,7 +175,7 @@ def _table(title: str, head: Sequence[str], rows: Sequence[Sequence[str]]) -> It
 
 def _lines_of_table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> Iterator[str]:
     """Cells in columns, the first as wide as there is room."""
-    cells = [list(head), *([words.short(row[0]), *row[1:]] for row in rows)]
+    cells = [list(head), *([short(row[0]), *row[1:]] for row in rows)]
     widths = [max(map(len, column)) for column in zip(*cells, strict=True)]
     widths[0] = min(widths[0], WIDTH - 2 - sum(width + 2 for width in widths[1:]))
     for first, *others in cells:

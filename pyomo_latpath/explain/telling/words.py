@@ -9,13 +9,12 @@ import math
 from collections.abc import Sequence
 from fractions import Fraction
 
+from ...forms.numbers import simplest_fraction
 from ...integrality.finding import Verdict
-from ...pages.markup import counted, number, shortened, visible
-from ..explanation import Culprit, Explanation, Gap, Violator
+from ...pages.markup import counted, number
+from ..explanation import Culprit, Explanation, Fractional, Gap, NamedViolator
+from ..naming import listed, short
 from ..remedies.remedy import Inequality, Remedy
-
-#: Characters of a name within a sentence, at most.
-NAME_WIDTH = 40
 
 LABOUR = "Where a plan concerns people's shifts, labour rules and local agreements come first."
 
@@ -95,9 +94,7 @@ def how_bad(told: Explanation) -> str:
         return as_sentence(told.no_optimum.sentence)
     parts = []
     if told.fractional is not None and told.fractional.integers:
-        integers = counted(told.fractional.integers, "integer column")
-        count = told.fractional.count
-        parts.append(f"{count:,} of {integers} {'is' if count == 1 else 'are'} fractional.")
+        parts.append(_how_many(told.fractional))
         if told.fractional.worst_name is not None:
             worst = told.fractional.worst_name
             parts.append(
@@ -106,6 +103,16 @@ def how_bad(told: Explanation) -> str:
     if told.gap is not None:
         parts.append(gap_words(told.gap))
     return " ".join(parts)
+
+
+def _how_many(fractional: Fractional) -> str:
+    """How many columns are fractional, before and after rounding where that differs."""
+    count, before = fractional.count, fractional.declared
+    told = f"{count:,} of {counted(fractional.integers, 'integer column')} "
+    told += f"{'is' if count == 1 else 'are'} fractional"
+    if before is None or before == count:
+        return f"{told}."
+    return f"{told}, {before:,} before sides and bounds are rounded inwards."
 
 
 def gap_words(gap: Gap) -> str:
@@ -206,12 +213,13 @@ def _conflicting(names: Sequence[str]) -> str:
     return f"{listed(names, 8)} conflict"
 
 
-def violator_words(violator: Violator) -> str:
+def violator_words(violator: NamedViolator) -> str:
     """What a violator is, and the rows and columns along it."""
     k = len(violator.row_names)
     if k == 1:
         row, column = short(violator.row_names[0]), short(violator.column_names[0])
-        return f"Row {row} has the coefficient {violator.entries[0, 0]} at {column}."
+        entry = fraction(simplest_fraction(float(violator.entries[0, 0])))
+        return f"Row {row} has the coefficient {entry} at {column}."
     rows, columns = listed(violator.row_names, 5), listed(violator.column_names, 5)
     shape = "on one cycle" if violator.cycle else "in one square"
     least = "" if violator.minimal else ", not known to be smallest"
@@ -286,26 +294,6 @@ def fraction(value: Fraction | None) -> str:
     if value is None:
         return "–"
     return str(value) if len(str(value)) <= 15 else f"about {float(value):.6g}"
-
-
-def listed(names: Sequence[str], most: int) -> str:
-    """Names as a clause, at most so many of them.
-
-    Examples
-    --------
-    >>> listed(["rent", "shelves", "vans"], 3), listed(["rent", "shelves", "vans"], 1)
-    ('rent, shelves and vans', 'rent and 2 more')
-    """
-    shown = [short(name) for name in names[:most]]
-    rest = len(names) - len(shown)
-    if rest:
-        shown.append(f"{rest:,} more")
-    return shown[0] if len(shown) == 1 else f"{', '.join(shown[:-1])} and {shown[-1]}"
-
-
-def short(name: str) -> str:
-    """A name fit for a sentence."""
-    return shortened(visible(name), NAME_WIDTH)
 
 
 def inequality(row: Inequality, most: int = 8) -> str:

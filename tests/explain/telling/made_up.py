@@ -17,10 +17,10 @@ from pyomo_latpath.explain.explanation import (
     Fractional,
     Gap,
     Group,
+    NamedViolator,
     NoOptimum,
     Reason,
     Sketch,
-    Violator,
     Whole,
 )
 from pyomo_latpath.explain.remedies.remedy import Inequality, Remedy
@@ -62,14 +62,14 @@ def group(name: str, size: int = 5, **changes: Any) -> Group:
     return replace(told, **changes)
 
 
-def odd_cycle(k: int, names: tuple[str, ...] = ()) -> Violator:
+def odd_cycle(k: int, names: tuple[str, ...] = ()) -> NamedViolator:
     """k caves of which any two neighbours exclude each other, in the order of the cycle."""
     entries = np.zeros((k, k), np.int64)
     for i in range(k):
         entries[i, i - 1] = entries[i, i] = 1
     rows = tuple(f"exclude[{i},{i + 1}]" for i in range(k))
     columns = tuple(f"open[cave {i}]" for i in range(k))
-    return Violator(
+    return NamedViolator(
         np.arange(k), np.arange(k), (names + rows)[:k], (names + columns)[:k], entries,
         determinant=2, cycle=True, minimal=True, groups=("exclude",), block=0,
     )  # fmt: skip

@@ -5,9 +5,8 @@ from __future__ import annotations
 from dataclasses import replace
 
 import made_up
+import numpy as np
 import pytest
-from hypothesis import given
-from hypothesis import strategies as st
 
 from pyomo_latpath.explain.telling import words
 from pyomo_latpath.explain.telling.notebook import to_notebook
@@ -78,6 +77,23 @@ def test_culprits_that_hold_everything_are_not_called_the_cause():
     assert "no part of the model stands out" in words.blame(told)
 
 
+def test_a_count_that_rounding_changes_is_told_before_and_after():
+    told = made_up.fractional()
+    count = told.fractional.count
+    same = replace(told, fractional=replace(told.fractional, declared=count))
+    assert "before sides" not in words.how_bad(same)
+    more = replace(told, fractional=replace(told.fractional, declared=count + 3))
+    assert f", {count + 3} before sides and bounds are rounded inwards." in words.how_bad(more)
+
+
+def test_a_coefficient_is_told_as_a_fraction():
+    entries = np.array([[4 / 3]])
+    single = replace(
+        made_up.odd_cycle(3), row_names=("rent",), column_names=("cave",), entries=entries
+    )
+    assert words.violator_words(single) == "Row rent has the coefficient 4/3 at cave."
+
+
 @pytest.mark.parametrize(
     ("changes", "sentence"),
     [
@@ -117,13 +133,6 @@ def test_an_inequality_is_written_as_people_do():
     both = replace(row, lower=0.0)
     assert words.inequality(both) == "odd_cut[0]: 0 <= open[cave 0] - 2 open[cave 1] <= 1"
     assert words.inequality(replace(row, lower=1.0)).endswith(" = 1")
-
-
-@given(st.lists(st.text(min_size=1), min_size=1, max_size=9), st.integers(1, 9))
-def test_a_list_counts_what_it_does_not_show(names, most):
-    told = words.listed(names, most)
-    assert told.startswith(words.short(names[0]))
-    assert told.endswith(" more") or len(names) <= most or names[-1] == " more"
 
 
 def test_the_notebook_form_is_short_and_scoped():
