@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import math
-import time
+from types import SimpleNamespace
 
 import pytest
 
+from pyomo_latpath import deadline
 from pyomo_latpath.deadline import Deadline
 
 
@@ -15,15 +16,15 @@ def test_shares_are_in_proportion_to_sizes():
         assert share.left == pytest.approx({3: 75, 1: 100}[size], abs=1)
 
 
-def test_what_one_piece_overdraws_or_leaves_is_shared_among_the_others():
+def test_what_one_piece_overdraws_or_leaves_is_shared_among_the_others(monkeypatch):
+    clock = SimpleNamespace(now=0)
+    monkeypatch.setattr(deadline, "time", SimpleNamespace(monotonic=lambda: clock.now))
     left = []
-    for share in Deadline(0.3).shared([1, 1, 1]):
+    for share in Deadline(12).shared([1, 1, 1]):
         left.append(share.left)
         if len(left) == 1:
-            time.sleep(0.15)
-    assert left[0] == pytest.approx(0.1, abs=0.02)
-    assert left[1] <= 0.08
-    assert left[2] <= 0.15
+            clock.now += 6  # instead of 4; the second takes no time
+    assert left == [4, 3, 6]
 
 
 def test_without_a_limit_shares_have_none():

@@ -24,6 +24,14 @@ from pyomo_latpath.batch.task import Settings
 pytest.importorskip("distributed")
 
 
+def address_in(file: Path) -> str | None:
+    """The scheduler's address, once its file is written to the end."""
+    try:
+        return json.loads(file.read_text())["address"]
+    except (FileNotFoundError, json.JSONDecodeError):
+        return None
+
+
 @pytest.fixture(scope="module")
 def address(tmp_path_factory):
     """A scheduler and two workers on the loopback, each a process of its own."""
@@ -40,12 +48,12 @@ def address(tmp_path_factory):
         )
     ]
     try:
-        while not file.exists():
+        while not (where := address_in(file)):
             assert started[0].poll() is None, (place / "log").read_text()
             time.sleep(0.05)
         ways = ["--nthreads", "1", "--no-nanny", "--host", "127.0.0.1"]
         started += [subprocess.Popen([*dask, "worker", *common, *ways], **here) for _ in range(2)]
-        yield json.loads(file.read_text())["address"], started[1:]
+        yield where, started[1:]
     finally:
         for process in reversed(started):
             process.kill()
