@@ -15,8 +15,8 @@ from graph_search import bits, is_realisable_by_bridges
 
 from pyomo_latpath.integrality import network
 
-#: Matrices of each shape from 4x4 to 7x7, 20,000 in all; `test_network` has all smaller ones.
-EACH = 1250
+#: Matrices of each shape from 4x4 to 7x7, 8,000 in all; `test_network` has all smaller ones.
+EACH = 500
 
 
 def random_paths(m, n, rng):
@@ -60,4 +60,4 @@ def test_found_if_and_only_if_there_is_one(m):
             if part is not None:
                 part.check(table)
             seen[there_is_one] += 1
-    assert min(seen.values()) > 1000, seen
+    assert min(seen.values()) > 4 * EACH / 5, seen
