@@ -25,6 +25,7 @@ from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
 from .groups import Group
 from .minimal import hitting_sets, thin_out
+from .naming import listed
 from .relaxation import Place, Relaxation
 from .remains import Certified, Remains
 
@@ -156,8 +157,8 @@ class Search:
                 yield from self._tried(frozenset({k}), smallest=True)
 
     def _tried(self, chosen: frozenset[int], smallest: bool) -> Iterator[CulpritSet]:
-        names = ", ".join(self.groups[k].name for k in sorted(chosen)) or "nothing"
-        self.tell(f"leaving out {names}")
+        names = [self.groups[k].name for k in sorted(chosen)] or ["nothing"]
+        self.tell(f"leaving out {listed(names, MOST_CHOSEN)}")
         certified = self._certified(self._others(chosen))
         if certified is not None:
             self._found.append(chosen)

@@ -17,35 +17,30 @@ from typing import Any
 import numpy as np
 
 from ..deadline import Deadline
-from ..forms.blocks import blocks_of
 from ..forms.linear_form import LinearForm
-from ..forms.normalise import normalise
 from ..highs import LpResult
 from ..integrality.assess import assess
-from ..integrality.finding import Finding, Verdict, Witness
 from ..solution import Solution
 from . import culprits, no_optimum, whole
-from .conflict import NamedViolator, violators
+from .conflict import violators
 from .culprits import Culprit, CulpritSet, Search
 from .explanation import Explanation
-from .fractional import Fractional, measure
-from .gap import Declared, Gap, best_plan, declared_optimum
-from .groups import groups_of, oddities_of
-from .no_optimum import NoOptimum
-from .reasons import find_reasons
-from .relaxation import Place, Relaxation, places_of
-from .remains import Certified, Remains
-from .remedies.context import Context
+from .found import Found
+from .fractional import measure
+from .gap import Declared, best_plan, declared_optimum
+from .groups import groups_of
+from .naming import listed
+from .relaxation import Place, Relaxation
+from .remains import Remains
 from .remedies.find import find_remedies
-from .remedies.remedy import Remedy
-from .sketch import sketch_of, summaries
-from .stems import column_stems, row_stems
 from .whole import Whole
 
 Progress = Callable[[str], None]
 
 #: Vertices to look at, at most.
 SAMPLES = 32
+#: So many groups are named in a sentence.
+NAMED = 3
 #: Share of the time that is left, and seconds where the time is not limited, for each question.
 BUDGETS: dict[str, tuple[float, float]] = {
     "verdict": (0.3, 3.0),
@@ -106,37 +101,23 @@ def explain(
         raise ValueError(f"time_limit is {time_limit}; it must be a number of seconds from 0 on")
     if seed < 0:
         raise ValueError(f"seed is {seed}; it must be a whole number from 0 on")
-    draft = _Draft(form, Deadline(time_limit), seed, progress or (lambda line: None))
+    inquiry = _Inquiry(form, Deadline(time_limit), seed, progress or (lambda line: None))
+    found = inquiry.found
     try:
-        draft.answer()
+        inquiry.run()
     except KeyboardInterrupt:
-        draft.interrupted = True
-        draft.cut_off.append(f"it was interrupted while {draft.doing}")
-    return draft.finished(model)
+        found.interrupted = True
+        found.cut_off.append(f"it was interrupted while {inquiry.doing}")
+    return found.explanation(model)
 
 
-class _Draft:
-    """An explanation in the making."""
+class _Inquiry:
+    """The questions, and the answers so far."""
 
     def __init__(self, form: LinearForm, deadline: Deadline, seed: int, tell: Progress) -> None:
         self.form, self.deadline, self.seed, self.tell = form, deadline, seed, tell
-        self.doing, self.interrupted = "reading the model", False
-        self.cut_off: list[str] = []
-        self.seconds: dict[str, float] = {}
-        self.normal = normalise(form)
-        self.blocks = tuple(blocks_of(self.normal))
-        self.row_stems, self.column_stems = row_stems(form), column_stems(form)
-        self.odd = oddities_of(self.normal, self.blocks)
-        self.groups = groups_of(self.normal, self.row_stems, self.odd, None)
-        self.finding = Finding((), self.normal.snapped, seed)
-        self.fractional: Fractional | None = None
-        self.bounds = math.nan, math.nan
-        self.solution: tuple[Solution, float] | None = None
-        self.violators: list[NamedViolator] = []
-        self.culprits: list[tuple[CulpritSet, Culprit]] = []
-        self.whole: Whole | None = None
-        self.no_optimum: NoOptimum | None = None
-        self.remedies: list[Remedy] = []
+        self.doing = "reading the model"
+        self.found = Found(form, seed)
         self.remains = Remains(form)
 
     @contextmanager
@@ -151,18 +132,19 @@ class _Draft:
             yield self.deadline.within(share * self.deadline.left if limited else seconds)
         finally:
             spent = time.perf_counter() - since
-            self.seconds[name] = self.seconds.get(name, 0.0) + spent
+            self.found.seconds[name] = self.found.seconds.get(name, 0.0) + spent
 
-    def answer(self) -> None:
+    def run(self) -> None:
         """Ask all questions in turn."""
-        if self.normal.conflict is not None:
+        found = self.found
+        if found.normal.conflict is not None:
             self._assess(0)
             self._without_optimum()
             return
         if self.form.semicontinuous.any():  # without their gaps such columns are no relaxation
             self._assess(0)
             return
-        relaxation = Relaxation(self.normal)
+        relaxation = Relaxation(found.normal)
         with self._question("relaxation", "solving the relaxation"):
             optimum = relaxation.optimum(self.deadline)
             places = relaxation.places(optimum.x) if optimum.status == "optimal" else []
@@ -171,14 +153,14 @@ class _Draft:
             self._without_optimum()
         elif optimum.status == "optimal":
             self._measure(relaxation, optimum)
-            if all(block.certificate is not None for block in self.finding.blocks):
+            if all(block.certificate is not None for block in found.finding.blocks):
                 self._tell_whole()
             else:
-                self._tell_fractional(relaxation, places or self._places())
-            if self.no_optimum is None:
-                self._find_remedies(relaxation, optimum)
+                self._tell_fractional(relaxation, places or found.places())
+            if found.no_optimum is None:
+                self._find_remedies(relaxation)
         else:
-            self.cut_off.append("the relaxation was not solved in time")
+            found.cut_off.append("the relaxation was not solved in time")
 
     def _assess(self, samples: int, *, fractional: bool = False) -> None:
         """The verdict: a fractional optimum nearly settles it, a whole one asks for more."""
@@ -186,250 +168,154 @@ class _Draft:
         with self._question(name, "assessing the model") as deadline:
             limit = None if deadline.left == math.inf else deadline.left
             count = 1 if fractional else samples
-            self.finding = assess(self.form, samples=count, time_limit=limit, seed=self.seed)
+            self.found.finding = assess(self.form, samples=count, time_limit=limit, seed=self.seed)
 
     def _measure(self, relaxation: Relaxation, optimum: LpResult) -> None:
         """What the relaxation's optimum is like."""
-        self.groups = groups_of(self.normal, self.row_stems, self.odd, optimum.x)
+        found = self.found
+        found.groups = groups_of(found.normal, found.row_stems, found.odd, optimum.x)
         with self._question("sampling", "looking at vertices") as deadline:
             told = measure(
                 relaxation,
                 optimum,
-                self.column_stems,
+                found.column_stems,
                 samples=SAMPLES,
                 seed=self.seed,
                 deadline=deadline,
             )
         with self._question("relaxation", "solving the relaxation as declared") as deadline:
             rounded = Declared(relaxation.objective(optimum), told.count)
-            declared = declared_optimum(self.normal, rounded, deadline)
-        self.bounds = declared.bound, rounded.bound
-        self.fractional = replace(told, declared=declared.fractional)
+            declared = declared_optimum(found.normal, rounded, deadline)
+        found.bounds = declared.bound, rounded.bound
+        found.fractional = replace(told, declared=declared.fractional)
 
-    def _find_remedies(self, relaxation: Relaxation, optimum: LpResult) -> None:
-        context = Context(
-            form=self.form,
-            normal=self.normal,
-            blocks=self.blocks,
-            finding=self.finding,
-            groups=self.groups,
-            optimum=optimum,
-            basis=relaxation.basis,
-            fractional=self.fractional,
-            gap=self._gap(),
-            violators=tuple(self.violators),
-            seed=self.seed,
-        )
+    def _find_remedies(self, relaxation: Relaxation) -> None:
         with self._question("remedies", "looking for remedies") as deadline:
-            for remedy in find_remedies(context, deadline):
-                self.remedies.append(remedy)
+            for remedy in find_remedies(self.found.normal, relaxation.basis, deadline):
+                self.found.remedies.append(remedy)
                 self.tell(remedy.title)
 
     def _without_optimum(self) -> None:
         """Infeasible or unbounded: which of the two, and why."""
+        found = self.found
         with self._question("infeasible", "finding out what conflicts") as deadline:
-            self.solution = best_plan(self.normal, deadline.left, self.seed)
-            solution = self.solution[0]
+            found.solution = best_plan(found.normal, deadline.left, self.seed)
+            solution = found.solution[0]
             if solution.status == "unbounded":
-                self.no_optimum = no_optimum.unbounded(self.normal, solution.ray)
+                found.no_optimum = no_optimum.unbounded(found.normal, solution.ray)
             elif solution.status == "infeasible":
                 self._tell_infeasible(solution, deadline)
             else:
-                self.cut_off.append("whether any plan exists was not found out in time")
+                found.cut_off.append("whether any plan exists was not found out in time")
 
     def _tell_infeasible(self, solution: Solution, deadline: Deadline) -> None:
-        self.no_optimum = no_optimum.infeasible(self.remains, solution, self.groups, deadline)
-        if not self.no_optimum.groups_minimal:
-            self.cut_off.append("perhaps fewer groups of rows conflict than those told")
+        found = self.found
+        found.no_optimum = no_optimum.infeasible(self.remains, solution, found.groups, deadline)
+        if not found.no_optimum.groups_minimal:
+            found.cut_off.append("perhaps fewer groups of rows conflict than those told")
 
     def _tell_whole(self) -> None:
+        found = self.found
         with self._question("plan", "solving it along whole vertices") as deadline:
-            self.solution = best_plan(self.normal, deadline.left, self.seed)
-        certified = self._certified()
-        self.whole = Whole(
-            sentences=whole.sentences(certified),
+            found.solution = best_plan(found.normal, deadline.left, self.seed)
+        certified = found.certified
+        told = Whole(
+            sentences=whole.sentences(certified, found.row_stems),
             breakers=whole.breakers(certified),
-            path_seconds=self.solution[1],
+            path_seconds=found.solution[1],
             highs_seconds=math.nan,
             highs_ended=False,
             keepers=whole.keepers(certified),
         )
+        found.whole = told
         with self._question("branch and bound", "solving it by branch and bound") as deadline:
             seconds, ended = whole.time_branch_and_bound(self.form, deadline)
-            self.whole = replace(self.whole, highs_seconds=seconds, highs_ended=ended)
+            found.whole = replace(told, highs_seconds=seconds, highs_ended=ended)
         if not ended:
-            self.cut_off.append(f"branch and bound was stopped after {seconds:.1f} s")
-
-    def _certified(self) -> Certified:
-        proofs = [
-            (str(block.structure), block.certificate.blocks[0])
-            for block in self.finding.blocks
-            if block.certificate is not None
-        ]
-        return Certified(self.normal, self.blocks, tuple(proofs))
+            found.cut_off.append(f"branch and bound was stopped after {seconds:.1f} s")
 
     def _tell_fractional(self, relaxation: Relaxation, places: list[Place]) -> None:
+        found = self.found
         with self._question("violators", "looking for the smallest conflict") as deadline:
-            names = [self.row_stems.names[k] for k in self.row_stems.label.tolist()]
-            for violator in violators(self.normal, places, names, deadline):
-                self.violators.append(replace(violator, block=self._block_of(violator)))
+            names = [found.row_stems.names[k] for k in found.row_stems.label.tolist()]
+            for violator in violators(found.normal, places, names, deadline):
+                found.violators.append(replace(violator, block=found.block_of(violator)))
             if deadline.passed:
-                self.cut_off.append("further conflicts were not looked for")
+                found.cut_off.append("further conflicts were not looked for")
         self._find_culprits(relaxation)
         self._find_plan()
-        if self.no_optimum is None:
+        if found.no_optimum is None:
             self._thin_out_rows()
 
-    def _find_plan(self) -> None:
-        if self.deadline.passed:
-            self.cut_off.append("the best whole plan was not looked for")
-            return
-        with self._question("plan", "looking for the best whole plan") as deadline:
-            self.solution = best_plan(self.normal, deadline.left, self.seed)
-        status = self.solution[0].status
-        if status == "interrupted":
-            raise KeyboardInterrupt
-        if status == "infeasible":
-            with self._question("infeasible", "finding out what conflicts") as deadline:
-                self._tell_infeasible(self.solution[0], deadline)
-        elif status != "optimal":
-            none = self.solution[0].x is None
-            when = "in time" if status == "time_limit" else f"(its search ended with: {status})"
-            told = f"no whole plan was found {when}"
-            rough = f"the best whole plan was not found {when}; the gap is an upper one"
-            self.cut_off.append(told if none else rough)
-
     def _find_culprits(self, relaxation: Relaxation) -> None:
+        found = self.found
         with self._question("culprits", "looking for groups to blame") as deadline:
-            conflicts = [violator.groups for violator in self.violators]
-            search = Search(self.remains, self.groups, conflicts, relaxation, deadline, self.tell)
+            conflicts = [violator.groups for violator in found.violators]
+            search = Search(self.remains, found.groups, conflicts, relaxation, deadline, self.tell)
             try:
-                for found in search.run():
-                    objective = culprits.objective_without(search, found.places, deadline)
-                    self.culprits.append((found, self._culprit(found, objective)))
-                    named = ", ".join(self.groups[k].name for k in found.places)
-                    self.tell(f"without {named} it is whole")
+                for those in search.run():
+                    objective = culprits.objective_without(search, those.places, deadline)
+                    culprit = self._culprit(those, objective)
+                    found.culprits.append((those, culprit))
+                    self.tell(f"without {listed(culprit.groups, NAMED)} it is whole")
             finally:
                 self._mark_groups(search)
             if not search.exhausted:
-                self.cut_off.append("further sets of groups to blame may exist")
+                found.cut_off.append("further sets of groups to blame may exist")
 
     def _mark_groups(self, search: Search) -> None:
-        blamed = {k for found, _ in self.culprits for k in found.places}
-        self.groups = tuple(
+        blamed = {k for those, _ in self.found.culprits for k in those.places}
+        self.found.groups = tuple(
             replace(group, to_blame=k in blamed, certified_alone=search.alone.get(k))
-            for k, group in enumerate(self.groups)
+            for k, group in enumerate(self.found.groups)
         )
 
-    def _culprit(self, found: CulpritSet, objective: float) -> Culprit:
-        rows = np.concatenate([self.groups[k].rows for k in found.places])
+    def _culprit(self, those: CulpritSet, objective: float) -> Culprit:
+        groups = [self.found.groups[k] for k in those.places]
+        rows = np.concatenate([group.rows for group in groups])
         return Culprit(
-            groups=tuple(self.groups[k].name for k in found.places),
-            smallest=found.smallest,
+            groups=tuple(group.name for group in groups),
+            smallest=those.smallest,
             rows=tuple(self.form.row_names[i] for i in rows.tolist()),
             row_indices=rows,
             rows_minimal=rows.size == 1,
-            structures=found.certified.structures,
-            remains="; ".join(whole.sentences(found.certified, most=2)),
+            structures=those.certified.structures,
+            remains="; ".join(whole.sentences(those.certified, self.found.row_stems, most=2)),
             objective_without=objective,
             price=math.nan,
         )
 
+    def _find_plan(self) -> None:
+        found = self.found
+        if self.deadline.passed:
+            found.cut_off.append("the best whole plan was not looked for")
+            return
+        with self._question("plan", "looking for the best whole plan") as deadline:
+            found.solution = best_plan(found.normal, deadline.left, self.seed)
+        solution = found.solution[0]
+        if solution.status == "interrupted":
+            raise KeyboardInterrupt
+        if solution.status == "infeasible":
+            with self._question("infeasible", "finding out what conflicts") as deadline:
+                self._tell_infeasible(solution, deadline)
+        elif solution.status != "optimal":
+            timed_out = solution.status == "time_limit"
+            when = "in time" if timed_out else f"(its search ended with: {solution.status})"
+            told = f"no whole plan was found {when}"
+            rough = f"the best whole plan was not found {when}; the gap is an upper one"
+            found.cut_off.append(told if solution.x is None else rough)
+
     def _thin_out_rows(self) -> None:
+        found = self.found
         with self._question("rows", "looking for the rows to blame") as deadline:
-            for place, (found, culprit) in enumerate(self.culprits):
+            for place, (those, culprit) in enumerate(found.culprits):
                 if culprit.rows_minimal:
                     continue
-                share = deadline.within(deadline.left / (len(self.culprits) - place))
+                share = deadline.within(deadline.left / (len(found.culprits) - place))
                 rows, minimal = culprits.smallest_rows(self.remains, culprit.row_indices, share)
                 names = tuple(self.form.row_names[i] for i in rows.tolist())
                 told = replace(culprit, rows=names, row_indices=rows, rows_minimal=minimal)
-                self.culprits[place] = found, told
+                found.culprits[place] = those, told
                 if not minimal:
-                    named = ", ".join(culprit.groups)
-                    self.cut_off.append(f"perhaps fewer rows of {named} are to blame than told")
-
-    def _witness(self) -> Witness | None:
-        met = (block.witness for block in self.finding.blocks)
-        return next((witness for witness in met if witness is not None), None)
-
-    def _places(self) -> list[Place]:
-        """Where known fractional vertices are fractional; without any, what is not certified."""
-        pairs = zip(self.blocks, self.finding.blocks, strict=False)
-        open_ones = [block for block, told in pairs if told.verdict is not Verdict.PROVEN]
-        if self._witness() is None:
-            return [Place(block.rows, block.columns) for block in open_ones]
-        rows, columns = [np.empty(0, np.int64)], [np.empty(0, np.int64)]
-        for block in self.finding.blocks:
-            if block.witness is not None:
-                broken = [value.denominator > 1 for value in block.witness.values]
-                columns.append(block.witness.columns[broken])
-                rows.append(block.witness.tight_rows)
-        return places_of(
-            self.normal,
-            np.searchsorted(self.normal.rows, np.unique(np.concatenate(rows))),
-            np.searchsorted(self.normal.columns, np.unique(np.concatenate(columns))),
-        )
-
-    def _block_of(self, violator: NamedViolator) -> int:
-        row = int(violator.rows[0])
-        held = (k for k, b in enumerate(self.blocks) if row in self.normal.rows[b.rows])
-        return next(held, -1)
-
-    def _gap(self) -> Gap | None:
-        declared, rounded = self.bounds
-        if math.isnan(rounded):
-            return None
-        if self.solution is None:
-            nan = math.nan
-            return Gap(self.form.sense, declared, rounded, nan, nan, "unknown", 0.0)
-        solution, seconds = self.solution
-        return Gap(
-            sense=self.form.sense,
-            declared_bound=declared,
-            rounded_bound=rounded,
-            plan=solution.objective,
-            plan_bound=solution.bound,
-            plan_status=solution.status,
-            seconds=seconds,
-        )
-
-    def finished(self, model: Any) -> Explanation:
-        """What was found so far."""
-        found = self._gap()
-        told = [
-            culprit
-            if found is None
-            else replace(culprit, price=culprits.price(found.worse_than(culprit.objective_without)))
-            for _, culprit in self.culprits
-        ]
-        has_plan = self.solution is not None and self.solution[0].x is not None
-        m, n = self.form.shape
-        return Explanation(
-            finding=self.finding,
-            rows=m,
-            columns=n,
-            integers=int(self.form.integer.sum()),
-            nonzeros=int(self.form.matrix.nnz),
-            fractional=self.fractional,
-            gap=found,
-            witness=self._witness(),
-            groups=self.groups,
-            grouped_by=self.row_stems.by,
-            culprits=tuple(told),
-            violators=tuple(self.violators),
-            reasons=find_reasons(
-                self.normal, self.odd, self.row_stems, self.column_stems, has_plan=has_plan
-            ),
-            whole=self.whole,
-            no_optimum=self.no_optimum,
-            remedies=tuple(self.remedies),
-            blocks=summaries(self.normal, self.blocks, self.finding.blocks),
-            sketch=sketch_of(self.normal, self.blocks),
-            complete=not self.cut_off,
-            cut_off=tuple(self.cut_off),
-            interrupted=self.interrupted,
-            seconds=self.seconds,
-            form=self.form,
-            model=model,
-        )
+                    blamed = listed(culprit.groups, NAMED)
+                    found.cut_off.append(f"perhaps fewer rows of {blamed} are to blame than told")

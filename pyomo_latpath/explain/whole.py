@@ -9,17 +9,21 @@ from dataclasses import dataclass
 import numpy as np
 import scipy.sparse as sp
 
-from ..certificates import Unimodular
+from ..certificates import Network, Part, Unimodular
 from ..deadline import Deadline
 from ..forms.linear_form import LinearForm
+from ..forms.numbers import Integers
 from ..highs_mip import MipSettings, branch_and_bound
 from ..integrality.sentences import describe
 from ..integrality.verdicts import BECAUSE
+from ..pages.markup import counted
 from .groups import oddities_of
+from .naming import listed
 from .remains import Certified
+from .stems import Stems
 
-#: So many blocks are told of, at most.
-MOST_TOLD = 5
+#: So many blocks are told of, at most, and so many names of rows on one side.
+MOST_TOLD, MOST_NAMES = 5, 2
 #: What could break a structure, beside what could break any.
 BREAKS = {
     "incidence": "a further row over columns that stand in two rows already, unless the structure "
@@ -63,30 +67,62 @@ class Whole:
     keepers: tuple[str, ...] = ()
 
 
-def sentences(certified: Certified, most: int = MOST_TOLD) -> tuple[str, ...]:
+def sentences(certified: Certified, rows: Stems, most: int = MOST_TOLD) -> tuple[str, ...]:
     """Say what the blocks are, largest first; equal ones once, and not more than a few.
 
     Parameters
     ----------
     certified : Certified
+    rows : Stems
+        Of the form's rows: the sides of a network are called what its rows are called.
     most : int
 
     Returns
     -------
     tuple of str
+
+    Examples
+    --------
+    >>> from pyomo_latpath.deadline import Deadline
+    >>> from pyomo_latpath.explain.remains import Remains
+    >>> from pyomo_latpath.explain.stems import row_stems
+    >>> form = LinearForm.from_arrays([[1, 1], [1, 0], [0, 1]], row_lower=0, row_upper=9,
+    ...     col_lower=0, col_upper=9, cost=0, row_names=["cave[1]", "town[1]", "town[2]"])
+    >>> everything = Remains(form).certified(np.full(3, True), Deadline(None))
+    >>> sentences(everything, row_stems(form))
+    ('a transport network: 1 row on one side, 2 on the other, 2 columns; the sides are cave (1
+    row) and town (2 rows)',)
     """
     pairs = sorted(
         zip(certified.proofs, certified.blocks, strict=True), key=lambda pair: -pair[1].columns.size
     )
     told = [
         describe(name, proof.part, sp.csc_array((block.rows.size, block.columns.size)))
+        + _sides(proof.part, certified.normal.rows[block.rows], rows)
         for (name, proof), block in pairs
         if name != "trivial"
     ]
-    counted = Counter(told or [BECAUSE["trivial"]])
-    lines = [text if k == 1 else f"{text} ({k:,} blocks)" for text, k in counted.items()]
-    rest = sum(list(counted.values())[most:])
+    count = Counter(told or [BECAUSE["trivial"]])
+    lines = [text if k == 1 else f"{text} ({k:,} blocks)" for text, k in count.items()]
+    rest = sum(list(count.values())[most:])
     return (*lines[:most], f"{rest:,} smaller blocks") if rest > 1 else tuple(lines)
+
+
+def _sides(part: Part, members: Integers, rows: Stems) -> str:
+    """Name the two sides of a star by its rows, where each side has few names of its own."""
+    if not isinstance(part, Network) or rows.by == "pattern":
+        return ""
+    if not (part.tree == len(part.tree)).any(axis=1).all():
+        return ""
+    away = part.tree[:, 0] == len(part.tree)
+    sides = [Counter(rows.label[members[side]].tolist()) for side in (away, ~away)]
+    if not all(0 < len(side) <= MOST_NAMES for side in sides) or sides[0].keys() & sides[1].keys():
+        return ""
+    named = (
+        listed([f"{rows.names[k]} ({counted(n, 'row')})" for k, n in side.items()], MOST_NAMES)
+        for side in sorted(sides, key=lambda side: side.total())
+    )
+    return f"; the sides are {' and '.join(named)}"
 
 
 def breakers(certified: Certified) -> tuple[str, ...]:

@@ -180,6 +180,43 @@ def test_an_interruption_within_the_search_keeps_the_sets_found():
     assert any(group.to_blame for group in told.groups)
 
 
+def test_an_interruption_among_the_remedies_keeps_those_found():
+    caves = LinearForm.from_arrays(
+        [[1, 1, 1, -9, 0], [1, 0, 0, 0, 2], [0, 1, 1, 0, 2]],
+        row_lower=-np.inf,
+        row_upper=[0, 3.5, 3],
+        col_lower=0,
+        col_upper=1,
+        cost=[-2, -2, -2, 4, -1],
+    )
+    everything = latpath.explain(caves).remedies
+    assert len(everything) > 1
+
+    def interrupt(line):
+        if line == everything[0].title:
+            raise KeyboardInterrupt
+
+    told = latpath.explain(caves, progress=interrupt)
+    assert told.interrupted and [each.title for each in told.remedies] == [everything[0].title]
+    assert told.cut_off[-1] == "it was interrupted while looking for remedies"
+
+
+def test_many_groups_are_not_all_named_in_a_sentence():
+    cycle = np.eye(3) + np.roll(np.eye(3), 1, axis=1)
+    form = LinearForm.from_arrays(
+        np.kron(np.eye(40), np.vstack((cycle, cycle[::-1]))),
+        row_lower=-np.inf,
+        row_upper=1,
+        col_lower=0,
+        col_upper=1,
+        cost=-1,
+        row_names=[f"{'abcdef'[k % 6]}{chr(97 + k // 6 % 26)}{k // 156}x" for k in range(240)],
+    )
+    lines = []
+    told = latpath.explain(form, time_limit=8, progress=lines.append)
+    assert max(map(len, [*lines, *told.cut_off])) < 200
+
+
 def test_semicontinuous_columns_are_not_relaxed():
     form = LinearForm.from_arrays(
         [[1, 1]],

@@ -10,6 +10,7 @@ from small_forms import pairs
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.explain import explain
 from pyomo_latpath.explain.remains import Certified
+from pyomo_latpath.explain.stems import row_stems
 from pyomo_latpath.explain.whole import breakers, keepers, sentences, time_branch_and_bound
 from pyomo_latpath.forms.blocks import blocks_of
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -51,13 +52,18 @@ def test_equal_blocks_are_said_once_and_not_too_many():
     )
     told = explain(form).whole.sentences
     assert len(told) == 6 and "8 columns" in told[0] and told[-1] == "3 smaller blocks"
-    twice = sentences(certified(form), most=7)
+    twice = sentences(certified(form), row_stems(form), most=7)
     assert len(twice) == 7 and sum(text.endswith("(2 blocks)") for text in twice) == 1
 
 
 def test_the_structure_is_told_in_a_sentence():
     (sentence,) = explain(transport()).whole.sentences
-    assert sentence.startswith("a transport network: 2 rows on one side, 3 on the other")
+    assert sentence == "a transport network: 2 rows on one side, 3 on the other, 6 columns"
+    names = ["cave[1]", "cave[2]", "town[1]", "town[2]", "town[3]"]
+    (named,) = explain(transport(row_names=names)).whole.sentences
+    assert named == f"{sentence}; the sides are cave (2 rows) and town (3 rows)"
+    mixed = ["cave[1]", "town[4]", "town[1]", "town[2]", "town[3]"]
+    assert explain(transport(row_names=mixed)).whole.sentences == (sentence,)
 
 
 def test_sides_that_are_not_whole_are_rounded_and_do_not_break_it():

@@ -8,11 +8,12 @@ import numpy as np
 
 from ...deadline import Deadline
 from ...forms.linear_form import Floats, LinearForm
+from ...forms.normalise import NormalForm
 from ...forms.numbers import Integers
+from ...highs import Basis
 from ...integrality.sampling import FRACTIONAL
 from ..stems import row_stems
 from .bases import declared_basis
-from .context import Context
 from .cut_rounds import cut_remedy, cut_rounds
 from .declarations import declaration_remedy
 from .remedy import Remedy
@@ -24,7 +25,7 @@ from .trial import Trial, optimum_of
 PROBING_SHARE, CUTTING_SHARE, DROPPING_SHARE = 0.2, 0.5, 0.5
 
 
-def find_remedies(context: Context, deadline: Deadline) -> Iterator[Remedy]:
+def find_remedies(normal: NormalForm, basis: Basis | None, deadline: Deadline) -> Iterator[Remedy]:
     """Find out what can be done about a fractional relaxation.
 
     Each remedy is proven to lose no whole plan when it is found, then tried on the model. One
@@ -33,7 +34,9 @@ def find_remedies(context: Context, deadline: Deadline) -> Iterator[Remedy]:
 
     Parameters
     ----------
-    context : Context
+    normal : NormalForm
+    basis : Basis or None
+        The optimal one of its relaxation, to start from.
     deadline : Deadline
         The search ends then.
 
@@ -45,10 +48,10 @@ def find_remedies(context: Context, deadline: Deadline) -> Iterator[Remedy]:
         declarations that can be dropped. None for models that are infeasible, unbounded or
         semicontinuous.
     """
-    form, normal = context.form, context.normal
+    form = normal.form
     if normal.conflict is not None or form.semicontinuous.any():
         return
-    near = None if context.basis is None else declared_basis(normal, context.basis)
+    near = None if basis is None else declared_basis(normal, basis)
     first = optimum_of(form, deadline, near)
     if first is None:
         return

@@ -7,27 +7,7 @@ import itertools
 import networkx as nx
 import numpy as np
 
-from pyomo_latpath.explain.remedies.context import Context
 from pyomo_latpath.forms.linear_form import LinearForm
-from pyomo_latpath.forms.normalise import normalise
-from pyomo_latpath.integrality.finding import Finding
-
-
-def context_of(form: LinearForm) -> Context:
-    """What `find_remedies` is told of a form, as far as it looks at it."""
-    return Context(
-        form=form,
-        normal=normalise(form),
-        blocks=(),
-        finding=Finding((), 0, 0),
-        groups=(),
-        optimum=None,
-        basis=None,
-        fractional=None,
-        gap=None,
-        violators=(),
-        seed=0,
-    )
 
 
 def switched_form(rng: np.random.Generator, *, continuous: bool = False) -> LinearForm:

@@ -7,13 +7,14 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import random_form
 from small_forms import triangle
-from switched_models import context_of, packing_form, switched_form, whole_plans
+from switched_models import packing_form, switched_form, whole_plans
 
 import pyomo_latpath as latpath
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.remedies.find import find_remedies
 from pyomo_latpath.explain.remedies.trial import optimum_of
 from pyomo_latpath.forms.linear_form import LinearForm
+from pyomo_latpath.forms.normalise import normalise
 
 PURE = ["switched", "matching", "stable", "general", "decimals", "tight", "network"]
 MIXED = ["switched mixed", "mixed", "general"]
@@ -29,7 +30,7 @@ def small_form(seed, kind):
 
 
 def remedies_of(form, seconds=20):
-    return tuple(find_remedies(context_of(form), Deadline(seconds)))
+    return tuple(find_remedies(normalise(form), None, Deadline(seconds)))
 
 
 @settings(max_examples=100)

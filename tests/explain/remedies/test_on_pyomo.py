@@ -6,19 +6,20 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import pyomo_model, random_form
-from switched_models import context_of, packing_form, switched_form
+from switched_models import packing_form, switched_form
 
 import pyomo_latpath as latpath
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.remedies.find import find_remedies
 from pyomo_latpath.explain.remedies.trial import optimum_of
+from pyomo_latpath.forms.normalise import normalise
 
 KINDS = ["switched", "switched mixed", "stable", "general", "decimals"]
 
 
 def remedies_of(model):
     form = latpath.compile_model(model)
-    return form, tuple(find_remedies(context_of(form), Deadline(20)))
+    return form, tuple(find_remedies(normalise(form), None, Deadline(20)))
 
 
 def small_form(seed, kind):
