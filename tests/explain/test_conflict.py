@@ -6,12 +6,14 @@ from all_minors import is_tu
 from grouped_models import grouped_form
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from regular_models import disguised, regular
 
 from pyomo_latpath.deadline import Deadline
 from pyomo_latpath.explain.conflict import cycle_order, violators
-from pyomo_latpath.explain.relaxation import Relaxation
+from pyomo_latpath.explain.relaxation import Place, Relaxation
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.forms.normalise import normalise
+from pyomo_latpath.integrality.regular.decision import totally_unimodular
 
 
 def conflicts_at_optimum(form):
@@ -110,3 +112,28 @@ def test_a_coefficient_is_told_where_nothing_else_is_wrong():
     (found,) = conflicts_at_optimum(form)
     assert found.row_names == ("budget",) and found.entries.shape == (1, 1) and not found.cycle
     assert abs(found.determinant) in (2, 3)
+
+
+@pytest.mark.parametrize("seed", range(4))
+def test_a_sum_of_networks_and_others_has_no_conflict_until_a_sign_is_wrong(seed):
+    rng = np.random.default_rng(seed)
+    matrix = disguised(rng, regular(rng, leaves=3, size=5), pivots=2).matrix
+
+    def conflicts(entries):
+        form = LinearForm.from_arrays(
+            entries, row_lower=0, row_upper=1, col_lower=0, col_upper=1, cost=0
+        )
+        normal = normalise(form)
+        whole = Place(np.arange(normal.rows.size), np.arange(normal.columns.size))
+        names = ["cave"] * form.shape[0]
+        return list(violators(normal, [whole], names, Deadline(None)))
+
+    assert conflicts(matrix) == []
+    broken = matrix.copy()
+    for i, j in rng.permutation(np.argwhere(matrix)):
+        broken[i, j] *= -1
+        if not totally_unimodular(broken).holds:
+            break
+        broken[i, j] *= -1
+    (found,) = conflicts(broken)
+    assert abs(found.determinant) == 2 and every_smaller_part_is_unimodular(found.entries)
