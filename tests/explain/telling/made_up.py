@@ -212,3 +212,7 @@ def very_large(count: int = 20_000) -> Explanation:
                      for i in range(count)),
         sketch=Sketch(count, count, np.eye(40, dtype=np.int64) * 50, edges, edges),
     )  # fmt: skip
+
+
+#: All but the very large one, whose page would say no more.
+MAKERS = (fractional, whole, infeasible, unfinished, sampled, hostile)

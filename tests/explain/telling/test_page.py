@@ -11,15 +11,6 @@ from browser import PHONE, WIDE, Browser
 
 from pyomo_latpath.explain.telling.page import to_html
 
-MAKERS = (
-    made_up.fractional,
-    made_up.whole,
-    made_up.infeasible,
-    made_up.unfinished,
-    made_up.sampled,
-    made_up.hostile,
-)
-
 #: Names beside the cycle: how many, how many leave the drawing, how many cover one another.
 LABELS = """
 const svg = [...document.querySelectorAll('svg')].find((each) => each.querySelector('.mono'));
@@ -33,7 +24,7 @@ return [boxes.length, out.length, covering.length];
 """
 
 
-@pytest.fixture(params=MAKERS, ids=lambda maker: maker.__name__)
+@pytest.fixture(params=made_up.MAKERS, ids=lambda maker: maker.__name__)
 def path(request: pytest.FixtureRequest, tmp_path: Path) -> Path:
     return written(tmp_path, to_html(request.param(), "cellar budget"))
 

@@ -12,15 +12,7 @@ from pyomo_latpath.explain.telling import words
 from pyomo_latpath.explain.telling.notebook import to_notebook
 from pyomo_latpath.explain.telling.text import to_text
 
-MAKERS = (
-    made_up.fractional,
-    made_up.whole,
-    made_up.infeasible,
-    made_up.unfinished,
-    made_up.sampled,
-    made_up.hostile,
-    made_up.very_large,
-)
+MAKERS = (*made_up.MAKERS, made_up.very_large)
 SCREEN = 24
 
 
