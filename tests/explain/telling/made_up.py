@@ -214,5 +214,5 @@ def very_large(count: int = 20_000) -> Explanation:
     )  # fmt: skip
 
 
-#: All but the very large one, whose page would say no more.
+#: One of each kind; `very_large` stands apart.
 MAKERS = (fractional, whole, infeasible, unfinished, sampled, hostile)
