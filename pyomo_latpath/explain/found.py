@@ -82,6 +82,7 @@ class Found:
 
     @property
     def certified(self) -> Certified:
+        """The proofs, where all blocks have one."""
         proofs = [
             (str(block.structure), block.certificate.blocks[0])
             for block in self.finding.blocks
@@ -91,6 +92,7 @@ class Found:
 
     @property
     def gap(self) -> Gap | None:
+        """Bounds and plan as far as they are known; None before the relaxation's optimum is."""
         declared, rounded = self.bounds
         if math.isnan(rounded):
             return None
@@ -110,6 +112,7 @@ class Found:
 
     @property
     def witness(self) -> Witness | None:
+        """The fractional vertex of the first block that has one."""
         met = (block.witness for block in self.finding.blocks)
         return next((witness for witness in met if witness is not None), None)
 
@@ -132,6 +135,7 @@ class Found:
         )
 
     def block_of(self, violator: NamedViolator) -> int:
+        """Place of the block that a conflict lies in; -1 where none holds it."""
         row = int(violator.rows[0])
         held = (k for k, b in enumerate(self.blocks) if row in self.normal.rows[b.rows])
         return next(held, -1)

@@ -16,7 +16,6 @@ from ..forms.numbers import Integers
 from ..highs_mip import MipSettings, branch_and_bound
 from ..integrality.sentences import describe
 from ..integrality.verdicts import BECAUSE
-from ..pages.markup import counted
 from .groups import oddities_of
 from .naming import listed
 from .remains import Certified
@@ -90,8 +89,7 @@ def sentences(certified: Certified, rows: Stems, most: int = MOST_TOLD) -> tuple
     ...     col_lower=0, col_upper=9, cost=0, row_names=["cave[1]", "town[1]", "town[2]"])
     >>> everything = Remains(form).certified(np.full(3, True), Deadline(None))
     >>> sentences(everything, row_stems(form))
-    ('a transport network: 1 row on one side, 2 on the other, 2 columns; the sides are cave (1
-    row) and town (2 rows)',)
+    ('a transport network: 1 row on one side, 2 on the other, 2 columns: cave against town',)
     """
     pairs = sorted(
         zip(certified.proofs, certified.blocks, strict=True), key=lambda pair: -pair[1].columns.size
@@ -118,11 +116,11 @@ def _sides(part: Part, members: Integers, rows: Stems) -> str:
     sides = [Counter(rows.label[members[side]].tolist()) for side in (away, ~away)]
     if not all(0 < len(side) <= MOST_NAMES for side in sides) or sides[0].keys() & sides[1].keys():
         return ""
-    named = (
-        listed([f"{rows.names[k]} ({counted(n, 'row')})" for k, n in side.items()], MOST_NAMES)
+    fewer, more = (
+        listed([rows.names[k] for k in side], MOST_NAMES)
         for side in sorted(sides, key=lambda side: side.total())
     )
-    return f"; the sides are {' and '.join(named)}"
+    return f": {fewer} against {more}"
 
 
 def breakers(certified: Certified) -> tuple[str, ...]:
