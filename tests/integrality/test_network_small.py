@@ -15,8 +15,8 @@ from graph_search import bits, is_realisable_by_bridges
 
 from pyomo_latpath.integrality import network
 
-#: Matrices of each shape from 4x4 to 7x7, 8,000 in all; `test_network` has all smaller ones.
-EACH = 500
+#: Matrices of each shape from 4x4 to 7x7, 20,000 in all; `test_network` has all smaller ones.
+EACH = 1250
 
 
 def random_paths(m, n, rng):
