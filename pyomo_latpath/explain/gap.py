@@ -10,10 +10,10 @@ import numpy as np
 
 from ..deadline import Deadline
 from ..forms.normalise import NormalForm
-from ..highs import LinearProgram
-from ..integrality.sampling import FRACTIONAL
 from ..routing import solve
 from ..solution import Solution
+from .declared import optimum_of
+from .remedies.rounding import rounded_inwards
 
 
 @dataclass(frozen=True)
@@ -104,37 +104,13 @@ def declared_optimum(normal: NormalForm, rounded: Declared, deadline: Deadline) 
     >>> declared_optimum(normalise(form), Declared(1.0, 0), Deadline(None))
     Declared(bound=1.5, fractional=1)
     """
-    form = normal.form
-    if not _rounded(normal):
+    found = rounded_inwards(normal)
+    if not (found.rows.size or found.columns.size):
         return rounded
-    sign = 1.0 if form.sense == "min" else -1.0
-    limits = form.row_lower, form.row_upper, form.col_lower, form.col_upper
-    result = LinearProgram(form.matrix, *limits, sign * form.cost).solve(deadline=deadline)
-    if result.status == "unbounded":
-        return Declared(-sign * float("inf"), None)
-    if result.status != "optimal":
+    optimum = optimum_of(normal.form, deadline)
+    if optimum is None or not np.isfinite(optimum.bound):
         return Declared(float("nan"), None)
-    broken = form.integer & (np.abs(result.x - np.rint(result.x)) > FRACTIONAL)
-    return Declared(form.offset + float(form.cost @ result.x), int(broken.sum()))
-
-
-def _rounded(normal: NormalForm) -> bool:
-    """Whether normalisation moved a side or a bound by more than noise."""
-    form = normal.form
-    shift = form.matrix @ normal.fixed_value
-    factor = normal.row_num / normal.row_den
-    declared = [(side - shift)[normal.rows] * factor for side in (form.row_lower, form.row_upper)]
-    fixed = np.setdiff1d(np.arange(form.shape[1]), normal.columns)
-    scale = normal.col_num / normal.col_den
-    pairs = [
-        (declared[0], normal.row_lower),
-        (declared[1], normal.row_upper),
-        (form.col_lower[normal.columns] / scale, normal.col_lower),
-        (form.col_upper[normal.columns] / scale, normal.col_upper),
-        (form.col_lower[fixed], normal.fixed_value[fixed]),
-        (form.col_upper[fixed], normal.fixed_value[fixed]),
-    ]
-    return not all(np.allclose(was, now, rtol=1e-9, atol=1e-9) for was, now in pairs)
+    return Declared(optimum.bound, optimum.fractional)
 
 
 def best_plan(normal: NormalForm, seconds: float, seed: int) -> tuple[Solution, float]:

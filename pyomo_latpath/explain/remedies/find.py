@@ -12,13 +12,14 @@ from ...forms.normalise import NormalForm
 from ...forms.numbers import Integers
 from ...highs import Basis
 from ...integrality.sampling import FRACTIONAL
+from ..declared import optimum_of
 from ..stems import row_stems
 from .bases import declared_basis
 from .cut_rounds import cut_remedy, cut_rounds
 from .declarations import declaration_remedy
 from .remedy import Remedy
 from .row_drafts import rounding_drafts, splitting_drafts, tightening_drafts
-from .trial import Trial, optimum_of
+from .trial import Trial
 
 #: Shares of the time left: for linear programs behind smaller coefficients, for cuts, and for
 #: the search for declarations that can go.

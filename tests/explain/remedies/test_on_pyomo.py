@@ -10,8 +10,8 @@ from switched_models import packing_form, switched_form
 
 import pyomo_latpath as latpath
 from pyomo_latpath.deadline import Deadline
+from pyomo_latpath.explain.declared import optimum_of
 from pyomo_latpath.explain.remedies.find import find_remedies
-from pyomo_latpath.explain.remedies.trial import optimum_of
 from pyomo_latpath.forms.normalise import normalise
 
 KINDS = ["switched", "switched mixed", "stable", "general", "decimals"]
