@@ -7,6 +7,7 @@ mapped once.
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
 
@@ -62,20 +63,38 @@ class SilentHighs(highspy.Highs):  # type: ignore[misc]
     """
 
     cancelled = False
+    _failure: Exception | None = None
 
     def enableCallbacks(self) -> None:
         set_option(self, "output_flag", False)
         super().enableCallbacks()
 
+    def log_to(self, log: Callable[[str], None]) -> None:
+        """Hand each line that HiGHS prints to `log`; an error there ends the run, and is raised."""
+
+        def relay(event: Any) -> None:
+            try:
+                log(event.message.rstrip("\n"))
+            except Exception as error:  # in HiGHS's thread: raised where `solve` was called
+                self._failure = self._failure or error
+                self.cancelSolve()
+
+        set_option(self, "output_flag", True)
+        set_option(self, "log_to_console", False)
+        self.cbLogging += relay
+
     def joinSolve(self, solver_thread: Any = None, interrupt_limit: int = 1) -> Any:
         """Wait for the end; Ctrl-C asks HiGHS to stop, a second one waits no longer."""
         self.cancelled = False
         try:
-            return self._joined()
+            status = self._joined()
         except KeyboardInterrupt:
             self.cancelled = True
             self.cancelSolve()
-            return self._joined()
+            status = self._joined()
+        if self._failure is not None:
+            raise self._failure
+        return status
 
     def _joined(self) -> Any:
         ended, status = False, None

@@ -154,7 +154,4 @@ def _apply(highs: Any, settings: MipSettings) -> None:
     for name, value in (chosen | dict(settings.options or {})).items():
         set_option(highs, name, value)
     if settings.log is not None:
-        log = settings.log
-        set_option(highs, "output_flag", True)
-        set_option(highs, "log_to_console", False)
-        highs.cbLogging += lambda event: log(event.message.rstrip("\n"))
+        highs.log_to(settings.log)

@@ -124,6 +124,16 @@ def test_the_number_of_threads_may_change_from_solve_to_solve():
         assert (result.status, result.bound) == ("optimal", -9.0)
 
 
+def test_an_error_in_the_log_is_raised():
+    def full(line):
+        raise OSError("no space left")
+
+    A, *limits, cost = program([[3, 5, 7]], -INF, 8, 0, 1, [-2, -3, -4])
+    kinds = np.ones(3, np.int32)
+    with pytest.raises(OSError, match="no space left"):
+        branch_and_bound(A, *limits, cost, kinds, MipSettings(log=full), FOREVER)
+
+
 SEARCH = """
 import numpy as np
 import pyomo_latpath as latpath
