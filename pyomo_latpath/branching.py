@@ -10,6 +10,7 @@ from .answers import PartAnswer, without_plan
 from .deadline import Deadline
 from .forms.linear_form import Flags, Floats
 from .forms.normalise import NormalForm
+from .forms.plan import rounding_room
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipResult, MipSettings, branch_and_bound
 from .integrality.finding import BlockFinding
@@ -142,7 +143,7 @@ def _rounded(part: NormalForm, x: Floats, told: Flags) -> Floats:
     """Round the integer columns `told` of where every row still holds."""
     near = np.where(part.integer & told, np.rint(x), x)
     activity = part.matrix @ near
-    slack = 1e-9 * np.maximum(1.0, np.abs(activity))
+    slack = rounding_room(abs(part.matrix) @ np.abs(near), 1e-9)
     holds = (activity >= part.row_lower - slack) & (activity <= part.row_upper + slack)
     if holds.all():
         return near

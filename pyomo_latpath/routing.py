@@ -30,7 +30,7 @@ from .deadline import Deadline
 from .forms.blocks import Block
 from .forms.linear_form import Floats, LinearForm
 from .forms.normalise import NormalForm
-from .forms.plan import feasible_start, largest_violation
+from .forms.plan import TOLERANCE, feasible_start, largest_violation, rounding_room
 from .grouping import Group
 from .highs import LinearProgram, LpResult
 from .highs_mip import MipSettings, check_settings
@@ -295,7 +295,7 @@ def _by_optimum(request: _Request, rest: Rest, relaxation: Relaxation) -> PartAn
 def _as_good_as(part: NormalForm, x: Floats, optimum: LpResult) -> bool:
     """Whether a whole plan holds, and costs no more than the relaxation, within rounding."""
     activity = part.matrix @ x
-    slack = ROUNDING * np.maximum(1.0, abs(part.matrix) @ np.abs(x))
+    slack = rounding_room(abs(part.matrix) @ np.abs(x), ROUNDING)
     inside = (activity >= part.row_lower - slack) & (activity <= part.row_upper + slack)
     dearer = float(part.cost @ x) - optimum.objective
     return bool(inside.all() and dearer <= ROUNDING * (1.0 + abs(part.cost) @ np.abs(x)))
@@ -399,7 +399,7 @@ def _report(request: _Request, prepared: Prepared, parts: list[PartAnswer]) -> S
         merged,
         RouteReport(
             route=routes.pop() if len(routes) == 1 else "split" if routes else "path",
-            why=why(parts, merged.status),
+            why=why(parts, merged.status) + _warning(violation),
             finding=finding,
             walk=walk_report(parts),
             proof="exact" if exact else "tolerance",
@@ -413,6 +413,13 @@ def _report(request: _Request, prepared: Prepared, parts: list[PartAnswer]) -> S
             recognition=prepared.recognition,
         ),
     )
+
+
+def _warning(violation: float) -> str:
+    """What must be said of a plan that branch and bound's own tolerances let pass."""
+    if violation <= TOLERANCE:
+        return ""
+    return f"; beware: the plan misses a row, bound or declaration by {violation:g}"
 
 
 def _solution(merged: Merged, report: RouteReport) -> Solution:

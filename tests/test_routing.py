@@ -1,5 +1,6 @@
 """Which route a model takes, how its parts are merged, and what is said about it."""
 
+import itertools
 import time
 
 import numpy as np
@@ -9,6 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from small_forms import TRIANGLE
 
+from pyomo_latpath import routing
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.highs import OptionError
 from pyomo_latpath.routing import solve
@@ -283,3 +285,31 @@ def test_the_report_is_plain_data():
     report = solve(side_by_side(assignment, triangle)).report.to_dict()
     assert json.loads(json.dumps(report)) == report
     assert set(report["seconds"]) == {"compile", "assess", "solve", "proof"}
+
+
+@pytest.mark.parametrize("size", [1e9, 1e10, 1e12])
+def test_a_small_part_of_a_large_budget_counts(size):
+    form = form_of([[size, 3]], -INF, size, [-1, -1])
+    solution = solve(form)
+    assert (solution.status, solution.objective) == ("optimal", -1)
+    assert solution.report.largest_violation == 0.0
+    with pytest.raises(ValueError, match="row 'r1' is at"):
+        solve(form, start=[1, 1])
+
+
+def test_large_budgets_against_every_choice():
+    rng = np.random.default_rng(0)
+    choices = np.array(list(itertools.product([0, 1], repeat=5)))
+    for _ in range(60):
+        first = float(rng.integers(10 ** int(rng.integers(8, 13))))
+        weight = np.append(first, rng.integers(1, 100, 4))
+        worth = np.append(rng.integers(100, 999), rng.integers(1, 12, 4))
+        budget = first + rng.integers(0, 200)
+        best = max(worth @ x for x in choices if weight @ x <= budget)
+        assert solve(form_of(weight[None], -INF, budget, -worth), rel_gap=0).objective == -best
+
+
+def test_a_plan_that_misses_a_row_is_not_told_without_a_warning(monkeypatch):
+    monkeypatch.setattr(routing, "largest_violation", lambda form, x: 3.0)
+    report = solve(knapsacks(), highs_options={"mip_max_nodes": 1}).report
+    assert report.why.endswith("beware: the plan misses a row, bound or declaration by 3")

@@ -40,6 +40,7 @@ from pyomo.repn import generate_standard_repn
 from pyomo.repn.plugins.standard_form import LinearStandardFormCompiler
 
 from .linear_form import ComponentNames, Flags, Floats, LinearForm
+from .plan import TOLERANCE
 
 #: Active components that a linear form can hold, or that it may overlook.
 UNDERSTOOD = frozenset({Block, Constraint, Objective, Suffix, Port})
@@ -72,7 +73,8 @@ def compile_model(model: Any) -> LinearForm:
     LinearForm
         One row for each active constraint (also for those without variables or without
         sides), one column for each free variable that they or the objective mention, also
-        with the coefficient 0. `row_names` and `col_names` are `ComponentNames`.
+        with the coefficient 0, and for each whole variable that is fixed at a fraction.
+        `row_names` and `col_names` are `ComponentNames`.
 
     Raises
     ------
@@ -104,7 +106,7 @@ def compile_model(model: Any) -> LinearForm:
         rows = list(model.component_data_objects(Constraint, active=True, descend_into=True))
         system = _compiled(model, rows) or _read_one_by_one(objective, rows)
         variables = list(system.variables)
-        variables += _mentioned_at_zero(model, objective, rows, variables)
+        variables += _mentioned_besides(model, objective, rows, variables)
         extra = len(variables) - len(system.variables)
         col_lower, col_upper, integer = _domains_of(variables)
         return LinearForm.from_arrays(
@@ -283,12 +285,13 @@ def _rows_of(rows: list[Any], columns: _Columns) -> tuple[Floats, Floats, Any]:
     return np.array(lower), np.array(upper), terms
 
 
-def _mentioned_at_zero(
+def _mentioned_besides(
     model: Any, objective: Any, rows: list[Any], variables: list[Any]
 ) -> list[Any]:
-    """Return free variables that are mentioned only with the coefficient 0.
+    """Return variables without an entry that are mentioned and matter all the same.
 
-    A mutable Param may be 0 today. The variable is still the model's, and gets a value.
+    Free ones with the coefficient 0: a mutable Param may be 0 today, and the variable gets a
+    value. And whole ones fixed at a fraction: no plan can have them.
     """
     own = list(model.component_objects(Var, active=True, descend_into=True))
     if sum(map(len, own)) == len(variables):  # the rule, and quickly seen
@@ -298,7 +301,7 @@ def _mentioned_at_zero(
         id(variable)
         for component in own
         for variable in component.values()
-        if id(variable) not in known and not variable.fixed
+        if id(variable) not in known and (not variable.fixed or _at_a_fraction(variable))
     }
     if not absent:
         return []
@@ -307,10 +310,18 @@ def _mentioned_at_zero(
     if objective is not None:
         expressions.append(objective.expr)
     for expression in expressions:
-        for variable in identify_variables(expression, include_fixed=False):
+        for variable in identify_variables(expression, include_fixed=True):
             if id(variable) in absent:
                 found[id(variable)] = variable
     return list(found.values())
+
+
+def _at_a_fraction(variable: Any) -> bool:
+    """Whether a whole variable is fixed between two whole numbers, beyond a solver's noise."""
+    value = variable.value
+    if value is None or variable.is_continuous():
+        return False
+    return bool(np.isfinite(value) and abs(value - round(value)) > TOLERANCE)
 
 
 def _domains_of(variables: Sequence[Any]) -> tuple[Floats, Floats, Flags]:
@@ -320,7 +331,8 @@ def _domains_of(variables: Sequence[Any]) -> tuple[Floats, Floats, Flags]:
     whole = {key: _declares_whole(variable) for key, variable in examples.items()}
     integer = np.fromiter(map(whole.__getitem__, map(id, domains)), bool, len(variables))
     # A missing bound is None, which becomes NaN here; a bound that is NaN has raised before.
-    bounds = np.array([variable.bounds for variable in variables], dtype=float).reshape(-1, 2)
+    limits = [(v.value, v.value) if v.fixed else v.bounds for v in variables]
+    bounds = np.array(limits, dtype=float).reshape(-1, 2)
     lower = np.where(np.isnan(bounds[:, 0]), -np.inf, bounds[:, 0])
     upper = np.where(np.isnan(bounds[:, 1]), np.inf, bounds[:, 1])
     return lower, upper, integer

@@ -7,6 +7,30 @@ from numpy.typing import ArrayLike
 
 from .linear_form import Floats, LinearForm
 
+#: What a plan from floating-point numbers may miss a row or bound by, whatever their size.
+TOLERANCE = 1e-6
+
+
+def rounding_room(magnitude: Floats, relative: float) -> Floats:
+    """How much a row's value may be off for want of digits.
+
+    A share of the numbers added up, but never more than `TOLERANCE` beyond what the sum itself
+    loses: a budget of 10**10 that is overrun by 3 is overrun.
+
+    Parameters
+    ----------
+    magnitude : ndarray, float64
+        Sum of the sizes of what a row adds up.
+    relative : float
+
+    Examples
+    --------
+    >>> rounding_room(np.array([1.0, 1e10]), 1e-9) < 1e-4
+    array([ True,  True])
+    """
+    share = relative * np.maximum(1.0, magnitude)
+    return np.minimum(share, TOLERANCE) + 8 * np.finfo(np.float64).eps * magnitude
+
 
 def largest_violation(form: LinearForm, x: Floats) -> float:
     """Largest amount by which a plan misses a row, a bound or a declaration of the model.
@@ -53,11 +77,19 @@ def feasible_start(form: LinearForm, start: ArrayLike) -> Floats:
             "which must be a whole number"
         )
     x = np.where(form.integer, np.rint(x), x)
-    for kind, names, value, low, high in (
-        ("column", form.col_names, x, form.col_lower, form.col_upper),
-        ("row", form.row_names, form.matrix @ x, form.row_lower, form.row_upper),
+    size = np.abs(x)
+    for kind, names, value, magnitude, low, high in (
+        ("column", form.col_names, x, size, form.col_lower, form.col_upper),
+        (
+            "row",
+            form.row_names,
+            form.matrix @ x,
+            abs(form.matrix) @ size,
+            form.row_lower,
+            form.row_upper,
+        ),
     ):
-        slack = 1e-6 * np.maximum(1.0, np.abs(value))
+        slack = rounding_room(magnitude, TOLERANCE)
         missed = (value < low - slack) | (value > high + slack)
         if kind == "column":
             missed &= ~(form.semicontinuous & (value == 0))

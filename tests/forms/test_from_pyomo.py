@@ -16,6 +16,7 @@ from pyomo.repn.plugins.standard_form import LinearStandardFormCompiler
 
 from pyomo_latpath.forms.from_pyomo import compile_model
 from pyomo_latpath.forms.linear_form import ComponentNames
+from pyomo_latpath.routing import solve
 
 INF = math.inf
 
@@ -328,3 +329,22 @@ def test_rows_and_costs_agree_with_the_expressions_and_with_pyomos_compiler(mode
             assert form.row_upper[i] == info.rhs[k]
         if entry.bound_type <= 0:
             assert form.row_lower[i] == info.rhs[k]
+
+
+def test_a_whole_variable_fixed_at_a_fraction_leaves_no_plan():
+    model = pyo.ConcreteModel()
+    model.x = pyo.Var(range(2), domain=pyo.Binary)
+    model.row = pyo.Constraint(expr=model.x[0] + model.x[1] <= 1)
+    model.goal = pyo.Objective(expr=model.x[1], sense=pyo.maximize)
+    model.x[0].fix(0.5)
+    form = compile_model(model)
+    assert list(form.col_names) == ["x[1]", "x[0]"]
+    assert (form.col_lower[1], form.col_upper[1]) == (0.5, 0.5)
+    solution = solve(form)
+    assert solution.status == "infeasible"
+    assert "column 'x[0]'" in solution.report.why
+    model.x[0].fix(1 - 1e-9)
+    assert compile_model(model).shape == (1, 1)
+    model.x[0].fix(0.5)
+    model.x[0].domain = pyo.Reals
+    assert solve(compile_model(model)).status == "optimal"
