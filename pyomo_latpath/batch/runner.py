@@ -22,7 +22,7 @@ from .progress import Progress
 from .record import BatchRecord
 from .store import CertificateStore
 from .task import Settings, Task, printable
-from .workers import Processes
+from .workers import Processes, end_if_starting, refuse_script_without_file
 
 
 class OutOfTime(BatchError):
@@ -92,7 +92,8 @@ def solve_many(
     JournalError
         For a journal of other options, in use, or on a full disk.
     BatchError
-        When no worker can be kept running.
+        When no worker can be kept running, and for a script that workers cannot read, or that
+        starts the batch outside of `if __name__ == "__main__":`.
 
     Examples
     --------
@@ -104,6 +105,9 @@ def solve_many(
     >>> [(record.instance, record.objective) for record in records]
     [('instance 1', 1.0), ('instance 2', 2.0)]
     """
+    end_if_starting()
+    if executor is None:
+        refuse_script_without_file()
     for name, value, least in (
         ("workers", workers, 1),
         ("time_limit", time_limit, 0),

@@ -21,7 +21,7 @@ import time
 from collections import deque
 from collections.abc import Iterator
 from contextlib import contextmanager, suppress
-from multiprocessing import connection, get_context
+from multiprocessing import connection, current_process, get_context
 from multiprocessing.connection import Connection
 from typing import Any
 
@@ -37,6 +37,9 @@ GRACE = 10.0
 AHEAD, QUICK, LIGHT = 8, 0.05, 2**14
 #: Processes in a row that may end before they are ready.
 MOST_STILLBORN = 3
+#: Name of a process until it is ready, and its exit status when the script, which it runs to know
+#: what the caller's classes are, would have it start a batch of its own.
+STARTING, UNGUARDED = "latpath worker, starting", 87
 
 
 class Processes:
@@ -132,15 +135,21 @@ class Processes:
                 else:
                     self._dismiss(worker)
                     return [*answers, Lost(task, message)]
+            return answers
         except (EOFError, OSError):
-            answers += self._bury(worker)
-        return answers
+            pass
+        return answers + self._bury(worker)
 
     def _bury(self, worker: _Worker) -> list[Answer]:
         """Replace a process that ended by itself; only its first task is to blame."""
         worker.process.join(timeout=5)
         worker.end()
         code = worker.process.exitcode
+        if code == UNGUARDED and not worker.ready:
+            raise BatchError(
+                "each worker process runs this script once more, and would start the batch again: "
+                "put what starts it below `if __name__ == '__main__':`"
+            )
         how = f"exit status {code}"
         if code is not None and code < 0:
             how = signal.Signals(-code).name if -code in set(signal.Signals) else f"signal {-code}"
@@ -155,8 +164,7 @@ class Processes:
             if self._stillborn >= MOST_STILLBORN:
                 raise BatchError(
                     f"{self._stillborn} worker processes in a row ended before they were ready "
-                    f"({how}; see above for what they said). A script that starts a batch must do "
-                    "so below `if __name__ == '__main__':`"
+                    f"({how}; see above for what they said)"
                 )
         self._dismiss(worker)
         return answers
@@ -185,13 +193,35 @@ class Processes:
         worker.tasks.clear()
 
 
+def end_if_starting() -> None:
+    """End a worker process whose script starts a batch while it is read; `_bury` says why."""
+    if current_process().name == STARTING:
+        sys.exit(UNGUARDED)
+
+
+def refuse_script_without_file() -> None:
+    """Refuse a script that worker processes could not read.
+
+    Raises
+    ------
+    BatchError
+    """
+    script = sys.modules["__main__"]
+    file = getattr(script, "__file__", None)
+    if file is not None and script.__spec__ is None and not os.path.exists(file):
+        raise BatchError(
+            f"worker processes read the script again, and {file} is no file: save it as one, or "
+            "give executor=concurrent.futures.ThreadPoolExecutor(1)"
+        )
+
+
 class _Worker:
     """A process as the batch sees it; the first of its tasks is the one that it works on."""
 
     def __init__(self) -> None:
         context = get_context("spawn")
         self.pipe, theirs = context.Pipe()
-        self.process = context.Process(target=serve, args=(theirs,), daemon=True)
+        self.process = context.Process(target=serve, args=(theirs,), name=STARTING, daemon=True)
         with _deaf_to_ctrl_c():
             self.process.start()
         theirs.close()
@@ -259,6 +289,7 @@ class _Unpickler(pickle.Unpickler):
 def serve(pipe: Connection) -> None:
     """What a worker process does: answer each task with a record, or why it is lost."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
+    current_process().name = "latpath worker"
     os.dup2(2, 1)  # what models print must not come between records
     inbox: queue.SimpleQueue[bytes] = queue.SimpleQueue()
     threading.Thread(target=_receive, args=(pipe, inbox), daemon=True).start()

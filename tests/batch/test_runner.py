@@ -6,6 +6,8 @@ import io
 import multiprocessing
 import os
 import signal
+import subprocess
+import sys
 import time
 from concurrent.futures import ProcessPoolExecutor, ThreadPoolExecutor
 from pathlib import Path
@@ -288,6 +290,38 @@ def test_workers_that_never_come_up_end_the_batch(monkeypatch):
     monkeypatch.setattr(workers, "serve", os._exit)
     with pytest.raises(workers.BatchError, match="ended before they were ready"):
         solve([odd.Quick("quick")], workers=1)
+
+
+#: A script that starts a batch wherever it is read.
+UNGUARDED = """
+from concurrent.futures import ThreadPoolExecutor
+import pyomo_latpath as latpath
+form = latpath.LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0, col_upper=1,
+                                      cost=[2, 3])
+for record in latpath.solve_many([form] * 2, progress=False, workers=2, executor=%s):
+    print(record.instance, record.objective)
+"""
+
+
+def run_python(*arguments, **options):
+    command = [sys.executable, *arguments]
+    return subprocess.run(command, capture_output=True, text=True, timeout=120, **options)
+
+
+def test_a_script_without_guard_is_told_once_and_by_the_parent_alone(tmp_path):
+    (tmp_path / "nights.py").write_text(UNGUARDED % None)
+    done = run_python(tmp_path / "nights.py")
+    assert (done.returncode, done.stdout) == (1, "")
+    assert done.stderr.count("Traceback") == 1
+    assert "below `if __name__ == '__main__':`" in done.stderr.splitlines()[-1]
+
+
+def test_a_script_without_file_needs_one_or_threads():
+    refused = run_python("-", input=UNGUARDED % None)
+    assert refused.stderr.count("Traceback") == 1
+    assert "ThreadPoolExecutor(1)" in refused.stderr.splitlines()[-1]
+    done = run_python("-", input=UNGUARDED % "ThreadPoolExecutor(1)")
+    assert sorted(done.stdout.splitlines()) == ["instance 1 2.0", "instance 2 2.0"]
 
 
 def test_processes_of_an_executor_do_the_same(tmp_path):
