@@ -10,6 +10,7 @@ import scipy.sparse as sp
 
 from ...forms.linear_form import LinearForm
 from .remedy import Inequality, Remedy, RowChange
+from .unchanged import refuse_changed
 
 
 class JoinedNames(Sequence[str]):
@@ -57,7 +58,8 @@ def apply_to_form(remedy: Remedy, form: LinearForm) -> LinearForm:
     TypeError
         For anything but a form.
     ValueError
-        If a row or column of the remedy is not at its place in the form.
+        If a row or column of the remedy is not at its place in the form, if a row or a bound
+        has changed since it was explained, or if the remedy was made already.
     """
     if not isinstance(form, LinearForm):
         raise TypeError(
@@ -65,6 +67,7 @@ def apply_to_form(remedy: Remedy, form: LinearForm) -> LinearForm:
             "by apply()"
         )
     _refuse_another_form(remedy, form)
+    refuse_changed(remedy, form, by_name=False)
     row_lower, row_upper = form.row_lower.copy(), form.row_upper.copy()
     for change in remedy.row_changes:
         row_lower[change.row], row_upper[change.row] = change.lower, change.upper

@@ -4,13 +4,15 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable
+from itertools import count
 from typing import Any
 
 import pyomo.environ as pyo
-from pyomo.common.modeling import unique_component_name
 from pyomo.core.expr import LinearExpression
 
+from ...forms.from_pyomo import compile_model
 from .remedy import Inequality, Remedy, RowChange
+from .unchanged import refuse_changed
 
 
 def apply_to_model(remedy: Remedy, model: Any) -> Any:
@@ -24,8 +26,9 @@ def apply_to_model(remedy: Remedy, model: Any) -> Any:
     ----------
     remedy : Remedy
     model : Pyomo model or block
-        The one that was explained, or one with the same names. Variables that were fixed then
-        must be fixed at the same values now: they are part of the sides.
+        The one that was explained, or one with the same names, rows and bounds, before or after
+        other remedies of the same explanation. Variables that were fixed then must be fixed at
+        the same values now: they are part of the sides.
 
     Returns
     -------
@@ -37,7 +40,8 @@ def apply_to_model(remedy: Remedy, model: Any) -> Any:
     TypeError
         For anything but a Pyomo model or block.
     ValueError
-        If the model lacks a row or a variable of the remedy; it is not changed then.
+        If the model lacks a row or a variable of the remedy, if a row or a bound has changed
+        since it was explained, or if the remedy was made already; it is not changed then.
 
     Examples
     --------
@@ -61,6 +65,8 @@ def apply_to_model(remedy: Remedy, model: Any) -> Any:
     used += [*bounded, *remedy.dropped_declaration_names]
     rows = _found(model, pyo.Constraint, replaced, remedy)
     columns = _found(model, pyo.Var, used, remedy)
+    if remedy.explained is not None:
+        refuse_changed(remedy, compile_model(model), by_name=True)
     for name in remedy.dropped_declaration_names:
         lower, upper = columns[name].bounds
         columns[name].domain = pyo.Reals
@@ -72,7 +78,7 @@ def apply_to_model(remedy: Remedy, model: Any) -> Any:
     if not lines:
         return None
     component = pyo.Constraint(range(1, len(lines) + 1))
-    model.add_component(unique_component_name(model, remedy.name), component)
+    model.add_component(_free_name(model, remedy.name), component)
     for k, line in enumerate(lines, start=1):
         component.add(k, _expression(line, columns))
     return component
@@ -95,6 +101,12 @@ def _found(model: Any, kind: Any, names: Iterable[str], remedy: Remedy) -> dict[
             f"{remedy.title!r} touches; apply it to the model that was explained"
         )
     return found
+
+
+def _free_name(model: Any, name: str) -> str:
+    """The name, or else the first of name_2, name_3, ... that the model does not use."""
+    numbered = (f"{name}_{k}" for k in count(2))
+    return name if not hasattr(model, name) else next(n for n in numbered if not hasattr(model, n))
 
 
 def _expression(line: RowChange | Inequality, columns: dict[str, Any]) -> Any:

@@ -5,13 +5,16 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, field
 from fractions import Fraction
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from ...forms.linear_form import LinearForm
 from ..plain import plain
+
+if TYPE_CHECKING:
+    from .unchanged import Explained
 
 Indices = NDArray[np.int64]
 Floats = NDArray[np.float64]
@@ -125,7 +128,8 @@ class BoundChange:
 class Remedy:
     """A change that keeps all whole plans (or a best one), and what it does to the relaxation.
 
-    Each goes alone, and several go together in any order.
+    Each goes alone, and several go together in any order. All hold for the rows, sides, bounds
+    and domains that were explained, whatever the costs; after other data, explain again.
 
     Attributes
     ----------
@@ -159,6 +163,9 @@ class Remedy:
     dropped_declarations : ndarray, int64
         Columns that need not be declared integer.
     dropped_declaration_names : tuple of str
+    explained : Explained or None
+        The model that it was found for, and the remedies found with it; None where it was made
+        by hand, and is not held against any model.
     """
 
     kind: Kind
@@ -180,6 +187,7 @@ class Remedy:
     dropped_row_names: tuple[str, ...] = ()
     dropped_declarations: Indices = field(default_factory=lambda: np.empty(0, np.int64), repr=False)
     dropped_declaration_names: tuple[str, ...] = ()
+    explained: Explained | None = field(default=None, repr=False)
 
     def apply_to(self, form: LinearForm) -> LinearForm:
         """Return the form with the change made.
@@ -187,14 +195,16 @@ class Remedy:
         Parameters
         ----------
         form : LinearForm
-            The one that was explained, or what `apply_to` of other remedies made of it.
+            The one that was explained, or what `apply_to` of other remedies made of it; its
+            costs may be others.
 
         Raises
         ------
         TypeError
             For anything but a form.
         ValueError
-            If a row or column of the remedy is not at its place in the form.
+            If a row or column of the remedy is not at its place in the form, if a row or a bound
+            has changed since it was explained, or if the remedy was made already.
         """
         from .changes import apply_to_form
 
@@ -206,7 +216,8 @@ class Remedy:
         Parameters
         ----------
         model : Pyomo model
-            The one that was explained, or one with the same names.
+            The one that was explained, or one with the same names, rows and bounds, before or
+            after other remedies of the same explanation. Its costs may be others.
 
         Returns
         -------
@@ -218,7 +229,8 @@ class Remedy:
         TypeError
             For anything but a Pyomo model or block.
         ValueError
-            If the model has no row or variable of a name; nothing is changed then.
+            If the model has no row or variable of a name, if a row or a bound has changed since
+            it was explained, or if the remedy was made already; nothing is changed then.
         """
         from .on_pyomo import apply_to_model
 

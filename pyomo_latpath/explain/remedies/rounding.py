@@ -68,7 +68,6 @@ def rounded_inwards(normal: NormalForm) -> Rounded:
         side * normal.row_den / normal.row_num + shift
         for side in (normal.row_lower, normal.row_upper)
     )
-    low = np.where(_inside(low, high), low, np.minimum(low, high))  # noise does not cross them
     declared = form.row_lower[normal.rows], form.row_upper[normal.rows]
     moved = _inside(declared[0], low) | _inside(high, declared[1])
     rows = normal.rows[moved]
@@ -80,10 +79,12 @@ def rounded_inwards(normal: NormalForm) -> Rounded:
     col_lower[fixed] = col_upper[fixed] = normal.fixed_value[fixed]
     shrunk = _inside(form.col_lower, col_lower) | _inside(col_upper, form.col_upper)
     columns = np.flatnonzero(shrunk)
+    row_upper = np.where(_inside(high, declared[1]), high, declared[1])
+    row_lower = np.where(_inside(declared[0], low), low, declared[0])
     return Rounded(
         rows=rows,
-        row_lower=np.where(_inside(declared[0], low), low, declared[0])[moved],
-        row_upper=np.where(_inside(high, declared[1]), high, declared[1])[moved],
+        row_lower=np.minimum(row_lower, row_upper)[moved],  # noise does not cross them
+        row_upper=row_upper[moved],
         units=(normal.row_den / normal.row_num)[moved],
         columns=columns,
         col_lower=col_lower[columns],

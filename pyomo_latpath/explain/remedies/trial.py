@@ -13,6 +13,7 @@ from ..declared import Optimum, optimum_of
 from .bases import normalised_basis
 from .drafts import Draft, Namer, by_group, combined
 from .remedy import Remedy
+from .unchanged import Explained
 
 #: Relative change of a bound that counts.
 BETTER = 1e-7
@@ -62,7 +63,7 @@ class Trial:
     def __init__(self, normal: NormalForm, first: Optimum, deadline: Deadline) -> None:
         self._declared, self._first, self._deadline = normal.form, first, deadline
         self._sign = 1.0 if normal.form.sense == "min" else -1.0
-        self._normal = normal
+        self._normal, self._explained = normal, Explained(normal.form)
         self.form, self.now, self.namer = normal.form, first, Namer(normal.form)
 
     @property
@@ -129,7 +130,14 @@ class Trial:
             reached = together
         self.form, self.now = form, reached
         bound, fractional = reached.bound, reached.fractional
-        yield replace(told, bound_together=bound, fractional_together=fractional)
+        told = replace(
+            told,
+            bound_together=bound,
+            fractional_together=fractional,
+            explained=self._explained,
+        )
+        self._explained.remedies.append(told)
+        yield told
 
     def _gain(self, tried: Tried) -> tuple[float, int]:
         return self._sign * tried.optimum.bound, -tried.optimum.fractional

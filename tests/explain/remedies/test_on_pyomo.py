@@ -3,7 +3,7 @@
 import numpy as np
 import pyomo.environ as pyo
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 from random_models import pyomo_model, random_form
 from switched_models import packing_form, switched_form
@@ -31,6 +31,7 @@ def small_form(seed, kind):
 
 @settings(max_examples=40)
 @given(st.integers(0, 10**6), st.sampled_from(KINDS))
+@example(seed=1401, kind="decimals")
 def test_a_model_is_changed_as_its_form_is(seed, kind):
     model = pyomo_model(small_form(seed, kind))
     form, remedies = remedies_of(model)
@@ -150,3 +151,129 @@ def test_rows_of_a_block_are_found_and_the_new_ones_named_after_it():
     assert remedies[0].row_changes[0].name == "house[upper].room[north]"
     new = remedies[0].apply(model)
     assert new.parent_block() is model and "room_tight" in new.local_name
+
+
+def odd_pairs(often):
+    """Three wheels, any two of which may share a van as often as a parameter says."""
+    model = pyo.ConcreteModel(name="pairs")
+    model.often = pyo.Param(range(3), initialize=often, mutable=True)
+    model.pairs = pyo.Set(initialize=[(0, 1), (0, 2), (1, 2)])
+    model.share = pyo.Var(model.pairs, domain=pyo.Integers, bounds=(0, 2))
+    model.once = pyo.Constraint(
+        range(3),
+        rule=lambda m, i: pyo.quicksum(m.share[p] for p in m.pairs if i in p) <= m.often[i],
+    )
+    model.gain = pyo.Objective(expr=pyo.quicksum(model.share.values()), sense=pyo.maximize)
+    return model
+
+
+def cellars(demand, most):
+    """Cheese is made in lots where a cellar is open: no more than is asked for, all of it whole."""
+    model = pyo.ConcreteModel(name="cellars")
+    model.demand = pyo.Param(initialize=demand, mutable=True)
+    model.makes = pyo.Var([1, 2], domain=pyo.NonNegativeIntegers, bounds=(0, most))
+    model.opened = pyo.Var([1, 2], domain=pyo.Binary)
+    model.asked = pyo.Constraint(expr=model.makes[1] + model.makes[2] == model.demand)
+    model.switch = pyo.Constraint([1, 2], rule=lambda m, i: m.makes[i] <= 1000 * m.opened[i])
+    model.cost = pyo.Objective(
+        expr=3 * model.opened[1] + 9 * model.opened[2] + model.makes[1] + 2 * model.makes[2]
+    )
+    return model
+
+
+def refused(remedy, model, sentence):
+    before = latpath.compile_model(model)
+    with pytest.raises(ValueError, match=sentence):
+        remedy.apply(model)
+    after = latpath.compile_model(model)
+    assert list(after.row_names) == list(before.row_names)
+
+
+def test_a_cut_is_refused_after_a_side_has_changed():
+    model = odd_pairs(1)
+    explanation = latpath.explain(model)
+    (cut,) = (remedy for remedy in explanation.remedies if remedy.kind == "cut")
+    for i in range(3):
+        model.often[i] = 2
+    refused(cut, model, r"row 'once\[0\]' has changed since it was explained: explain the model a")
+    for form in (latpath.compile_model(model), explanation.form.replace(row_upper=2)):
+        with pytest.raises(ValueError, match=r"row 'once\[0\]' has changed"):
+            cut.apply_to(form)
+    for i in range(3):
+        model.often[i] = 1
+    model.gain.expr = model.gain.expr * 2
+    assert cut.apply(model) is not None
+
+
+def test_a_smaller_coefficient_is_refused_after_the_demand_was_raised():
+    model = cellars(10, None)
+    shrunk = latpath.explain(model).remedies[0]
+    assert shrunk.kind == "tighten"
+    assert all(min(change.coefficients) == -10 for change in shrunk.row_changes)
+    model.demand = 40
+    refused(shrunk, model, r"row 'asked' has changed since it was explained: explain the model ag")
+    model.demand = 10
+    model.makes[2].setub(5)
+    refused(shrunk, model, r"the bounds of column 'makes\[2\]' have changed since it was explain")
+    model.makes[2].setub(None)
+    model.opened[1].domain = pyo.NonNegativeReals
+    model.opened[1].bounds = 0, 1
+    refused(shrunk, model, r"the domain of column 'opened\[1\]' has changed since it was explained")
+
+
+def test_rows_that_have_come_or_gone_are_named():
+    model = cellars(10, None)
+    shrunk = latpath.explain(model).remedies[0]
+    model.more = pyo.Constraint(expr=model.makes[1] >= 1)
+    refused(shrunk, model, "row 'more' has come since it was explained")
+    model.more.deactivate()
+    model.asked.deactivate()
+    refused(shrunk, model, "row 'asked' has gone since it was explained")
+    model.asked.activate()
+    model.makes[1].fix(3)
+    refused(shrunk, model, "row 'asked' has changed since it was explained")
+    model.makes[1].unfix()
+    assert len(shrunk.apply(model)) == 2
+
+
+def test_a_remedy_is_made_once_and_again_only_by_another_explanation():
+    model = caves()
+    explanation = latpath.explain(model)
+    for remedy in explanation.remedies:
+        remedy.apply(model)
+    for remedy in explanation.remedies:
+        refused(remedy, model, f"the remedy '{remedy.title}' has been made in this model already")
+    shrunk, parts = explanation.remedies[:2]
+    model.room_split.deactivate()
+    parts.apply(model)
+    assert len(model.room_split_2) == 6
+    for rows in (model.room_tight, model.room_split, model.room_split_2):
+        rows.deactivate()
+    refused(shrunk, model, r"row 'room\[north\]' has gone since it was explained")
+
+
+def test_further_components_are_counted():
+    model = odd_pairs(1)
+    model.cut = pyo.Param(initialize=1)
+    names = []
+    for _ in range(3):
+        new = next(r for r in latpath.explain(model).remedies if r.kind == "cut").apply(model)
+        names.append(new.local_name)
+        new.deactivate()
+    assert [name.removeprefix(names[0]) for name in names[1:]] == ["_2", "_3"]
+
+
+@settings(max_examples=30)
+@given(st.integers(0, 10**6), st.sampled_from(KINDS), st.randoms())
+def test_remedies_go_in_any_order_and_only_once(seed, kind, shuffle):
+    model = pyomo_model(small_form(seed, kind))
+    _, remedies = remedies_of(model)
+    order = list(remedies)
+    shuffle.shuffle(order)
+    for remedy in order:
+        copy = model.clone()
+        remedy.apply(model)
+        remedy.apply(copy)
+        if remedy.inequalities:
+            with pytest.raises(ValueError, match="has been made in this model already"):
+                remedy.apply(model)
