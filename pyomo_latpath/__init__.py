@@ -19,7 +19,8 @@ from . import plugin
 from .batch.family import Family
 from .batch.record import BatchRecord
 from .batch.runner import solve_many
-from .certificates import CertificateError, check_certificate
+from .certificates import Certificate, CertificateError
+from .certificates import check_certificate as _check_certificate
 from .explain.explain import explain as _explain_form
 from .explain.explanation import Explanation
 from .explain.remedies.remedy import Remedy
@@ -40,6 +41,7 @@ __version__ = ".".join(map(str, plugin.VERSION))
 __all__ = [
     "BatchRecord",
     "BlockFinding",
+    "Certificate",
     "CertificateError",
     "Explanation",
     "Family",
@@ -105,6 +107,33 @@ def assess(
     return _assess_form(form, samples=samples, time_limit=time_limit, seed=seed)
 
 
+def check_certificate(form_or_model: Any, certificate: Certificate | dict[str, Any]) -> None:
+    """Accept a certificate silently, or refuse it.
+
+    Parameters
+    ----------
+    form_or_model : LinearForm, Pyomo model, array_like or sparse array
+        A matrix alone is shown to be totally unimodular; of a model it is shown that the vertices
+        of its relaxation are whole, sides, bounds and declarations included.
+    certificate : Certificate, or dict
+        As `to_dict` makes it, read from a file, say.
+
+    Raises
+    ------
+    CertificateError
+        One sentence that says what does not hold.
+
+    Examples
+    --------
+    >>> import pyomo_latpath as latpath
+    >>> decision = latpath.totally_unimodular([[1, 1, 0], [0, 1, 1]])
+    >>> latpath.check_certificate([[1, 1, 0], [0, 1, 1]], decision.certificate.to_dict())
+    """
+    if hasattr(form_or_model, "is_constructed"):
+        form_or_model, _ = _form_of(form_or_model)
+    _check_certificate(form_or_model, certificate)
+
+
 def solve(form_or_model: Any, **options: Any) -> Solution:
     """Solve a model by the route that its integrality allows.
 
@@ -136,8 +165,9 @@ def solve(form_or_model: Any, **options: Any) -> Solution:
     2.0
     """
     form, seconds = _form_of(form_or_model)
-    if seconds and options.get("time_limit") is not None:
-        options["time_limit"] = max(0.0, options["time_limit"] - seconds)
+    limit = options.get("time_limit")
+    if limit is not None and limit > 0:
+        options["time_limit"] = max(0.0, limit - seconds)
     return _solve_form(form, **{"compile_seconds": seconds} | options)
 
 

@@ -124,7 +124,7 @@ def merge(form: LinearForm, whole: NormalForm, parts: list[PartAnswer]) -> Merge
     whole : NormalForm
         Of the form; it knows the values of fixed columns.
     parts : list of PartAnswer
-        Up to the first infeasible one, or all.
+        Up to the first infeasible or interrupted one, or all.
     """
     met = {part.status for part in parts}
     status = next((s for s in WORST_FIRST if s in met), "optimal")
@@ -144,7 +144,8 @@ def merge(form: LinearForm, whole: NormalForm, parts: list[PartAnswer]) -> Merge
         if part.status == "unbounded" and part.ray is not None:
             ray = np.zeros(n)
             ray[columns] = part.normal.x_original(part.ray)
-    planned = all(part.x is not None for part in parts)
+    complete = sum(part.normal.columns.size for part in parts) == whole.columns.size
+    planned = complete and all(part.x is not None for part in parts)
     planned &= status not in ("infeasible", "unbounded")
     fixed = np.full(n, True)
     fixed[whole.columns] = False
@@ -162,7 +163,7 @@ def merge(form: LinearForm, whole: NormalForm, parts: list[PartAnswer]) -> Merge
         status=status,
         x=x if planned else None,
         objective=objective,
-        bound=math.nan if status in ("infeasible", "unbounded") else bound,
+        bound=bound if complete and status not in ("infeasible", "unbounded") else math.nan,
         row_dual=row_dual if planned else np.full(m, np.nan),
         reduced_cost=reduced_cost if planned else np.full(n, np.nan),
         ray=ray,

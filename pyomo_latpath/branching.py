@@ -63,6 +63,8 @@ def branch_part(
     if implied is not None and x is not None:
         if held is not None and is_whole(x, implied):
             x = np.where(implied, np.rint(x), x)
+        elif result.status == "interrupted":
+            x = None
         else:  # the solver's tolerances were in the way
             told = declared
             result, x, held = _search(part, told, settings, deadline, start)

@@ -185,7 +185,7 @@ def fingerprint(form: LinearForm) -> str:
     return digest.hexdigest()
 
 
-def check_certificate(form_or_matrix: Any, certificate: Certificate) -> None:
+def check_certificate(form_or_matrix: Any, certificate: Certificate | dict[str, Any]) -> None:
     """Accept a certificate silently, or refuse it.
 
     Of a form it shows that every vertex of the normalised relaxation (fixed columns put in,
@@ -196,13 +196,16 @@ def check_certificate(form_or_matrix: Any, certificate: Certificate) -> None:
     Parameters
     ----------
     form_or_matrix : LinearForm, array_like or sparse array
-    certificate : Certificate
+    certificate : Certificate, or dict
+        As `to_dict` makes it, read from a file.
 
     Raises
     ------
     CertificateError
         One sentence that says what does not hold.
     """
+    if not isinstance(certificate, Certificate):
+        certificate = Certificate.from_dict(certificate)
     bare = not isinstance(form_or_matrix, LinearForm)
     if bare:
         form = LinearForm.from_arrays(
@@ -210,6 +213,8 @@ def check_certificate(form_or_matrix: Any, certificate: Certificate) -> None:
         )
     else:
         form = form_or_matrix
+        alone = certificate.fingerprint == ""
+        require(not alone, "the certificate is of a matrix alone; check it against form.matrix")
         same = certificate.fingerprint == fingerprint(form)
         require(same, "the certificate was made for another model: its fingerprint differs")
     claim = _Claim(form, certificate)

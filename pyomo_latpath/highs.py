@@ -44,6 +44,8 @@ _OUTCOME = {
     "kSolveError": "error",
     "kPostsolveError": "error",
 }
+#: HiGHS takes no coefficients of this size.
+TOO_LARGE = 1e15
 _CODE_OF = (
     highspy.HighsBasisStatus.kLower,
     highspy.HighsBasisStatus.kBasic,
@@ -391,6 +393,12 @@ def pass_model(
     kinds: NDArray[np.int32],
 ) -> None:
     m, n = matrix.shape
+    largest = float(np.abs(matrix.data).max(initial=0.0))
+    if largest >= TOO_LARGE:
+        raise ValueError(
+            f"a row has the coefficient {largest:g}, and HiGHS takes none from {TOO_LARGE:g} on: "
+            "scale the row"
+        )
     status = highs.passModel(
         n,
         m,

@@ -189,7 +189,7 @@ def solve(
         parts.append(_by_path(request, group, told))
     shares = request.deadline.shared([rest.piece.columns.size for rest in prepared.rest])
     for rest, share in zip(prepared.rest, shares, strict=True):
-        if any(part.status == "infeasible" for part in parts):
+        if any(part.status in ("infeasible", "interrupted") for part in parts):
             break
         parts.append(_by_relaxation(replace(request, deadline=share), rest))
     return _report(request, prepared, parts)

@@ -67,7 +67,7 @@ def _clause(part: PartAnswer) -> str:
         if finding.verdict is Verdict.PROVEN:
             return f"every vertex is whole: {_structures(part.findings)}"
         return (
-            "the relaxation has a whole optimum at this objective; "
+            "the relaxation has a whole optimum at this objective, which is the model's, too; "
             f"about other objectives {_about(finding)}"
         )
     if part.status == "time_limit":
@@ -99,5 +99,6 @@ def _about(finding: BlockFinding) -> str:
     if finding.verdict is Verdict.REFUTED:
         return "it is known to have fractional vertices"
     if finding.verdict is Verdict.SAMPLED:
-        return f"there is no proof, only {finding.samples} sampled vertices that were whole"
+        seen = "1 sampled vertex was" if finding.samples == 1 else f"{finding.samples} sampled were"
+        return f"there is no proof: {seen} whole"
     return "nothing is known"

@@ -1,6 +1,7 @@
 """The checker on forms: rows, columns, sides and factors must be those of the model."""
 
 import copy
+import json
 
 import numpy as np
 import pytest
@@ -9,6 +10,7 @@ from certificate_data import accepts
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from random_models import random_form
+from small_forms import assignment
 
 from pyomo_latpath.certificates import (
     BlockCertificate,
@@ -20,6 +22,7 @@ from pyomo_latpath.certificates import (
 )
 from pyomo_latpath.forms.linear_form import LinearForm
 from pyomo_latpath.integrality.assess import assess
+from pyomo_latpath.integrality.regular.decision import totally_unimodular
 
 
 def pair_of_rows(**changes):
@@ -241,3 +244,21 @@ def test_broken_json_is_refused_in_a_sentence(spoil):
 def test_what_is_no_object_is_refused(data):
     with pytest.raises(CertificateError):
         Certificate.from_dict(data)
+
+
+def test_a_certificate_is_taken_as_data_too_and_nothing_else():
+    form = assignment(np.ones((2, 2)))
+    finding = assess(form)
+    data = json.loads(json.dumps(finding.certificate.to_dict()))
+    check_certificate(form, data)
+    for wrong in (None, 5, "proof", {}):
+        with pytest.raises(CertificateError):
+            check_certificate(form, wrong)
+
+
+def test_a_certificate_of_a_matrix_says_nothing_of_a_form():
+    form = assignment(np.ones((2, 2)))
+    alone = totally_unimodular(form.matrix).certificate
+    with pytest.raises(CertificateError, match="of a matrix alone"):
+        check_certificate(form, alone)
+    check_certificate(form.matrix, alone)

@@ -313,3 +313,8 @@ def test_a_plan_that_misses_a_row_is_not_told_without_a_warning(monkeypatch):
     monkeypatch.setattr(routing, "largest_violation", lambda form, x: 3.0)
     report = solve(knapsacks(), highs_options={"mip_max_nodes": 1}).report
     assert report.why.endswith("beware: the plan misses a row, bound or declaration by 3")
+
+
+def test_coefficients_too_large_for_highs_are_told():
+    with pytest.raises(ValueError, match="a row has the coefficient 3e\\+15, and HiGHS takes none"):
+        solve(form_of([[3e15, 3.0]], -INF, 3e15, [-1, -1]))
