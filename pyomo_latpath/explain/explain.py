@@ -205,7 +205,7 @@ class _Inquiry:
             found.solution = best_plan(found.normal, deadline.left, self.seed)
             solution = found.solution[0]
             if solution.status == "unbounded":
-                found.no_optimum = no_optimum.unbounded(found.normal, solution.ray)
+                found.no_optimum = no_optimum.unbounded(self.form, solution.ray, deadline)
             elif solution.status == "infeasible":
                 self._tell_infeasible(solution, deadline)
             else:

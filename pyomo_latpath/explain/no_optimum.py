@@ -10,12 +10,16 @@ import numpy as np
 
 from ..blame import SHARE, blame
 from ..deadline import Deadline
-from ..forms.normalise import NormalForm, normalise
+from ..forms.linear_form import Floats, LinearForm
+from ..forms.normalise import normalise
+from ..forms.numbers import Integers
+from ..highs import LinearProgram
 from ..highs_mip import MipSettings, branch_and_bound
+from ..pages.markup import counted
 from ..solution import Solution
 from .groups import Group
 from .minimal import thin_out
-from .naming import listed
+from .naming import listed, short
 from .remains import Remains
 
 #: So many names are told in a sentence.
@@ -33,7 +37,8 @@ class NoOptimum:
     kind : 'infeasible' or 'unbounded'
     sentence : str
     names : tuple of str
-        Rows (and 'bounds of COLUMN') that conflict; the columns that grow without end.
+        Rows (and 'bounds of COLUMN') that conflict; the columns that grow (or fall) without end,
+        each by itself where one can, else together.
     minimal : bool
         Whether none of those rows and bounds could be left out.
     groups : tuple of str
@@ -51,23 +56,74 @@ class NoOptimum:
     groups_minimal: bool
 
 
-def unbounded(normal: NormalForm, ray: np.ndarray | None) -> NoOptimum:
+def unbounded(form: LinearForm, ray: Floats | None, deadline: Deadline) -> NoOptimum:
     """Tell an unbounded model.
 
     Parameters
     ----------
-    normal : NormalForm
+    form : LinearForm
     ray : ndarray, shape (n,), float64, or None
-        A direction of endless improvement, over the form's columns.
+        A direction of endless improvement, where one is known.
+    deadline : Deadline
+        Of the search for one.
+
+    Examples
+    --------
+    >>> form = LinearForm.from_arrays([[1, 0]], row_lower=0, row_upper=3, col_lower=0,
+    ...     col_upper=[1, np.inf], cost=1, sense="max", col_names=["van", "bonus"])
+    >>> unbounded(form, None, Deadline(None)).sentence
+    "'bonus' has no upper bound, and the objective gets better as it grows"
     """
+    alone = _unstopped(form)
+    if alone.size:
+        ray = np.zeros(form.shape[1])
+        ray[alone] = 1.0
+    elif ray is None:
+        ray = _ray(form, deadline)
     names: tuple[str, ...] = ()
     if ray is not None:
         moving = np.flatnonzero(np.abs(ray) > 1e-9 * np.abs(ray).max(initial=0.0))
-        names = tuple(normal.form.col_names[j] for j in moving.tolist())
-    together = " together" if len(names) > 1 else ""
-    told = f": {listed(names, TOLD)} can grow{together} for ever" if names else ""
-    sentence = f"the objective gets better without end{told}; a bound or a row is missing"
+        names = tuple(form.col_names[j] for j in moving.tolist())
+    if alone.size:
+        grows = (form.cost[alone[0]] > 0) == (form.sense == "max")
+        side, moves = ("upper", "grows") if grows else ("lower", "falls")
+        sentence = f"{short(names[0])!r} has no {side} bound, and the objective gets better as it "
+        sentence += moves
+        rest = alone.size - 1
+        sentence += f"; so with {counted(rest, 'other column')}" if rest else ""
+    else:
+        together = " together" if len(names) > 1 else ""
+        told = f": {listed(names, TOLD)} can move{together} for ever" if names else ""
+        sentence = f"the objective gets better without end{told}; a bound or a row is missing"
     return NoOptimum("unbounded", sentence, names, False, (), False)
+
+
+def _unstopped(form: LinearForm) -> Integers:
+    """Columns that make the objective better for ever, each by itself."""
+    better = -np.sign(form.cost) if form.sense == "min" else np.sign(form.cost)
+    limit = np.where(better > 0, form.col_upper, -form.col_lower)
+    pushed = np.repeat(better, np.diff(form.matrix.indptr)) * form.matrix.data
+    rows = form.matrix.indices
+    side = np.where(pushed > 0, form.row_upper[rows], -form.row_lower[rows])
+    stopped = np.zeros(form.shape[1], np.bool_)
+    columns = np.repeat(np.arange(form.shape[1]), np.diff(form.matrix.indptr))
+    stopped[columns[side < np.inf]] = True
+    return np.flatnonzero((better != 0) & (limit == np.inf) & ~stopped)
+
+
+def _ray(form: LinearForm, deadline: Deadline) -> Floats | None:
+    """A direction that no row or bound stops, and in which the objective gets better."""
+    sign = 1.0 if form.sense == "min" else -1.0
+    row_limits = _recession(form.row_lower, form.row_upper, np.inf)
+    col_limits = _recession(form.col_lower, form.col_upper, 1.0)
+    program = LinearProgram(form.matrix, *row_limits, *col_limits, sign * form.cost)
+    result = program.solve(deadline=deadline)
+    return result.x if result.status == "optimal" and result.x.any() else None
+
+
+def _recession(lower: Floats, upper: Floats, most: float) -> tuple[Floats, Floats]:
+    """Limits on a direction: 0 where there is a side, else a number that stands for any."""
+    return np.where(lower > -np.inf, 0.0, -most), np.where(upper < np.inf, 0.0, most)
 
 
 def infeasible(

@@ -3,12 +3,15 @@
 import itertools
 
 import numpy as np
+import pyomo.environ as pyo
+import pytest
 from exact_milp import solve_exactly
 from grouped_models import grouped_form
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from small_forms import triangle
 
+import pyomo_latpath as latpath
 from pyomo_latpath.explain.explain import explain
 from pyomo_latpath.explain.remains import Remains
 from pyomo_latpath.forms.linear_form import LinearForm
@@ -109,3 +112,46 @@ def test_unbounded_models_name_what_grows():
     assert told.no_optimum.kind == "unbounded"
     assert set(told.no_optimum.names) == {"made", "sold"}
     assert told.gap is None and told.remedies == ()
+
+
+@pytest.mark.parametrize("in_row", [False, True])
+@pytest.mark.parametrize("grows", [True, False])
+def test_a_lone_column_without_a_bound_is_named(in_row, grows):
+    model = pyo.ConcreteModel()
+    model.vans = pyo.Var(range(3), domain=pyo.Binary)
+    model.bonus = pyo.Var(domain=pyo.NonNegativeReals if grows else pyo.NonPositiveReals)
+    model.fleet = pyo.Constraint(expr=pyo.quicksum(model.vans.values()) <= 2)
+    sign = 1 if grows else -1
+    if in_row:
+        model.paid = pyo.Constraint(expr=sign * model.bonus - model.vans[0] >= 0)
+    model.gain = pyo.Objective(
+        expr=pyo.quicksum(model.vans.values()) + sign * model.bonus, sense=pyo.maximize
+    )
+    told = latpath.explain(model)
+    side, moves = ("upper", "grows") if grows else ("lower", "falls")
+    assert told.no_optimum.kind == "unbounded" and told.no_optimum.names == ("bonus",)
+    assert told.no_optimum.sentence == (
+        f"'bonus' has no {side} bound, and the objective gets better as it {moves}"
+    )
+
+
+@settings(max_examples=60)
+@given(st.integers(0, 2**32))
+def test_the_columns_told_make_a_ray(seed):
+    rng = np.random.default_rng(seed)
+    form = LinearForm.from_arrays(
+        rng.integers(-1, 2, (3, 4)),
+        row_lower=rng.choice([-np.inf, 0], 3),
+        row_upper=rng.choice([0, 2, np.inf], 3),
+        col_lower=0,
+        col_upper=rng.choice([1, np.inf], 4),
+        cost=rng.integers(-2, 3, 4),
+    )
+    told = explain(form).no_optimum
+    if told is None:
+        return
+    assert told.kind == "unbounded" and told.names
+    held = [j for j in range(4) if form.col_names[j] not in told.names]
+    upper = form.col_upper.copy()
+    upper[held] = 0
+    assert explain(form.replace(col_upper=upper)).no_optimum is not None

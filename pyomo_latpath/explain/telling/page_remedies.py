@@ -22,7 +22,7 @@ def remedies(told: Explanation) -> str:
     body = _together(told.remedies, plan) if len(told.remedies) > 1 else ""
     body += cards(_remedy(f"remedy-{k}", each, plan) for k, each in enumerate(told.remedies, 1))
     lead = "Each was checked before it is shown, goes alone, and goes with those before it."
-    return section("remedies", "What can be done", body, lead)
+    return section("remedies", "What can be done", body + paragraphs([words.HOLDS], "note"), lead)
 
 
 def _together(those: tuple[Remedy, ...], plan: float) -> str:

@@ -62,7 +62,7 @@ def _details(told: Explanation) -> Iterator[str]:
     yield from _part("Blocks", _blocks(told))
     yield from _part("Samples", [words.sampled_shares(told)])
     yield from _part("Left open", map(words.as_sentence, told.cut_off))
-    yield from _part("Please note", [words.LABOUR])
+    yield from _part("Please note", [words.HOLDS if told.remedies else "", words.LABOUR])
 
 
 def _fractional(told: Explanation) -> Iterator[str]:

@@ -17,6 +17,10 @@ from ..naming import listed, short
 from ..remedies.remedy import Inequality, Remedy
 
 LABOUR = "Where a plan concerns people's shifts, labour rules and local agreements come first."
+HOLDS = (
+    "Remedies hold for the rows and bounds that were explained, whatever the costs; once others "
+    "have changed, explain the model again."
+)
 
 
 def headline(told: Explanation) -> str:
