@@ -49,11 +49,13 @@ BUDGETS: dict[str, tuple[float, float]] = {
     "violators": (0.2, 5.0),
     "culprits": (0.6, 20.0),
     "plan": (0.4, 10.0),
-    "rows": (0.3, 5.0),
     "infeasible": (0.8, 20.0),
     "branch and bound": (0.5, 20.0),  # HiGHS may take some seconds more than it is given
     "remedies": (0.9, 10.0),
+    "rows": (0.9, 5.0),
 }
+#: Seconds for rows whose presence costs nothing at the model's own objective.
+IN_PASSING = 0.5
 
 
 def explain(
@@ -159,6 +161,7 @@ class _Inquiry:
                 self._tell_fractional(relaxation, places or found.places())
             if found.no_optimum is None:
                 self._find_remedies(relaxation)
+                self._thin_out_rows()
         else:
             found.cut_off.append("the relaxation was not solved in time")
 
@@ -247,8 +250,6 @@ class _Inquiry:
                 found.cut_off.append("further conflicts were not looked for")
         self._find_culprits(relaxation)
         self._find_plan()
-        if found.no_optimum is None:
-            self._thin_out_rows()
 
     def _find_culprits(self, relaxation: Relaxation) -> None:
         found = self.found
@@ -309,11 +310,17 @@ class _Inquiry:
             found.cut_off.append(told if solution.x is None else rough)
 
     def _thin_out_rows(self) -> None:
+        """Fewest rows to leave out: asked in passing where the optimum is whole with them."""
         found = self.found
+        if all(culprit.rows_minimal for _, culprit in found.culprits):
+            return
         with self._question("rows", "looking for the rows to blame") as deadline:
+            if found.fractional is not None and not found.fractional.count:
+                deadline = deadline.within(IN_PASSING)
             for place, (those, culprit) in enumerate(found.culprits):
                 if culprit.rows_minimal:
                     continue
+                self.tell(f"looking for the fewest rows of {listed(culprit.groups, NAMED)}")
                 share = deadline.within(deadline.left / (len(found.culprits) - place))
                 rows, minimal = culprits.smallest_rows(self.remains, culprit.row_indices, share)
                 names = tuple(self.form.row_names[i] for i in rows.tolist())

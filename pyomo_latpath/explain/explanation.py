@@ -61,7 +61,8 @@ class Explanation:
         'component' (Pyomo constraints), 'name' (stems of row names) or 'pattern' (names say
         nothing; rows with the same coefficients stand together, named after the first).
     culprits : tuple of Culprit
-        Smallest first.
+        Smallest first; of the same size, first that without which the relaxation's optimum
+        changes least.
     violators : tuple of NamedViolator
         From different places of the model.
     reasons : tuple of Reason

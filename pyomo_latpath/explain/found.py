@@ -140,15 +140,24 @@ class Found:
         held = (k for k, b in enumerate(self.blocks) if row in self.normal.rows[b.rows])
         return next(held, -1)
 
+    def _priced_culprits(self) -> tuple[Culprit, ...]:
+        """Smallest first; of the same size, first what the relaxation's optimum needs least."""
+        told, found = [culprit for _, culprit in self.culprits], self.gap
+        if found is None:
+            return tuple(told)
+
+        def order(culprit: Culprit) -> tuple[int, float]:
+            change = abs(culprit.objective_without - found.rounded_bound)
+            return len(culprit.groups), math.inf if math.isnan(change) else change
+
+        return tuple(
+            replace(culprit, price=culprits.price(found.worse_than(culprit.objective_without)))
+            for culprit in sorted(told, key=order)
+        )
+
     def explanation(self, model: Any) -> Explanation:
         """What was found so far."""
         found = self.gap
-        told = [
-            culprit
-            if found is None
-            else replace(culprit, price=culprits.price(found.worse_than(culprit.objective_without)))
-            for _, culprit in self.culprits
-        ]
         has_plan = self.solution is not None and self.solution[0].x is not None
         m, n = self.form.shape
         return Explanation(
@@ -162,7 +171,7 @@ class Found:
             witness=self.witness,
             groups=self.groups,
             grouped_by=self.row_stems.by,
-            culprits=tuple(told),
+            culprits=self._priced_culprits(),
             violators=tuple(self.violators),
             reasons=find_reasons(
                 self.normal, self.odd, self.row_stems, self.column_stems, has_plan=has_plan

@@ -264,3 +264,40 @@ def test_what_no_linear_form_can_hold_is_named():
     model.area = pyo.Constraint(expr=model.turn[0] * model.turn[1] <= 1)
     with pytest.raises(UnsupportedModelError, match="area"):
         latpath.explain(model)
+
+
+def lots():
+    """Cheese made in two months, each with a big-M row; without `balance` nothing is made."""
+    model = pyo.ConcreteModel()
+    model.months = pyo.RangeSet(2)
+    model.makes = pyo.Var(model.months, domain=pyo.NonNegativeReals)
+    model.kept = pyo.Var(model.months, domain=pyo.NonNegativeReals)
+    model.works = pyo.Var(model.months, domain=pyo.Binary)
+    model.balance = pyo.Constraint(
+        model.months,
+        rule=lambda m, t: (m.kept[t - 1] if t > 1 else 0) + m.makes[t] - m.kept[t] == 3 * t,
+    )
+    model.working = pyo.Constraint(model.months, rule=lambda m, t: m.makes[t] <= 50 * m.works[t])
+    model.cost = pyo.Objective(
+        expr=pyo.quicksum(40 * m + model.makes[t] * t for t, m in model.works.items())
+        + pyo.quicksum(2 * kept for kept in model.kept.values())
+    )
+    return model
+
+
+def test_of_culprits_of_one_size_the_first_changes_the_bound_least():
+    told = latpath.explain(lots())
+    order = [
+        (len(each.groups), abs(each.objective_without - told.gap.rounded_bound))
+        for each in told.culprits
+    ]
+    assert len(order) > 1 and order == sorted(order)
+    assert told.culprits[0].groups == ("working",)
+    assert "columns together" not in told.to_text()
+
+
+def test_the_rows_to_leave_out_are_asked_for_last():
+    lines = []
+    latpath.explain(wheel_turning(2), progress=lines.append)
+    rows = [k for k, line in enumerate(lines) if line.startswith("looking for the fewest rows of")]
+    assert rows and min(rows) > lines.index("looking for remedies")

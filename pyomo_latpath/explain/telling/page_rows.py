@@ -17,7 +17,7 @@ from ...pages.markup import (
     table,
     text,
 )
-from ..explanation import Culprit, Explanation, Group, NamedViolator
+from ..explanation import Culprit, Explanation, Gap, Group, NamedViolator
 from ..naming import listed
 from . import words
 from .drawings import NAMED, cycle
@@ -39,7 +39,7 @@ GROUPED_BY = {
 def blame(told: Explanation) -> str:
     """The section on groups of rows; empty where there are none."""
     if told.culprits and told.no_optimum is None:
-        body = cards(_culprit(culprit) for culprit in told.culprits)
+        body = cards(_culprit(culprit, told.gap) for culprit in told.culprits)
     else:
         body = paragraphs([words.blame(told)])
     if told.groups and told.whole is None and told.no_optimum is None:
@@ -48,9 +48,9 @@ def blame(told: Explanation) -> str:
     return section("blame", "Which rows are to blame", body, several) if body else ""
 
 
-def _culprit(culprit: Culprit) -> str:
+def _culprit(culprit: Culprit, gap: Gap | None) -> str:
     body = f"<p><strong>{names(culprit.groups, SHOWN)}</strong></p>"
-    body += paragraphs([words.culprit_words(culprit), words.remains(culprit)])
+    body += paragraphs([words.culprit_words(culprit, gap), words.remains(culprit)])
     body += paragraphs([words.culprit_least(culprit)], "note")
     if len(culprit.groups) > SHOWN:
         body += folded("All these groups", f"<p>{names(culprit.groups)}</p>")

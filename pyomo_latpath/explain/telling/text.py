@@ -6,7 +6,7 @@ import textwrap
 from collections.abc import Iterable, Iterator, Sequence
 
 from ...pages.markup import counted, number, shortened, visible
-from ..explanation import Culprit, Explanation, NamedViolator
+from ..explanation import Culprit, Explanation, Gap, NamedViolator
 from ..naming import listed, short
 from ..remedies.remedy import Remedy
 from . import words
@@ -69,7 +69,7 @@ def _fractional(told: Explanation) -> Iterator[str]:
     yield from _components(told)
     yield from _groups(told)
     for k, culprit in enumerate(told.culprits, 1):
-        yield from _part(f"Culprit {k} of {len(told.culprits)}", _culprit(culprit))
+        yield from _part(f"Culprit {k} of {len(told.culprits)}", _culprit(culprit, told.gap))
     for k, violator in enumerate(told.violators, 1):
         yield from _violator(f"Conflict {k} of {len(told.violators)}", violator)
 
@@ -104,8 +104,8 @@ def _groups(told: Explanation) -> Iterator[str]:
     yield from _table("Groups of rows", head, rows)
 
 
-def _culprit(culprit: Culprit) -> list[str]:
-    told = [words.culprit_words(culprit), words.remains(culprit)]
+def _culprit(culprit: Culprit, gap: Gap | None) -> list[str]:
+    told = [words.culprit_words(culprit, gap), words.remains(culprit)]
     told.append(words.culprit_least(culprit))
     if culprit.rows:
         told.append(f"{words.culprit_rows(culprit)}: {listed(culprit.rows, 12)}.")

@@ -63,7 +63,7 @@ def _blamed(told: Explanation) -> str:
 
 
 def holds_all(culprit: Culprit) -> bool:
-    """Whether a culprit is all that ties integer columns together, and so singles out nothing."""
+    """Whether a culprit is all that ties integer columns to others, and so singles out nothing."""
     return culprit.structures == ("trivial",)
 
 
@@ -135,12 +135,17 @@ def gap_words(gap: Gap) -> str:
             if looked
             else "the best whole plan was not looked for."
         )
-    if gap.exact and gap.absolute <= 1e-9 * max(1.0, abs(gap.plan)):
+    if costs_nothing(gap):
         return f"{bound}, and so is the best whole plan's."
     apart = f"{number(gap.absolute)} ({gap.relative:.2%})"
     if gap.exact:
         return f"{bound}, the best whole plan's {number(gap.plan)}: {apart} apart."
     return f"{bound}, the best plan found in time {number(gap.plan)}: at most {apart} apart."
+
+
+def costs_nothing(gap: Gap) -> bool:
+    """Whether the best whole plan is as good as the relaxation's optimum."""
+    return gap.exact and gap.absolute <= 1e-9 * max(1.0, abs(gap.plan))
 
 
 def blame(told: Explanation) -> str:
@@ -155,15 +160,15 @@ def blame(told: Explanation) -> str:
         return ""
     if not told.culprits:
         return "No set of row groups was found without which the rest is certified whole."
-    return " ".join(culprit_words(culprit) for culprit in told.culprits[:1])
+    return culprit_words(told.culprits[0], told.gap)
 
 
-def culprit_words(culprit: Culprit) -> str:
-    """What leaving a culprit out does."""
+def culprit_words(culprit: Culprit, gap: Gap | None) -> str:
+    """What leaving a culprit out does, beside what wholeness costs."""
     groups = listed(culprit.groups, 6)
     if holds_all(culprit):
         tie = "ties" if len(culprit.groups) == 1 else "tie"
-        return f"Only {groups} {tie} integer columns together: no part of the model stands out."
+        return f"Only {groups} {tie} integer columns to others: no part of the model stands out."
     sentence = f"Without {groups} what is left is proven whole"
     if culprit.structures:
         sentence += f" ({', '.join(culprit.structures)})"
@@ -172,9 +177,18 @@ def culprit_words(culprit: Culprit) -> str:
     if not math.isnan(culprit.objective_without):
         sentence += f"; its optimum is {number(culprit.objective_without)}"
         if not math.isnan(culprit.price):
-            cost = number(culprit.price) if culprit.price else "nothing"
-            sentence += f", so these rows cost {cost}"
+            sentence += _priced(culprit.price, free=gap is not None and costs_nothing(gap))
     return f"{sentence}."
+
+
+def _priced(price: float, free: bool) -> str:
+    """What the rows of a culprit cost, not to be taken for what wholeness costs."""
+    if not free or not price:
+        return f", so these rows cost {number(price) if price else 'nothing'}"
+    return (
+        f", so leaving these rows out would change the optimum by {number(price)}; wholeness costs "
+        "nothing at this objective"
+    )
 
 
 def remains(culprit: Culprit) -> str:

@@ -164,9 +164,18 @@ def test_models_without_a_best_plan_name_what_is_to_blame(kind, names, sentence)
 
 def test_a_culprit_that_keeps_the_model_bounded_says_so():
     culprit = replace(made_up.fractional().culprits[0], objective_without=float("-inf"))
-    assert "better ones without end" in words.culprit_words(culprit)
+    assert "better ones without end" in words.culprit_words(culprit, None)
     free = replace(culprit, objective_without=5.0, price=0.0)
-    assert words.culprit_words(free).endswith("so these rows cost nothing.")
+    assert words.culprit_words(free, None).endswith("so these rows cost nothing.")
+
+
+def test_rows_are_not_priced_as_if_wholeness_cost_what_they_do():
+    told = made_up.fractional()
+    gap = replace(told.gap, declared_bound=9.0, rounded_bound=9.0, plan=9.0, plan_status="optimal")
+    culprit = replace(told.culprits[0], objective_without=2.0, price=7.0)
+    said = words.culprit_words(culprit, gap)
+    assert "leaving these rows out would change the optimum by 7" in said
+    assert said.endswith("wholeness costs nothing at this objective.") and "cost 7" not in said
 
 
 def test_samples_are_not_held_against_a_proof():
