@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import os
 import sys
 import time
 import traceback
@@ -32,9 +33,26 @@ from .starts import StartError
 from .today import solve as solve_form
 
 OPTIMAL, NOT_OPTIMAL = 0, 1
+#: What a shell gives for a program that nobody listens to any more.
+UNHEARD = 141
 
 
-@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+class _Commands(click.Group):
+    """The commands, which end without noise when stdout is closed, say by `| head`."""
+
+    def invoke(self, context: click.Context) -> Any:
+        try:
+            return super().invoke(context)
+        except BrokenPipeError:
+            # What is still to be flushed has to go somewhere, else Python complains at its end.
+            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+            sys.exit(UNHEARD)
+        except OSError as error:
+            complain(f"the output cannot be written: {sentence(error)}")
+            sys.exit(UNREADABLE)
+
+
+@click.group(cls=_Commands, context_settings={"help_option_names": ["-h", "--help"]})
 def main() -> None:
     """Solve whole-number models as linear programs wherever that is proven safe."""
 
@@ -164,13 +182,18 @@ def check(certificate: Path, file: Path) -> None:
     click.echo(f"{certificate} holds: every vertex of {file} is whole ({blocks}{reach})")
 
 
+#: Where certificates come from.
+_WRITTEN_BY = "`latpath solve FILE --certificate CERTIFICATE` writes one"
+
+
 def _json(path: Path) -> Any:
     try:
         return json.loads(path.read_bytes())
     except json.JSONDecodeError as error:
-        raise ModelFileError(path, error.lineno, f"no JSON ({error.msg})") from error
+        told = f"no JSON ({error.msg[0].lower()}{error.msg[1:]}), so no certificate; {_WRITTEN_BY}"
+        raise ModelFileError(path, error.lineno, told) from error
     except UnicodeDecodeError as error:
-        raise ModelFileError(path, None, f"no JSON ({error})") from error
+        raise ModelFileError(path, None, f"no text, so no certificate; {_WRITTEN_BY}") from error
     except RecursionError as error:
         raise ModelFileError(path, None, "its JSON is nested too deeply") from error
 

@@ -22,6 +22,7 @@ from .batch.instance import Instance
 from .batch.journal import Journal, JournalError
 from .batch.output import (
     RESULTS,
+    FolderError,
     make_folder,
     summary_text,
     write_csv,
@@ -35,6 +36,7 @@ from .batch.runner import Tasks, run
 from .batch.summary import summarise
 from .batch.task import Settings
 from .batch.workers import Processes
+from .cli_common import complain
 from .deadline import Deadline
 from .files import sentence, whole_file
 
@@ -132,7 +134,9 @@ def batch(
     try:
         instances = _instances(paths, data, changes)
         tasks = Tasks(instances, settings, compare or 0)
-        out.mkdir(parents=True, exist_ok=True)
+        make_folder(out)
+        if store is not None:
+            make_folder(store)
         with ExitStack() as stack:
             options = {"changes": changes, "compare": compare, **settings.plain()}
             journal = stack.enter_context(Journal(out / "journal.jsonl", options))
@@ -146,9 +150,14 @@ def batch(
             if plans:
                 make_folder(out / "plans", ["*.csv"])
             summary = _leave(out, tasks, journal, ending, parquet)
-    except (InputError, JournalError, BatchError, OSError) as error:
-        click.echo(f"latpath: {sentence(error)}", err=True)
-        sys.exit(STOPPED if isinstance(error, OSError) else FAILED)
+    except BrokenPipeError:
+        raise
+    except (InputError, JournalError, BatchError, FolderError) as error:
+        complain(str(error))
+        sys.exit(FAILED)
+    except OSError as error:
+        complain(f"{sentence(error)}; run the same command again to go on")
+        sys.exit(STOPPED)
     if not (quiet or as_json):
         click.echo(summary_text(summary))
         names = [name for name in (*RESULTS, "plans") if (out / name).exists()]
@@ -211,10 +220,9 @@ def _leave(out: Path, tasks: Tasks, journal: Journal, ending: _Ending, parquet: 
     """Write what a batch leaves behind, from the journal."""
     wanted = tasks.names if ending.early is None else None
     if wanted is not None and (gone := len(journal) - len(wanted)):
-        click.echo(
-            f"latpath: left out of the results: {gone} in {journal.path} that are not among the "
-            "instances given now",
-            err=True,
+        complain(
+            f"left out of the results: {gone} in {journal.path} that are not among the "
+            "instances given now"
         )
     waiting = 0 if ending.early is None else None
     if waiting is None and tasks.total is not None:

@@ -19,19 +19,22 @@ def whole_file(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
             file.flush()
             os.fsync(file.fileno())
         os.replace(draft, path)
-    except BaseException:
+    except BaseException as error:
         draft.unlink(missing_ok=True)
+        if isinstance(error, OSError):  # of a full disk, which names no file, or of the draft
+            error.filename = str(path)
         raise
 
 
 def sentence(error: Exception) -> str:
-    """An error that a file can cause, as one sentence that names the file.
+    """An error that a file can cause, as one sentence that names the file where it is known.
 
     Examples
     --------
     >>> sentence(FileNotFoundError(2, "No such file or directory", "vans.mps"))
     'vans.mps: no such file or directory'
     """
-    if isinstance(error, OSError) and error.filename is not None:
-        return f"{error.filename}: {(error.strerror or 'cannot be opened').lower()}"
+    if isinstance(error, OSError) and error.strerror is not None:
+        place = "" if error.filename is None else f"{error.filename}: "
+        return f"{place}{error.strerror.lower()}"
     return str(error) or type(error).__name__

@@ -47,7 +47,8 @@ def read_plan(path: Path, form: LinearForm) -> Floats:
             for line in lines:
                 _read_line(path, lines.line_num, line, place, x)
         except (csv.Error, UnicodeDecodeError) as error:
-            raise ModelFileError(path, lines.line_num, f"no CSV text ({error})") from error
+            reason = str(error) if isinstance(error, csv.Error) else "it is not in UTF-8"
+            raise ModelFileError(path, lines.line_num, f"no CSV text ({reason})") from error
     missing = np.flatnonzero(np.isnan(x))
     if missing.size:
         name = form.col_names[int(missing[0])]

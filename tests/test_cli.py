@@ -293,6 +293,28 @@ def test_an_unreadable_certificate_is_exit_status_2(folder, content):
     assert f"latpath: {proof}" in result.output
 
 
+def test_what_is_no_certificate_is_told_with_what_writes_one(folder):
+    output = run("check", folder / "cellars.lp", folder / "caves.min").output
+    assert "cellars.lp, line 1: no JSON (expecting value), so no certificate" in output
+    assert "`latpath solve FILE --certificate CERTIFICATE` writes one" in output
+
+
+@pytest.mark.parametrize(
+    ("command", "status", "told"),
+    [
+        ("solve FILE FILE FILE --json | head -n 1", 141, ""),
+        ("solve FILE > /dev/full", 2, "no space"),
+    ],
+)
+def test_output_that_nobody_takes_ends_without_noise(folder, command, status, told):
+    latpath = f"{sys.executable} -m pyomo_latpath "
+    line = latpath + command.replace("FILE", str(folder / "caves.min")) + "; exit ${PIPESTATUS[0]}"
+    done = subprocess.run(["bash", "-c", line], capture_output=True, text=True, timeout=120)
+    assert done.returncode == status
+    assert done.stderr.count("\n") == bool(told)
+    assert told in done.stderr
+
+
 def test_an_unreadable_model_is_exit_status_2(folder):
     proof = folder / "proof.json"
     run("solve", folder / "caves.min", "--certificate", proof)

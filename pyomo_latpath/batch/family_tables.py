@@ -167,7 +167,8 @@ def _csv_rows(path: Path) -> Iterator[Row]:
                     yield reader.line_num, [cell.strip() for cell in cells]
         except (csv.Error, UnicodeDecodeError, gzip.BadGzipFile, EOFError) as error:
             where = reader.line_num + 1
-            raise ModelFileError(path, where, f"it cannot be read as CSV ({error})") from error
+            reason = "it is not in UTF-8" if isinstance(error, UnicodeDecodeError) else error
+            raise ModelFileError(path, where, f"it cannot be read as CSV ({reason})") from error
 
 
 def _parquet_rows(path: Path) -> tuple[list[str], Iterator[Row]]:

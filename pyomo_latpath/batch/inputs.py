@@ -54,7 +54,8 @@ def instances_of(given: Any) -> Iterable[Instance]:
         return given
     single = isinstance(given, LinearForm) or hasattr(given, "component_data_objects")
     if single or not isinstance(given, Iterable):
-        raise TypeError(f"a batch is made of many instances, not of one {type(given).__name__}")
+        kind = type(given).__name__
+        raise TypeError(f"a batch is made of many instances, not of one thing of type {kind}")
     return _Each(given)
 
 
@@ -83,7 +84,8 @@ def _from_item(number: int, item: Any) -> Iterable[Instance]:
     if hasattr(item, "fingerprint") and hasattr(item, "load"):
         return [cast(Instance, item)]
     if not hasattr(item, "component_data_objects"):
-        raise TypeError(f"item {number} of the batch is a {type(item).__name__}, and no instance")
+        kind = type(item).__name__
+        raise TypeError(f"item {number} of the batch is of type {kind}, and no instance")
     own = "" if item.name in NAMELESS else item.name
     return [_from_model(name or own or f"instance {number}", item)]
 

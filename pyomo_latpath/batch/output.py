@@ -35,9 +35,22 @@ CHUNK = 10_000
 SHOWN, REASON_LINES = 10, 3
 
 
-def make_folder(folder: Path, names: Iterable[str]) -> None:
-    """Make a folder, or clear one of the drafts that a killed run may have left of these files."""
-    folder.mkdir(parents=True, exist_ok=True)
+class FolderError(ValueError):
+    """A folder for results cannot be made."""
+
+
+def make_folder(folder: Path, names: Iterable[str] = ()) -> None:
+    """Make a folder, or clear one of the drafts that a killed run may have left of these files.
+
+    Raises
+    ------
+    FolderError
+    """
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        reason = (error.strerror or str(error)).lower()
+        raise FolderError(f"cannot make the folder {folder}: {reason}") from error
     for name in names:
         for draft in folder.glob(f".{name}.*"):
             draft.unlink(missing_ok=True)

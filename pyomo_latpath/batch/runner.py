@@ -8,6 +8,7 @@ import os
 from collections.abc import Iterable, Iterator
 from concurrent.futures import Executor
 from dataclasses import dataclass
+from numbers import Integral, Real
 from pathlib import Path
 from typing import Any
 
@@ -88,7 +89,7 @@ def solve_many(
     Raises
     ------
     ValueError
-        For options that make no sense, and paths that lead nowhere.
+        For options that make no sense, paths that lead nowhere, and folders that cannot be made.
     JournalError
         For a journal of other options, in use, or on a full disk.
     BatchError
@@ -108,19 +109,18 @@ def solve_many(
     end_if_starting()
     if executor is None:
         refuse_script_without_file()
-    for name, value, least in (
-        ("workers", workers, 1),
-        ("time_limit", time_limit, 0),
-        ("rel_gap", rel_gap, 0),
-        ("samples", samples, 0),
-        ("seed", seed, 0),
-    ):
-        if value is not None and not value >= least:
-            raise ValueError(f"{name} is {value}; it must be {least} or more")
+    _refuse_unless_number("workers", workers, 1, whole=True)
+    _refuse_unless_number("samples", samples, 0, whole=True)
+    _refuse_unless_number("seed", seed, 0, whole=True)
+    _refuse_unless_number("time_limit", time_limit, 0)
+    _refuse_unless_number("rel_gap", rel_gap, 0)
+    if not isinstance(executor, Executor | None):
+        raise ValueError(f"executor is {executor!r}; it must be a concurrent.futures.Executor")
     if plans is not None:
         make_folder(Path(plans), ["*.csv"])
     if store is not None:
         CertificateStore(store)  # refuses what is no folder
+        make_folder(Path(store))
     settings = Settings(
         time_limit=time_limit,
         rel_gap=rel_gap,
@@ -131,6 +131,14 @@ def solve_many(
     )
     tasks = Tasks(instances_of(instances), settings)
     return _records(tasks, workers or os.cpu_count() or 1, executor, journal, progress)
+
+
+def _refuse_unless_number(name: str, value: Any, least: int, whole: bool = False) -> None:
+    """Refuse an option that is given, and no number from `least` on."""
+    fits = isinstance(value, Integral if whole else Real)
+    if value is not None and not (fits and value >= least):
+        kind = "whole number" if whole else "number"
+        raise ValueError(f"{name} is {value!r}; it must be a {kind} from {least} on")
 
 
 def _records(

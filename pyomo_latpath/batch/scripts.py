@@ -65,7 +65,8 @@ class ScriptInstance:
             raise ModelFileError(self.name, None, str(error)) from error
         except AttributeError as error:
             kind = type(model).__name__
-            raise ModelFileError(script, None, f"it gives a {kind}, no Pyomo model") from error
+            told = f"what it gives is of type {kind}, and no Pyomo model"
+            raise ModelFileError(script, None, told) from error
 
     def _built(self, build: Any) -> Any:
         arguments = {} if self.data is None else _arguments(Path(self.data))
@@ -83,7 +84,7 @@ def _arguments(path: Path) -> dict[str, Any]:
     except json.JSONDecodeError as error:
         raise ModelFileError(path, error.lineno, f"no JSON ({error.msg})") from error
     except UnicodeDecodeError as error:
-        raise ModelFileError(path, None, f"no JSON ({error})") from error
+        raise ModelFileError(path, None, "no JSON, since it is no text in UTF-8") from error
     if not isinstance(data, dict):
         raise ModelFileError(path, None, "it must hold one JSON object, the arguments by name")
     return data

@@ -27,6 +27,7 @@ import numpy as np
 import scipy.sparse as sp
 
 from ..certificate_parts import Part, part_from_dict
+from ..files import sentence
 from ..integrality.verdicts import BECAUSE
 
 SCHEMA = "latpath-store/1"
@@ -133,7 +134,7 @@ class CertificateStore:
             self._make_room(len(content))
         except OSError as error:
             if not self._told:
-                log.warning("the store %s keeps nothing more: %s", self.folder, error)
+                log.warning("the store %s keeps nothing more: %s", self.folder, sentence(error))
             self._told = True
 
     def _read(self, key: str, matrix: sp.csc_array) -> Proof | None:
@@ -143,7 +144,7 @@ class CertificateStore:
         except FileNotFoundError:
             return None
         except OSError as error:
-            log.warning("the certificate %s cannot be read: %s", path, error)
+            log.warning("a certificate cannot be read: %s", sentence(error))
             return None
         try:
             name, part = _proof_of(content)
@@ -246,4 +247,4 @@ def _remove(path: Path) -> None:
     try:
         path.unlink(missing_ok=True)
     except OSError as error:
-        log.warning("%s cannot be removed: %s", path, error)
+        log.warning("a file cannot be removed: %s", sentence(error))

@@ -15,6 +15,8 @@ from .file_text import ModelFileError, read_bytes
 from .linear_form import LinearForm
 
 _WHERE = re.compile(r"-->.*:(\d+):\d+")
+#: Bytes that no text has.
+_NO_TEXT = re.compile(rb"[\x00-\x08\x0e-\x1f]")
 _TYPE = highspy.HighsVarType
 
 
@@ -46,9 +48,9 @@ def read_lp(path: Path | str) -> LinearForm:
     Raises
     ------
     ModelFileError
-        For a file that HiGHS refuses (special ordered sets, indicators and quadratic rows
-        among them), with its message and line where it has them; for a quadratic objective;
-        for a file without columns.
+        For a file that is no text; for one that HiGHS refuses (special ordered sets, indicators
+        and quadratic rows among them), with its message and line where it has them; for a
+        quadratic objective; for a file without columns.
 
     Examples
     --------
@@ -62,11 +64,14 @@ def read_lp(path: Path | str) -> LinearForm:
     the objective is quadratic in 'turned'; only linear models can be read
     """
     path = Path(path)
+    content = read_bytes(path)
+    if _NO_TEXT.search(content):
+        raise ModelFileError(path, None, "this is no text file")
     parser = _Parser()
     with tempfile.TemporaryDirectory() as folder:
         # A plain name in a folder of its own: HiGHS never meets .gz, capitals or odd letters.
         plain = Path(folder) / "model.lp"
-        plain.write_bytes(read_bytes(path))
+        plain.write_bytes(_as_utf8(content))
         status = parser.readModel(str(plain))
     if status == highspy.HighsStatus.kError:
         raise _refusal(path, parser.messages)
@@ -75,6 +80,15 @@ def read_lp(path: Path | str) -> LinearForm:
     if lp.num_col_ == 0:
         raise ModelFileError(path, None, "the file holds no columns")
     return _form(lp)
+
+
+def _as_utf8(content: bytes) -> bytes:
+    """The same text as UTF-8, which HiGHS's messages and names are read as."""
+    try:
+        content.decode()
+    except UnicodeDecodeError:
+        return content.decode("latin-1").encode()
+    return content
 
 
 def _refusal(path: Path, messages: list[str]) -> ModelFileError:

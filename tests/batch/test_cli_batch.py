@@ -431,3 +431,23 @@ def test_a_full_disk_stops_the_batch_and_keeps_what_is_finished(folder):
     assert job.wait(timeout=300) == 0
     assert (folder / "out" / "journal.jsonl").read_bytes().startswith(kept)
     assert len(table(folder / "out")) == 40
+
+
+def test_records_that_nobody_reads_end_the_batch_without_noise(folder):
+    latpath = f"{sys.executable} -m pyomo_latpath"
+    flows = many(folder, 30)
+    line = f"{latpath} batch {flows} --out out --json --quiet | head -n 1"
+    command = ["bash", "-c", line + "; exit ${PIPESTATUS[0]}"]
+    done = subprocess.run(command, capture_output=True, text=True, timeout=300, cwd=folder)
+    assert (done.returncode, done.stderr) == (141, "")
+    lines = (folder / "out" / "journal.jsonl").read_bytes()
+    assert lines.endswith(b"\n")
+    assert len(lines.splitlines()) > 1
+    assert run(str(flows), "--out", "out", "--workers", "1").exit_code == 0
+
+
+def test_folders_that_cannot_be_made_are_wrong_usage(folder):
+    for options in (("--out", "build.py/out"), ("--out", "out", "--store", "build.py/proofs")):
+        result = run("good", *options)
+        assert result.exit_code == 2
+        assert result.output == f"latpath: cannot make the folder {options[-1]}: not a directory\n"

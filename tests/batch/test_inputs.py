@@ -131,7 +131,7 @@ def test_every_number_of_a_form_counts(change):
 @pytest.mark.parametrize(
     ("text", "sentence"),
     [
-        ("model = 5", "build.py: it gives a int, no Pyomo model"),
+        ("model = 5", "build.py: what it gives is of type int, and no Pyomo model"),
         ("x = 5", "build.py: it defines neither a `model` nor"),
         ("a = 1\nb = a / 0", "build.py, line 2: it fails with ZeroDivisionError: division by"),
         ("a = 1\nb = (", "build.py, line 2: it fails with SyntaxError"),

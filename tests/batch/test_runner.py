@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 import multiprocessing
 import os
+import re
 import signal
 import subprocess
 import sys
@@ -241,16 +242,35 @@ def test_what_is_no_batch_is_refused_at_once(wrong):
 
 
 def test_an_item_that_is_no_instance_is_named():
-    with pytest.raises(TypeError, match="item 2 of the batch is a int"):
+    with pytest.raises(TypeError, match="item 2 of the batch is of type int"):
         list(latpath.solve_many([odd.turning(), 5], progress=False, workers=1))
 
 
 @pytest.mark.parametrize(
-    "options", [{"workers": 0}, {"time_limit": -1}, {"samples": -1}, {"rel_gap": float("nan")}]
+    "options",
+    [
+        {"workers": 0},
+        {"workers": "2"},
+        {"workers": 1.5},
+        {"time_limit": -1},
+        {"time_limit": "a"},
+        {"samples": -1},
+        {"seed": "x"},
+        {"rel_gap": float("nan")},
+        {"executor": 3},
+    ],
 )
 def test_senseless_options_are_refused_at_once(options):
     with pytest.raises(ValueError, match=next(iter(options))):
         latpath.solve_many([odd.turning()], **options)
+
+
+@pytest.mark.parametrize("option", ["plans", "store"])
+def test_a_folder_that_cannot_be_made_is_named(tmp_path, option):
+    (tmp_path / "file").write_text("no folder")
+    folder = tmp_path / "file" / "below"
+    with pytest.raises(ValueError, match=re.escape(f"cannot make the folder {folder}: ")):
+        latpath.solve_many([odd.turning()], **{option: folder})
 
 
 def test_a_family_sends_its_form_once_to_each_worker(monkeypatch):

@@ -55,6 +55,21 @@ def test_a_wrong_lp_file_is_refused_in_highs_s_words(tmp_path, old, new, line, p
         assert caught.value.line == line
 
 
+@pytest.mark.parametrize("content", [b"\0\0\0\0", b"min\n x\xff\x00\xfe", b"\x1f\x8b\x08\xff"])
+def test_what_is_no_text_is_told_as_such(tmp_path, content):
+    path = tmp_path / "caves.lp"
+    path.write_bytes(content)
+    with pytest.raises(ModelFileError) as caught:
+        read(path)
+    assert str(caught.value) == f"{path}: this is no text file"
+
+
+def test_a_text_in_latin_1_is_read(tmp_path):
+    path = tmp_path / "caves.lp"
+    path.write_bytes("min\n 3 K\xe4se\nst\n r: K\xe4se >= 2\nend".encode("latin-1"))
+    assert list(read(path).col_names) == ["K\xe4se"]
+
+
 def test_small_coefficients_are_kept(tmp_path):
     form = read(write(tmp_path, "wheels.lp", LP.replace("young - old", "1e-10 young - old")))
     assert form.matrix.toarray()[1, 0] == 1e-10
