@@ -260,6 +260,6 @@ def _form_of(form_or_model: Any) -> tuple[LinearForm, float]:
         return form_or_model, 0.0
     if not hasattr(form_or_model, "is_constructed"):
         told = type(form_or_model).__name__
-        raise ValueError(f"a {told} is no model; give a LinearForm or a Pyomo model")
+        raise ValueError(f"something of type {told} is no model; give a LinearForm or Pyomo model")
     begun = time.perf_counter()
     return compile_model(form_or_model), time.perf_counter() - begun

@@ -17,7 +17,7 @@ import click
 from .batch.cluster import Cluster
 from .batch.crew import BatchError, Crew
 from .batch.family import Family
-from .batch.inputs import InputError, family_of, from_paths
+from .batch.inputs import InputError, family_of, from_paths, passed_over
 from .batch.instance import Instance
 from .batch.journal import Journal, JournalError
 from .batch.output import (
@@ -133,6 +133,8 @@ def batch(
     signal.signal(signal.SIGTERM, signal.default_int_handler)
     try:
         instances = _instances(paths, data, changes)
+        if others := passed_over(paths):
+            complain(f"passed over in the folders: {others} that are no model files")
         tasks = Tasks(instances, settings, compare or 0)
         make_folder(out)
         if store is not None:

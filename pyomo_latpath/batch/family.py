@@ -16,6 +16,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import ArrayLike
 
+from ..forms.file_text import ModelFileError
 from ..forms.linear_form import LinearForm
 from .family_tables import KINDS, Entries, Line, lines_of_arrays, lines_of_file
 from .instance import SharedForm
@@ -93,8 +94,8 @@ class Family:
     FileNotFoundError
         As the operating system says it.
     ModelFileError, ValueError
-        For a table that cannot be read, or whose header or shape does not fit the form. What is
-        wrong in one line only is that member's error, raised by its `load()`.
+        For a table that cannot be read, has no members, or whose header or shape does not fit the
+        form. What is wrong in one line only is that member's error, raised by its `load()`.
 
     Examples
     --------
@@ -114,8 +115,11 @@ class Family:
     ) -> None:
         self.base = SharedForm.of(form)
         self._changes = changes
-        if isinstance(changes, str | Path | Mapping):
-            next(self._lines(), None)  # what is wrong with the whole table is told at once
+        # What is wrong with a whole table is told at once.
+        if isinstance(changes, str | Path | Mapping) and next(self._lines(), None) is None:
+            if isinstance(changes, Mapping):
+                raise ValueError("the changes are those of no member")
+            raise ModelFileError(changes, None, "the table has no members")
 
     def __iter__(self) -> Iterator[Member]:
         for line in self._lines():
@@ -126,7 +130,7 @@ class Family:
         if isinstance(changes, str | Path):
             return lines_of_file(Path(changes), self.base.form)
         if isinstance(changes, Mapping):
-            return lines_of_arrays(changes, self.base.form, "changes")
+            return lines_of_arrays(changes, self.base.form)
         return _lines_of_vectors(changes)
 
 

@@ -100,11 +100,12 @@ def lines_of_file(path: Path, form: LinearForm) -> Iterator[Line]:
                 raise
             raise ModelFileError(path, None, f"it holds no plain arrays ({error})") from error
         arrays = {"cost": loaded} if kind == "npy" else {name: loaded[name] for name in loaded}
-        return lines_of_arrays(arrays, form, str(path))
+        with _blaming(path):
+            return lines_of_arrays(arrays, form)
     raise ModelFileError(path, None, "a table of changes is a .csv, .parquet, .npz or .npy file")
 
 
-def lines_of_arrays(arrays: Mapping[str, ArrayLike], form: LinearForm, what: str) -> Iterator[Line]:
+def lines_of_arrays(arrays: Mapping[str, ArrayLike], form: LinearForm) -> Iterator[Line]:
     """Members from arrays that have a row for each.
 
     Parameters
@@ -112,39 +113,38 @@ def lines_of_arrays(arrays: Mapping[str, ArrayLike], form: LinearForm, what: str
     arrays : mapping of str to array_like, shape (k, m) or (k, n)
         By what is changed; 'instance', shape (k,), names the members, else they are numbered.
     form : LinearForm
-    what : str
-        How messages call the arrays.
 
     Raises
     ------
     ValueError
-        For an unknown array or one whose shape does not fit.
+        For an unknown array, one whose shape does not fit, and members of one name.
 
     Examples
     --------
     >>> form = LinearForm.from_arrays([[1, 1]], row_lower=1, row_upper=1, col_lower=0,
     ...                               col_upper=1, cost=0)
-    >>> [line.instance for line in lines_of_arrays({"row_upper": [[1], [2]]}, form, "sides")]
+    >>> [line.instance for line in lines_of_arrays({"row_upper": [[1], [2]]}, form)]
     ['1', '2']
     """
     unknown = [name for name in arrays if name not in (*KINDS, "instance")]
     if unknown:
         known = "', '".join(KINDS)
-        raise ValueError(f"{what}: there is an array {unknown[0]!r}; known are '{known}'")
+        raise ValueError(f"there is an array {unknown[0]!r}; known are '{known}'")
     given = {name: np.asanyarray(values) for name, values in arrays.items()}
     counts = {name: values.shape[0] if values.ndim else 0 for name, values in given.items()}
     if len(set(counts.values())) > 1:
         told = ", ".join(f"{name} {count}" for name, count in counts.items())
-        raise ValueError(f"{what}: each array needs a row for each member, but there are {told}")
+        raise ValueError(f"each array needs a row for each member, but there are {told}")
     for name, values in given.items():
         wide = form.shape[0] if name.startswith("row") else form.shape[1]
         if name != "instance" and values.shape[1:] != (wide,):
-            raise ValueError(
-                f"{what}: {name!r} has shape {values.shape}; it needs {wide} numbers a member"
-            )
+            raise ValueError(f"{name!r} has shape {values.shape}; it needs {wide} numbers a member")
         if name != "instance" and values.dtype.kind not in "fiub":
-            raise ValueError(f"{what}: {name!r} holds {values.dtype} in place of numbers")
+            raise ValueError(f"{name!r} holds {values.dtype} in place of numbers")
     names = given.pop("instance", np.arange(1, max(counts.values(), default=0) + 1))
+    different, times = np.unique(names, return_counts=True)
+    if different.size < len(names):
+        raise ValueError(f"'instance' names {str(different[np.argmax(times)])!r} more than once")
     return _lines_of_checked(names, given)
 
 
@@ -199,7 +199,7 @@ def _lines_of_rows(
 ) -> Iterator[Line]:
     """Tell the layout by the header, and read the rows by it."""
     if not header or header[0] != "instance":
-        told = "the first line must name the columns, 'instance' first"
+        told = "the first line must name the columns, separated by commas, 'instance' first"
         raise ModelFileError(path, 1, told)
     if list(header) == ENTRIES:
         return _lines_of_entries(path, form, rows)
@@ -229,13 +229,18 @@ def _places(names: Sequence[str], kind: str) -> dict[str, int]:
 def _lines_of_costs(
     path: Path, names: list[str], places: NDArray[np.int64], rows: Iterator[Row]
 ) -> Iterator[Line]:
+    done: set[str] = set()
     for number, cells in rows:
+        instance = str(cells[0])
         try:
             with _blaming(path, number):
+                if instance in done:
+                    raise ValueError(f"a line of {instance!r} stands further up, too")
                 entries = _costs(cells, names, places)
-            yield Line(str(cells[0]), {"cost": entries})
-        except ModelFileError as error:  # noqa: PERF203
-            yield Line(str(cells[0]), {}, error)
+            yield Line(instance, {"cost": entries})
+        except ModelFileError as error:
+            yield Line(instance, {}, error)
+        done.add(instance)
 
 
 def _costs(cells: Sequence[Any], names: list[str], places: NDArray[np.int64]) -> Entries:
@@ -274,7 +279,7 @@ def _changes(path: Path, lines: list[Row], places: dict[str, dict[str, int]]) ->
 
 
 @contextmanager
-def _blaming(path: Path, number: int) -> Iterator[None]:
+def _blaming(path: Path, number: int | None = None) -> Iterator[None]:
     """Let errors name the file and the line."""
     try:
         yield
@@ -307,4 +312,6 @@ def _number(cell: Any, told: str, what: str) -> float:
         raise ValueError(f"the {told} is {cell!r}, not a number") from None
     if math.isnan(value) or (what == "cost" and math.isinf(value)):
         raise ValueError(f"the {told} is {value}; it must be a number")
+    if value == (-math.inf if what.endswith("upper") else math.inf):
+        raise ValueError(f"the {told} is {value}, which no number can keep to")
     return value

@@ -21,6 +21,10 @@ from .scripts import ScriptInstance
 NAMELESS = ("ConcreteModel", "AbstractModel", "unknown")
 
 
+#: What the names of model files end in.
+MODEL_ENDINGS = tuple(ending + packed for ending in READERS for packed in ("", ".gz"))
+
+
 class InputError(ValueError):
     """A path that leads to no instance; the text names it."""
 
@@ -129,8 +133,7 @@ def from_paths(paths: Sequence[str], data: Sequence[str] = ()) -> list[Instance]
         For a path, folder or pattern behind which there is nothing, and for data without a
         Python file.
     """
-    endings = tuple(ending + packed for ending in READERS for packed in ("", ".gz"))
-    files = list(dict.fromkeys(file for path in paths for file in _files(path, endings)))
+    files = list(dict.fromkeys(file for path in paths for file in _files(path, MODEL_ENDINGS)))
     data_files = list(dict.fromkeys(file for path in data for file in _files(path, (".json",))))
     scripts = [file for file in files if file.endswith(".py")]
     if data_files and not scripts:
@@ -165,6 +168,18 @@ def _files(path: str, endings: tuple[str, ...]) -> list[str]:
         kind = "no file matches" if glob.has_magic(path) else "no such file or directory"
         raise InputError(f"{path}: {kind}")
     return sorted(found)
+
+
+def passed_over(paths: Sequence[str]) -> int:
+    """Count what `from_paths` leaves out of folders: files of other kinds, and folders that are
+    called like a model file.
+    """
+    count = 0
+    for path in paths:
+        for _, folders, files in os.walk(path):
+            count += sum(name.lower().endswith(MODEL_ENDINGS) for name in folders)
+            count += sum(not name.lower().endswith(MODEL_ENDINGS) for name in files)
+    return count
 
 
 def family_of(path: str, changes: str) -> Family:

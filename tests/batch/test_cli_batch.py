@@ -451,3 +451,11 @@ def test_folders_that_cannot_be_made_are_wrong_usage(folder):
         result = run("good", *options)
         assert result.exit_code == 2
         assert result.output == f"latpath: cannot make the folder {options[-1]}: not a directory\n"
+
+
+def test_what_is_passed_over_in_a_folder_is_counted(folder, in_a_thread):
+    (folder / "good" / "notes.txt").write_text("turn the wheels")
+    (folder / "good" / "old.mps").mkdir()
+    told = "latpath: passed over in the folders: 2 that are no model files\n"
+    assert run("good", "--out", "out").output.startswith(told)
+    assert "passed over" not in run("good/caves.min", "--out", "other").output

@@ -131,6 +131,8 @@ def test_vectors_member_by_member(form):
         ("mon,row_upper,need[a],nan", "line 2: the row_upper of 'need[a]' is nan"),
         ('mon,cost,"send[east,a]",inf', "line 2: the cost of 'send[east,a]' is inf"),
         ("mon,row_upper,need[a]", "line 2: there are 3 cells; it needs instance, what, name"),
+        ("mon,row_upper,need[a],-inf", "line 2: the row_upper of 'need[a]' is -inf"),
+        ('mon,col_lower,"send[east,a]",inf', "line 2: the col_lower of 'send[east,a]' is inf"),
         ("mon,row_upper,need[a],1\nmon,row_upper,need[a],2", "line 3: the row_upper of 'need[a]'"),
     ],
 )
@@ -151,10 +153,19 @@ def test_lines_of_a_member_stand_together(tmp_path, form):
         again.load()
 
 
+def test_in_a_table_of_costs_a_member_has_one_line(tmp_path, form):
+    text = 'instance,"send[east,a]"\nmon,1\ntue,2\nmon,3\n'
+    *_, again = Family(form, write(tmp_path, "nights.csv", text))
+    with pytest.raises(ModelFileError, match="line 4: a line of 'mon' stands further up, too"):
+        again.load()
+
+
 @pytest.mark.parametrize(
     ("name", "text", "sentence"),
     [
         ("t.csv", "", "line 1: the first line must name the columns"),
+        ("t.csv", "instance;what;name;value\n", "name the columns, separated by commas"),
+        ("t.csv", "instance,what,name,value\n", "t.csv: the table has no members"),
         ("t.csv", "what,name\n", "line 1: the first line must name the columns"),
         ("t.csv", "instance,van\n", "line 1: the form has no column 'van'; a table has the"),
         ("t.csv", 'instance,"send[east,a]","send[east,a]"\n', "line 1: column 'send[east,a]' st"),
@@ -179,12 +190,21 @@ def test_a_table_that_fits_nothing_is_refused_at_once(tmp_path, form, name, text
         ({"cost": [[1.0, 2.0]]}, "'cost' has shape (1, 2); it needs 6 numbers a member"),
         ({"cost": np.ones((2, 6)), "row_upper": np.ones((1, 5))}, "cost 2, row_upper 1"),
         ({"cost": [["a"] * 6]}, "'cost' holds"),
+        ({"cost": np.ones((2, 6)), "instance": ["mon", "mon"]}, "names 'mon' more than once"),
+        ({"cost": np.ones((0, 6))}, "no member"),
     ],
 )
 def test_arrays_that_do_not_fit_are_refused(form, arrays, sentence):
     with pytest.raises(ValueError) as raised:
         Family(form, arrays)
     assert sentence in str(raised.value)
+
+
+def test_a_file_of_arrays_is_named_once(tmp_path, form):
+    np.save(tmp_path / "costs.npy", np.ones((2, 5)))
+    with pytest.raises(ModelFileError) as raised:
+        Family(form, tmp_path / "costs.npy")
+    assert str(raised.value).count("costs.npy") == 1
 
 
 def test_what_no_form_can_have_is_told_by_the_member(form):
