@@ -157,8 +157,8 @@ class Search:
                 yield from self._tried(frozenset({k}), smallest=True)
 
     def _tried(self, chosen: frozenset[int], smallest: bool) -> Iterator[CulpritSet]:
-        names = [self.groups[k].name for k in sorted(chosen)] or ["nothing"]
-        self.tell(f"leaving out {listed(names, MOST_CHOSEN)}")
+        names = [self.groups[k].name for k in sorted(chosen)]
+        self.tell(f"leaving out {listed(names, MOST_CHOSEN) if names else 'nothing'}")
         certified = self._certified(self._others(chosen))
         if certified is not None:
             self._found.append(chosen)

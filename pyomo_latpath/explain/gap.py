@@ -32,8 +32,9 @@ class Gap:
     plan_bound : float
         Best proven bound on every whole plan.
     plan_status : str
-        'optimal' where `plan` is the best one, 'time_limit' where the search was cut off,
-        'infeasible' where there is none, 'unbounded', 'error' or 'unknown' (not looked for).
+        'optimal' where `plan` is the best one, 'time_limit' or 'interrupted' where the search was
+        cut off, 'infeasible' where there is none, 'unbounded', 'error' or 'unknown' (not looked
+        for).
     seconds : float
         Of the search for the plan.
     """

@@ -19,7 +19,7 @@ from ..pages.markup import counted
 from ..solution import Solution
 from .groups import Group
 from .minimal import thin_out
-from .naming import listed, short
+from .naming import listed, quoted
 from .remains import Remains
 
 #: So many names are told in a sentence.
@@ -87,7 +87,7 @@ def unbounded(form: LinearForm, ray: Floats | None, deadline: Deadline) -> NoOpt
     if alone.size:
         grows = (form.cost[alone[0]] > 0) == (form.sense == "max")
         side, moves = ("upper", "grows") if grows else ("lower", "falls")
-        sentence = f"{short(names[0])!r} has no {side} bound, and the objective gets better as it "
+        sentence = f"{quoted(names[0])} has no {side} bound, and the objective gets better as it "
         sentence += moves
         rest = alone.size - 1
         sentence += f"; so with {counted(rest, 'other column')}" if rest else ""

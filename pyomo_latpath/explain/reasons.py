@@ -11,7 +11,7 @@ import numpy as np
 from ..forms.normalise import NormalForm
 from ..forms.numbers import Integers
 from .groups import Oddities
-from .naming import listed
+from .naming import coefficient, listed, quoted
 from .parity import parity_conflict
 from .stems import Stems
 
@@ -79,7 +79,7 @@ def find_reasons(
     >>> odd = oddities_of(normal, blocks_of(normal))
     >>> (reason,) = find_reasons(normal, odd, row_stems(form), column_stems(form))
     >>> reason.sentence
-    "budget: 2 coefficients are not 0 or +-1 after scaling, 3 for one (row
+    "'budget': 2 coefficients are not 0 or +-1 after scaling, 3 for one (row
     'budget', column 'x1')"
     """
     found = [
@@ -120,7 +120,9 @@ def _semicontinuous(normal: NormalForm, columns: Stems) -> Iterator[Reason]:
     places = np.flatnonzero(flags)
     for where, members in _split(columns, places):
         names = tuple(normal.form.col_names[j] for j in members[:EXAMPLES].tolist())
-        text = f"{where}: {_number(members.size, 'column is', 'columns are')} semicontinuous"
+        text = (
+            f"{quoted(where)}: {_number(members.size, 'column is', 'columns are')} semicontinuous"
+        )
         yield Reason("semicontinuous", where, members.size, names, text + ": no linear relaxation")
 
 
@@ -135,9 +137,10 @@ def _coefficients(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Re
         at = int(worst[0])
         column = normal.form.col_names[int(normal.columns[odd.column[bad[at]]])]
         text = (
-            f"{where}: {_number(members.size, 'coefficient is', 'coefficients are')} not 0 or +-1 "
-            f"after scaling, {normal.matrix.data[bad[at]]:g} for one (row {names[0]!r}, "
-            f"column {column!r})"
+            f"{quoted(where)}: "
+            f"{_number(members.size, 'coefficient is', 'coefficients are')} not 0 or +-1 "
+            f"after scaling, {coefficient(float(normal.matrix.data[bad[at]]))} for one "
+            f"(row {names[0]!r}, column {column!r})"
         )
         examples = tuple(dict.fromkeys(names))[:EXAMPLES]
         yield Reason("coefficient", where, members.size, examples, text)
@@ -151,7 +154,8 @@ def _sides(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Reason]:
         side = next(value for value in sides if np.rint(value) != value)
         held = _number(members.size, "row has a side", "rows have sides")
         text = (
-            f"{where}: {held} not whole after scaling, nor to be rounded: {side:g} at {names[0]!r}"
+            f"{quoted(where)}: {held} not whole after scaling, nor to be rounded: "
+            f"{coefficient(float(side))} at {names[0]!r}"
         )
         yield Reason("side", where, members.size, names, text)
 
@@ -161,7 +165,9 @@ def _bounds(normal: NormalForm, odd: Oddities, columns: Stems) -> Iterator[Reaso
     for where, members in _split(columns, normal.columns[bad], places=bad):
         names = tuple(normal.form.col_names[int(normal.columns[j])] for j in members[:EXAMPLES])
         held = _number(members.size, "continuous column has", "continuous columns have")
-        text = f"{where}: {held} bounds that are not whole after scaling, {names[0]!r} for one"
+        text = (
+            f"{quoted(where)}: {held} bounds that are not whole after scaling, {names[0]!r} for one"
+        )
         yield Reason("bound", where, members.size, names, text)
 
 
@@ -170,7 +176,10 @@ def _continuous(normal: NormalForm, odd: Oddities, rows: Stems) -> Iterator[Reas
     for where, members in _split(rows, normal.rows[bad], places=bad):
         names = tuple(normal.form.row_names[int(normal.rows[i])] for i in members[:EXAMPLES])
         held = _number(members.size, "row holds", "rows hold")
-        text = f"{where}: {held} continuous columns beside integer ones, so sides cannot be rounded"
+        text = (
+            f"{quoted(where)}: {held} continuous columns beside integer ones, so sides cannot be "
+            "rounded"
+        )
         yield Reason("continuous", where, members.size, names, text)
 
 

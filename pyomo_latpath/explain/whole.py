@@ -89,7 +89,7 @@ def sentences(certified: Certified, rows: Stems, most: int = MOST_TOLD) -> tuple
     ...     col_lower=0, col_upper=9, cost=0, row_names=["cave[1]", "town[1]", "town[2]"])
     >>> everything = Remains(form).certified(np.full(3, True), Deadline(None))
     >>> sentences(everything, row_stems(form))
-    ('a transport network: 1 row on one side, 2 on the other, 2 columns: cave against town',)
+    ("a transport network: 1 row on one side, 2 on the other, 2 columns: 'cave' against 'town'",)
     """
     pairs = sorted(
         zip(certified.proofs, certified.blocks, strict=True), key=lambda pair: -pair[1].columns.size

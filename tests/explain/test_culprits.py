@@ -215,4 +215,4 @@ def test_without_time_nothing_is_told_and_the_search_does_not_call_itself_comple
 def test_progress_names_what_is_left_out():
     lines = []
     list(search_in(two_odd_cycles(linked=False), tell=lines.append).run())
-    assert any(line == "leaving out west and east" for line in lines)
+    assert any(line == "leaving out 'west' and 'east'" for line in lines)

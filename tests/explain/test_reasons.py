@@ -95,7 +95,7 @@ def test_contradictions_come_first_and_name_the_rows():
     )
     first = reasons_of(form)[0]
     assert (first.kind, first.where, first.count) == ("parity", "clash, end", 3)
-    assert "clash[1], clash[2] and end together" in first.sentence
+    assert "'clash[1]', 'clash[2]' and 'end' together" in first.sentence
 
 
 def even_sum_odd_side(matrix, sides, rows):

@@ -61,7 +61,7 @@ def test_the_structure_is_told_in_a_sentence():
     assert sentence == "a transport network: 2 rows on one side, 3 on the other, 6 columns"
     names = ["cave[1]", "cave[2]", "town[1]", "town[2]", "town[3]"]
     (named,) = explain(transport(row_names=names)).whole.sentences
-    assert named == f"{sentence}: cave against town"
+    assert named == f"{sentence}: 'cave' against 'town'"
     mixed = ["cave[1]", "town[4]", "town[1]", "town[2]", "town[3]"]
     assert explain(transport(row_names=mixed)).whole.sentences == (sentence,)
 

@@ -12,7 +12,7 @@ from ...forms.normalise import NormalForm
 from ...forms.numbers import Integers
 from ...highs import Basis
 from ...pages.markup import number
-from ..naming import short
+from ..naming import quoted
 from ..stems import column_stems, row_stems
 from ..telling.words import inequality
 from .big_m import Prober, loose_state, shrunk, tightened
@@ -97,7 +97,7 @@ def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
         if part is None:
             continue
         rows = tuple(_parts(form, part))
-        name, switch = form.row_names[line.row], short(form.col_names[part.switch])
+        name, switch = form.row_names[line.row], quoted(form.col_names[part.switch])
         instead = "In its place" if part.replaces else "Beside it"
         yield Draft(
             kind="split",
@@ -107,7 +107,7 @@ def splitting_drafts(form: LinearForm, deadline: Deadline) -> Iterator[Draft]:
             name=name,
             group=stems.names[stems.label[line.row]],
             sentence=(
-                f"{switch} switches the other columns of row {short(name)} on and off. {instead}, "
+                f"{switch} switches the other columns of row {quoted(name)} on and off. {instead}, "
                 f"one row for each ({inequality(rows[0]).removeprefix(': ')}) says more where "
                 f"{switch} is fractional"
             ),
@@ -135,7 +135,7 @@ def _rounded_rows(form: LinearForm, found: Rounded) -> Iterator[Draft]:
             name=change.name,
             group=stems.names[stems.label[i]],
             sentence=(
-                f"At whole plans the left side of row {short(change.name)} moves in steps of "
+                f"At whole plans the left side of row {quoted(change.name)} moves in steps of "
                 f"{number(found.units[k])}: {before} says no more than {_between(*limits)}"
             ),
             verified=(
@@ -159,7 +159,7 @@ def _rounded_bounds(form: LinearForm, found: Rounded) -> Iterator[Draft]:
             name=name,
             group=stems.names[stems.label[j]],
             sentence=(
-                f"Column {short(name)} is whole: {before} says no more than {_between(*limits)}"
+                f"Column {quoted(name)} is whole: {before} says no more than {_between(*limits)}"
             ),
             verified="No whole number lies between the old and the new bounds",
             change=BoundChange(j, name, *limits),
@@ -188,12 +188,12 @@ def _probed(
 def _shrinking(form: LinearForm, before: Line, after: Line) -> str:
     """Say which coefficient of a row shrinks most, and why it may."""
     y = max(before.terms, key=lambda j: size(before.terms[j] - after.terms[j]))
-    name, state = short(form.col_names[y]), loose_state(before, y)
+    name, state = quoted(form.col_names[y]), loose_state(before, y)
     was, now = (float(line.sign * line.terms[y]) for line in (before, after))
     limit = float(after.sign * (after.side - state * after.terms[y]))
     comes = "never come to more than" if after.sign > 0 else "never fall below"
     return (
-        f"In row {short(form.row_names[before.row])} the coefficient of {name} can go from "
+        f"In row {quoted(form.row_names[before.row])} the coefficient of {name} can go from "
         f"{number(was)} to {number(now)}: where {name} is {state} the other columns {comes} "
         f"{number(limit)}"
     )

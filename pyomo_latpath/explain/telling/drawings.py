@@ -23,7 +23,7 @@ MATRIX_SIDE, GUTTER = 340, 20
 
 
 def cycle(key: str, violator: NamedViolator, named: bool) -> str:
-    """Rows (squares) and columns (circles) by turns on a circle; a dashed edge is a -1.
+    """Rows (squares) and columns (circles) by turns on a circle; a thick edge is a -1.
 
     Parameters
     ----------

@@ -15,7 +15,6 @@ from ...pages.markup import (
     name,
     names,
     number,
-    paragraphs,
     section,
     table,
     text,
@@ -25,6 +24,7 @@ from . import words
 from .page_matrix import blocks
 from .page_remedies import remedies
 from .page_rows import blame, conflict
+from .prose import sentences
 
 #: Variable components in the table, at most.
 COMPONENTS = 300
@@ -86,13 +86,13 @@ def _figures(told: Explanation) -> str:
 def _whole(told: Explanation) -> str:
     if told.whole is None:
         return ""
-    body = paragraphs([*map(words.as_sentence, told.whole.sentences), words.how_bad(told)])
+    body = sentences([*map(words.as_sentence, told.whole.sentences), words.how_bad(told)])
     for title, clauses in (
         ("What would break it", told.whole.breakers),
         ("What may change", told.whole.keepers),
     ):
         if clauses:
-            body += f"<h3>{title}</h3>{paragraphs(map(words.as_sentence, clauses))}"
+            body += f"<h3>{title}</h3>{sentences(map(words.as_sentence, clauses))}"
     return section("whole", "Why every vertex is whole", body + _times(told.whole))
 
 
@@ -101,13 +101,13 @@ def _times(whole: Whole) -> str:
         return ""
     pairs = [("path route", whole.path_seconds), ("branch and bound", whole.highs_seconds)]
     longer = "" if whole.highs_ended else "Branch and bound was cut off; it takes longer than this."
-    return bars("times", "Seconds of one solve", pairs) + paragraphs([longer], "note")
+    return bars("times", "Seconds of one solve", pairs) + sentences([longer], "note")
 
 
 def _how_bad(told: Explanation) -> str:
     if told.whole is not None:
         return ""
-    body = paragraphs([words.how_bad(told)])
+    body = sentences([words.how_bad(told)])
     if told.fractional is not None:
         rows = [
             [
@@ -128,7 +128,7 @@ def _how_bad(told: Explanation) -> str:
         body += (
             table("components", caption, head, rows, numbers=(1, 2, 4), prose=[3]) if rows else ""
         )
-        body += paragraphs([words.sampled_shares(told)], "note")
+        body += sentences([words.sampled_shares(told)], "note")
     body += _witness(told)
     title = "No best plan" if told.no_optimum is not None else "How far from whole"
     return section("bad", title, body) if body else ""
@@ -156,7 +156,7 @@ def _reasons(told: Explanation) -> str:
     if not told.reasons:
         return ""
     items = (
-        paragraphs([reason.sentence])
+        sentences([reason.sentence])
         + (f"<p>{names(reason.examples)}</p>" if reason.examples else "")
         for reason in told.reasons
     )
@@ -164,10 +164,10 @@ def _reasons(told: Explanation) -> str:
 
 
 def _rests(told: Explanation) -> str:
-    stopped = "The work was interrupted; this is the best answer until then."
-    body = paragraphs([words.standing(told), stopped if told.interrupted else ""])
+    stopped = "The work was interrupted; this is what was found by then."
+    body = sentences([words.standing(told), stopped if told.interrupted else ""])
     if told.cut_off:
-        body += f"<h3>Left open</h3>{paragraphs(map(words.as_sentence, told.cut_off))}"
+        body += f"<h3>Left open</h3>{sentences(map(words.as_sentence, told.cut_off))}"
     spent = ", ".join(f"{part} {seconds:.2f}" for part, seconds in told.seconds.items())
-    body += paragraphs([f"Seconds spent: {spent}." if spent else ""], "note")
+    body += sentences([f"Seconds spent: {spent}." if spent else ""], "note")
     return section("rests", "What this rests on", body)

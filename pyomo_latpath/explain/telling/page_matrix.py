@@ -5,7 +5,9 @@ from __future__ import annotations
 from ...integrality.finding import WORST_FIRST
 from ...pages.markup import number, section, table, text
 from ..explanation import Explanation
+from . import words
 from .drawings import largest, matrix
+from .prose import prose
 
 
 def blocks(told: Explanation) -> str:
@@ -19,8 +21,8 @@ def blocks(told: Explanation) -> str:
             number(block.rows),
             number(block.columns),
             text(block.verdict.value),
-            text(block.structure or "–"),
-            text(block.sentence),
+            text(words.structure(block.structure or "–")),
+            prose(block.sentence),
         ]
         for place, block in marked
     ]

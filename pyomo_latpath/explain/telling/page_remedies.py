@@ -5,10 +5,11 @@ from __future__ import annotations
 import math
 
 from ...pages.drawing import bars
-from ...pages.markup import cards, counted, folded, names, paragraphs, section, text
+from ...pages.markup import cards, counted, folded, names, section
 from ..explanation import Explanation
 from ..remedies.remedy import Remedy
 from . import words
+from .prose import prose, sentences
 
 #: Bars of remedies together, at most.
 BARS = 12
@@ -22,7 +23,7 @@ def remedies(told: Explanation) -> str:
     body = _together(told.remedies, plan) if len(told.remedies) > 1 else ""
     body += cards(_remedy(f"remedy-{k}", each, plan) for k, each in enumerate(told.remedies, 1))
     lead = "Each was checked before it is shown, goes alone, and goes with those before it."
-    return section("remedies", "What can be done", body + paragraphs([words.HOLDS], "note"), lead)
+    return section("remedies", "What can be done", body + sentences([words.HOLDS], "note"), lead)
 
 
 def _together(those: tuple[Remedy, ...], plan: float) -> str:
@@ -33,16 +34,16 @@ def _together(those: tuple[Remedy, ...], plan: float) -> str:
 
 
 def _remedy(key: str, remedy: Remedy, plan: float) -> str:
-    body = f"<h3>{text(words.as_sentence(remedy.title).rstrip('.'))}</h3>"
-    body += paragraphs([remedy.sentence, words.effect(remedy)])
+    body = f"<h3>{prose(words.as_sentence(remedy.title).rstrip('.'))}</h3>"
+    body += sentences([remedy.sentence, words.effect(remedy)])
     bounds = [("as it is", remedy.bound_before), ("with it alone", remedy.bound_after)]
     if remedy.bound_before != remedy.bound_after:
         body += _gap_bars(key, bounds, plan)
-    body += paragraphs([f"Checked: {remedy.verified}" if remedy.verified else ""], "note")
+    body += sentences([f"Checked: {remedy.verified}" if remedy.verified else ""], "note")
     if remedy.inequalities:
-        shown = paragraphs(words.inequality(each) for each in remedy.inequalities[:BARS])
+        shown = sentences(words.inequality(each) for each in remedy.inequalities[:BARS])
         rest = len(remedy.inequalities) - BARS
-        shown += paragraphs([f"and {rest:,} more"] if rest > 0 else [])
+        shown += sentences([f"and {rest:,} more"] if rest > 0 else [])
         body += folded(counted(len(remedy.inequalities), "new row"), shown)
     if remedy.names:
         touched = counted(len(remedy.names), "row or column", "rows and columns")

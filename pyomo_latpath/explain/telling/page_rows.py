@@ -12,7 +12,6 @@ from ...pages.markup import (
     names,
     number,
     numbered,
-    paragraphs,
     section,
     table,
     text,
@@ -21,6 +20,7 @@ from ..explanation import Culprit, Explanation, Gap, Group, NamedViolator
 from ..naming import listed
 from . import words
 from .drawings import NAMED, cycle
+from .prose import prose, sentences
 
 #: Groups in the table, at most; those to blame come first.
 GROUPS = 300
@@ -41,7 +41,7 @@ def blame(told: Explanation) -> str:
     if told.culprits and told.no_optimum is None:
         body = cards(_culprit(culprit, told.gap) for culprit in told.culprits)
     else:
-        body = paragraphs([words.blame(told)])
+        body = sentences([words.blame(told)])
     if told.groups and told.whole is None and told.no_optimum is None:
         body += _groups(told)
     several = "Each of these sets is enough by itself." if len(told.culprits) > 1 else ""
@@ -50,8 +50,8 @@ def blame(told: Explanation) -> str:
 
 def _culprit(culprit: Culprit, gap: Gap | None) -> str:
     body = f"<p><strong>{names(culprit.groups, SHOWN)}</strong></p>"
-    body += paragraphs([words.culprit_words(culprit, gap), words.remains(culprit)])
-    body += paragraphs([words.culprit_least(culprit)], "note")
+    body += sentences([words.culprit_words(culprit, gap), words.remains(culprit)])
+    body += sentences([words.culprit_least(culprit)], "note")
     if len(culprit.groups) > SHOWN:
         body += folded("All these groups", f"<p>{names(culprit.groups)}</p>")
     if culprit.rows:
@@ -106,11 +106,11 @@ def _peculiar(group: Group) -> str:
 def conflict(told: Explanation) -> str:
     """The section on rows and columns that conflict; empty where none are known."""
     if told.no_optimum is not None and told.no_optimum.names:
-        body = paragraphs([words.conflict(told)]) + numbered(told.no_optimum.names)
+        body = sentences([words.conflict(told)]) + numbered(told.no_optimum.names)
         if told.no_optimum.kind == "unbounded":
             return section("conflict", "What grows", body)
         least = "None of them" if told.no_optimum.minimal else "Perhaps some of them"
-        body += paragraphs([f"{least} could be left out."], "note")
+        body += sentences([f"{least} could be left out."], "note")
         return section("conflict", "The conflict", body)
     if not told.violators or told.no_optimum is not None:
         return ""
@@ -122,14 +122,14 @@ def conflict(told: Explanation) -> str:
 def _violator(key: str, violator: NamedViolator) -> str:
     k = len(violator.row_names)
     title = listed(violator.groups, 4) if violator.groups else counted(k, "row")
-    body = f"<h3>In {text(title)}</h3>"
+    body = f"<h3>In {prose(title)}</h3>"
     if k == 1:
-        return body + paragraphs([words.violator_words(violator)])
+        return body + sentences([words.violator_words(violator)])
     least = (
         "every smaller part is harmless" if violator.minimal else "perhaps a part of it suffices"
     )
     size = f"{counted(k, 'row')} and {counted(k, 'column')}"
-    body += paragraphs([f"{size} with determinant {violator.determinant}; {least}."])
+    body += sentences([f"{size} with determinant {violator.determinant}; {least}."])
     body += _cycle(key, violator) if violator.cycle else _grid(key, violator)
     names_ = (
         f'<div class="pair"><div><h4>Rows</h4>{numbered(violator.row_names)}</div>'
@@ -144,7 +144,7 @@ def _cycle(key: str, violator: NamedViolator) -> str:
     return (
         f'<div class="wide-only">{cycle(key, violator, named)}</div>'
         f'<div class="small-only">{cycle(f"{key}-small", violator, False)}</div>'
-        '<p class="note">Squares are rows, circles are columns; a dashed edge is a negative '
+        '<p class="note">Squares are rows, circles are columns; a thick edge is a negative '
         "entry.</p>"
     )
 

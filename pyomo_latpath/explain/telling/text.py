@@ -139,7 +139,7 @@ def _blocks(told: Explanation) -> list[str]:
     largest = sorted(told.blocks, key=lambda block: -block.nonzeros)[:6]
     lines = [
         f"{counted(block.rows, 'row')}, {counted(block.columns, 'column')}: "
-        f"{block.structure or block.verdict.value}; {block.sentence}"
+        f"{words.structure(block.structure or block.verdict.value)}; {block.sentence}"
         for block in largest
     ]
     rest = len(told.blocks) - len(largest)

@@ -9,14 +9,20 @@ import math
 from collections.abc import Sequence
 from fractions import Fraction
 
-from ...forms.numbers import simplest_fraction
 from ...integrality.finding import Verdict
 from ...pages.markup import counted, number
 from ..explanation import Culprit, Explanation, Fractional, Gap, NamedViolator
-from ..naming import listed, short
+from ..naming import FRACTION_WIDTH, coefficient, listed, quoted, short
 from ..remedies.remedy import Inequality, Remedy
 
 LABOUR = "Where a plan concerns people's shifts, labour rules and local agreements come first."
+#: Structures whose names say little.
+STRUCTURES = {
+    "conetwork": "transposed network",
+    "incidence": "incidence: two entries at most in each row or column",
+    "interval": "interval: consecutive ones",
+    "unimodular": "unimodular system of equations",
+}
 HOLDS = (
     "Remedies hold for the rows and bounds that were explained, whatever the costs; once others "
     "have changed, explain the model again."
@@ -102,7 +108,7 @@ def how_bad(told: Explanation) -> str:
         if told.fractional.worst_name is not None:
             worst = told.fractional.worst_name
             parts.append(
-                f"Furthest from whole: {short(worst)} = {fraction(told.fractional.worst_value)}."
+                f"Furthest from whole: {quoted(worst)} = {fraction(told.fractional.worst_value)}."
             )
     if told.gap is not None:
         parts.append(gap_words(told.gap))
@@ -113,7 +119,7 @@ def _how_many(fractional: Fractional) -> str:
     """How many columns are fractional, before and after rounding where that differs."""
     count, before = fractional.count, fractional.declared
     told = f"{count:,} of {counted(fractional.integers, 'integer column')} "
-    told += f"{'is' if count == 1 else 'are'} fractional"
+    told += f"{'is' if 1 in (count, fractional.integers) else 'are'} fractional"
     if before is None or before == count:
         return f"{told}."
     return f"{told}, {before:,} before sides and bounds are rounded inwards."
@@ -131,7 +137,7 @@ def gap_words(gap: Gap) -> str:
     if math.isnan(gap.plan):
         looked = gap.plan_status != "unknown"
         return f"{bound}; " + (
-            "no whole plan was found in time."
+            f"no whole plan was found {_when(gap)}."
             if looked
             else "the best whole plan was not looked for."
         )
@@ -140,7 +146,11 @@ def gap_words(gap: Gap) -> str:
     apart = f"{number(gap.absolute)} ({gap.relative:.2%})"
     if gap.exact:
         return f"{bound}, the best whole plan's {number(gap.plan)}: {apart} apart."
-    return f"{bound}, the best plan found in time {number(gap.plan)}: at most {apart} apart."
+    return f"{bound}, the best plan found {_when(gap)} {number(gap.plan)}: at most {apart} apart."
+
+
+def _when(gap: Gap) -> str:
+    return "by then" if gap.plan_status == "interrupted" else "in time"
 
 
 def costs_nothing(gap: Gap) -> bool:
@@ -171,7 +181,7 @@ def culprit_words(culprit: Culprit, gap: Gap | None) -> str:
         return f"Only {groups} {tie} integer columns to others: no part of the model stands out."
     sentence = f"Without {groups} what is left is proven whole"
     if culprit.structures:
-        sentence += f" ({', '.join(culprit.structures)})"
+        sentence += f" ({', '.join(map(structure, culprit.structures))})"
     if math.isinf(culprit.objective_without):
         return f"{sentence}; then there is no best plan, only better ones without end."
     if not math.isnan(culprit.objective_without):
@@ -189,6 +199,11 @@ def _priced(price: float, free: bool) -> str:
         f", so leaving these rows out would change the optimum by {number(price)}; wholeness costs "
         "nothing at this objective"
     )
+
+
+def structure(name: str) -> str:
+    """A structure as those call it who do not know its name here."""
+    return STRUCTURES.get(name, name)
 
 
 def remains(culprit: Culprit) -> str:
@@ -219,7 +234,7 @@ def conflict(told: Explanation) -> str:
             return ""
         if told.no_optimum.kind == "infeasible":
             return f"{_conflicting(names)}."
-        return f"{listed(names, 8)} {'grows' if len(names) == 1 else 'grow'} without end."
+        return f"{listed(names, 8)} {'moves' if len(names) == 1 else 'move'} without end."
     if not told.violators:
         return ""
     return violator_words(told.violators[0])
@@ -227,7 +242,7 @@ def conflict(told: Explanation) -> str:
 
 def _conflicting(names: Sequence[str]) -> str:
     if len(names) == 1:
-        return f"{short(names[0])} cannot be met, even by itself"
+        return f"{quoted(names[0])} cannot be met, even by itself"
     return f"{listed(names, 8)} conflict"
 
 
@@ -235,8 +250,8 @@ def violator_words(violator: NamedViolator) -> str:
     """What a violator is, and the rows and columns along it."""
     k = len(violator.row_names)
     if k == 1:
-        row, column = short(violator.row_names[0]), short(violator.column_names[0])
-        entry = fraction(simplest_fraction(float(violator.entries[0, 0])))
+        row, column = quoted(violator.row_names[0]), quoted(violator.column_names[0])
+        entry = coefficient(float(violator.entries[0, 0]))
         return f"Row {row} has the coefficient {entry} at {column}."
     rows, columns = listed(violator.row_names, 5), listed(violator.column_names, 5)
     shape = "on one cycle" if violator.cycle else "in one square"
@@ -311,16 +326,16 @@ def fraction(value: Fraction | None) -> str:
     """
     if value is None:
         return "–"
-    return str(value) if len(str(value)) <= 15 else f"about {float(value):.6g}"
+    return str(value) if len(str(value)) <= FRACTION_WIDTH else f"about {float(value):.6g}"
 
 
 def inequality(row: Inequality, most: int = 8) -> str:
     """A row as people write it, at most so many of its terms."""
     terms = ""
     pairs = list(zip(row.coefficients.tolist(), row.column_names, strict=True))
-    for coefficient, name in pairs[:most]:
-        sign = "-" if coefficient < 0 else "+" if terms else ""
-        size = "" if abs(coefficient) == 1 else f"{number(abs(coefficient))} "
+    for factor, name in pairs[:most]:
+        sign = "-" if factor < 0 else "+" if terms else ""
+        size = "" if abs(factor) == 1 else f"{number(abs(factor))} "
         terms += f" {sign} {size}{short(name)}" if terms else f"{sign}{size}{short(name)}"
     if len(pairs) > most:
         terms += f" + {counted(len(pairs) - most, 'more term')}"

@@ -126,7 +126,7 @@ def test_a_big_m_is_shrunk_then_the_row_split_and_the_gap_is_gone():
     form = caves()
     shrunk, parts = remedies_of(form)[:2]
     assert (shrunk.kind, parts.kind) == ("tighten", "split")
-    assert "coefficient of o[1] can go from -1,000 to -4" in shrunk.sentence
+    assert "coefficient of 'o[1]' can go from -1,000 to -4" in shrunk.sentence
     assert "ripens[0,0] - o[1] <= 0" in parts.sentence
     assert parts.dropped_row_names == ("open[1]", "open[2]")
     assert len(parts.inequalities) == 8

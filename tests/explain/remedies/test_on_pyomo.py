@@ -242,7 +242,7 @@ def test_a_remedy_is_made_once_and_again_only_by_another_explanation():
     for remedy in explanation.remedies:
         remedy.apply(model)
     for remedy in explanation.remedies:
-        refused(remedy, model, f"the remedy '{remedy.title}' has been made in this model already")
+        refused(remedy, model, "has been made in this model already")
     shrunk, parts = explanation.remedies[:2]
     model.room_split.deactivate()
     parts.apply(model)

@@ -31,10 +31,10 @@ def test_the_answer_fits_on_one_screen_and_every_line_in_80_columns(maker):
 
 def test_the_first_screen_has_blame_conflict_gap_and_remedy():
     shown = " ".join(" ".join(screen(made_up.fractional())).split())
-    assert shown.startswith("Fractional because of budget")
+    assert shown.startswith("Fractional because of 'budget'")
     assert "12 of 720 integer columns are fractional" in shown
     assert "147.53 (1.56%) apart" in shown
-    assert "Without budget what is left is proven whole" in shown
+    assert "Without 'budget' what is left is proven whole" in shown
     assert "so these rows cost 2,880" in shown
     assert "5 rows and 5 columns on one cycle" in shown
     assert "The bound goes from 9,612.53 to 9,530" in shown
@@ -83,7 +83,7 @@ def test_a_coefficient_is_told_as_a_fraction():
     single = replace(
         made_up.odd_cycle(3), row_names=("rent",), column_names=("cave",), entries=entries
     )
-    assert words.violator_words(single) == "Row rent has the coefficient 4/3 at cave."
+    assert words.violator_words(single) == "Row 'rent' has the coefficient 4/3 at 'cave'."
 
 
 @pytest.mark.parametrize(
@@ -149,10 +149,10 @@ def test_a_model_without_integer_columns_is_called_a_linear_program():
 @pytest.mark.parametrize(
     ("kind", "names", "sentence"),
     [
-        ("infeasible", ("supply", "demand"), "supply and demand conflict."),
-        ("infeasible", ("supply",), "supply cannot be met, even by itself."),
-        ("unbounded", ("van",), "van grows without end."),
-        ("unbounded", ("van", "cart"), "van and cart grow without end."),
+        ("infeasible", ("supply", "demand"), "'supply' and 'demand' conflict."),
+        ("infeasible", ("supply",), "'supply' cannot be met, even by itself."),
+        ("unbounded", ("van",), "'van' moves without end."),
+        ("unbounded", ("van", "cart"), "'van' and 'cart' move without end."),
         ("infeasible", (), ""),
     ],
 )
