@@ -175,6 +175,7 @@ class Latpath(SolverBase):  # type: ignore[misc]
         NoOptimalSolutionError, NoFeasibleSolutionError
             As Pyomo's `highs`, with the diagnosis in the message.
         """
+        _refuse_what_is_no_model(model)
         started, tick = datetime.datetime.now(datetime.timezone.utc), time.perf_counter()
         config = self.config(value=kwds, preserve_implicit=True)
         if config.timer is None:
@@ -219,6 +220,7 @@ class LegacyLatpath(LegacySolverWrapper, Latpath):  # type: ignore[misc]
 
     def solve(self, model: Any, *args: Any, **kwds: Any) -> Any:
         """Solve a Pyomo model; takes what `LegacySolverWrapper.solve` takes, and OWN_KEYWORDS."""
+        _refuse_what_is_no_model(model)
         own = {name: kwds.pop(name) for name in self.OWN_KEYWORDS if name in kwds}
         # The wrapper writes the options of a call into the configuration, where they would rule
         # the next call too, so each call gets a copy. Plain assignment would copy the values
@@ -261,6 +263,12 @@ class LegacyLatpath(LegacySolverWrapper, Latpath):  # type: ignore[misc]
 SolverFactory.register(
     "latpath", doc="Linear and mixed-integer models, as linear programs where that is proven"
 )(Latpath, LegacyLatpath)
+
+
+def _refuse_what_is_no_model(model: Any) -> None:
+    if not hasattr(model, "component_data_objects"):
+        kind = type(model).__name__
+        raise ValueError(f"something of type {kind} is no model; give a Pyomo model")
 
 
 def _restored(kind: type[Latpath], options: dict[str, Any]) -> Latpath:

@@ -76,7 +76,8 @@ def read_start(form: LinearForm, start: Start) -> Floats:
     ----------
     form : LinearForm
     start : array_like, shape (n,), or mapping of str to float
-        In the latter, a value for every column by name.
+        In the latter, a value for every column by name. Variables that a Pyomo model has fixed
+        are no columns; they may be named with the value they are fixed at.
 
     Raises
     ------
@@ -107,13 +108,28 @@ def read_start(form: LinearForm, start: Start) -> Floats:
 
 def _by_name(form: LinearForm, start: Mapping[str, float]) -> list[float]:
     names = list(form.col_names)
-    unknown = sorted(set(start) - set(names), key=str)
-    if unknown:
-        raise StartError(f"the start names {unknown[0]!r}, which is no column of the model")
+    for name in sorted(set(start) - set(names), key=str):
+        fixed = _fixed_value(form, name)
+        if fixed is None:
+            raise StartError(f"the start names {name!r}, which is no column of the model")
+        if start[name] != fixed:
+            told = (
+                f"the start has {start[name]} for {name!r}, which the model has fixed at {fixed:g}"
+            )
+            raise StartError(told)
     missing = next((name for name in names if name not in start), None)
     if missing is not None:
         raise StartError(f"the start has no value for column {missing!r}")
     return [start[name] for name in names]
+
+
+def _fixed_value(form: LinearForm, name: str) -> float | None:
+    """The value of a variable that the form's model has fixed; None for any other name."""
+    model = getattr(form.col_names, "model", None)
+    found = None if model is None else model.find_component(name)
+    if found is None or found.is_indexed() or not getattr(found, "fixed", False):
+        return None
+    return found.value
 
 
 def spread_around(form: LinearForm, start: Floats) -> Spread:

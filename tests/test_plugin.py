@@ -55,6 +55,13 @@ def test_both_factories_know_the_solver():
     assert legacy.license_is_valid()
 
 
+@both
+@pytest.mark.parametrize("wrong", [5, None, "vans.mps"])
+def test_what_is_no_model_is_refused(api, wrong):
+    with pytest.raises(ValueError, match=f"type {type(wrong).__name__} is no model"):
+        PLUGINS[api]().solve(wrong)
+
+
 def test_availability_and_version():
     setup = configparser.ConfigParser()
     setup.read(Path(__file__).parents[1] / "setup.cfg")

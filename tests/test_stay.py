@@ -3,6 +3,7 @@
 import json
 
 import numpy as np
+import pyomo.environ as pyo
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -104,6 +105,26 @@ def test_a_model_by_names():
     form = two_choices(col_names=["a1", "a2", "b1", "b2"])
     trade = latpath.stay_or_change(form, {"a1": 1, "a2": 0, "b1": 1, "b2": 0})
     assert [p.objective for p in trade.points] == [4, 6, 14]
+
+
+def fixed_night():
+    model = pyo.ConcreteModel()
+    model.van = pyo.Var([1, 2, 3], domain=pyo.Binary)
+    model.one = pyo.Constraint(expr=pyo.quicksum(model.van.values()) == 2)
+    model.cost = pyo.Objective(expr=pyo.quicksum(k * model.van[k] for k in (1, 2, 3)))
+    model.van[3].fix(1)
+    return model
+
+
+def test_fixed_variables_may_be_named_with_their_value():
+    model = fixed_night()
+    start = {"van[1]": 0, "van[2]": 1, "van[3]": 1}
+    trade = latpath.stay_or_change(model, start)
+    assert [point.objective for point in trade.points] == [4, 5]
+    with pytest.raises(StartError, match=r"0 for 'van\[3\]', which the model has fixed at 1"):
+        latpath.stay_or_change(model, start | {"van[3]": 0})
+    with pytest.raises(StartError, match=r"'van', which is no column"):
+        latpath.stay_or_change(model, start | {"van": 0})
 
 
 def test_it_is_data_text_and_picture():
