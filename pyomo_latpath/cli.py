@@ -15,7 +15,7 @@ import click
 
 from .certificates import Certificate, CertificateError, check_certificate
 from .cli_batch import batch
-from .cli_common import INPUT, OUTPUT, UNREADABLE, complain, in_a_folder, names_of
+from .cli_common import INPUT, INTERRUPTED, OUTPUT, UNREADABLE, complain, in_a_folder, names_of
 from .cli_explain import explain
 from .cli_output import (
     Outcome,
@@ -38,7 +38,7 @@ UNHEARD = 141
 
 
 class _Commands(click.Group):
-    """The commands, which end without noise when stdout is closed, say by `| head`."""
+    """The commands; Ctrl-C, or a closed stdout as by `| head`, ends them without noise."""
 
     def invoke(self, context: click.Context) -> Any:
         try:
@@ -47,6 +47,8 @@ class _Commands(click.Group):
             # What is still to be flushed has to go somewhere, else Python complains at its end.
             os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
             sys.exit(UNHEARD)
+        except KeyboardInterrupt:
+            sys.exit(INTERRUPTED)
         except OSError as error:
             complain(f"the output cannot be written: {sentence(error)}")
             sys.exit(UNREADABLE)
@@ -126,9 +128,10 @@ def solve(
 
     \b
     Exit status:
-      0  every file was solved to optimality
-      1  some file is infeasible or unbounded, or its time ran out
-      2  wrong usage, or some file could not be read or written
+      0    every file was solved to optimality
+      1    some file is infeasible or unbounded, or its time ran out
+      2    wrong usage, or some file could not be read or written
+      130  stopped by Ctrl-C
     """
     if len(files) > 1 and (plan or certificate or start):
         raise click.UsageError("--plan, --certificate and --from take one FILE only")

@@ -36,11 +36,11 @@ from .batch.runner import Tasks, run
 from .batch.summary import summarise
 from .batch.task import Settings
 from .batch.workers import Processes
-from .cli_common import complain
+from .cli_common import INTERRUPTED, complain
 from .deadline import Deadline
 from .files import sentence, whole_file
 
-SOLVED, UNSOLVED, FAILED, STOPPED, INTERRUPTED = 0, 1, 2, 3, 130
+SOLVED, UNSOLVED, FAILED, STOPPED = 0, 1, 2, 3
 
 #: Records on a page; browsers take no more.
 MOST_ON_PAGE = 100_000

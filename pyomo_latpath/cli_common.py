@@ -7,7 +7,7 @@ from pathlib import Path
 
 import click
 
-UNREADABLE = 2
+UNREADABLE, INTERRUPTED = 2, 130
 
 INPUT = click.Path(path_type=Path)
 OUTPUT = click.Path(path_type=Path, dir_okay=False)

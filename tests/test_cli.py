@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import json
 import os
+import signal
 import subprocess
 import sys
 from dataclasses import replace
@@ -187,8 +188,8 @@ def test_wrong_usage_is_exit_status_2(folder, monkeypatch, arguments):
 
 def test_help_tells_the_exit_statuses():
     text = run("solve", "--help").output
-    assert "Exit status:\n    0  every file was solved to optimality\n    1  " in text
-    assert "\n    2  wrong usage, or some file could not be read or written" in text
+    assert "Exit status:\n    0    every file was solved to optimality\n    1    " in text
+    assert "\n    2    wrong usage, or some file could not be read or written" in text
     assert all(field in text for field in cli_output.FIELDS)
 
 
@@ -313,6 +314,35 @@ def test_output_that_nobody_takes_ends_without_noise(folder, command, status, to
     assert done.returncode == status
     assert done.stderr.count("\n") == bool(told)
     assert told in done.stderr
+
+
+@pytest.mark.skipif(os.name == "nt", reason="Ctrl-C reaches other processes differently there")
+def test_ctrl_c_while_the_package_is_imported_just_ends_the_command(tmp_path):
+    (tmp_path / "pyomo_latpath").mkdir()
+    slow = "import time\nprint('importing', flush=True)\ntime.sleep(60)\n"
+    (tmp_path / "pyomo_latpath" / "__init__.py").write_text(slow)
+    path = os.pathsep.join([str(tmp_path), str(Path(__file__).parents[1])])
+    with subprocess.Popen(
+        [sys.executable, "-c", "import latpath_command as command; command.main()"],
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        text=True,
+        cwd=tmp_path,
+        env=os.environ | {"PYTHONPATH": path},
+    ) as job:
+        assert job.stdout.readline() == "importing\n"
+        job.send_signal(signal.SIGINT)
+        assert job.communicate(timeout=60) == ("", "")
+    assert job.returncode == -signal.SIGINT
+
+
+def test_ctrl_c_ends_a_command_quietly(folder, monkeypatch):
+    def interrupted(*_, **__):
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr(cli, "solve_form", interrupted)
+    result = run("solve", folder / "caves.min")
+    assert (result.exit_code, result.output) == (130, "")
 
 
 def test_an_unreadable_model_is_exit_status_2(folder):
