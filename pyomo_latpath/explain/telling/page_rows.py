@@ -141,11 +141,11 @@ def _violator(key: str, violator: NamedViolator) -> str:
 def _cycle(key: str, violator: NamedViolator) -> str:
     """The cycle twice: with its names, and with numbers only for views too narrow for those."""
     named = len(violator.row_names) <= NAMED
+    thick = "; a thick edge is a negative entry" if (violator.entries < 0).any() else ""
     return (
         f'<div class="wide-only">{cycle(key, violator, named)}</div>'
         f'<div class="small-only">{cycle(f"{key}-small", violator, False)}</div>'
-        '<p class="note">Squares are rows, circles are columns; a thick edge is a negative '
-        "entry.</p>"
+        f'<p class="note">Squares are rows, circles are columns{thick}.</p>'
     )
 
 

@@ -140,3 +140,16 @@ def test_nothing_moves_by_itself(browser: Browser, path):
         " || style.transitionDuration !== '0s').length"
     )
     assert moving == 0
+
+
+def test_names_within_sentences_are_code():
+    document = to_html(made_up.fractional())
+    assert "Without <code>budget</code> what is left" in document
+    hostile = to_html(made_up.hostile())
+    assert "<script" not in hostile.lower()
+
+
+def test_a_table_that_is_wider_than_the_view_shows_it(browser: Browser, tmp_path):
+    browser.open(written(tmp_path, to_html(made_up.fractional())), PHONE)
+    look = "return getComputedStyle(document.querySelector('.scroll')).backgroundAttachment"
+    assert browser.run(look).split(", ") == ["local", "local", "scroll", "scroll"]

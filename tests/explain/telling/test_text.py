@@ -92,6 +92,8 @@ def test_a_coefficient_is_told_as_a_fraction():
         ({}, "147.53 (1.56%) apart"),
         ({"plan_status": "time_limit"}, "at most 147.53 (1.56%) apart"),
         ({"plan": float("nan"), "plan_status": "time_limit"}, "no whole plan was found in time"),
+        ({"plan_status": "interrupted"}, "the best plan found by then 9,"),
+        ({"plan": float("nan"), "plan_status": "interrupted"}, "no whole plan was found by then"),
         ({"plan": float("nan"), "plan_status": "unknown"}, "was not looked for"),
         ({"plan": float("nan"), "plan_status": "infeasible"}, "no whole plan exists"),
         ({"plan": 9612.53}, "and so is the best whole plan's"),
@@ -104,6 +106,28 @@ def test_the_gap_is_told_as_far_as_it_is_known(changes, sentence):
     told = words.gap_words(replace(gap, **changes))
     assert sentence in told
     assert bool(told) == bool(sentence)
+
+
+@pytest.mark.parametrize(
+    ("integers", "count", "verb"), [(1, 0, "is"), (1, 1, "is"), (2, 0, "are"), (2, 1, "is")]
+)
+def test_columns_are_counted_as_people_speak(integers, count, verb):
+    told = made_up.fractional()
+    few = replace(told.fractional, integers=integers, count=count, declared=count)
+    noun = "column" if integers == 1 else "columns"
+    said = words.how_bad(replace(told, fractional=few))
+    assert said.startswith(f"{count} of {integers} integer {noun} {verb} fractional")
+
+
+def test_structures_are_told_in_words():
+    culprit = replace(made_up.fractional().culprits[0], structures=("conetwork", "network"))
+    assert "(transposed network, network)" in words.culprit_words(culprit, None)
+
+
+def test_all_that_ties_integer_columns_singles_out_nothing():
+    culprit = replace(made_up.fractional().culprits[0], structures=("trivial",))
+    said = words.culprit_words(culprit, None)
+    assert said.startswith("Only 'budget' ties integer columns to others")
 
 
 def test_what_was_left_open_is_told():
