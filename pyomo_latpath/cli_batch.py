@@ -98,8 +98,17 @@ def batch(
     PATH is a model file (.mps, .lp, .min, .asn, each also .gz), a folder of such, a pattern in
     quotes, or a Python file. A Python file defines a Pyomo `model` or a function
     `create_model(**data)`; with --data it builds one model from each JSON file (files,
-    folders, patterns), whose object holds the arguments. --changes reads a table of costs,
-    sides or bounds (.csv, .parquet, .npz) that one model is to be solved with.
+    folders, patterns), whose object holds the arguments.
+
+    --changes reads a table of costs, sides or bounds that one model is to be solved with. As
+    .csv, .csv.gz or .parquet it has a line for each changed entry (of cost, row_lower,
+    row_upper, col_lower or col_upper), or a line of costs for each member:
+
+    \b
+      instance,what,name,value        instance,van,cart
+      mon,row_upper,need,7            mon,4,7.5
+
+    As .npz it holds arrays of these five names, as .npy costs: a row for each member.
 
     \b
     DIR receives

@@ -459,3 +459,15 @@ def test_what_is_passed_over_in_a_folder_is_counted(folder, in_a_thread):
     told = "latpath: passed over in the folders: 2 that are no model files\n"
     assert run("good", "--out", "out").output.startswith(told)
     assert "passed over" not in run("good/caves.min", "--out", "other").output
+
+
+def test_the_tables_that_the_help_shows_can_be_read(folder, in_a_thread):
+    text = "minimize\n 3 van + 2 cart\nst\n need: van + cart <= 9\nend"
+    (folder / "vans.lp").write_text(text)
+    pairs = [line.split() for line in run("--help").output.splitlines() if "," in line]
+    tables = zip(*[pair for pair in pairs if len(pair) == 2 and "," in pair[1]], strict=True)
+    for k, lines in enumerate(tables):
+        assert lines[0].startswith("instance,")
+        (folder / f"{k}.csv").write_text("\n".join(lines))
+        assert run("vans.lp", "--changes", f"{k}.csv", "--out", f"out{k}").exit_code == 0
+    assert k == 1

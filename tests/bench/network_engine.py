@@ -160,4 +160,9 @@ def tell_floors(ratios: dict[str, list[tuple[int, float]]]) -> None:
 
 if __name__ == "__main__":
     arguments = sys.argv[1:]
-    main([word for word in arguments if word != "--quick"], "--quick" in arguments)
+    families = [word for word in arguments if word != "--quick"]
+    if unknown := set(families) - set(FAMILIES):
+        sys.exit(
+            f"no family is called {min(unknown)!r}; there are {', '.join(map(repr, FAMILIES))}"
+        )
+    main(families, "--quick" in arguments)
