@@ -63,7 +63,8 @@ class Trial:
     def __init__(self, normal: NormalForm, first: Optimum, deadline: Deadline) -> None:
         self._declared, self._first, self._deadline = normal.form, first, deadline
         self._sign = 1.0 if normal.form.sense == "min" else -1.0
-        self._normal, self._explained = normal, Explained(normal.form)
+        self._normal = normal
+        self._explained: Explained | None = None
         self.form, self.now, self.namer = normal.form, first, Namer(normal.form)
 
     @property
@@ -130,6 +131,8 @@ class Trial:
             reached = together
         self.form, self.now = form, reached
         bound, fractional = reached.bound, reached.fractional
+        if self._explained is None:
+            self._explained = Explained.of(self._declared)
         told = replace(
             told,
             bound_together=bound,

@@ -8,7 +8,7 @@ any may stand behind a remedy. Costs may differ: no remedy rests on them.
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TypeAlias
 
 import numpy as np
@@ -29,12 +29,30 @@ class Explained:
     Attributes
     ----------
     form : LinearForm
+        A copy: whatever is changed in place afterwards, names included, is not changed here.
     remedies : list of Remedy
         Those found so far.
     """
 
     form: LinearForm
     remedies: list[Remedy] = field(default_factory=list)
+
+    @classmethod
+    def of(cls, form: LinearForm) -> Explained:
+        """Keep a copy of a form."""
+        copied = replace(
+            form,
+            matrix=form.matrix.copy(),
+            row_lower=form.row_lower.copy(),
+            row_upper=form.row_upper.copy(),
+            col_lower=form.col_lower.copy(),
+            col_upper=form.col_upper.copy(),
+            integer=form.integer.copy(),
+            semicontinuous=form.semicontinuous.copy(),
+            row_names=list(form.row_names),
+            col_names=list(form.col_names),
+        )
+        return cls(copied)
 
 
 def refuse_changed(remedy: Remedy, now: LinearForm, *, by_name: bool) -> None:

@@ -205,6 +205,26 @@ def test_a_cut_is_refused_after_a_side_has_changed():
     assert cut.apply(model) is not None
 
 
+def test_a_form_changed_in_place_is_another_one():
+    form = latpath.compile_model(odd_pairs(1))
+    cut = latpath.explain(form).remedies[0]
+    assert cut.apply_to(form).shape[0] > form.shape[0]
+    form.row_upper[:] = 2
+    with pytest.raises(ValueError, match=r"row 'once\[0\]' has changed"):
+        cut.apply_to(form)
+
+
+def test_a_constraint_put_in_place_of_another_is_compared():
+    model = cellars(10, None)
+    shrunk = latpath.explain(model).remedies[0]
+    for demand in (40, 10):
+        model.del_component(model.asked)
+        model.asked = pyo.Constraint(expr=model.makes[1] + model.makes[2] == demand)
+        if demand == 40:
+            refused(shrunk, model, "row 'asked' has changed since it was explained")
+    assert len(shrunk.apply(model)) == 2
+
+
 def test_a_smaller_coefficient_is_refused_after_the_demand_was_raised():
     model = cellars(10, None)
     shrunk = latpath.explain(model).remedies[0]
