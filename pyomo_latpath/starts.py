@@ -21,6 +21,7 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+from pyomo.core.base import Var
 
 from . import routing
 from .forms.linear_form import Floats, LinearForm
@@ -108,28 +109,25 @@ def read_start(form: LinearForm, start: Start) -> Floats:
 
 def _by_name(form: LinearForm, start: Mapping[str, float]) -> list[float]:
     names = list(form.col_names)
-    for name in sorted(set(start) - set(names), key=str):
-        fixed = _fixed_value(form, name)
-        if fixed is None:
+    others = sorted(set(start) - set(names), key=str)
+    fixed = _fixed_values(form) if others else {}
+    for name in others:
+        if name not in fixed:
             raise StartError(f"the start names {name!r}, which is no column of the model")
-        if start[name] != fixed:
-            told = (
-                f"the start has {start[name]} for {name!r}, which the model has fixed at {fixed:g}"
-            )
-            raise StartError(told)
+        if start[name] != fixed[name]:
+            told = f"which the model has fixed at {fixed[name]}"
+            raise StartError(f"the start has {start[name]} for {name!r}, {told}")
     missing = next((name for name in names if name not in start), None)
     if missing is not None:
         raise StartError(f"the start has no value for column {missing!r}")
     return [start[name] for name in names]
 
 
-def _fixed_value(form: LinearForm, name: str) -> float | None:
-    """The value of a variable that the form's model has fixed; None for any other name."""
+def _fixed_values(form: LinearForm) -> dict[str, float]:
+    """The variables that a form's model has fixed, by name; none where it is no Pyomo model."""
     model = getattr(form.col_names, "model", None)
-    found = None if model is None else model.find_component(name)
-    if found is None or found.is_indexed() or not getattr(found, "fixed", False):
-        return None
-    return found.value
+    variables = () if model is None else model.component_data_objects(Var)
+    return {variable.name: variable.value for variable in variables if variable.fixed}
 
 
 def spread_around(form: LinearForm, start: Floats) -> Spread:
