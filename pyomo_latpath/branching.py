@@ -107,9 +107,17 @@ def _search(
     result = branch_and_bound(*given, np.where(told, kinds, 0), settings, limit, start)
     if result.x is None or result.status == "unbounded":
         return result, None, None
-    x = _rounded(part, result.x * part.col_den / part.col_num, told)
-    held = None if told.all() else _held_plan(part, x, told, deadline)
-    return result, x if held is None else np.where(told, x, held.x), held
+    plan = result.x * part.col_den / part.col_num
+    x = _rounded(part, plan, told)
+    if told.all():
+        return result, x, None
+    # What is left may make room for whole numbers where the plan as it stands does not.
+    near = np.where(told & part.integer, np.rint(plan), plan)
+    for fixed in (near, x):
+        held = _held_plan(part, fixed, told, deadline)
+        if held is not None:
+            return result, np.where(told, fixed, held.x), held
+    return result, x, None
 
 
 def _as_given(

@@ -53,7 +53,7 @@ SAMPLING_SHARE, MOST_SAMPLES = 0.1, 32
 FACE_SHARE, FACE_PIVOTS = 10, 50
 #: Seconds that the longer search for a certificate of a block with a whole optimum may take,
 #: where that is more than what the solve took so far.
-LONG_SECONDS = 0.5
+LONG_SECONDS = 0.05
 #: Relative error of plans that no exact check could be made of.
 ROUNDING = 1e-9
 #: Share of the time limit that the search for certificates may take.

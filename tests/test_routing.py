@@ -316,5 +316,5 @@ def test_a_plan_that_misses_a_row_is_not_told_without_a_warning(monkeypatch):
 
 
 def test_coefficients_too_large_for_highs_are_told():
-    with pytest.raises(ValueError, match="a row has the coefficient 2e.15, and HiGHS takes none"):
+    with pytest.raises(ValueError, match=r"a row has the coefficient 2e\+15, and HiGHS takes none"):
         solve(form_of([[2e15, 3.0]], -INF, 2e15, [-1, -1]))
