@@ -37,6 +37,8 @@ GRACE = 10.0
 AHEAD, QUICK, LIGHT = 8, 0.05, 2**14
 #: Processes in a row that may end before they are ready.
 MOST_STILLBORN = 3
+#: How many threads linear algebra takes, by the libraries that NumPy may be built with.
+THREADS = ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS")
 #: Name of a process until it is ready, and its exit status when the script, which it runs to know
 #: what the caller's classes are, would have it start a batch of its own.
 STARTING, UNGUARDED = "latpath worker, starting", 87
@@ -222,7 +224,7 @@ class _Worker:
         context = get_context("spawn")
         self.pipe, theirs = context.Pipe()
         self.process = context.Process(target=serve, args=(theirs,), name=STARTING, daemon=True)
-        with _deaf_to_ctrl_c():
+        with _deaf_to_ctrl_c(), _one_thread_each():
             self.process.start()
         theirs.close()
         self.tasks: deque[Task] = deque()
@@ -317,6 +319,21 @@ def _answer(data: bytes, forms: dict[str, SharedForm]) -> BatchRecord | str:
         return "it ran out of memory"
     except Exception as error:  # of unpickling: what was sent needs something that is not here
         return f"its worker could not make sense of it: {type(error).__name__}: {error}"
+
+
+@contextmanager
+def _one_thread_each() -> Iterator[None]:
+    """Let processes start whose linear algebra does not take the cores of the others.
+
+    NumPy reads these when it is loaded; what the user has set stays.
+    """
+    ours = {name: "1" for name in THREADS if name not in os.environ}
+    os.environ.update(ours)
+    try:
+        yield
+    finally:
+        for name in ours:
+            del os.environ[name]
 
 
 @contextmanager

@@ -380,3 +380,23 @@ def test_threads_take_turns():
         found = solve(forms, executor=executor, workers=3)
     for name, form in forms:
         assert found[name].objective == latpath.solve(form).objective
+
+
+def test_workers_take_one_core_each_unless_the_user_says_otherwise(monkeypatch):
+    monkeypatch.delenv("OPENBLAS_NUM_THREADS", raising=False)
+    monkeypatch.setenv("OMP_NUM_THREADS", "3")
+    started = []
+    real = workers.get_context("spawn").Process.start
+
+    def start(process):
+        started.append({name: os.environ.get(name) for name in workers.THREADS})
+        real(process)
+
+    monkeypatch.setattr(workers.get_context("spawn").Process, "start", start)
+    form = latpath.LinearForm.from_arrays(
+        [[1, 1]], row_lower=1, row_upper=1, col_lower=0, col_upper=1, cost=[2, 3]
+    )
+    assert [record.objective for record in solve([form], workers=1).values()] == [2.0]
+    assert started[0]["OPENBLAS_NUM_THREADS"] == "1"
+    assert started[0]["OMP_NUM_THREADS"] == "3"
+    assert "OPENBLAS_NUM_THREADS" not in os.environ
